@@ -1,0 +1,1 @@
+"""The worker: plans designs; the numerics of the house live below it."""

@@ -1,0 +1,1 @@
+"""Pure numerics: what a straight wire does at radio frequency, in SI units."""
