@@ -1,0 +1,1 @@
+"""What crosses the borders: requests in, designs and reports out. Frozen, strict, bounded."""

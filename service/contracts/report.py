@@ -1,0 +1,68 @@
+"""The feed-impedance report: what the transmitter will see, band by band, and how it was found."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from service.contracts.quantities import Contract
+
+
+class ReportPoint(Contract):
+    """Impedance at one frequency, at the feed point and after the transformer.
+
+    ``reflection`` is |Γ| and ``swr`` the standing wave ratio on the line side of the
+    transformer, against the reference impedance.
+    """
+
+    frequency_mhz: float
+    resistance_ohm: float
+    reactance_ohm: float
+    reflection: float
+    swr: float
+
+
+class BandReport(Contract):
+    """One band of the report: its edges and centre, and a grid between the edges."""
+
+    name: str
+    low: ReportPoint
+    centre: ReportPoint
+    high: ReportPoint
+    grid: tuple[ReportPoint, ...]
+
+
+class ResonanceLine(Contract):
+    """One resonance of the wire: near ``order`` half waves, series where it is usable."""
+
+    order: int
+    kind: Literal["series", "parallel"]
+    frequency_mhz: float
+    resistance_ohm: float
+
+
+class Provenance(Contract):
+    """How the figures were found and what they leave out."""
+
+    engine_version: str
+    model: str
+    source_gap_mm: float
+    ground: str
+    conductor_loss: str
+    largest_error_ohm: float
+    not_modelled: tuple[str, ...]
+
+
+class FeedReport(Contract):
+    """The feed-impedance report of one candidate."""
+
+    rank: int
+    length_m: float
+    conductor: str
+    diameter_mm: float
+    reference_ohm: float
+    transformer_ratio: float
+    bands: tuple[BandReport, ...]
+    resonances: tuple[ResonanceLine, ...]
+    sweep: tuple[ReportPoint, ...]
+    provenance: Provenance
+    cautions: tuple[str, ...]

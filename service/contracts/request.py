@@ -1,0 +1,125 @@
+"""The design request: everything a planner says, with limits on all of it."""
+
+from __future__ import annotations
+
+import hashlib
+from typing import Annotated, Final, Self
+
+from pydantic import Field, StringConstraints, ValidationError, field_validator, model_validator
+
+from service.contracts.bands import MOST_BANDS, Band, check_names_differ, expand_bands
+from service.contracts.feed import Feed
+from service.contracts.quantities import Contract, PowerW, wavelength_m
+from service.contracts.refusals import refusal_of, rule_broken
+from service.contracts.station_site import Site
+from service.contracts.stock import Stock
+
+MOST_CANDIDATES: Final = 20
+LARGEST_REQUEST_BYTES: Final = 64 * 1024
+
+#: No straight wire resonates below this many wavelengths: even a wire only 10 diameters
+#: long has its first resonance at 0.467 λ, 25 diameters at 0.459 λ (minimum), thinner wire
+#: above (numerical solution of Hallén's equation with the exact kernel). Height over ground
+#: and insulation shorten it by a few per cent more, hence the margin.
+SHORTEST_RESONANCE_WAVELENGTHS: Final = 0.40
+
+#: Above this radius in wavelengths the current is no longer that of a thin wire.
+THICKEST_RADIUS_WAVELENGTHS: Final = 5e-3
+
+
+class DesignRequest(Contract):
+    """What a planner wants designed.
+
+    ``bands`` accepts objects with edges, objects that name a ready-made list, and texts
+    such as ``amateur-region-2: 40m, 15m``; they are stored as bands with edges.
+    """
+
+    name: Annotated[str, StringConstraints(strip_whitespace=True, max_length=120)] = (
+        "Unnamed design"
+    )
+    bands: Annotated[tuple[Band, ...], Field(min_length=1, max_length=MOST_BANDS)]
+    site: Site
+    stock: Stock
+    feed: Feed = Feed()
+    power_w: PowerW = 100.0
+    candidates: Annotated[int, Field(ge=1, le=MOST_CANDIDATES)] = 5
+
+    @field_validator("bands", mode="before")
+    @classmethod
+    def _bands_from_lists(cls, given: object) -> object:
+        return expand_bands(given)
+
+    @model_validator(mode="after")
+    def _hangs_together(self) -> Self:
+        check_names_differ(self.bands)
+        self._check_span()
+        self._check_diameters()
+        return self
+
+    def _check_span(self) -> None:
+        highest = max(self.bands, key=lambda band: band.high_mhz)
+        needed_m = SHORTEST_RESONANCE_WAVELENGTHS * wavelength_m(highest.high_mhz)
+        if self.site.longest_wire_m < needed_m:
+            raise rule_broken(
+                "span-too-short",
+                f"a wire of at most {self.site.longest_wire_m:.2f} m fits the span, and even "
+                f"{highest.name} at {highest.high_mhz:g} MHz has no resonance below "
+                f"{needed_m:.2f} m.",
+                f"Give a span of at least {needed_m + 2 * self.site.end_allowance_m:.2f} m "
+                "or add a higher band.",
+                field="site.span_m",
+                value=self.site.span_m,
+            )
+
+    def _check_diameters(self) -> None:
+        top_mhz = max(band.high_mhz for band in self.bands)
+        limit_mm = 2e3 * THICKEST_RADIUS_WAVELENGTHS * wavelength_m(top_mhz)
+        for index, conductor in enumerate(self.stock.choices()):
+            thick = conductor.insulation.thickness_mm if conductor.insulation else 0.0
+            outer_mm = conductor.bare_diameter_mm + 2.0 * thick
+            if outer_mm > limit_mm:
+                listed = self.stock.diameter_range is None
+                raise rule_broken(
+                    "diameter-breaks-thin-wire",
+                    f"an outer diameter of {outer_mm:.2f} mm is too thick for the thin-wire "
+                    f"model at {top_mhz:g} MHz.",
+                    f"Take at most {limit_mm:.2f} mm over all, or leave out the highest band.",
+                    field=f"stock.conductors[{index}]"
+                    if listed
+                    else "stock.diameter_range.high_mm",
+                    value=f"{outer_mm:.2f} mm",
+                )
+
+    def canonical_json(self) -> str:
+        """The request as stored: every default written out, one spelling for equal requests."""
+        return self.model_dump_json()
+
+    def content_hash(self) -> str:
+        """SHA-256 of the canonical form, in hexadecimal."""
+        return hashlib.sha256(self.canonical_json().encode()).hexdigest()
+
+
+def parse_request(text: str | bytes) -> DesignRequest:
+    """Read a design request from JSON.
+
+    Raises
+    ------
+    RequestRefused
+        With one fault for each thing wrong: field, value, reason and remedy.
+    """
+    if len(text) > LARGEST_REQUEST_BYTES:
+        error = rule_broken(
+            "request-too-large",
+            f"the request is longer than {LARGEST_REQUEST_BYTES // 1024} KiB.",
+            "Split it into several requests.",
+            value=f"{len(text)} bytes",
+        )
+        raise refusal_of(
+            ValidationError.from_exception_data(
+                "DesignRequest", [{"type": error, "loc": (), "input": f"{len(text)} bytes"}]
+            )
+        )
+    try:
+        return DesignRequest.model_validate_json(text)
+    except ValidationError as error:
+        raise refusal_of(error) from error

@@ -1,0 +1,1 @@
+"""The pages: the same contract objects as the API, nothing computed."""
