@@ -44,8 +44,8 @@ def reflection_coefficient(
     Raises
     ------
     OutOfRange
-        An input is not a number of at most 1e150 ohm, the reference has no positive real part, or the two add up to
-        zero, which no passive load does.
+        An input is not a number of at most 1e150 ohm, the reference has no positive real part,
+        or the two add up to zero, which no passive load does.
 
     Notes
     -----
