@@ -11,7 +11,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from worker.engine.errors import OutOfRange
+from worker.engine.limits import require_magnitude_within, require_within
 
 LARGEST_STANDING_WAVE_RATIO: Final[float] = 1e6
 """Value at which :func:`standing_wave_ratio` stops, so that total reflection stays finite.
@@ -21,6 +21,7 @@ A ratio of 1e6 is a return loss of 1.7e-5 dB: no line, load or meter tells it fr
 
 # The square of a larger magnitude would overflow; no impedance comes near it.
 _LARGEST_MAGNITUDE_OHM: Final[float] = 1e150
+_SMALLEST: Final[float] = float(np.finfo(np.float64).tiny)
 
 
 def reflection_coefficient(
@@ -57,21 +58,17 @@ def reflection_coefficient(
     ----------
     D. M. Pozar, "Microwave Engineering", 4th ed., 2012, eq. (2.35).
     """
-    impedance = _bounded("impedance_ohm", impedance_ohm)
-    reference = _bounded("reference_ohm", reference_ohm)
-    unphysical = reference.real <= 0.0
-    if np.any(unphysical):
-        raise OutOfRange(
-            "reference_ohm (real part)",
-            float(reference.real[unphysical].flat[0]),
-            0.0,
-            np.inf,
-            "ohm",
-        )
+    impedance = require_magnitude_within(
+        "impedance_ohm", impedance_ohm, 0.0, _LARGEST_MAGNITUDE_OHM, "ohm"
+    )
+    reference = require_magnitude_within(
+        "reference_ohm", reference_ohm, 0.0, _LARGEST_MAGNITUDE_OHM, "ohm"
+    )
+    require_within("reference_ohm (real part)", reference.real, _SMALLEST, np.inf, "ohm")
     total = impedance + reference
-    if np.any(total == 0.0):
-        smallest = float(np.finfo(np.float64).tiny)
-        raise OutOfRange("impedance_ohm + reference_ohm", 0.0, smallest, np.inf, "ohm")
+    require_within(
+        "impedance_ohm + reference_ohm (magnitude)", np.abs(total), _SMALLEST, np.inf, "ohm"
+    )
     return np.asarray((impedance - reference) / total)
 
 
@@ -83,8 +80,8 @@ def standing_wave_ratio(impedance_ohm: ArrayLike, reference_ohm: ArrayLike) -> N
     impedance_ohm
         Load impedance, complex, any shape; at most 1e150 ohm.
     reference_ohm
-        Characteristic impedance, any shape that broadcasts with the load; finite, with a
-        positive real part.
+        Characteristic impedance, any shape that broadcasts with the load; at most 1e150 ohm,
+        with a positive real part.
 
     Returns
     -------
@@ -121,17 +118,3 @@ def standing_wave_ratio(impedance_ohm: ArrayLike, reference_ohm: ArrayLike) -> N
     ratio = incident_plus_reflected**2 / np.maximum(four_power, smallest)
     # Rounding may leave a matched load a few units in the last place below one.
     return np.asarray(np.maximum(ratio, 1.0), dtype=np.float64).reshape(coefficient.shape)
-
-
-def _bounded(quantity: str, value: ArrayLike) -> NDArray[np.complex128]:
-    array = np.asarray(value, dtype=np.complex128)
-    wrong = ~(np.abs(array) <= _LARGEST_MAGNITUDE_OHM)
-    if np.any(wrong):
-        raise OutOfRange(
-            f"{quantity} (magnitude)",
-            float(np.abs(array[wrong].flat[0])),
-            0.0,
-            _LARGEST_MAGNITUDE_OHM,
-            "ohm",
-        )
-    return array
