@@ -1,0 +1,1 @@
+"""The search for wires: maps of impedance, scoring over bands, ranking. Pure numerics."""

@@ -1,0 +1,136 @@
+"""A close look at one wire: what it does on every band, by direct solves where it counts."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.search.impedance_map import ImpedanceMap, map_over_frequency
+from worker.search.ranking import Pick
+from worker.search.resonances import (
+    Resonance,
+    length_in_resonance_m,
+    nearest_series,
+    resonances_of,
+)
+from worker.search.scoring import served_fraction, swr_over_bands
+from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace, WireModel
+
+#: Grid of the report within a band: odd, so that the centre is one of its points.
+GRID_POINTS: Final = 41
+#: Points of the sweep over the whole range, for the plot.
+SWEEP_POINTS: Final = 481
+
+
+@dataclass(frozen=True, slots=True)
+class Curve:
+    """Feed impedance and SWR (behind the transformer) over frequency; shape (n,) each."""
+
+    frequency_hz: FloatArray
+    impedance_ohm: ComplexArray
+    swr: FloatArray
+
+
+@dataclass(frozen=True, slots=True)
+class BandAppraisal:
+    """How one wire does on one band.
+
+    Attributes
+    ----------
+    goal : BandGoal
+    marks : Curve
+        Low edge, centre and high edge, by direct solves.
+    grid : Curve
+        Edge to edge, from the map over frequency.
+    served_fraction : float
+    nearest : Resonance or None
+        The series resonance nearest to the band's centre.
+    own_length_m : float or None
+        The length that would put that resonance on the centre, in m.
+    """
+
+    goal: BandGoal
+    marks: Curve
+    grid: Curve
+    served_fraction: float
+    nearest: Resonance | None
+    own_length_m: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Appraisal:
+    """Everything the report needs to know of one wire."""
+
+    pick: Pick
+    bands: tuple[BandAppraisal, ...]
+    resonances: tuple[Resonance, ...]
+    sweep: Curve
+    solves: int
+    largest_miss: float
+
+
+def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
+    """Look closely at one wire of the space.
+
+    Parameters
+    ----------
+    space : SearchSpace
+    pick : Pick
+        The wire: conductor, ratio and length.
+    """
+    wire = space.wires[pick.wire]
+    over_frequency = _map_whole_range(space, wire, pick.length_m)
+    resonances = resonances_of(over_frequency, pick.length_m)
+    sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
+    bands = tuple(
+        _appraise_band(space, pick, goal, over_frequency, resonances) for goal in space.bands
+    )
+    return Appraisal(
+        pick=pick,
+        bands=bands,
+        resonances=resonances,
+        sweep=_curve(space, pick, sweep_hz, over_frequency.impedance_ohm(sweep_hz)),
+        solves=over_frequency.solves,
+        largest_miss=over_frequency.largest_miss,
+    )
+
+
+def _map_whole_range(space: SearchSpace, wire: WireModel, length_m: float) -> ImpedanceMap:
+    """From below the wire's first resonance, or the lowest band, to above the highest."""
+    wavelength_hz = SPEED_OF_LIGHT_M_PER_S / length_m
+    lowest_hz = min(min(goal.low_hz for goal in space.bands), 0.42 * wavelength_hz)
+    highest_hz = max(max(goal.high_hz for goal in space.bands), 0.50 * wavelength_hz)
+    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * wavelength_hz)
+    high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * wavelength_hz)
+    return map_over_frequency(wire, length_m, low_hz, high_hz)
+
+
+def _appraise_band(
+    space: SearchSpace,
+    pick: Pick,
+    goal: BandGoal,
+    over_frequency: ImpedanceMap,
+    resonances: tuple[Resonance, ...],
+) -> BandAppraisal:
+    wire = space.wires[pick.wire]
+    marks_hz = np.array([goal.low_hz, goal.centre_hz, goal.high_hz])
+    marks = _curve(space, pick, marks_hz, wire.impedance_ohm(np.full(3, pick.length_m), marks_hz))
+    grid_hz = goal.grid_hz(GRID_POINTS)
+    grid = _curve(space, pick, grid_hz, over_frequency.impedance_ohm(grid_hz))
+    part = served_fraction(grid.swr[None, :, None], np.array(goal.swr_limit))[0, 0]
+    nearest = nearest_series(resonances, goal.centre_hz)
+    own_length_m = None
+    if nearest is not None:
+        guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
+        own_length_m = length_in_resonance_m(wire, guess_m, goal.centre_hz)
+    return BandAppraisal(goal, marks, grid, float(part), nearest, own_length_m)
+
+
+def _curve(
+    space: SearchSpace, pick: Pick, frequency_hz: FloatArray, impedance_ohm: ComplexArray
+) -> Curve:
+    swr = swr_over_bands(impedance_ohm, space.reference_ohm, pick.ratio)
+    return Curve(frequency_hz, impedance_ohm, swr)

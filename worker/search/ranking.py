@@ -1,0 +1,128 @@
+"""The order of candidates, and which of them are different enough to be worth showing.
+
+Wires are ordered by required bands served, then by weighted served width, then by worst
+SWR, then by length (a shorter wire hangs more easily): each shown, none hidden in one
+number.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.search.scoring import FULLY_SERVED, Merit, Score
+from worker.search.space import BandGoal, FloatArray
+
+#: Served widths are compared to the thousandth of the whole, SWR to the hundredth: finer
+#: differences are below what can be built, and would hide the next criterion.
+WIDTH_STEP: Final = 1e-3
+SWR_STEP: Final = 1e-2
+
+
+@dataclass(frozen=True, slots=True)
+class Pick:
+    """One wire picked from the scan: which conductor, which ratio, which length."""
+
+    wire: int
+    ratio: float
+    length_m: float
+
+
+@dataclass(frozen=True, slots=True)
+class Contender:
+    """A local optimum: its sort key, what kind of wire it is, and the wire itself.
+
+    ``kind`` holds for each band the order of resonance used and whether it serves the band
+    whole (2), in part (1) or not at all (0).
+    """
+
+    key: tuple[float, ...]
+    kind: tuple[tuple[int, int], ...]
+    pick: Pick
+
+
+def rank_keys(merit: Merit, length_m: FloatArray) -> FloatArray:
+    """Columns to sort by, best first when ascending; shape (n, 4)."""
+    return np.column_stack(
+        [
+            -merit.required_served.astype(np.float64),
+            -np.round(merit.weighted_served / WIDTH_STEP),
+            np.round(merit.swr_worst / SWR_STEP),
+            length_m,
+        ]
+    )
+
+
+def best_first(keys: FloatArray) -> NDArray[np.intp]:
+    """Indices that put rows of keys in order, the first column weighing most."""
+    return np.lexsort(keys.T[::-1])
+
+
+def nearest_odd_order(length_m: FloatArray, frequency_hz: float) -> NDArray[np.int64]:
+    """The odd number of half waves nearest to a length; 1, 3, 5 and so on."""
+    half_waves = 2.0 * length_m * frequency_hz / SPEED_OF_LIGHT_M_PER_S
+    return (2 * np.floor(half_waves / 2.0) + 1).astype(np.int64)
+
+
+def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Pick, ...]:
+    """The best contender of each kind, best first, at most so many.
+
+    Two wires are of one kind when they use the same order of resonance on every band and
+    serve the same bands whole, in part or not at all: neighbours of one optimum are one
+    kind, another conductor or ratio for the same duty too.
+    """
+    useful = [each for each in contenders if any(service for _, service in each.kind)]
+    leaders: dict[tuple[tuple[int, int], ...], Pick] = {}
+    # Where no wire serves anything, the nearest miss is still an answer.
+    for contender in sorted(useful or contenders, key=lambda each: each.key):
+        leaders.setdefault(contender.kind, contender.pick)
+        if len(leaders) == most:
+            break
+    return tuple(leaders.values())
+
+
+def contenders_of(
+    scored: Score,
+    merit: Merit,
+    length_m: FloatArray,
+    bands: tuple[BandGoal, ...],
+    wire: int,
+    ratio: float,
+) -> list[Contender]:
+    """The local optima along length for one conductor and one ratio.
+
+    Parameters
+    ----------
+    scored : Score
+        Of n wires.
+    merit : Merit
+        Of the same wires.
+    length_m : ndarray, shape (n,)
+        Rising.
+    bands : tuple of BandGoal
+    wire : int
+        Index of the conductor.
+    ratio : float
+    """
+    keys = rank_keys(merit, length_m)
+    place = np.empty(len(length_m), dtype=np.int64)
+    place[best_first(keys)] = np.arange(len(length_m))
+    # Beyond either end there is nothing better.
+    walled = np.concatenate([[len(length_m)], place, [len(length_m)]])
+    tops = np.flatnonzero((place < walled[:-2]) & (place < walled[2:]))
+    orders = np.array([nearest_odd_order(length_m[tops], band.centre_hz) for band in bands])
+    fractions = scored.served_fraction[:, tops]
+    service = np.where(fractions >= FULLY_SERVED, 2, np.where(fractions > 0.0, 1, 0))
+    orders = np.where(service > 0, orders, 0)
+    return [
+        Contender(
+            key=(*map(float, keys[top]), float(wire), ratio),
+            kind=tuple(zip(orders[:, column].tolist(), service[:, column].tolist(), strict=True)),
+            pick=Pick(wire, ratio, float(length_m[top])),
+        )
+        for column, top in enumerate(tops)
+    ]

@@ -1,0 +1,111 @@
+"""How well wires of every length serve every band.
+
+A band is *served* where the standing wave ratio stays within its limit from edge to edge,
+*partly served* where it does over a part of the width, else *unserved*.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+
+from worker.engine.reflection import standing_wave_ratio
+from worker.search.space import BandGoal, ComplexArray, FloatArray
+
+#: A band counts as served from this part of its width on: rounding at an edge is no fault.
+FULLY_SERVED: Final = 1.0 - 1e-9
+
+
+@dataclass(frozen=True, slots=True)
+class Score:
+    """How n wires serve b bands, with one transformer ratio.
+
+    Attributes
+    ----------
+    served_fraction : ndarray, shape (b, n)
+        Part of each band's width within its SWR limit.
+    swr_worst : ndarray, shape (b, n)
+        Largest SWR within each band.
+    """
+
+    served_fraction: FloatArray
+    swr_worst: FloatArray
+
+
+def swr_over_bands(impedance_ohm: ComplexArray, reference_ohm: float, ratio: float) -> FloatArray:
+    """Standing wave ratio on the line side of an ideal transformer; shape of the impedance."""
+    return np.asarray(standing_wave_ratio(impedance_ohm / ratio, reference_ohm))
+
+
+def score(swr: FloatArray, bands: tuple[BandGoal, ...]) -> Score:
+    """Score wires by their SWR on each band's grid.
+
+    Parameters
+    ----------
+    swr : ndarray, shape (b, p, n)
+        Standing wave ratio of n wires at p evenly spaced frequencies of b bands.
+    bands : tuple of BandGoal, length b
+    """
+    limits = np.array([band.swr_limit for band in bands])
+    return Score(
+        served_fraction=served_fraction(swr, limits[:, None, None]),
+        swr_worst=np.max(swr, axis=1),
+    )
+
+
+def served_fraction(swr: FloatArray, limit: FloatArray) -> FloatArray:
+    """Part of the width within the limit, the SWR taken as linear between grid points.
+
+    Parameters
+    ----------
+    swr : ndarray, shape (b, p, n)
+    limit : ndarray
+        Broadcasts with ``swr``.
+
+    Returns
+    -------
+    ndarray, shape (b, n)
+        From 0 to 1.
+    """
+    excess = swr - limit
+    left, right = excess[:, :-1], excess[:, 1:]
+    inside = np.minimum(left, right)
+    rise = np.abs(right - left)
+    # Where one end is inside and the other outside, the part inside is |inside| / rise.
+    part = np.where(rise > 0.0, -inside / np.where(rise > 0.0, rise, 1.0), 0.0)
+    both_inside = np.maximum(left, right) <= 0.0
+    share = np.where(both_inside, 1.0, np.clip(part, 0.0, 1.0))
+    return np.asarray(np.mean(share, axis=1))
+
+
+@dataclass(frozen=True, slots=True)
+class Merit:
+    """What n wires are ranked by, each as one number per wire; shape (n,) each."""
+
+    required_served: NDArray[np.int64]
+    weighted_served: FloatArray
+    swr_worst: FloatArray
+
+
+def merit(scored: Score, bands: tuple[BandGoal, ...]) -> Merit:
+    """Gather the scores of all bands into what wires are ranked by.
+
+    ``weighted_served`` is the mean served width by weight, from 0 to 1. ``swr_worst`` is
+    taken over the bands served at least in part, for an SWR of 40 on a band that cannot be
+    had says nothing of the others; where no band is, over all.
+    """
+    required = np.array([band.required for band in bands])
+    weights = np.array([band.weight for band in bands])
+    whole = scored.served_fraction >= FULLY_SERVED
+    some = scored.served_fraction > 0.0
+    any_served = some.any(axis=0)
+    worst_of_served = np.max(np.where(some, scored.swr_worst, 1.0), axis=0)
+    worst_of_all = np.min(scored.swr_worst, axis=0)
+    return Merit(
+        required_served=np.sum(whole & required[:, None], axis=0),
+        weighted_served=weights @ scored.served_fraction / weights.sum(),
+        swr_worst=np.where(any_served, worst_of_served, worst_of_all),
+    )

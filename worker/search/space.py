@@ -1,0 +1,102 @@
+"""What is searched: the bands as goals, the wires on offer, and the lengths between limits."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Final, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+
+FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
+
+#: Neighbouring lengths of the scan differ by this ratio: 4 cm on a 40 m wire, 7 kHz at 7 MHz.
+SCAN_STEP: Final = 1e-3
+
+#: Frequencies per band at which the scan judges a wire; the widest amateur HF band, 10 m,
+#: is then sampled every 0.7 %, a quarter of the width of a wire's resonance at SWR 2.
+POINTS_PER_BAND: Final = 9
+
+#: The scan starts at this many wavelengths at the highest frequency asked for; see
+#: ``SHORTEST_RESONANCE_WAVELENGTHS`` of the request contract, which refuses shorter spans.
+SHORTEST_WAVELENGTHS: Final = 0.40
+
+
+class WireModel(Protocol):
+    """A wire of one conductor as hung on the site, of any length, at any frequency."""
+
+    @property
+    def shortest_wavelengths(self) -> float:
+        """Length in wavelengths from which the model holds."""
+        ...
+
+    @property
+    def longest_wavelengths(self) -> float:
+        """Length in wavelengths up to which the model holds."""
+        ...
+
+    def impedance_ohm(self, length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        """Impedance at the feed point in Ω for every pair of length (m) and frequency (Hz)."""
+        ...
+
+
+@dataclass(frozen=True, slots=True)
+class BandGoal:
+    """One band to be served; frequencies in Hz."""
+
+    name: str
+    low_hz: float
+    high_hz: float
+    required: bool
+    weight: float
+    swr_limit: float
+
+    @property
+    def centre_hz(self) -> float:
+        """Middle of the band in Hz."""
+        return 0.5 * (self.low_hz + self.high_hz)
+
+    def grid_hz(self, points: int = POINTS_PER_BAND) -> FloatArray:
+        """Evenly spaced frequencies from edge to edge, in Hz; shape (points,)."""
+        return np.linspace(self.low_hz, self.high_hz, points)
+
+
+@dataclass(frozen=True, slots=True)
+class SearchSpace:
+    """Everything the search may vary, and what it is judged by.
+
+    Attributes
+    ----------
+    bands : tuple of BandGoal
+    wires : tuple of WireModel
+        One for each conductor on offer.
+    longest_m : float
+        The longest wire the site can take, in m.
+    ratios : tuple of float
+        Permitted impedance ratios of the transformer, antenna side to line side.
+    reference_ohm : float
+        Impedance the SWR is taken against, in Ω.
+    """
+
+    bands: tuple[BandGoal, ...]
+    wires: tuple[WireModel, ...]
+    longest_m: float
+    ratios: tuple[float, ...]
+    reference_ohm: float
+    shortest_m: float = field(init=False)
+
+    def __post_init__(self) -> None:
+        """Derive the shortest length worth looking at."""
+        top_hz = max(band.high_hz for band in self.bands)
+        shortest_m = SHORTEST_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / top_hz
+        object.__setattr__(self, "shortest_m", min(shortest_m, self.longest_m))
+
+    def lengths_m(self) -> FloatArray:
+        """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""
+        span = np.log(self.longest_m / self.shortest_m)
+        count = max(2, int(np.ceil(span / SCAN_STEP)) + 1)
+        lengths_m: FloatArray = np.geomspace(self.shortest_m, self.longest_m, count)
+        return lengths_m
