@@ -1,5 +1,24 @@
-"""Straight thin wire: feed impedance and current by a Galerkin solution."""
+"""Straight thin wire: feed impedance and current by a Galerkin solution.
+
+`feed_impedance` solves many wires at once; `current` gives the current along one. The source is
+always a uniform field over a gap of stated width, by default the wire's radius. A ground enters
+through `ReflectedPotentials`.
+"""
 
 from worker.engine.thin_wire.reflection import ReflectedPotentials
+from worker.engine.thin_wire.wire import (
+    MODEL,
+    FeedImpedance,
+    WireCurrent,
+    current,
+    feed_impedance,
+)
 
-__all__ = ["ReflectedPotentials"]
+__all__ = [
+    "MODEL",
+    "FeedImpedance",
+    "ReflectedPotentials",
+    "WireCurrent",
+    "current",
+    "feed_impedance",
+]

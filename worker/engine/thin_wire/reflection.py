@@ -2,10 +2,22 @@
 
 from __future__ import annotations
 
+from math import ceil, factorial, pi
 from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
+
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+
+FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
+
+# Interpolation on a uniform grid by polynomials of this many points.
+_STENCIL = 8
+# Grid spacing: at most these fractions of the wavelength and of the height.
+_SPACING_WAVELENGTHS = 0.05
+_SPACING_HEIGHTS = 0.7
 
 
 class ReflectedPotentials(Protocol):
@@ -37,8 +49,82 @@ class ReflectedPotentials(Protocol):
     def height_m(self) -> float:
         """Height of the wire's axis; twice it is the shortest length on which they vary."""
 
-    def vector_potential(self, distance_m: NDArray[np.float64]) -> NDArray[np.complex128]:
+    def vector_potential(self, distance_m: FloatArray) -> ComplexArray:
         """Reflected vector-potential function g_A (1/m) at horizontal distances >= 0."""
 
-    def scalar_potential(self, distance_m: NDArray[np.float64]) -> NDArray[np.complex128]:
+    def scalar_potential(self, distance_m: FloatArray) -> ComplexArray:
         """Reflected scalar-potential function g_Phi (1/m) at horizontal distances >= 0."""
+
+
+def reflected_matrices(
+    reflected: ReflectedPotentials,
+    z: FloatArray,
+    current: FloatArray,
+    charge: FloatArray,
+    half_length_m: FloatArray,
+    parity: int,
+) -> tuple[ComplexArray, ComplexArray]:
+    """Galerkin matrices of 4 pi g_A between currents and 4 pi g_Phi between charges.
+
+    Parameters
+    ----------
+    reflected
+        The ground.
+    z
+        Gauss points (B, Q) on half a wire.
+    current, charge
+        Moments of the basis functions at them, (B, Q, N) and (Q, N).
+    half_length_m
+        Half lengths (B,).
+    parity
+        +1 for an even current, -1 for an odd one.
+
+    Notes
+    -----
+    The reflected functions are smooth on the scale of the height, so the moments are first
+    gathered on a uniform grid by interpolation. On it the kernel between two points of half a
+    wire is a Toeplitz matrix and the kernel to the other half a Hankel matrix, and both come
+    from one row of values.
+    """
+    wavelength = SPEED_OF_LIGHT_M_PER_S / reflected.frequency_hz
+    spacing = min(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * reflected.height_m)
+    cells = max(ceil(float(np.max(half_length_m)) / spacing), 1)
+    step = half_length_m / cells
+    gather = _interpolation(z / step[:, None], cells)
+    margin = _STENCIL // 2 - 1
+    index = np.arange(-margin, cells + _STENCIL // 2 + 1)
+    reach = 2 * (cells + _STENCIL // 2)
+    distance = step[:, None] * np.arange(reach + 1)
+    toeplitz = np.abs(index[:, None] - index)
+    hankel = np.abs(index[:, None] + index)
+    gathered = np.swapaxes(gather, 1, 2)
+    matrices = []
+    for moments, values, sign in (
+        (gathered @ current, reflected.vector_potential(distance), parity),
+        (gathered @ charge, reflected.scalar_potential(distance), -parity),
+    ):
+        scaled = 4.0 * pi * np.asarray(values, dtype=complex)
+        kernel = scaled[:, toeplitz] + sign * scaled[:, hankel]
+        transposed = np.swapaxes(moments, 1, 2)
+        matrices.append(
+            transposed @ kernel.real @ moments + 1j * (transposed @ kernel.imag @ moments)
+        )
+    return matrices[0], matrices[1]
+
+
+def _interpolation(position: FloatArray, cells: int) -> FloatArray:
+    """Weights (B, Q, nodes) that interpolate from grid nodes -margin to cells + margin + 1."""
+    margin = _STENCIL // 2 - 1
+    cell = np.clip(np.floor(position), 0.0, cells)
+    offset = position - cell
+    nodes = np.arange(-margin, _STENCIL // 2 + 1, dtype=float)
+    weights = np.empty((*position.shape, _STENCIL))
+    for i in range(_STENCIL):
+        others = np.delete(nodes, i)
+        scale = factorial(i) * factorial(_STENCIL - 1 - i) * (-1.0) ** (_STENCIL - 1 - i)
+        weights[..., i] = np.prod(offset[..., None] - others, axis=-1) / scale
+    gather = np.zeros((*position.shape, cells + _STENCIL))
+    np.put_along_axis(
+        gather, cell.astype(np.intp)[..., None] + np.arange(_STENCIL), weights, axis=-1
+    )
+    return gather

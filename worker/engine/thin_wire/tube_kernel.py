@@ -1,0 +1,154 @@
+"""Kernel of a thin tube: the inverse distance averaged around its circumference.
+
+    symbol   name here            meaning
+    x        x                    axial distance over radius
+    S(x)     static_kernel        <1 / sqrt(x^2 + 4 sin^2(phi/2))>, radius times <1/R>
+    J_i(x)   -                    integral of t^i S(t) from 0 to x
+    j_i(x)   scaled_moments       J_i(x) / x^i, of order one for every x
+
+All three depend on nothing but x, so one set of expansions serves every wire.
+
+References
+----------
+S. A. Schelkunoff, Advanced Antenna Theory (1952), the averaged kernel; NIST Digital Library of
+Mathematical Functions, sections 19.2, 19.8 and 19.12 (complete elliptic integrals).
+"""
+
+from __future__ import annotations
+
+from functools import cache
+from math import log, pi
+
+import numpy as np
+from numpy.polynomial import chebyshev, legendre, polynomial
+from numpy.typing import NDArray
+from scipy.special import ellipe, ellipkm1
+
+FloatArray = NDArray[np.float64]
+
+# The power series about x = 0 converges like (x/2)^(2n); it is used up to x = 1 only.
+_SERIES_TERMS = 26
+
+
+def static_kernel(x: FloatArray) -> FloatArray:
+    """Averaged inverse distance, (2/pi) K(m) / sqrt(x^2 + 4) with m = 4 / (x^2 + 4); x != 0."""
+    square = x * x
+    kernel: FloatArray = (2.0 / pi) * ellipkm1(square / (square + 4.0)) / np.sqrt(square + 4.0)
+    return kernel
+
+
+def distant_kernel(distance_squared: FloatArray, radius_squared: FloatArray) -> FloatArray:
+    """Averaged inverse distance (1/m) between points at least about three radii apart.
+
+    Notes
+    -----
+    With :math:`u = z^2 + 2a^2` the mean of :math:`R^2`, the central moments of :math:`R^2` over
+    the circumference are :math:`2a^4`, 0 and :math:`6a^8`, hence
+    :math:`u^{-1/2}[1 + 3/4\\,(a^2/u)^2 + 105/64\\,(a^2/u)^4]`; the remainder is below 1e-5 of the
+    value from z = 3a on.
+    """
+    mean_square = distance_squared + 2.0 * radius_squared
+    ratio = (radius_squared / mean_square) ** 2
+    kernel: FloatArray = (1.0 + ratio * (0.75 + 1.640625 * ratio)) / np.sqrt(mean_square)
+    return kernel
+
+
+@cache
+def _series_coefficients() -> tuple[FloatArray, FloatArray]:
+    """Coefficients of S(x) = sum (alpha_n + beta_n ln x) x^(2n).
+
+    With T(x) the averaged distance, T' = x S and (x^2 + 4) x S' = -T; comparing powers gives
+    each pair from the one before, from S -> ln(8/x)/pi and T -> 4/pi.
+    """
+    count = _SERIES_TERMS
+    alpha, beta = np.zeros(count), np.zeros(count)
+    gamma, delta = np.zeros(count + 1), np.zeros(count + 1)
+    alpha[0], beta[0], gamma[0] = log(8.0) / pi, -1.0 / pi, 4.0 / pi
+    for n in range(count):
+        if n:
+            beta[n] = (-delta[n] - 2.0 * (n - 1) * beta[n - 1]) / (8.0 * n)
+            inner = gamma[n] + 2.0 * (n - 1) * alpha[n - 1] + beta[n - 1]
+            alpha[n] = (-inner / 4.0 - beta[n]) / (2.0 * n)
+        order = 2.0 * n + 2.0
+        gamma[n + 1] = alpha[n] / order - beta[n] / order**2
+        delta[n + 1] = beta[n] / order
+    return alpha, beta
+
+
+@cache
+def _zeroth_moment_coefficients() -> FloatArray:
+    """Chebyshev coefficients of J_0(x) - ln(2x) in u = 1/x^2 on [0, 1]."""
+    alpha, beta = _series_coefficients()
+    order = 2.0 * np.arange(_SERIES_TERMS) + 1.0
+    up_to_one = float(np.sum(alpha / order - beta / order**2))
+    node, weight = legendre.leggauss(60)
+
+    def remainder(u: FloatArray) -> FloatArray:
+        span = -0.5 * np.log(u)
+        x = np.exp(0.5 * span[:, None] * (node + 1.0))
+        beyond = np.sum(static_kernel(x) * x * weight, axis=1) * 0.5 * span
+        result: FloatArray = up_to_one + beyond - log(2.0) - span
+        return result
+
+    # u = 1/x^2 has its nearest singularity at -1/4, so the error falls like 2.6^-n.
+    return np.asarray(chebyshev.chebinterpolate(lambda t: remainder((t + 1.0) / 2.0), 38))
+
+
+def scaled_moments(x: FloatArray, count: int) -> FloatArray:
+    """Moments J_i(x) / x^i of the static kernel.
+
+    Parameters
+    ----------
+    x
+        Axial distance over radius, > 0, any shape.
+    count
+        Number of moments, i = 0 to count - 1.
+
+    Returns
+    -------
+    Array of shape (count, *x.shape).
+
+    Notes
+    -----
+    Integrating by parts with T' = xS and (x^2 + 4) x S' = -T gives
+
+    .. math::
+
+        i^2 J_i = x^{i-1}\\,[T + (i-1)(x^2 + 4) S] - 4 (i-1)^2 J_{i-2},
+
+    stable for x >= 1; below that the power series is integrated term by term.
+    """
+    moments = np.empty((count, *x.shape))
+    large = np.maximum(x, 1.0)
+    square = large * large
+    inverse_square = 1.0 / square
+    root = np.sqrt(square + 4.0)
+    kernel_term = (2.0 / pi) * root * ellipkm1(square / (square + 4.0)) / large
+    distance_term = (2.0 / pi) * root * ellipe(4.0 / (square + 4.0)) / large
+    moments[0] = chebyshev.chebval(
+        2.0 * inverse_square - 1.0, _zeroth_moment_coefficients()
+    ) + np.log(2.0 * large)
+    if count > 1:
+        moments[1] = distance_term - (4.0 / pi) / large
+    for i in range(2, count):
+        moments[i] = (
+            distance_term
+            + (i - 1) * kernel_term
+            - 4.0 * (i - 1) ** 2 * inverse_square * moments[i - 2]
+        ) / i**2
+    small = x < 1.0
+    if np.any(small):
+        moments[:, small] = _small_moments(x[small], count)
+    return moments
+
+
+def _small_moments(x: FloatArray, count: int) -> FloatArray:
+    alpha, beta = _series_coefficients()
+    logarithm = np.log(np.maximum(x, 1e-300))
+    square = x * x
+    moments = np.empty((count, *x.shape))
+    for i in range(count):
+        order = 2.0 * np.arange(_SERIES_TERMS) + i + 1.0
+        plain = polynomial.polyval(square, alpha / order - beta / order**2)
+        moments[i] = x * (plain + logarithm * polynomial.polyval(square, beta / order))
+    return moments
