@@ -9,19 +9,25 @@ from pydantic import Discriminator, Field, Tag, model_validator
 from service.contracts.quantities import Contract
 from service.contracts.refusals import rule_broken
 
-#: Ground classes common in the trade, with two limits; the engine holds their constants.
+#: Ground classes common in the trade, the curves of ITU-R P.527 at HF (``itu-…``), and the
+#: two limits; the engine holds their constants.
 GroundClass = Literal[
     "very-good",
     "good",
-    "marshy",
-    "medium-hills",
+    "pastoral-hills",
+    "marshy-wooded",
     "average",
-    "poor",
+    "rocky",
     "sandy",
-    "very-poor",
-    "extremely-poor",
+    "city",
+    "industrial",
     "fresh-water",
-    "sea-water",
+    "salt-water",
+    "itu-sea-water",
+    "itu-wet-ground",
+    "itu-fresh-water",
+    "itu-medium-dry-ground",
+    "itu-very-dry-ground",
     "perfect",
     "free-space",
 ]

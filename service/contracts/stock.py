@@ -15,7 +15,19 @@ MOST_CONDUCTORS: Final = 12
 RANGE_STEPS: Final = 5
 
 #: Conductor materials; the engine holds their conductivity and temperature coefficient.
-MaterialName = Literal["annealed-copper", "hard-drawn-copper"]
+MaterialName = Literal[
+    "annealed-copper",
+    "hard-drawn-copper",
+    "copper-clad-steel-30",
+    "copper-clad-steel-40",
+    "aluminium-1350-h19",
+    "aluminium-6061-t6",
+    "aluminium-6063-t5",
+    "aluminium-6063-t6",
+    "phosphor-bronze-c51000",
+    "phosphor-bronze-c50500",
+    "stainless-steel-304",
+]
 MATERIAL_NAMES: Final[tuple[str, ...]] = get_args(MaterialName)
 
 
