@@ -1,0 +1,274 @@
+"""Table of the reflected potentials along a horizontal wire, one per frequency, ground, height."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Final
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.errors import OutOfRange
+from worker.engine.ground.medium import Ground
+from worker.engine.ground.panels import Panels, resolve
+from worker.engine.ground.spectrum import Complex, Real
+
+LOWEST_HEIGHT_WAVELENGTHS: Final[float] = 0.01
+HIGHEST_HEIGHT_WAVELENGTHS: Final[float] = 100.0
+LONGEST_REACH_WAVELENGTHS: Final[float] = 12.0
+
+INTERPOLATION_TOLERANCE: Final[float] = 1e-6
+"""Panels are halved until their error estimate, relative to the image potential, is below this."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class GroundTable:
+    """Reflected potentials of a horizontal wire, by interpolation in the distance along it.
+
+    Made by :func:`tabulate`. Source and observer both lie at `height_m`.
+
+    Attributes
+    ----------
+    ground
+        The ground under the wire.
+    frequency_hz, height_m
+        Frequency in Hz and height of the wire in m.
+    reach_m
+        Largest tabulated distance in m.
+    interpolation_error
+        Estimated largest error of interpolation, relative to the image potential
+        ``1 / (4 pi R1)``, ``R1 = sqrt(rho**2 + 4 h**2)``.
+    quadrature_error
+        Error of the spectral quadrature in the same units, measured on the perfect image with the
+        same nodes.
+    samples
+        Distances at which the Sommerfeld integrals were evaluated.
+    evaluations
+        Bessel and Hankel functions evaluated for them.
+    """
+
+    ground: Ground
+    frequency_hz: float
+    height_m: float
+    reach_m: float
+    interpolation_error: float
+    quadrature_error: float
+    samples: int
+    evaluations: int
+    _edges_m: Real = field(repr=False)
+    _vector: Complex = field(repr=False)
+    _scalar: Complex = field(repr=False)
+
+    @property
+    def relative_error(self) -> float:
+        """Interpolation and quadrature error together, relative to the image potential."""
+        return self.interpolation_error + self.quadrature_error
+
+    def vector_potential(self, distance_m: ArrayLike) -> Complex:
+        """Reflected part g_A of the vector potential's Green's function.
+
+        Parameters
+        ----------
+        distance_m
+            Distances rho along the wire in m, any shape, 0 to `reach_m`.
+
+        Returns
+        -------
+        numpy.ndarray
+            g_A in 1/m, complex, of the same shape.
+
+        Raises
+        ------
+        OutOfRange
+            A distance is negative, beyond the reach, or not a number.
+        """
+        distance = self._checked(distance_m)
+        return self._image(distance) * self._interpolated(self._vector, distance)
+
+    def scalar_potential(self, distance_m: ArrayLike) -> Complex:
+        """Reflected part g_Phi of the scalar potential's Green's function.
+
+        Parameters
+        ----------
+        distance_m
+            Distances rho along the wire in m, any shape, 0 to `reach_m`.
+
+        Returns
+        -------
+        numpy.ndarray
+            g_Phi in 1/m, complex, of the same shape.
+
+        Raises
+        ------
+        OutOfRange
+            A distance is negative, beyond the reach, or not a number.
+        """
+        distance = self._checked(distance_m)
+        return self._image(distance) * self._interpolated(self._scalar, distance)
+
+    def _checked(self, distance_m: ArrayLike) -> Real:
+        distance = np.asarray(distance_m, dtype=np.float64)
+        # A reach computed twice may differ in the last place.
+        inside = (distance >= 0.0) & (distance <= self.reach_m * (1.0 + 1e-12))
+        if not inside.all():
+            raise OutOfRange("distance_m", float(distance[~inside].flat[0]), 0.0, self.reach_m, "m")
+        return distance
+
+    def _image(self, distance: Real) -> Complex:
+        image_m: Real = np.hypot(distance, 2.0 * self.height_m)
+        wavenumber = 2.0 * np.pi * self.frequency_hz / SPEED_OF_LIGHT_M_PER_S
+        wave = np.exp(np.asarray(-1j * wavenumber * image_m, dtype=np.complex128))
+        return wave / (4.0 * np.pi * image_m)
+
+    def _interpolated(self, coefficients: Complex, distance: Real) -> Complex:
+        edges = self._edges_m
+        panel = np.searchsorted(edges[1:-1], distance, side="right")
+        low, high = edges[panel], edges[panel + 1]
+        local = (2.0 * distance - low - high) / (high - low)
+        value: Complex = coefficients[0, panel]
+        for row in coefficients[1:]:
+            value = value * local + row[panel]
+        return value
+
+
+def tabulate(ground: Ground, frequency_hz: float, height_m: float, reach_m: float) -> GroundTable:
+    """Tabulate the reflected potentials for one frequency, ground and height.
+
+    Parameters
+    ----------
+    ground
+        The half space under the wire.
+    frequency_hz
+        Frequency in Hz, positive.
+    height_m
+        Height of the wire in m, 0.01 to 100 wavelengths.
+    reach_m
+        Largest distance along the wire in m, up to 12 wavelengths: the length of the longest wire.
+
+    Returns
+    -------
+    GroundTable
+        Usable for every wire of that height, whatever its radius, up to the reach in length.
+
+    Raises
+    ------
+    OutOfRange
+        An input lies outside its range.
+    NotConverged
+        A panel missed the tolerance after six halvings.
+
+    Notes
+    -----
+    With ``g0(R) = exp(-j k R) / (4 pi R)`` the field along a straight wire is::
+
+        E_x = -j omega mu0 int I(x') (g0 + g_A) dx' - d/dx (1 / eps0) int q(x') (g0 + g_Phi) dx'
+
+    with ``q = j / omega dI/dx'``. What is tabulated is g_A and g_Phi over the image potential
+    ``g0(R1)``, which leaves functions without the phase and the peak of the image. They are
+    interpolated by Chebyshev polynomials in panels that double away from the source, where the
+    length scale is the height, and are halved where the lateral wave makes them ripple. The error
+    estimate is the sum of the last two Chebyshev coefficients.
+
+    References
+    ----------
+    K. A. Michalski and J. R. Mosig, "Multilayered media Green's functions in integral equation
+    formulations", IEEE Trans. Antennas Propag. 45, 1997.
+    L. N. Trefethen, "Approximation Theory and Approximation Practice", 2013, ch. 3 and 8.
+    """
+    return tabulate_many(ground, [frequency_hz], [height_m], [reach_m])[0]
+
+
+def tabulate_many(
+    ground: Ground, frequency_hz: ArrayLike, height_m: ArrayLike, reach_m: ArrayLike
+) -> tuple[GroundTable, ...]:
+    """Tabulate the reflected potentials for many frequencies and heights over one ground.
+
+    Parameters
+    ----------
+    ground
+        The half space under the wires.
+    frequency_hz, height_m, reach_m
+        As for :func:`tabulate`; arrays that broadcast to shape (n,).
+
+    Returns
+    -------
+    tuple of GroundTable
+        n tables, in the order given.
+
+    Raises
+    ------
+    OutOfRange
+        An input lies outside its range.
+    NotConverged
+        A panel missed the tolerance after six halvings.
+
+    Notes
+    -----
+    The integrals of all tables are evaluated together; a table's own figures (error, cost) are its
+    own, except `quadrature_error`, which is the largest of the batch.
+    """
+    frequency, height, reach = (
+        np.atleast_1d(array)
+        for array in np.broadcast_arrays(
+            np.asarray(frequency_hz, dtype=np.float64),
+            np.asarray(height_m, dtype=np.float64),
+            np.asarray(reach_m, dtype=np.float64),
+        )
+    )
+    wavelength = _wavelengths(frequency, height, reach)
+    if ground.is_perfect:
+        resolved = [_image_panels(value) for value in (2.0 * np.pi * reach / wavelength).tolist()]
+    else:
+        eps = np.array([ground.complex_permittivity(value) for value in frequency.tolist()])
+        wavenumber = 2.0 * np.pi / wavelength
+        resolved = resolve(
+            eps, 2.0 * wavenumber * height, wavenumber * reach, INTERPOLATION_TOLERANCE
+        )
+    return tuple(
+        GroundTable(
+            ground=ground,
+            frequency_hz=float(frequency[index]),
+            height_m=float(height[index]),
+            reach_m=float(reach[index]),
+            interpolation_error=panels.interpolation_error,
+            quadrature_error=panels.quadrature_error,
+            samples=panels.samples,
+            evaluations=panels.evaluations,
+            _edges_m=panels.edges_rad * (wavelength[index] / (2.0 * np.pi)),
+            _vector=panels.vector,
+            _scalar=panels.scalar,
+        )
+        for index, panels in enumerate(resolved)
+    )
+
+
+def _wavelengths(frequency: Real, height: Real, reach: Real) -> Real:
+    """Free-space wavelengths in m, once every input has been found in range."""
+    wrong = ~((frequency > 0.0) & np.isfinite(frequency))
+    if wrong.any():
+        raise OutOfRange("frequency_hz", float(frequency[wrong][0]), 0.0, np.inf, "Hz")
+    wavelength: Real = SPEED_OF_LIGHT_M_PER_S / frequency
+    for quantity, value, low, high in (
+        (
+            "height_m",
+            height,
+            LOWEST_HEIGHT_WAVELENGTHS * wavelength,
+            HIGHEST_HEIGHT_WAVELENGTHS * wavelength,
+        ),
+        ("reach_m", reach, np.zeros_like(wavelength), LONGEST_REACH_WAVELENGTHS * wavelength),
+    ):
+        slack = 1.0 + 1e-9
+        wrong = ~((value * slack >= low) & (value <= high * slack) & (value > 0.0))
+        if wrong.any():
+            first = int(np.argmax(wrong))
+            raise OutOfRange(
+                quantity, float(value[first]), float(low[first]), float(high[first]), "m"
+            )
+    return wavelength
+
+
+def _image_panels(reach_rad: float) -> Panels:
+    """One panel on which both potentials are minus the image potential, exactly."""
+    constant = np.full((1, 1), -1.0 + 0.0j)
+    return Panels(np.array([0.0, reach_rad]), constant, constant, 0.0, 0.0, 0, 0)
