@@ -20,7 +20,12 @@ import numpy as np
 from numpy.polynomial import legendre
 from numpy.typing import NDArray
 
-from worker.engine.thin_wire.tube_kernel import scaled_moments, static_kernel
+from worker.engine.thin_wire.tube_kernel import (
+    scaled_moments,
+    scaled_width_moments,
+    static_kernel,
+    width_kernel,
+)
 
 FloatArray = NDArray[np.float64]
 
@@ -85,7 +90,11 @@ def reference_element(degree: int, points: int) -> ReferenceElement:
 
 
 def product_kernel(
-    element: ReferenceElement, target: FloatArray, half_length_over_radius: FloatArray
+    element: ReferenceElement,
+    target: FloatArray,
+    half_length_over_radius: FloatArray,
+    *,
+    width: bool = False,
 ) -> FloatArray:
     """Effective static kernel, in units of 1 / half length, at each Gauss point of the source.
 
@@ -96,19 +105,22 @@ def product_kernel(
     target
         Target point in the source's coordinate tau; moderate, about |tau| <= 3.
     half_length_over_radius
-        Source's half length over the wire radius; broadcasts with `target`.
+        Source's half length over the wire radius, of the target's shape.
+    width
+        Integrate `width_kernel` instead of the static kernel.
 
     Returns
     -------
     Array of shape (*target.shape, points): sum(weight * density * result) is the potential.
     """
     points = element.node.size
+    integrate = scaled_width_moments if width else scaled_moments
     moments = np.zeros((points, *target.shape))
     order = np.arange(points).reshape((points,) + (1,) * target.ndim)
     odd = order % 2 == 1
     for end, sign in ((1.0 - target, 1.0), (-1.0 - target, -1.0)):
         size = np.abs(end)
-        terms = scaled_moments(size * half_length_over_radius, points) * size**order
+        terms = integrate(size * half_length_over_radius, points) * size**order
         moments += sign * np.where(odd, terms, np.sign(end) * terms)
     powers = target**order
     i, m = element.taylor_index
@@ -117,8 +129,8 @@ def product_kernel(
 
 
 @cache
-def end_kernel(points: int) -> FloatArray:
-    """Effective static kernel, in units of 1 / radius, of the end element.
+def end_kernel(points: int, *, width: bool = False) -> FloatArray:
+    """Effective static (or width) kernel, in units of 1 / radius, of the end element.
 
     Returns
     -------
@@ -126,6 +138,7 @@ def end_kernel(points: int) -> FloatArray:
     end element, then those of the end element itself.
     """
     element = reference_element(2, points)
+    kernel_of = width_kernel if width else static_kernel
     root = (1.0 - element.node) / 2.0
     target = np.concatenate(
         [END_ELEMENT_RADII + NEXT_ELEMENT_RADII * root, END_ELEMENT_RADII * root**2]
@@ -147,8 +160,6 @@ def end_kernel(points: int) -> FloatArray:
             # s^2 - singular^2 written as a product keeps its digits near the singularity.
             gap = reach * unit * (s + singular) * END_ELEMENT_RADII
             gap += singular**2 * END_ELEMENT_RADII - distance
-            moments = (strength * static_kernel(gap)) @ legendre.legvander(
-                1.0 - 2.0 * s, points - 1
-            )
+            moments = (strength * kernel_of(gap)) @ legendre.legvander(1.0 - 2.0 * s, points - 1)
             kernel[row] += element.legendre_fit @ moments
     return kernel

@@ -19,7 +19,6 @@ from worker.engine.thin_wire.basis import (
     ReferenceElement,
     end_kernel,
     product_kernel,
-    reference_element,
 )
 from worker.engine.thin_wire.gap import smooth_source
 from worker.engine.thin_wire.reflection import ReflectedPotentials, reflected_matrices
@@ -31,6 +30,8 @@ ComplexArray = NDArray[np.complex128]
 # A target closer than this, in half lengths from the middle of the source element, goes by
 # product integration.
 _NEAR = 2.2
+# (ka)^2 below which the width of the kernel's dynamic part is left out.
+_NEGLIGIBLE_WIDTH = 1e-6
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,7 +51,7 @@ class Discretisation:
     @property
     def elements(self) -> int:
         """Number of elements on half a wire."""
-        return self.breaks_m.shape[1] - 1
+        return int(self.breaks_m.shape[1]) - 1
 
     def points(self) -> FloatArray:
         """Gauss points (B, elements * points), measured from the wire's centre."""
@@ -112,7 +113,7 @@ def solve_ports(
     """
     element = mesh.element
     z, jacobian = mesh.points(), mesh.jacobian()
-    direct, mirrored = _potential_kernels(mesh, z, jacobian)
+    direct, mirrored = _potential_kernels(mesh, z)
     value, slope = assembled_shapes(element, mesh.elements)
     weight = np.tile(element.weight, mesh.elements)
     charge = slope * weight[:, None]
@@ -136,14 +137,15 @@ def solve_ports(
         electric = _sandwich(test[None], direct - parity * mirrored)
         if reflected is not None:
             extra = reflected_matrices(reflected, z, moving, test, mesh.breaks_m[:, -1], parity)
-            magnetic = magnetic + extra[0]
-            electric = electric + extra[1]
-        matrix = (0.5j * FREE_SPACE_IMPEDANCE_OHM / pi) * (k * magnetic - electric / k)
+            magnetic += extra[0]
+            electric += extra[1]
+        scale = 0.5j * FREE_SPACE_IMPEDANCE_OHM / pi
+        matrix: ComplexArray = scale * (k * magnetic - electric / k)
         overlap = np.swapaxes(moving, 1, 2) @ value[:, kept]
         matrix = matrix + 2.0 * mesh.wire_impedance_ohm_per_m[:, None, None] * overlap
         matrix = 0.5 * (matrix + np.swapaxes(matrix, 1, 2))
         source = np.swapaxes(moving, 1, 2) @ (here + parity * there)
-        solution = np.linalg.solve(matrix, source)
+        solution: ComplexArray = np.linalg.solve(matrix, source).astype(complex, copy=False)
         admittance += np.swapaxes(source, 1, 2) @ solution
         coefficients[parity] = solution
         low = np.nonzero(order[kept] < element.degree)[0]
@@ -176,47 +178,54 @@ def _shape_orders(degree: int, elements: int) -> NDArray[np.intp]:
     return np.tile(np.concatenate([[1], np.arange(2, degree + 1)]), elements).astype(np.intp)
 
 
-def _sandwich(shapes: FloatArray, kernel: ComplexArray) -> ComplexArray:
-    transposed = np.swapaxes(shapes, 1, 2)
-    real = transposed @ kernel.real @ shapes
-    imaginary = transposed @ kernel.imag @ shapes
+def _sandwich(shapes: FloatArray, kernel: FloatArray) -> ComplexArray:
+    """Galerkin matrices (B, N, N) of a kernel whose real and imaginary parts are stacked."""
+    real, imaginary = np.swapaxes(shapes, 1, 2) @ kernel @ shapes
     result: ComplexArray = real + 1j * imaginary
     return result
 
 
-def _potential_kernels(
-    mesh: Discretisation, z: FloatArray, jacobian: FloatArray
-) -> tuple[ComplexArray, ComplexArray]:
-    """Averaged exp(-jkR)/R between Gauss points, and between Gauss points and mirror points.
+def _potential_kernels(mesh: Discretisation, z: FloatArray) -> tuple[FloatArray, FloatArray]:
+    r"""Averaged exp(-jkR)/R between Gauss points, and between Gauss points and mirror points.
+
+    Returns
+    -------
+    Two arrays of shape (2, B, Q, Q): real and imaginary parts stacked.
 
     Notes
     -----
-    :math:`\\langle e^{-jkR}/R \\rangle` is taken as :math:`\\cos(kR_2)\\langle 1/R \\rangle -
-    j \\sin(kR_2)/R_2` with :math:`R_2^2 = z^2 + 2a^2`, whose static factor is exact. What this
-    misses, :math:`-\\tfrac12 k^2 (\\langle 4a^2\\sin^2(\\phi/2)/R \\rangle - 2a^2 \\langle 1/R
-    \\rangle)`, is a peak as narrow as the radius with the integral :math:`(ka)^2`, and is added
-    as such.
+    :math:`\langle e^{-jkR}/R \rangle` is taken as :math:`\cos(kR_2)\langle 1/R \rangle -
+    j \sin(kR_2)/R_2` with :math:`R_2^2 = z^2 + 2a^2`, whose static factor is exact. What this
+    misses is :math:`-\tfrac12 k^2 \langle (4a^2\sin^2(\phi/2) - 2a^2)/R \rangle`, a peak as
+    narrow as the radius, added where (ka)^2 is not negligible, and terms in (ka)^4.
     """
     radius_squared = (mesh.radius_m**2)[:, None, None]
     k = mesh.wavenumber_per_m[:, None, None]
+    thick = bool(np.max(mesh.wavenumber_per_m * mesh.radius_m) ** 2 > _NEGLIGIBLE_WIDTH)
     kernels = []
-    for offset, near in (
-        (z[:, :, None] - z[:, None, :], _near_pairs(mesh.elements, mirrored=False)),
-        (z[:, :, None] + z[:, None, :], _near_pairs(mesh.elements, mirrored=True)),
-    ):
-        square = offset * offset
-        static = distant_kernel(square, radius_squared)
-        _put_near_kernel(static, mesh, z, near)
-        distance = np.sqrt(square + 2.0 * radius_squared)
+    for mirrored in (False, True):
+        other = z[:, None, :]
+        offset = z[:, :, None] + other if mirrored else z[:, :, None] - other
+        offset *= offset
+        offset += 2.0 * radius_squared
+        distance = np.sqrt(offset, out=offset)
+        kernel = np.empty((2, *distance.shape))
+        real, imaginary = kernel
+        static = distant_kernel(distance, radius_squared)
+        pairs = _near_pairs(mesh.elements, mirrored=mirrored)
+        _put_near_kernel(static, mesh, z, pairs)
         phase = k * distance
-        kernels.append(np.cos(phase) * static - 1j * (np.sin(phase) / distance))
-    direct, mirrored = kernels
-    points = mesh.element.node.size
-    inner = np.arange((mesh.elements - 1) * points)
-    weight = np.tile(mesh.element.weight, mesh.elements - 1)
-    peak = (mesh.wavenumber_per_m * mesh.radius_m)[:, None] ** 2
-    direct[:, inner, inner] += peak / (jacobian[:, inner] * weight)
-    return direct, mirrored
+        np.sin(phase, out=imaginary)
+        imaginary /= distance
+        np.negative(imaginary, out=imaginary)
+        np.cos(phase, out=real)
+        real *= static
+        if thick:
+            peak = np.zeros_like(static)
+            _put_near_kernel(peak, mesh, z, pairs, width=True)
+            real -= 0.5 * k * k * radius_squared * peak
+        kernels.append(kernel)
+    return kernels[0], kernels[1]
 
 
 @dataclass(frozen=True, slots=True)
@@ -241,9 +250,14 @@ def _near_pairs(elements: int, *, mirrored: bool) -> _Pairs:
 
 
 def _put_near_kernel(
-    static: FloatArray, mesh: Discretisation, z: FloatArray, pairs: _Pairs
+    static: FloatArray,
+    mesh: Discretisation,
+    z: FloatArray,
+    pairs: _Pairs,
+    *,
+    width: bool = False,
 ) -> None:
-    """Replace, in place, the static kernel between elements that lie close together."""
+    """Replace, in place, the static (or width) kernel between elements that lie close together."""
     element = mesh.element
     points = element.node.size
     blocks = static.reshape(len(z), mesh.elements, points, mesh.elements, points)
@@ -257,11 +271,12 @@ def _put_near_kernel(
         element,
         np.where(near, local, 0.0),
         np.broadcast_to(half / mesh.radius_m[:, None, None], local.shape),
+        width=width,
     )
     kernel = kernel / half[..., None]
     distant = np.moveaxis(blocks[:, pairs.target, :, pairs.source, :], 0, 1)
     replaced = np.where(near[..., None], kernel, distant)
     blocks[:, pairs.target, :, pairs.source, :] = np.moveaxis(replaced, 1, 0)
     if pairs.sign > 0.0:
-        end = end_kernel(points) / mesh.radius_m[:, None, None]
+        end = end_kernel(points, width=width) / mesh.radius_m[:, None, None]
         static[:, -2 * points :, -points:] = end

@@ -28,7 +28,7 @@ FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
 # The smooth source has vanishing moments below order 2 * FLATNESS.
-FLATNESS = 3
+FLATNESS = 4
 
 
 def smooth_source(distance_m: FloatArray, gap_m: FloatArray, sigma_m: FloatArray) -> FloatArray:
@@ -74,24 +74,24 @@ def sharp_admittance(
     sigma_m: FloatArray,
     wire_impedance_ohm_per_m: ComplexArray,
 ) -> ComplexArray:
-    """Admittance (S) that the sharp part of the source adds at the gap; all arrays of shape (B,).
+    r"""Admittance (S) that the sharp part of the source adds at the gap; all arrays of shape (B,).
 
     Notes
     -----
-    On the infinite tube, with :math:`\\gamma^2 = \\zeta^2 - k^2`, the current of the sharp part
+    On the infinite tube, with :math:`\gamma^2 = \zeta^2 - k^2`, the current of the sharp part
     averaged over the gap is
 
     .. math::
 
-        Y = \\frac{1}{\\pi} \\int_k^\\infty
-            \\frac{\\mathrm{sinc}^2(\\zeta g/2)\\,[1 - \\hat s^2(\\zeta\\sigma)]}
-                 {Z_w - j (\\eta / 2\\pi k)\\, \\gamma^2 I_0(\\gamma a) K_0(\\gamma a)}\\, d\\zeta.
+        Y = \frac{1}{\pi} \int_k^\infty
+            \frac{\mathrm{sinc}^2(\zeta g/2)\,[1 - \hat s^2(\zeta\sigma)]}
+                 {Z_w - j (\eta / 2\pi k)\, \gamma^2 I_0(\gamma a) K_0(\gamma a)}\, d\zeta.
 
     The part from 0 to k is left out: the bracket is below 1e-4 there. The large-argument form
-    :math:`2a^2/\\sqrt{(\\zeta a)^2 + 1/4}` of :math:`1/(\\gamma^2 I_0 K_0)` is integrated in
-    closed form by :math:`\\int_0^\\infty \\cos(\\zeta y)(\\zeta^2 + b^2)^{-1/2} d\\zeta = K_0(by)`.
+    :math:`2a^2/\sqrt{(\zeta a)^2 + 1/4}` of :math:`1/(\gamma^2 I_0 K_0)` is integrated in
+    closed form by :math:`\int_0^\infty \cos(\zeta y)(\zeta^2 + b^2)^{-1/2} d\zeta = K_0(by)`.
     """
-    spectrum = _tube_spectrum(wavenumber_per_m, radius_m, gap_m, sigma_m, wire_impedance_ohm_per_m)
+    spectrum = _tube_spectrum(wavenumber_per_m, radius_m, sigma_m, wire_impedance_ohm_per_m)
     sharp = _gap_spectrum(spectrum.wavenumber, gap_m) ** 2
     sharp *= 1.0 - _smooth_spectrum(spectrum.wavenumber * sigma_m[:, None]) ** 2
     smooth = _gap_spectrum(spectrum.static_wavenumber, gap_m) ** 2
@@ -121,9 +121,8 @@ def sharp_current(
     spectrum = _tube_spectrum(
         wavenumber_per_m * one,
         radius_m * one,
-        gap_m * one,
         sigma_m * one,
-        wire_impedance_ohm_per_m * one,
+        np.full(1, wire_impedance_ohm_per_m, dtype=np.complex128),
     )
     zeta, static_zeta = spectrum.wavenumber[0], spectrum.static_wavenumber[0]
     sharp = spectrum.weight[0] * np.sinc(zeta * gap_m / (2.0 * pi))
@@ -144,7 +143,6 @@ def sharp_current(
 def _tube_spectrum(
     k: FloatArray,
     radius: FloatArray,
-    gap: FloatArray,
     sigma: FloatArray,
     wire_impedance: ComplexArray,
 ) -> _TubeSpectrum:

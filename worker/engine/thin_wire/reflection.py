@@ -21,24 +21,24 @@ _SPACING_HEIGHTS = 0.7
 
 
 class ReflectedPotentials(Protocol):
-    """Reflected Green's functions between two points of one horizontal wire.
+    r"""Reflected Green's functions between two points of one horizontal wire.
 
     One object stands for one frequency and one height over one ground, and serves every length
     and radius of wire hung there.
 
     Notes
     -----
-    The mixed-potential equation, with :math:`g_0 = e^{-jkR}/(4\\pi R)` and time convention
-    :math:`e^{+j\\omega t}`, reads
+    The mixed-potential equation, with :math:`g_0 = e^{-jkR}/(4\pi R)` and time convention
+    :math:`e^{+j\omega t}`, reads
 
     .. math::
 
-        E_x = -j\\omega\\mu_0 \\int I (g_0 + g_A)\\,dx'
-              - \\frac{d}{dx} \\frac{1}{\\varepsilon_0} \\int q\\,(g_0 + g_\\Phi)\\,dx',
-        \\qquad q = -\\frac{1}{j\\omega} \\frac{dI}{dx'}.
+        E_x = -j\omega\mu_0 \int I (g_0 + g_A)\,dx'
+              - \frac{d}{dx} \frac{1}{\varepsilon_0} \int q\,(g_0 + g_\Phi)\,dx',
+        \qquad q = -\frac{1}{j\omega} \frac{dI}{dx'}.
 
-    Over a perfect conductor both functions are :math:`-e^{-jkR_1}/(4\\pi R_1)` with
-    :math:`R_1 = \\sqrt{\\rho^2 + (2h)^2}`.
+    Over a perfect conductor both functions are :math:`-e^{-jkR_1}/(4\pi R_1)` with
+    :math:`R_1 = \sqrt{\rho^2 + (2h)^2}`.
     """
 
     @property

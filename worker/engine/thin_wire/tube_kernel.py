@@ -3,10 +3,12 @@
     symbol   name here            meaning
     x        x                    axial distance over radius
     S(x)     static_kernel        <1 / sqrt(x^2 + 4 sin^2(phi/2))>, radius times <1/R>
+    T(x)     mean_distance        <sqrt(x^2 + 4 sin^2(phi/2))>, <R> over radius
+    W(x)     width_kernel         T - x^2 S - 2 S, what k^2 multiplies beside S; see `galerkin`
     J_i(x)   -                    integral of t^i S(t) from 0 to x
     j_i(x)   scaled_moments       J_i(x) / x^i, of order one for every x
 
-All three depend on nothing but x, so one set of expansions serves every wire.
+All depend on nothing but x, so one set of expansions serves every wire.
 
 References
 ----------
@@ -37,20 +39,45 @@ def static_kernel(x: FloatArray) -> FloatArray:
     return kernel
 
 
-def distant_kernel(distance_squared: FloatArray, radius_squared: FloatArray) -> FloatArray:
-    """Averaged inverse distance (1/m) between points at least about three radii apart.
+def mean_distance(x: FloatArray) -> FloatArray:
+    """Averaged distance over radius, (2/pi) sqrt(x^2 + 4) E(m)."""
+    square = x * x + 4.0
+    distance: FloatArray = (2.0 / pi) * np.sqrt(square) * ellipe(4.0 / square)
+    return distance
+
+
+def width_kernel(x: FloatArray) -> FloatArray:
+    """Averaged (4 sin^2(phi/2) - 2) / sqrt(x^2 + 4 sin^2(phi/2)), a peak of integral -2; x != 0."""
+    return mean_distance(x) - (x * x + 2.0) * static_kernel(x)
+
+
+def distant_kernel(distance_m: FloatArray, radius_squared: FloatArray) -> FloatArray:
+    r"""Averaged inverse distance (1/m) between points at least about three radii apart.
+
+    Parameters
+    ----------
+    distance_m
+        Root mean square distance, sqrt(z^2 + 2 a^2).
+    radius_squared
+        Square of the radius, broadcasting with it.
 
     Notes
     -----
     With :math:`u = z^2 + 2a^2` the mean of :math:`R^2`, the central moments of :math:`R^2` over
     the circumference are :math:`2a^4`, 0 and :math:`6a^8`, hence
-    :math:`u^{-1/2}[1 + 3/4\\,(a^2/u)^2 + 105/64\\,(a^2/u)^4]`; the remainder is below 1e-5 of the
+    :math:`u^{-1/2}[1 + 3/4\,(a^2/u)^2 + 105/64\,(a^2/u)^4]`; the remainder is below 1e-5 of the
     value from z = 3a on.
     """
-    mean_square = distance_squared + 2.0 * radius_squared
-    ratio = (radius_squared / mean_square) ** 2
-    kernel: FloatArray = (1.0 + ratio * (0.75 + 1.640625 * ratio)) / np.sqrt(mean_square)
-    return kernel
+    inverse = 1.0 / distance_m
+    ratio = inverse * inverse
+    ratio *= radius_squared
+    ratio *= ratio
+    series = 1.640625 * ratio
+    series += 0.75
+    series *= ratio
+    series += 1.0
+    series *= inverse
+    return series
 
 
 @cache
@@ -91,11 +118,12 @@ def _zeroth_moment_coefficients() -> FloatArray:
         return result
 
     # u = 1/x^2 has its nearest singularity at -1/4, so the error falls like 2.6^-n.
-    return np.asarray(chebyshev.chebinterpolate(lambda t: remainder((t + 1.0) / 2.0), 38))
+    point = chebyshev.chebpts1(39)
+    return np.asarray(chebyshev.chebfit(point, remainder((point + 1.0) / 2.0), 38), dtype=float)
 
 
 def scaled_moments(x: FloatArray, count: int) -> FloatArray:
-    """Moments J_i(x) / x^i of the static kernel.
+    r"""Moments J_i(x) / x^i of the static kernel.
 
     Parameters
     ----------
@@ -114,7 +142,7 @@ def scaled_moments(x: FloatArray, count: int) -> FloatArray:
 
     .. math::
 
-        i^2 J_i = x^{i-1}\\,[T + (i-1)(x^2 + 4) S] - 4 (i-1)^2 J_{i-2},
+        i^2 J_i = x^{i-1}\,[T + (i-1)(x^2 + 4) S] - 4 (i-1)^2 J_{i-2},
 
     stable for x >= 1; below that the power series is integrated term by term.
     """
@@ -122,9 +150,8 @@ def scaled_moments(x: FloatArray, count: int) -> FloatArray:
     large = np.maximum(x, 1.0)
     square = large * large
     inverse_square = 1.0 / square
-    root = np.sqrt(square + 4.0)
-    kernel_term = (2.0 / pi) * root * ellipkm1(square / (square + 4.0)) / large
-    distance_term = (2.0 / pi) * root * ellipe(4.0 / (square + 4.0)) / large
+    kernel_term = (square + 4.0) * static_kernel(large) / large
+    distance_term = mean_distance(large) / large
     moments[0] = chebyshev.chebval(
         2.0 * inverse_square - 1.0, _zeroth_moment_coefficients()
     ) + np.log(2.0 * large)
@@ -152,3 +179,19 @@ def _small_moments(x: FloatArray, count: int) -> FloatArray:
         plain = polynomial.polyval(square, alpha / order - beta / order**2)
         moments[i] = x * (plain + logarithm * polynomial.polyval(square, beta / order))
     return moments
+
+
+def scaled_width_moments(x: FloatArray, count: int) -> FloatArray:
+    """Moments of `width_kernel` over x^i, like `scaled_moments`.
+
+    Notes
+    -----
+    By parts, the integral of t^i (T - t^2 S) is (i+2) J_{i+2} + 4 (i+1) J_i - x^{i+1} (x^2+4) S.
+    """
+    moments = scaled_moments(x, count + 2)
+    order = np.arange(count).reshape((count,) + (1,) * x.ndim)
+    boundary = x * (x * x + 4.0) * static_kernel(x)
+    result: FloatArray = (
+        (order + 2.0) * x * x * moments[2:] + (4.0 * order + 2.0) * moments[:-2] - boundary
+    )
+    return result
