@@ -14,7 +14,7 @@ from worker.engine import ENGINE_VERSION
 from worker.search.appraisal import appraise
 from worker.search.scan import scan
 from worker.translation.outcome import candidate_of, feed_report_of
-from worker.translation.provenance import notes_on, provenance_of
+from worker.translation.provenance import ground_in_words, notes_on, provenance_of
 from worker.translation.wires import search_space
 
 #: Called with the part done, from 0 to 1, and the step in words.
@@ -41,9 +41,7 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
     """
     started_s = perf_counter()
     space = search_space(request)
-    found = scan(
-        space, request.candidates, lambda part, step: progress(_SCAN_PART * part, step)
-    )
+    found = scan(space, request.candidates, lambda part, step: progress(_SCAN_PART * part, step))
     candidates, reports = [], []
     solves = found.solves
     for index, pick in enumerate(found.picks):
@@ -52,12 +50,12 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
         appraisal = appraise(space, pick)
         solves += appraisal.solves
         candidates.append(candidate_of(request, appraisal, index + 1))
-        provenance = provenance_of(request, space, appraisal, found)
+        provenance = provenance_of(request, appraisal)
         reports.append(feed_report_of(request, appraisal, index + 1, provenance))
     progress(1.0, "done")
     result = DesignResult(
         engine_version=ENGINE_VERSION,
-        ground=reports[0].provenance.ground,
+        ground=ground_in_words(request),
         combinations=found.combinations,
         solves=solves,
         search_s=round(perf_counter() - started_s, 3),

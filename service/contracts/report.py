@@ -41,7 +41,12 @@ class ResonanceLine(Contract):
 
 
 class Provenance(Contract):
-    """How the figures were found and what they leave out."""
+    """How the figures were found and what they leave out.
+
+    ``largest_error_ohm`` is the solver's own estimate over the edges and centres of the
+    bands, which are solved directly; the grid and the sweep are read from a map that was
+    checked against fresh solutions and was off by ``map_error_percent`` of |Z| at most.
+    """
 
     engine_version: str
     model: str
@@ -49,6 +54,7 @@ class Provenance(Contract):
     ground: str
     conductor_loss: str
     largest_error_ohm: float
+    map_error_percent: float
     not_modelled: tuple[str, ...]
 
 

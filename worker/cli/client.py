@@ -58,7 +58,9 @@ class ServiceClient:
         headers = {"Content-Type": "application/json"}
         if key is not None:
             headers["Idempotency-Key"] = key
-        answer = self._call("POST", "/v1/designs", content=request.canonical_json(), headers=headers)
+        answer = self._call(
+            "POST", "/v1/designs", content=request.canonical_json(), headers=headers
+        )
         return self.design(answer["id"])
 
     def design(self, design_id: str) -> Design:

@@ -58,10 +58,12 @@ def show_report(console: Console, report: FeedReport) -> None:
     console.print(lines)
     found = report.provenance
     console.print(
-        f"R and X at the feed point; |Γ| and SWR behind the {formats.ratio(report.transformer_ratio)} "
-        f"transformer against {formats.ohms(report.reference_ohm)} Ω.\n"
+        f"R and X at the feed point; |Γ| and SWR behind the "
+        f"{formats.ratio(report.transformer_ratio)} transformer against "
+        f"{formats.ohms(report.reference_ohm)} Ω.\n"
         f"{found.model}; source gap {found.source_gap_mm:.3g} mm; {found.ground}; "
-        f"{found.conductor_loss}; error at most {found.largest_error_ohm:.2g} Ω.\n"
+        f"{found.conductor_loss}; estimated error {found.largest_error_ohm:.2g} Ω at most, "
+        f"{found.map_error_percent:.2g} % between solved points.\n"
         f"Not modelled: {'; '.join(found.not_modelled)}."
     )
     for caution in report.cautions:
@@ -74,7 +76,7 @@ def show_designs(console: Console, designs: Iterable[DesignSummary]) -> None:
     for title in ("id", "name", "bands", "state", "submitted (UTC)"):
         table.add_column(title, overflow="fold")
     for design in designs:
-        state = design.state
+        state: str = design.state
         if state == "running":
             state = f"running, {formats.share(design.progress.fraction)}"
         submitted = f"{design.created_at:%Y-%m-%d %H:%M}"
@@ -90,7 +92,9 @@ def show_band_lists(console: Console, lists: Iterable[BandList]) -> None:
             table.add_column(title, justify="left" if title in ("band", "edges from") else "right")
         for band in each.bands:
             obtained = "text read" if band.obtained == "read" else "memory, check"
-            table.add_row(band.name, formats.mhz(band.low_mhz), formats.mhz(band.high_mhz), obtained)
+            table.add_row(
+                band.name, formats.mhz(band.low_mhz), formats.mhz(band.high_mhz), obtained
+            )
         console.print(table)
         console.print(Text(f"{each.source}. National rules may allow less.", style="dim"))
 
@@ -133,7 +137,7 @@ def _ranking(result: DesignResult) -> Table:
         )
     table.caption = (
         "required: required bands served whole; width: part of all bands within the limit, "
-        "by weight; worst SWR: over the bands served"
+        "by weight; worst SWR: over the bands served whole"
     )
     return table
 
@@ -158,7 +162,7 @@ def _candidate(candidate: Candidate, report: FeedReport | None) -> RenderableTyp
 def _band_cells(each: BandOutcome) -> tuple[str, ...]:
     known = each.resonance_mhz is not None
     return (
-        each.name,
+        each.name if each.required else f"{each.name} (wished)",
         each.service,
         "–" if each.order is None else str(each.order),
         formats.mhz(each.resonance_mhz or 0.0) if known else "–",

@@ -21,6 +21,8 @@ from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace,
 
 #: Grid of the report within a band: odd, so that the centre is one of its points.
 GRID_POINTS: Final = 41
+#: A resonance within this part of a band's centre is the one the band is worked on.
+NEAR: Final = 0.10
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
 
@@ -43,17 +45,21 @@ class BandAppraisal:
     goal : BandGoal
     marks : Curve
         Low edge, centre and high edge, by direct solves.
+    error_ohm : float
+        Largest estimated error of those solves.
     grid : Curve
         Edge to edge, from the map over frequency.
     served_fraction : float
     nearest : Resonance or None
         The series resonance nearest to the band's centre.
     own_length_m : float or None
-        The length that would put that resonance on the centre, in m.
+        The length that would put that resonance on the centre, in m; None where it is too far
+        away for the band to be worked on it.
     """
 
     goal: BandGoal
     marks: Curve
+    error_ohm: float
     grid: Curve
     served_fraction: float
     nearest: Resonance | None
@@ -70,6 +76,11 @@ class Appraisal:
     sweep: Curve
     solves: int
     largest_miss: float
+
+
+def is_near(resonance: Resonance, goal: BandGoal) -> bool:
+    """Whether a resonance is near enough to a band for the band to be worked on it."""
+    return abs(resonance.frequency_hz / goal.centre_hz - 1.0) < NEAR
 
 
 def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
@@ -100,11 +111,11 @@ def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
 
 def _map_whole_range(space: SearchSpace, wire: WireModel, length_m: float) -> ImpedanceMap:
     """From below the wire's first resonance, or the lowest band, to above the highest."""
-    wavelength_hz = SPEED_OF_LIGHT_M_PER_S / length_m
-    lowest_hz = min(min(goal.low_hz for goal in space.bands), 0.42 * wavelength_hz)
-    highest_hz = max(max(goal.high_hz for goal in space.bands), 0.50 * wavelength_hz)
-    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * wavelength_hz)
-    high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * wavelength_hz)
+    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
+    lowest_hz = min(*(goal.low_hz for goal in space.bands), 0.42 * one_wave_hz)
+    highest_hz = max(*(goal.high_hz for goal in space.bands), 0.50 * one_wave_hz)
+    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
+    high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
     return map_over_frequency(wire, length_m, low_hz, high_hz)
 
 
@@ -117,16 +128,18 @@ def _appraise_band(
 ) -> BandAppraisal:
     wire = space.wires[pick.wire]
     marks_hz = np.array([goal.low_hz, goal.centre_hz, goal.high_hz])
-    marks = _curve(space, pick, marks_hz, wire.impedance_ohm(np.full(3, pick.length_m), marks_hz))
+    solved = wire.solve(np.full(3, pick.length_m), marks_hz)
+    marks = _curve(space, pick, marks_hz, solved.impedance_ohm)
     grid_hz = goal.grid_hz(GRID_POINTS)
     grid = _curve(space, pick, grid_hz, over_frequency.impedance_ohm(grid_hz))
     part = served_fraction(grid.swr[None, :, None], np.array(goal.swr_limit))[0, 0]
     nearest = nearest_series(resonances, goal.centre_hz)
     own_length_m = None
-    if nearest is not None:
+    if nearest is not None and is_near(nearest, goal):
         guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
         own_length_m = length_in_resonance_m(wire, guess_m, goal.centre_hz)
-    return BandAppraisal(goal, marks, grid, float(part), nearest, own_length_m)
+    error_ohm = float(solved.error_ohm.max())
+    return BandAppraisal(goal, marks, error_ohm, grid, float(part), nearest, own_length_m)
 
 
 def _curve(

@@ -30,10 +30,15 @@ from worker.search.space import ComplexArray, FloatArray, WireModel
 Curve = Callable[[FloatArray], ComplexArray]
 
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
-STRETCH_WAVELENGTHS: Final = 1.5
+STRETCH_WAVELENGTHS: Final = 2.0
 #: Direct solves the first interpolant of a stretch is built on, and the most it may take.
-FIRST_NODES: Final = 16
-MOST_NODES: Final = 128
+FIRST_NODES: Final = 15
+MOST_NODES: Final = 120
+#: Of the gaps between solves every third is checked, until a check fails.
+_CHECK_EVERY: Final = 3
+#: A band narrower than this part of its frequency is mapped at its edges alone, a wider one
+#: at its centre too.
+_NARROW_BAND: Final = 0.01
 #: Agreement asked of a map with fresh solves: the larger of the two.
 TOLERANCE_OHM: Final = 0.1
 TOLERANCE_RELATIVE: Final = 1e-3
@@ -81,6 +86,73 @@ class ImpedanceMap:
         return impedance
 
 
+@dataclass(frozen=True, slots=True)
+class BandMap:
+    """Feed impedance of one conductor over length, anywhere within a band.
+
+    At a fixed electrical length the impedance drifts only slowly with frequency, for it is
+    the radius and the height in wavelengths that change. A map over length at two or three
+    frequencies, read at equal electrical length and interpolated between them, therefore
+    serves the whole band.
+
+    Attributes
+    ----------
+    frequencies_hz : ndarray, shape (k,)
+    maps : tuple of ImpedanceMap, length k
+    """
+
+    frequencies_hz: FloatArray
+    maps: tuple[ImpedanceMap, ...]
+
+    def impedance_ohm(self, length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        """Impedance in Ω at p frequencies (Hz) of n lengths (m); shape (p, n)."""
+        electrical = frequency_hz[:, None] * length_m
+        impedance = np.zeros(electrical.shape, dtype=np.complex128)
+        for index, each in enumerate(self.maps):
+            weight = _lagrange_weight(self.frequencies_hz, index, frequency_hz)
+            at_m = np.clip(electrical / self.frequencies_hz[index], each.low, each.high)
+            impedance += weight[:, None] * each.impedance_ohm(at_m)
+        return impedance
+
+    @property
+    def solves(self) -> int:
+        """Direct solves spent on it."""
+        return sum(each.solves for each in self.maps)
+
+    @property
+    def largest_miss(self) -> float:
+        """Largest departure of its maps from fresh solves, relative to |Z|."""
+        return max(each.largest_miss for each in self.maps)
+
+
+def map_band(
+    wire: WireModel, low_hz: float, high_hz: float, low_m: float, high_m: float
+) -> BandMap:
+    """Map the feed impedance of one conductor over a band and a range of lengths.
+
+    Parameters
+    ----------
+    wire : WireModel
+    low_hz, high_hz : float
+        Edges of the band in Hz.
+    low_m, high_m : float
+        Limits of length in m.
+
+    Raises
+    ------
+    NotConverged
+        If a stretch still departs from fresh solves with the most nodes allowed.
+    """
+    count = 2 if high_hz < (1.0 + _NARROW_BAND) * low_hz else 3
+    frequencies_hz = np.linspace(low_hz, high_hz, count)
+    # Read at equal electrical length: the low edge is asked for longer wire, the high for shorter.
+    maps = tuple(
+        map_over_length(wire, float(f), low_m * low_hz / float(f), high_m * high_hz / float(f))
+        for f in frequencies_hz
+    )
+    return BandMap(frequencies_hz, maps)
+
+
 def map_over_length(
     wire: WireModel, frequency_hz: float, low_m: float, high_m: float
 ) -> ImpedanceMap:
@@ -101,7 +173,7 @@ def map_over_length(
     stretch_m = STRETCH_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / frequency_hz
 
     def solve(length_m: FloatArray) -> ComplexArray:
-        return wire.impedance_ohm(length_m, np.full(length_m.shape, frequency_hz))
+        return wire.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm
 
     return _map(solve, low_m, high_m, stretch_m)
 
@@ -126,7 +198,7 @@ def map_over_frequency(
     stretch_hz = STRETCH_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / length_m
 
     def solve(frequency_hz: FloatArray) -> ComplexArray:
-        return wire.impedance_ohm(np.full(frequency_hz.shape, length_m), frequency_hz)
+        return wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz).impedance_ohm
 
     return _map(solve, low_hz, high_hz, stretch_hz)
 
@@ -148,7 +220,8 @@ def _interpolate(solve: Curve, low: float, high: float) -> _Stretch:
     values = solve(nodes)
     while True:
         curve = _rational_through(nodes, values)
-        fresh = 0.5 * (nodes[:-1] + nodes[1:])
+        gaps = 0.5 * (nodes[:-1] + nodes[1:])
+        fresh = gaps[1::_CHECK_EVERY] if len(nodes) == FIRST_NODES else gaps
         solved = solve(fresh)
         miss, size = np.abs(curve(fresh) - solved), np.abs(solved)
         relative = float(np.max(miss / size))
@@ -161,6 +234,12 @@ def _interpolate(solve: Curve, low: float, high: float) -> _Stretch:
         order = np.argsort(np.concatenate([nodes, fresh]))
         nodes = np.concatenate([nodes, fresh])[order]
         values = np.concatenate([values, solved])[order]
+
+
+def _lagrange_weight(nodes: FloatArray, index: int, at: FloatArray) -> FloatArray:
+    others = np.delete(nodes, index)
+    factors = (at[:, None] - others) / (nodes[index] - others)
+    return np.asarray(np.prod(factors, axis=1))
 
 
 def _chebyshev_points(low: float, high: float, count: int) -> FloatArray:

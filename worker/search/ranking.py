@@ -32,16 +32,16 @@ class Pick:
     length_m: float
 
 
+#: For each band the order of resonance used, and the service: 2 whole, 1 in part, 0 none.
+Kind = tuple[tuple[int, int], ...]
+
+
 @dataclass(frozen=True, slots=True)
 class Contender:
-    """A local optimum: its sort key, what kind of wire it is, and the wire itself.
-
-    ``kind`` holds for each band the order of resonance used and whether it serves the band
-    whole (2), in part (1) or not at all (0).
-    """
+    """A local optimum: its sort key, what kind of wire it is, and the wire itself."""
 
     key: tuple[float, ...]
-    kind: tuple[tuple[int, int], ...]
+    kind: Kind
     pick: Pick
 
 
@@ -69,20 +69,28 @@ def nearest_odd_order(length_m: FloatArray, frequency_hz: float) -> NDArray[np.i
 
 
 def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Pick, ...]:
-    """The best contender of each kind, best first, at most so many.
+    """The best contenders that differ from each other, best first, at most so many.
 
-    Two wires are of one kind when they use the same order of resonance on every band and
-    serve the same bands whole, in part or not at all: neighbours of one optimum are one
-    kind, another conductor or ratio for the same duty too.
+    A contender adds nothing to a better one that uses the same order of resonance on every
+    band the contender serves, and serves each at least as well: neighbours of one optimum,
+    and the same duty with another conductor or a worse ratio, are left out.
     """
     useful = [each for each in contenders if any(service for _, service in each.kind)]
-    leaders: dict[tuple[tuple[int, int], ...], Pick] = {}
+    leaders: list[Contender] = []
     # Where no wire serves anything, the nearest miss is still an answer.
     for contender in sorted(useful or contenders, key=lambda each: each.key):
-        leaders.setdefault(contender.kind, contender.pick)
+        if not any(_adds_nothing(contender.kind, leader.kind) for leader in leaders):
+            leaders.append(contender)
         if len(leaders) == most:
             break
-    return tuple(leaders.values())
+    return tuple(leader.pick for leader in leaders)
+
+
+def _adds_nothing(kind: Kind, better: Kind) -> bool:
+    return all(
+        service == 0 or (order == better_order and service <= better_service)
+        for (order, service), (better_order, better_service) in zip(kind, better, strict=True)
+    )
 
 
 def contenders_of(

@@ -92,7 +92,7 @@ def length_in_resonance_m(wire: WireModel, near_m: float, frequency_hz: float) -
 
     def reactance(length_m: float) -> float:
         at: FloatArray = np.array([length_m])
-        return float(wire.impedance_ohm(at, np.array([frequency_hz]))[0].imag)
+        return float(wire.solve(at, np.array([frequency_hz])).impedance_ohm[0].imag)
 
     for margin in (0.01, 0.03, 0.08):
         low_m, high_m = near_m * (1.0 - margin), near_m * (1.0 + margin)

@@ -12,8 +12,7 @@ from typing import Final
 
 import numpy as np
 
-from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
-from worker.search.impedance_map import ImpedanceMap, map_over_length
+from worker.search.impedance_map import BandMap, map_band
 from worker.search.ranking import (
     Contender,
     Pick,
@@ -31,32 +30,22 @@ ProgressCallback = Callable[[float, str], None]
 #: Around a pick the map is read once more at this many finer lengths.
 FINE_POINTS: Final = 81
 
-#: Stands in for the impedance of a wire too long for the model: it serves no band.
-_OPEN_CIRCUIT_OHM: Final = 1e9
-
 
 @dataclass(frozen=True, slots=True)
-class BandMaps:
-    """Maps of one conductor: for each band, one map per frequency of its grid."""
+class WireMaps:
+    """Maps of one conductor, one for each band of a search space."""
 
-    maps: tuple[tuple[ImpedanceMap | None, ...], ...]
+    space: SearchSpace
+    maps: tuple[BandMap, ...]
 
     def impedance_ohm(self, length_m: FloatArray) -> ComplexArray:
         """Impedance in Ω over bands, grid frequencies and lengths; shape (b, p, n)."""
-        return np.array([[_read(each, length_m) for each in band_maps] for band_maps in self.maps])
-
-    @property
-    def solves(self) -> int:
-        """Direct solves spent on these maps."""
-        return sum(each.solves for each in self._built())
-
-    @property
-    def largest_miss(self) -> float:
-        """Largest departure of a map from fresh solves, relative to |Z|."""
-        return max((each.largest_miss for each in self._built()), default=0.0)
-
-    def _built(self) -> list[ImpedanceMap]:
-        return [each for band_maps in self.maps for each in band_maps if each is not None]
+        return np.array(
+            [
+                each.impedance_ohm(length_m, band.grid_hz())
+                for each, band in zip(self.maps, self.space.bands, strict=True)
+            ]
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,7 +83,7 @@ def scan(space: SearchSpace, most: int, progress: ProgressCallback) -> Scan:
     """
     lengths_m = space.lengths_m()
     contenders: list[Contender] = []
-    maps: list[BandMaps] = []
+    maps: list[WireMaps] = []
     for index, wire in enumerate(space.wires):
 
         def wire_progress(part: float, step: str, done: int = index) -> None:
@@ -111,8 +100,8 @@ def scan(space: SearchSpace, most: int, progress: ProgressCallback) -> Scan:
     return Scan(
         picks=tuple(_refine(space, maps[pick.wire], pick, lengths_m) for pick in picks),
         combinations=len(lengths_m) * len(space.wires) * len(space.ratios),
-        solves=sum(each.solves for each in maps),
-        largest_miss=max(each.largest_miss for each in maps),
+        solves=sum(each.solves for wire_maps in maps for each in wire_maps.maps),
+        largest_miss=max(each.largest_miss for wire_maps in maps for each in wire_maps.maps),
     )
 
 
@@ -123,33 +112,15 @@ def cutting_step_m(length_m: float) -> float:
 
 def _map_bands(
     space: SearchSpace, wire: WireModel, name: str, progress: ProgressCallback
-) -> BandMaps:
-    rows: list[tuple[ImpedanceMap | None, ...]] = []
+) -> WireMaps:
+    maps: list[BandMap] = []
     for index, band in enumerate(space.bands):
         progress(index / len(space.bands), f"mapping {name} on {band.name}")
-        rows.append(tuple(_map_one(space, wire, float(f)) for f in band.grid_hz()))
-    return BandMaps(tuple(rows))
+        maps.append(map_band(wire, band.low_hz, band.high_hz, space.shortest_m, space.longest_m))
+    return WireMaps(space, tuple(maps))
 
 
-def _map_one(space: SearchSpace, wire: WireModel, frequency_hz: float) -> ImpedanceMap | None:
-    """The map at one frequency, or None where even the shortest wire is too long for it."""
-    limit_m = wire.longest_wavelengths * SPEED_OF_LIGHT_M_PER_S / frequency_hz
-    high_m = min(space.longest_m, limit_m)
-    if high_m <= space.shortest_m:
-        return None
-
-    return map_over_length(wire, frequency_hz, space.shortest_m, high_m)
-
-
-def _read(length_map: ImpedanceMap | None, length_m: FloatArray) -> ComplexArray:
-    impedance = np.full(length_m.shape, _OPEN_CIRCUIT_OHM, dtype=np.complex128)
-    if length_map is not None:
-        inside = length_m <= length_map.high
-        impedance[inside] = length_map.impedance_ohm(length_m[inside])
-    return impedance
-
-
-def _refine(space: SearchSpace, maps: BandMaps, pick: Pick, lengths_m: FloatArray) -> Pick:
+def _refine(space: SearchSpace, maps: WireMaps, pick: Pick, lengths_m: FloatArray) -> Pick:
     """The best length that can be cut, between the neighbours of a pick."""
     index = int(np.searchsorted(lengths_m, pick.length_m))
     low_m = float(lengths_m[max(index - 1, 0)])

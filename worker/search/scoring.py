@@ -94,18 +94,16 @@ def merit(scored: Score, bands: tuple[BandGoal, ...]) -> Merit:
     """Gather the scores of all bands into what wires are ranked by.
 
     ``weighted_served`` is the mean served width by weight, from 0 to 1. ``swr_worst`` is
-    taken over the bands served at least in part, for an SWR of 40 on a band that cannot be
-    had says nothing of the others; where no band is, over all.
+    taken over the bands served whole, for an SWR of 40 on a band that cannot be had says
+    nothing of the others; where none is, it is the lowest of the worst.
     """
     required = np.array([band.required for band in bands])
     weights = np.array([band.weight for band in bands])
     whole = scored.served_fraction >= FULLY_SERVED
-    some = scored.served_fraction > 0.0
-    any_served = some.any(axis=0)
-    worst_of_served = np.max(np.where(some, scored.swr_worst, 1.0), axis=0)
-    worst_of_all = np.min(scored.swr_worst, axis=0)
+    worst_of_served = np.max(np.where(whole, scored.swr_worst, 1.0), axis=0)
+    least_of_all = np.min(scored.swr_worst, axis=0)
     return Merit(
         required_served=np.sum(whole & required[:, None], axis=0),
         weighted_served=weights @ scored.served_fraction / weights.sum(),
-        swr_worst=np.where(any_served, worst_of_served, worst_of_all),
+        swr_worst=np.where(whole.any(axis=0), worst_of_served, least_of_all),
     )

@@ -25,6 +25,14 @@ POINTS_PER_BAND: Final = 9
 SHORTEST_WAVELENGTHS: Final = 0.40
 
 
+@dataclass(frozen=True, slots=True)
+class Solved:
+    """Direct solutions: impedance at the feed point and its estimated error, both in Ω."""
+
+    impedance_ohm: ComplexArray
+    error_ohm: FloatArray
+
+
 class WireModel(Protocol):
     """A wire of one conductor as hung on the site, of any length, at any frequency."""
 
@@ -38,8 +46,8 @@ class WireModel(Protocol):
         """Length in wavelengths up to which the model holds."""
         ...
 
-    def impedance_ohm(self, length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
-        """Impedance at the feed point in Ω for every pair of length (m) and frequency (Hz)."""
+    def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
+        """Solve every pair of length (m) and frequency (Hz)."""
         ...
 
 
@@ -73,26 +81,36 @@ class SearchSpace:
     bands : tuple of BandGoal
     wires : tuple of WireModel
         One for each conductor on offer.
-    longest_m : float
+    site_longest_m : float
         The longest wire the site can take, in m.
     ratios : tuple of float
         Permitted impedance ratios of the transformer, antenna side to line side.
     reference_ohm : float
         Impedance the SWR is taken against, in Ω.
+    shortest_m, longest_m : float
+        Limits of the search in m: from below the first resonance on the highest band to the
+        longest wire that fits the site and, on the highest band, the models.
     """
 
     bands: tuple[BandGoal, ...]
     wires: tuple[WireModel, ...]
-    longest_m: float
+    site_longest_m: float
     ratios: tuple[float, ...]
     reference_ohm: float
     shortest_m: float = field(init=False)
+    longest_m: float = field(init=False)
 
     def __post_init__(self) -> None:
-        """Derive the shortest length worth looking at."""
-        top_hz = max(band.high_hz for band in self.bands)
-        shortest_m = SHORTEST_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / top_hz
-        object.__setattr__(self, "shortest_m", min(shortest_m, self.longest_m))
+        """Derive the limits of the search."""
+        top_wavelength_m = SPEED_OF_LIGHT_M_PER_S / max(band.high_hz for band in self.bands)
+        # Maps reach beyond the longest wire by the relative width of a band.
+        widest = max(band.high_hz / band.low_hz for band in self.bands)
+        modelled_m = top_wavelength_m * min(wire.longest_wavelengths for wire in self.wires)
+        longest_m = min(self.site_longest_m, modelled_m / widest)
+        object.__setattr__(self, "longest_m", longest_m)
+        object.__setattr__(
+            self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
+        )
 
     def lengths_m(self) -> FloatArray:
         """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""

@@ -27,7 +27,7 @@ def candidate_of(request: DesignRequest, appraisal: Appraisal, rank: int) -> Can
     outcomes = tuple(_band_outcome(band, appraisal) for band in appraisal.bands)
     weights = [band.weight for band in request.bands]
     shares = [weight * each.served_fraction for weight, each in zip(weights, outcomes, strict=True)]
-    helped = [each.swr_worst for each in outcomes if each.service != "unserved"]
+    whole = [each.swr_worst for each in outcomes if each.service == "served"]
     return Candidate(
         rank=rank,
         length_m=_rounded(appraisal.pick.length_m, 6),
@@ -38,7 +38,7 @@ def candidate_of(request: DesignRequest, appraisal: Appraisal, rank: int) -> Can
         required_served=sum(each.required and each.service == "served" for each in outcomes),
         required_total=sum(each.required for each in outcomes),
         weighted_served=_rounded(sum(shares) / sum(weights), 4),
-        swr_worst=max(helped) if helped else min(each.swr_worst for each in outcomes),
+        swr_worst=max(whole) if whole else min(each.swr_worst for each in outcomes),
         bands=outcomes,
         why=why_it_ranks(outcomes, appraisal),
         compromise=compromise(appraisal),

@@ -6,21 +6,26 @@ from typing import Final
 
 from service.contracts.candidate import BandOutcome
 from service.contracts.formats import listed, metres, mhz, ohms, ordinal, ratio, share, swr
-from worker.search.appraisal import Appraisal, BandAppraisal
+from worker.search.appraisal import NEAR, Appraisal, BandAppraisal, is_near
 from worker.search.resonances import Resonance
 
-#: A resonance within this part of a band's centre is the one the band is worked on.
-NEAR: Final = 0.10
-
 CAUTIONS: Final = (
-    ("Keep wire, supports and feed line well away from power lines: further than anything can "
-    "fall or swing."),
-    ("The ends and, off resonance, the feed point carry high radio-frequency voltage: out of "
-    "reach of people and animals, and off when anyone is near."),
-    ("People must stay outside the exposure distance of the limits in force where you are; this "
-    "report does not compute it."),
-    ("Disconnect and earth the feed line against lightning, and follow local codes for "
-    "protection and bonding."),
+    (
+        "Keep wire, supports and feed line well away from power lines: further than anything can "
+        "fall or swing."
+    ),
+    (
+        "The ends and, off resonance, the feed point carry high radio-frequency voltage: out of "
+        "reach of people and animals, and off when anyone is near."
+    ),
+    (
+        "People must stay outside the exposure distance of the limits in force where you are; this "
+        "report does not compute it."
+    ),
+    (
+        "Disconnect and earth the feed line against lightning, and follow local codes for "
+        "protection and bonding."
+    ),
     "Have masts, trees and tension judged by someone qualified; wire under tension can whip.",
     "Local codes and licensed practice come before anything written here.",
 )
@@ -80,9 +85,9 @@ def _antiresonance_near(
 def why_it_ranks(outcomes: tuple[BandOutcome, ...], appraisal: Appraisal) -> str:
     """One sentence: what the wire serves, on which resonances, at what worst SWR."""
     with_what = (
-        "fed directly"
+        "Fed directly"
         if appraisal.pick.ratio == 1.0
-        else f"through a {ratio(appraisal.pick.ratio)} transformer"
+        else f"Through a {ratio(appraisal.pick.ratio)} transformer"
     )
     whole = [_used(each) for each in outcomes if each.service == "served"]
     part = [
@@ -98,7 +103,7 @@ def why_it_ranks(outcomes: tuple[BandOutcome, ...], appraisal: Appraisal) -> str
         clauses.append(f"serves in part {listed(part)}")
     if missed:
         clauses.append(f"does not serve {listed(missed)}")
-    return f"{with_what}, it {listed(clauses)}.".capitalize()
+    return f"{with_what}, it {listed(clauses)}."
 
 
 def _used(outcome: BandOutcome) -> str:
@@ -121,8 +126,7 @@ def compromise(appraisal: Appraisal) -> str:
     sentences = [_orders_in_proportion(used, appraisal.resonances)]
     if len(own) > 1:
         sentences.append(
-            f"For resonance at its centre {listed(own)}; {metres(length_m)} m is the compromise "
-            "that keeps the SWR lowest where it is highest."
+            f"For resonance at its centre {listed(own)}; {metres(length_m)} m is the compromise."
         )
     else:
         sentences.append(
@@ -139,10 +143,7 @@ def compromise(appraisal: Appraisal) -> str:
 
 def is_used(band: BandAppraisal) -> bool:
     """Whether a band is worked on the resonance nearest to it."""
-    return (
-        band.nearest is not None
-        and abs(band.nearest.frequency_hz / band.goal.centre_hz - 1.0) < NEAR
-    )
+    return band.nearest is not None and is_near(band.nearest, band.goal)
 
 
 def _orders_in_proportion(used: list[BandAppraisal], resonances: tuple[Resonance, ...]) -> str:

@@ -1,0 +1,75 @@
+"""The order of wires and which of them are shown, on small invented sets."""
+
+import numpy as np
+
+from worker.search.ranking import (
+    Contender,
+    Pick,
+    best_first,
+    distinct_leaders,
+    nearest_odd_order,
+    rank_keys,
+)
+from worker.search.scoring import Merit
+
+
+def keys_of(required: list[int], width: list[float], worst: list[float]) -> list[int]:
+    merit = Merit(np.array(required), np.array(width), np.array(worst))
+    lengths_m = np.linspace(20.0, 21.0, len(required))
+    return best_first(rank_keys(merit, lengths_m)).tolist()
+
+
+def test_required_bands_outrank_everything_else() -> None:
+    assert keys_of([1, 2], [0.9, 0.6], [1.1, 1.9]) == [1, 0]
+
+
+def test_among_equals_the_larger_served_width_ranks_first() -> None:
+    assert keys_of([1, 1], [0.6, 0.9], [1.1, 1.9]) == [1, 0]
+
+
+def test_then_the_lower_worst_swr_ranks_first() -> None:
+    assert keys_of([1, 1], [0.9, 0.9], [1.9, 1.1]) == [1, 0]
+
+
+def test_then_the_shorter_wire_ranks_first() -> None:
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5]) == [0, 1]
+
+
+def test_a_difference_in_swr_too_small_to_build_does_not_decide() -> None:
+    assert keys_of([1, 1], [0.9, 0.9], [1.5001, 1.5]) == [0, 1]
+
+
+def test_orders_are_odd_and_change_at_whole_wavelengths() -> None:
+    # One half wave is 10 m at 14.99 MHz.
+    lengths_m = np.array([9.7, 19.9, 20.1, 29.6, 49.5])
+    assert nearest_odd_order(lengths_m, 14.9896229e6).tolist() == [1, 1, 3, 3, 5]
+
+
+def contender(place: float, kind: tuple[tuple[int, int], ...]) -> Contender:
+    return Contender((place,), kind, Pick(0, 1.0, place))
+
+
+def test_neighbours_of_one_optimum_are_shown_once() -> None:
+    picks = distinct_leaders([contender(2.0, ((1, 2),)), contender(1.0, ((1, 2),))], 5)
+    assert [pick.length_m for pick in picks] == [1.0]
+
+
+def test_a_wire_that_serves_a_band_on_another_order_is_shown_too() -> None:
+    picks = distinct_leaders([contender(1.0, ((1, 2),)), contender(2.0, ((3, 2),))], 5)
+    assert [pick.length_m for pick in picks] == [1.0, 2.0]
+
+
+def test_a_wire_that_serves_less_on_the_same_orders_adds_nothing() -> None:
+    better, worse = contender(1.0, ((1, 2), (3, 2))), contender(2.0, ((1, 2), (3, 1)))
+    assert len(distinct_leaders([better, worse], 5)) == 1
+
+
+def test_a_wire_that_serves_nothing_is_shown_only_when_none_serves() -> None:
+    idle = contender(2.0, ((0, 0),))
+    assert len(distinct_leaders([contender(1.0, ((1, 2),)), idle], 5)) == 1
+    assert len(distinct_leaders([idle], 5)) == 1
+
+
+def test_no_more_leaders_than_asked_for_are_shown() -> None:
+    several = [contender(float(n), ((n, 2),)) for n in (1, 3, 5, 7)]
+    assert len(distinct_leaders(several, 2)) == 2

@@ -1,0 +1,56 @@
+"""Scoring by SWR over bands, on curves whose served part is known by hand."""
+
+import numpy as np
+import pytest
+
+from worker.search.scoring import merit, score, served_fraction
+from worker.search.space import BandGoal
+
+
+def band(name: str = "b", *, required: bool = True, weight: float = 1.0) -> BandGoal:
+    return BandGoal(name, 7.0e6, 7.3e6, required, weight, 2.0)
+
+
+def test_a_band_within_its_limit_everywhere_is_served_whole() -> None:
+    swr = np.full((1, 5, 1), 1.5)
+    assert served_fraction(swr, np.array(2.0))[0, 0] == 1.0
+
+
+def test_a_band_above_its_limit_everywhere_is_not_served() -> None:
+    swr = np.full((1, 5, 1), 2.5)
+    assert served_fraction(swr, np.array(2.0))[0, 0] == 0.0
+
+
+def test_the_limit_is_crossed_where_the_straight_line_between_points_crosses_it() -> None:
+    # From 1 to 3 in one step the limit of 2 is met half way; the second step is all outside.
+    swr = np.array([1.0, 3.0, 3.0])[None, :, None]
+    assert served_fraction(swr, np.array(2.0))[0, 0] == pytest.approx(0.25)
+
+
+def test_touching_the_limit_at_a_point_still_counts_as_served() -> None:
+    swr = np.array([1.2, 2.0, 1.4])[None, :, None]
+    assert served_fraction(swr, np.array(2.0))[0, 0] == 1.0
+
+
+def test_only_required_bands_count_as_required_served() -> None:
+    bands = (band("a"), band("b", required=False))
+    gained = merit(score(np.full((2, 3, 1), 1.5), bands), bands)
+    assert gained.required_served[0] == 1
+
+
+def test_weights_share_out_the_served_width() -> None:
+    bands = (band("a", weight=3.0), band("b", weight=1.0))
+    swr = np.stack([np.full((3, 1), 1.5), np.full((3, 1), 9.0)])
+    assert merit(score(swr, bands), bands).weighted_served[0] == pytest.approx(0.75)
+
+
+def test_the_worst_swr_leaves_out_bands_that_are_not_served() -> None:
+    bands = (band("a"), band("b"))
+    swr = np.stack([np.full((3, 1), 1.5), np.full((3, 1), 40.0)])
+    assert merit(score(swr, bands), bands).swr_worst[0] == pytest.approx(1.5)
+
+
+def test_with_nothing_served_the_nearest_miss_counts() -> None:
+    bands = (band("a"), band("b"))
+    swr = np.stack([np.full((3, 1), 3.0), np.full((3, 1), 40.0)])
+    assert merit(score(swr, bands), bands).swr_worst[0] == pytest.approx(3.0)

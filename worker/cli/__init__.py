@@ -1,0 +1,1 @@
+"""The `spanwright` command: the one place where everything is put together."""

@@ -1,0 +1,279 @@
+"""The commands a planner types.
+
+Exit statuses: 0 done; 1 an unexpected fault; 2 the request or the command was refused;
+3 the design failed or was cancelled; 4 the service does not answer; 5 it took too long.
+"""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from enum import IntEnum
+from pathlib import Path
+from typing import Annotated, Final
+
+import typer
+from rich.console import Console
+from rich.progress import BarColumn, Progress, TaskID, TextColumn, TimeElapsedColumn
+
+from service.contracts.band_lists import BAND_LISTS
+from service.contracts.candidate import PlannedDesign
+from service.contracts.progress import Design, DesignSummary
+from service.contracts.report import FeedReport
+from service.contracts.request import DesignRequest, parse_request
+from service.errors import Fault, RequestRefused, SpanwrightError
+from worker.cli import tables
+from worker.cli.client import ServiceClient, ServiceUnreachable
+from worker.cli.standing import demo_request, serve_until_stopped, standing_service
+from worker.engine.errors import EngineError
+from worker.planning import plan as plan_request
+
+
+class ExitStatus(IntEnum):
+    """What the command tells the shell."""
+
+    DONE = 0
+    REFUSED = 2
+    FAILED = 3
+    UNREACHABLE = 4
+    TOO_LONG = 5
+
+
+app = typer.Typer(
+    name="spanwright",
+    help="Plan multiband and harmonic wire dipoles.",
+    epilog=(
+        "Exit status: 0 done, 2 refused, 3 the design failed, 4 the service does not answer, "
+        "5 it took too long."
+    ),
+    no_args_is_help=True,
+    pretty_exceptions_enable=False,
+)
+
+out: Final = Console()
+err: Final = Console(stderr=True)
+
+RequestFile = Annotated[
+    str, typer.Argument(metavar="FILE", help="Design request as JSON; - reads standard input.")
+]
+AsJson = Annotated[bool, typer.Option("--json", help="Print JSON for scripts, not tables.")]
+Address = Annotated[
+    str,
+    typer.Option("--service", envvar="SPANWRIGHT_SERVICE", help="Address of the service."),
+]
+DesignId = Annotated[str, typer.Argument(metavar="DESIGN", help="Identifier of a design.")]
+Rank = Annotated[
+    int | None,
+    typer.Option("--report", metavar="RANK", help="Show the feed-impedance report of this rank."),
+]
+Patience = Annotated[float, typer.Option("--patience", metavar="S", help="Wait at most so long.")]
+
+_HERE: Final = "http://127.0.0.1:8757"
+
+
+@app.command()
+def plan(file: RequestFile, report: Rank = None, as_json: AsJson = False) -> None:
+    """Plan a request here and now, without a service, and print the candidates."""
+    request = _read_request(file)
+    with _progress_bar() as show:
+        planned = plan_request(request, show)
+    if as_json:
+        _print_json(planned)
+        return
+    tables.show_result(out, planned.result, planned.reports)
+    if report is not None:
+        tables.show_report(out, _of_rank(planned.reports, report))
+
+
+@app.command()
+def submit(
+    file: RequestFile,
+    key: Annotated[
+        str | None,
+        typer.Option(help="Idempotency key: sending it again gives the same design."),
+    ] = None,
+    service: Address = _HERE,
+    as_json: AsJson = False,
+) -> None:
+    """Submit a request to a running service and print the design's identifier."""
+    request = _read_request(file)
+    with ServiceClient(service) as client:
+        design = client.submit(request, key)
+    if as_json:
+        out.print_json(design.model_dump_json(include={"id", "name", "state"}))
+    else:
+        out.print(design.id)
+
+
+@app.command()
+def wait(
+    design: DesignId,
+    service: Address = _HERE,
+    patience_s: Patience = 600.0,
+    as_json: AsJson = False,
+) -> None:
+    """Wait until a design has ended, showing how far it is, then show it."""
+    with ServiceClient(service) as client:
+        ended = _waited(client, design, patience_s)
+        _show_ended(client, ended, None, as_json=as_json)
+
+
+@app.command()
+def show(
+    design: DesignId, report: Rank = None, service: Address = _HERE, as_json: AsJson = False
+) -> None:
+    """Show a stored design: its candidates, or one candidate's feed-impedance report."""
+    with ServiceClient(service) as client:
+        _show_ended(client, client.design(design), report, as_json=as_json)
+
+
+@app.command("list")
+def list_designs(
+    most: Annotated[int, typer.Option(min=1, max=100, help="How many.")] = 20,
+    service: Address = _HERE,
+    as_json: AsJson = False,
+) -> None:
+    """List stored designs, newest first."""
+    with ServiceClient(service) as client:
+        designs = client.designs(most)
+    if as_json:
+        for each in designs:
+            out.print_json(each.model_dump_json(include=set(DesignSummary.model_fields)))
+    else:
+        tables.show_designs(out, designs)
+
+
+@app.command()
+def bands(
+    name: Annotated[str | None, typer.Argument(help="One list; all without it.")] = None,
+) -> None:
+    """Show the ready-made band lists by ITU Region."""
+    if name is not None and name not in BAND_LISTS:
+        fault = Fault(
+            "name",
+            name,
+            "there is no band list of this name.",
+            "Choose one of " + ", ".join(BAND_LISTS) + ".",
+            "band-list-unknown",
+        )
+        raise RequestRefused([fault])
+    tables.show_band_lists(out, BAND_LISTS.values() if name is None else [BAND_LISTS[name]])
+
+
+@app.command()
+def serve() -> None:
+    """Run the API, the pages and the workers on this machine until stopped."""
+    serve_until_stopped(
+        lambda address: err.print(f"Spanwright serves at {address} (Ctrl-C stops).")
+    )
+
+
+@app.command()
+def demo() -> None:
+    """Start a service here, submit the demonstration station, and show what comes back."""
+    with standing_service() as address, ServiceClient(address) as client:
+        err.print(f"A service stands at {address}; submitting the demonstration station.")
+        request = demo_request()
+        design = client.submit(request, key=f"demo-{request.content_hash()[:32]}")
+        ended = _waited(client, design.id, patience_s=600.0)
+        _show_ended(client, ended, None, as_json=False)
+    err.print(
+        "The design is stored. See it as a page: run 'spanwright serve' and open its address."
+    )
+
+
+def main() -> None:
+    """Run the command; refusals are printed with their remedies, not as tracebacks."""
+    try:
+        app()
+    except ServiceUnreachable as error:
+        _end(error, ExitStatus.UNREACHABLE)
+    except RequestRefused as error:
+        _end(error, ExitStatus.REFUSED)
+    except SpanwrightError as error:
+        _end(error, ExitStatus.FAILED)
+    except EngineError as error:
+        err.print(f"The planning failed: {error}.", markup=False)
+        sys.exit(ExitStatus.FAILED)
+    except TimeoutError as error:
+        err.print(f"It took too long: {error}. It goes on; wait for it again.", markup=False)
+        sys.exit(ExitStatus.TOO_LONG)
+
+
+def _end(error: SpanwrightError, status: ExitStatus) -> None:
+    tables.show_error(err, error)
+    sys.exit(status)
+
+
+def _read_request(file: str) -> DesignRequest:
+    try:
+        text = sys.stdin.read() if file == "-" else Path(file).read_text(encoding="utf-8")
+    except (OSError, UnicodeDecodeError) as error:
+        fault = Fault(
+            "FILE",
+            file,
+            f"it cannot be read: {getattr(error, 'strerror', None) or error}.",
+            "Name a design request as a UTF-8 JSON file.",
+            "file-unreadable",
+        )
+        raise RequestRefused([fault]) from error
+    return parse_request(text)
+
+
+def _waited(client: ServiceClient, design_id: str, patience_s: float) -> Design:
+    with _progress_bar() as show:
+        return client.wait(design_id, lambda now: show(now.fraction, now.step), patience_s)
+
+
+def _show_ended(
+    client: ServiceClient, design: Design, report: int | None, *, as_json: bool
+) -> None:
+    if design.result is None and design.state in ("failed", "cancelled"):
+        raise SpanwrightError(f"Design {design.id} {design.state}: {design.failure or 'no result'}")
+    if report is not None:
+        chosen = client.report(design.id, report)
+        if as_json:
+            _print_json(chosen)
+        else:
+            tables.show_report(out, chosen)
+    elif as_json:
+        _print_json(design)
+    elif design.result is None:
+        tables.show_designs(out, [design])
+    else:
+        ranks = [each.rank for each in design.result.candidates]
+        reports = [client.report(design.id, rank) for rank in ranks]
+        out.print(f"{design.name}  ({design.id})", markup=False, highlight=False)
+        tables.show_result(out, design.result, reports)
+
+
+def _of_rank(reports: tuple[FeedReport, ...], rank: int) -> FeedReport:
+    if not 1 <= rank <= len(reports):
+        fault = Fault(
+            "--report",
+            str(rank),
+            f"there are {len(reports)} candidate(s).",
+            f"Ask for a rank from 1 to {len(reports)}.",
+            "candidate-not-found",
+        )
+        raise RequestRefused([fault])
+    return reports[rank - 1]
+
+
+def _print_json(value: PlannedDesign | Design | FeedReport) -> None:
+    # Plain, not through the console: a script must get every digit and no line breaks.
+    sys.stdout.write(value.model_dump_json(indent=2) + "\n")
+
+
+@contextmanager
+def _progress_bar() -> Iterator[Callable[[float, str], None]]:
+    """A progress bar on standard error, so that standard output stays clean."""
+    columns = (TextColumn("{task.description}"), BarColumn(), TimeElapsedColumn())
+    with Progress(*columns, console=err, transient=True) as bar:
+        task: TaskID = bar.add_task("planning", total=1.0)
+
+        def show(fraction: float, step: str) -> None:
+            bar.update(task, completed=fraction, description=step or "waiting for a worker")
+
+        yield show

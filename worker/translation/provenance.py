@@ -1,0 +1,57 @@
+"""How a result was found, for the report: model, ground, errors, and what is left out."""
+
+from __future__ import annotations
+
+from service.contracts.formats import metres
+from service.contracts.report import Provenance
+from service.contracts.request import DesignRequest
+from worker.engine import ENGINE_VERSION
+from worker.engine.thin_wire import MODEL
+from worker.search.appraisal import Appraisal
+from worker.search.space import SearchSpace
+from worker.translation.wires import ground_of
+from worker.translation.wording import NOT_MODELLED
+
+
+def provenance_of(request: DesignRequest, appraisal: Appraisal) -> Provenance:
+    """The provenance of one candidate's report."""
+    conductor = request.stock.choices()[appraisal.pick.wire]
+    insulated = "bare" if conductor.insulation is None else "insulated"
+    return Provenance(
+        engine_version=ENGINE_VERSION,
+        model=MODEL,
+        source_gap_mm=0.5 * conductor.bare_diameter_mm,
+        ground=ground_in_words(request),
+        conductor_loss=f"{insulated} {conductor.material.replace('-', ' ')} at 20 °C",
+        largest_error_ohm=max(band.error_ohm for band in appraisal.bands),
+        map_error_percent=100.0 * appraisal.largest_miss,
+        not_modelled=NOT_MODELLED,
+    )
+
+
+def ground_in_words(request: DesignRequest) -> str:
+    """The ground and the height over it, as a report names them."""
+    ground = ground_of(request.site)
+    if ground is None or request.site.height_m is None:
+        return "free space"
+    height = f"{metres(request.site.height_m)} m over"
+    if ground.is_perfect:
+        return f"{height} perfect ground"
+    return (
+        f"{height} ground {ground.name}: relative permittivity "
+        f"{ground.relative_permittivity:g}, conductivity {ground.conductivity_s_per_m:g} S/m"
+    )
+
+
+def notes_on(request: DesignRequest, space: SearchSpace) -> tuple[str, ...]:
+    """What a planner should know of the search as a whole."""
+    notes: list[str] = []
+    if space.longest_m < space.site_longest_m:
+        top = max(request.bands, key=lambda band: band.high_mhz)
+        notes.append(
+            f"Wires longer than {metres(space.longest_m)} m were not searched: on {top.name} they "
+            "are longer than the model covers. Leave that band out to search them."
+        )
+    if request.feed.feed_line is not None:
+        notes.append("The loss and the transformation of the feed line are not in these figures.")
+    return tuple(notes)
