@@ -114,7 +114,7 @@ def standing_wave_ratio(impedance_ohm: ArrayLike, reference_ohm: ArrayLike) -> N
     load, line = impedance / scale, reference / scale
     incident_plus_reflected = np.abs(load + line) + np.abs(load - line)
     four_power = 4.0 * (load * np.conj(line)).real
-    smallest = incident_plus_reflected**2 / LARGEST_STANDING_WAVE_RATIO
+    smallest = incident_plus_reflected**2 / (2.0 * LARGEST_STANDING_WAVE_RATIO)
     ratio = incident_plus_reflected**2 / np.maximum(four_power, smallest)
     # Rounding may leave a matched load a few units in the last place below one.
-    return np.asarray(np.maximum(ratio, 1.0), dtype=np.float64).reshape(coefficient.shape)
+    return np.clip(ratio, 1.0, LARGEST_STANDING_WAVE_RATIO).reshape(coefficient.shape)
