@@ -2,6 +2,7 @@
 
 from worker.engine.ground.medium import GROUND_CLASSES, PERFECT_GROUND, Ground
 from worker.engine.ground.table import GroundTable, tabulate, tabulate_many
+from worker.engine.ground.water import water
 
 __all__ = [
     "GROUND_CLASSES",
@@ -10,4 +11,5 @@ __all__ = [
     "GroundTable",
     "tabulate",
     "tabulate_many",
+    "water",
 ]

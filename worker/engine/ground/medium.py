@@ -9,6 +9,7 @@ from typing import Final
 
 from worker.engine.constants import VACUUM_PERMITTIVITY_F_PER_M
 from worker.engine.errors import OutOfRange
+from worker.engine.limits import require_within
 
 LARGEST_RELATIVE_PERMITTIVITY: Final[float] = 1e3
 """Far above water (88 at freezing point), below anything that overflows."""
@@ -41,17 +42,10 @@ class Ground:
     source: str = "given by the user"
 
     def __post_init__(self) -> None:
-        if not 1.0 <= self.relative_permittivity <= LARGEST_RELATIVE_PERMITTIVITY:
-            raise OutOfRange(
-                "relative_permittivity",
-                self.relative_permittivity,
-                1.0,
-                LARGEST_RELATIVE_PERMITTIVITY,
-            )
-        if not self.conductivity_s_per_m >= 0.0:
-            raise OutOfRange(
-                "conductivity_s_per_m", self.conductivity_s_per_m, 0.0, float("inf"), "S/m"
-            )
+        require_within(
+            "relative_permittivity", self.relative_permittivity, 1.0, LARGEST_RELATIVE_PERMITTIVITY
+        )
+        require_within("conductivity_s_per_m", self.conductivity_s_per_m, 0.0, float("inf"), "S/m")
 
     @property
     def is_perfect(self) -> bool:
@@ -93,9 +87,7 @@ PERFECT_GROUND: Final[Ground] = Ground(
 )
 
 _TRADE: Final[str] = "common practice (ground classes of the trade)"
-_P527: Final[str] = (
-    "ITU-R P.527-3 (1992), Fig. 1, low-frequency end; figures recalled, not read off the figure"
-)
+_P527: Final[str] = "ITU-R P.527-3 (1992), Fig. 1, level part below 30 MHz; figures from memory"
 
 GROUND_CLASSES: Final[MappingProxyType[str, Ground]] = MappingProxyType(
     {
@@ -123,7 +115,8 @@ GROUND_CLASSES: Final[MappingProxyType[str, Ground]] = MappingProxyType(
 )
 """Named grounds: the trade's classes, the Recommendation's curves at HF, and perfect ground.
 
-The Recommendation's curves are level below about 30 MHz (conductivity) and 1 GHz (permittivity),
-so one pair of constants serves all of HF. The trade gives 12 to 14 for the permittivity of rocky
+The Recommendation draws both constants of soil as level up to about 30 MHz (permittivity up to
+about 1 GHz), so one pair serves all of HF; for water by temperature and salinity see
+:func:`worker.engine.ground.water.water`. The trade gives 12 to 14 for the permittivity of rocky
 ground; the middle is used.
 """

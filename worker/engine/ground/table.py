@@ -13,10 +13,16 @@ from worker.engine.errors import OutOfRange
 from worker.engine.ground.medium import Ground
 from worker.engine.ground.panels import Panels, resolve
 from worker.engine.ground.spectrum import Complex, Real
+from worker.engine.limits import require_within
 
+LOWEST_FREQUENCY_HZ: Final[float] = 1e3
+HIGHEST_FREQUENCY_HZ: Final[float] = 1e12
 LOWEST_HEIGHT_WAVELENGTHS: Final[float] = 0.01
 HIGHEST_HEIGHT_WAVELENGTHS: Final[float] = 100.0
 LONGEST_REACH_WAVELENGTHS: Final[float] = 12.0
+
+_MARGIN_WAVELENGTHS: Final[float] = 0.5
+_MARGIN_HEIGHTS: Final[float] = 6.0
 
 INTERPOLATION_TOLERANCE: Final[float] = 1e-6
 """Panels are halved until their error estimate, relative to the image potential, is below this."""
@@ -35,7 +41,9 @@ class GroundTable:
     frequency_hz, height_m
         Frequency in Hz and height of the wire in m.
     reach_m
-        Largest tabulated distance in m.
+        Length in m of the longest wire the table serves. Distances a little beyond it (half a
+        wavelength, or six heights if that is less) may be asked for, as interpolation between
+        samples along the wire does.
     interpolation_error
         Estimated largest error of interpolation, relative to the image potential
         ``1 / (4 pi R1)``, ``R1 = sqrt(rho**2 + 4 h**2)``.
@@ -71,7 +79,7 @@ class GroundTable:
         Parameters
         ----------
         distance_m
-            Distances rho along the wire in m, any shape, 0 to `reach_m`.
+            Distances rho along the wire in m, any shape, 0 to a little beyond `reach_m`.
 
         Returns
         -------
@@ -92,7 +100,7 @@ class GroundTable:
         Parameters
         ----------
         distance_m
-            Distances rho along the wire in m, any shape, 0 to `reach_m`.
+            Distances rho along the wire in m, any shape, 0 to a little beyond `reach_m`.
 
         Returns
         -------
@@ -108,18 +116,13 @@ class GroundTable:
         return self._image(distance) * self._interpolated(self._scalar, distance)
 
     def _checked(self, distance_m: ArrayLike) -> Real:
-        distance = np.asarray(distance_m, dtype=np.float64)
-        # A reach computed twice may differ in the last place.
-        inside = (distance >= 0.0) & (distance <= self.reach_m * (1.0 + 1e-12))
-        if not inside.all():
-            raise OutOfRange("distance_m", float(distance[~inside].flat[0]), 0.0, self.reach_m, "m")
-        return distance
+        return require_within("distance_m", distance_m, 0.0, float(self._edges_m[-1]), "m")
 
     def _image(self, distance: Real) -> Complex:
         image_m: Real = np.hypot(distance, 2.0 * self.height_m)
         wavenumber = 2.0 * np.pi * self.frequency_hz / SPEED_OF_LIGHT_M_PER_S
-        wave = np.exp(np.asarray(-1j * wavenumber * image_m, dtype=np.complex128))
-        return wave / (4.0 * np.pi * image_m)
+        phase = np.asarray(-1j * wavenumber * image_m, dtype=np.complex128)
+        return np.asarray(np.exp(phase) / (4.0 * np.pi * image_m), dtype=np.complex128)
 
     def _interpolated(self, coefficients: Complex, distance: Real) -> Complex:
         edges = self._edges_m
@@ -217,14 +220,14 @@ def tabulate_many(
         )
     )
     wavelength = _wavelengths(frequency, height, reach)
+    margin = np.minimum(_MARGIN_WAVELENGTHS * wavelength, _MARGIN_HEIGHTS * height)
+    wavenumber = 2.0 * np.pi / wavelength
+    reach_rad = wavenumber * (reach + margin)
     if ground.is_perfect:
-        resolved = [_image_panels(value) for value in (2.0 * np.pi * reach / wavelength).tolist()]
+        resolved = [_image_panels(value) for value in reach_rad.tolist()]
     else:
         eps = np.array([ground.complex_permittivity(value) for value in frequency.tolist()])
-        wavenumber = 2.0 * np.pi / wavelength
-        resolved = resolve(
-            eps, 2.0 * wavenumber * height, wavenumber * reach, INTERPOLATION_TOLERANCE
-        )
+        resolved = resolve(eps, 2.0 * wavenumber * height, reach_rad, INTERPOLATION_TOLERANCE)
     return tuple(
         GroundTable(
             ground=ground,
@@ -235,7 +238,7 @@ def tabulate_many(
             quadrature_error=panels.quadrature_error,
             samples=panels.samples,
             evaluations=panels.evaluations,
-            _edges_m=panels.edges_rad * (wavelength[index] / (2.0 * np.pi)),
+            _edges_m=panels.edges_rad / wavenumber[index],
             _vector=panels.vector,
             _scalar=panels.scalar,
         )
@@ -245,9 +248,7 @@ def tabulate_many(
 
 def _wavelengths(frequency: Real, height: Real, reach: Real) -> Real:
     """Free-space wavelengths in m, once every input has been found in range."""
-    wrong = ~((frequency > 0.0) & np.isfinite(frequency))
-    if wrong.any():
-        raise OutOfRange("frequency_hz", float(frequency[wrong][0]), 0.0, np.inf, "Hz")
+    require_within("frequency_hz", frequency, LOWEST_FREQUENCY_HZ, HIGHEST_FREQUENCY_HZ, "Hz")
     wavelength: Real = SPEED_OF_LIGHT_M_PER_S / frequency
     for quantity, value, low, high in (
         (

@@ -1,0 +1,42 @@
+"""Far field of a horizontal wire: intensity, gain, lobes and the power radiated."""
+
+from worker.engine.field.current import RadiatingWire, RadiationVector
+from worker.engine.field.intensity import (
+    RadiatedPower,
+    far_field,
+    fresnel,
+    radiated_power,
+    radiation_intensity,
+)
+from worker.engine.field.pattern import (
+    Cut,
+    Lobe,
+    Pattern,
+    PowerBudget,
+    azimuth_cut,
+    elevation_cut,
+    gain_dbi,
+    lobes,
+    pattern,
+    power_budget,
+)
+
+__all__ = [
+    "Cut",
+    "Lobe",
+    "Pattern",
+    "PowerBudget",
+    "RadiatedPower",
+    "RadiatingWire",
+    "RadiationVector",
+    "azimuth_cut",
+    "elevation_cut",
+    "far_field",
+    "fresnel",
+    "gain_dbi",
+    "lobes",
+    "pattern",
+    "power_budget",
+    "radiated_power",
+    "radiation_intensity",
+]
