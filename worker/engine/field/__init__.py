@@ -1,6 +1,14 @@
 """Far field of a horizontal wire: intensity, gain, lobes and the power radiated."""
 
 from worker.engine.field.current import RadiatingWire, RadiationVector
+from worker.engine.field.gain import (
+    Cut,
+    PowerBudget,
+    azimuth_cut,
+    elevation_cut,
+    gain_dbi,
+    power_budget,
+)
 from worker.engine.field.intensity import (
     RadiatedPower,
     far_field,
@@ -8,18 +16,7 @@ from worker.engine.field.intensity import (
     radiated_power,
     radiation_intensity,
 )
-from worker.engine.field.pattern import (
-    Cut,
-    Lobe,
-    Pattern,
-    PowerBudget,
-    azimuth_cut,
-    elevation_cut,
-    gain_dbi,
-    lobes,
-    pattern,
-    power_budget,
-)
+from worker.engine.field.lobe import Lobe, Pattern, lobes, pattern
 
 __all__ = [
     "Cut",
