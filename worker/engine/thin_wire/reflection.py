@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.thin_wire.discretisation import Discretisation
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -58,10 +59,9 @@ class ReflectedPotentials(Protocol):
 
 def reflected_matrices(
     reflected: ReflectedPotentials,
-    z: FloatArray,
-    current: FloatArray,
-    charge: FloatArray,
-    half_length_m: FloatArray,
+    mesh: Discretisation,
+    nodes: FloatArray,
+    weights: FloatArray,
     parity: int,
 ) -> tuple[ComplexArray, ComplexArray]:
     """Galerkin matrices of 4 pi g_A between currents and 4 pi g_Phi between charges.
@@ -70,45 +70,36 @@ def reflected_matrices(
     ----------
     reflected
         The ground.
-    z
-        Gauss points (B, Q) on half a wire.
-    current, charge
-        Moments of the basis functions at them, (B, Q, N) and (Q, N).
-    half_length_m
-        Half lengths (B,).
+    mesh, nodes, weights
+        B half wires with their nodes and weights (B, Q).
     parity
         +1 for an even current, -1 for an odd one.
 
     Notes
     -----
-    The reflected functions are smooth on the scale of the height, so the moments are first
-    gathered on a uniform grid by interpolation. On it the kernel between two points of half a
-    wire is a Toeplitz matrix and the kernel to the other half a Hankel matrix, and both come
+    The reflected functions are smooth on the scale of the height, so the basis functions are
+    first gathered on a uniform grid by interpolation. On it the kernel between two points of half
+    a wire is a Toeplitz matrix and the kernel to the other half a Hankel matrix, and both come
     from one row of values.
     """
+    half_length = mesh.breaks_m[:, -1]
     wavelength = SPEED_OF_LIGHT_M_PER_S / reflected.frequency_hz
     spacing = min(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * reflected.height_m)
-    cells = max(ceil(float(np.max(half_length_m)) / spacing), 1)
-    step = half_length_m / cells
-    gather = _interpolation(z / step[:, None], cells)
-    margin = _STENCIL // 2 - 1
-    index = np.arange(-margin, cells + _STENCIL // 2 + 1)
-    reach = 2 * (cells + _STENCIL // 2)
-    distance = step[:, None] * np.arange(reach + 1)
-    toeplitz = np.abs(index[:, None] - index)
-    hankel = np.abs(index[:, None] + index)
-    gathered = np.swapaxes(gather, 1, 2)
+    cells = max(ceil(float(np.max(half_length)) / spacing), 1)
+    step = half_length / cells
+    gather = np.swapaxes(_interpolation(nodes / step[:, None], cells), 1, 2)
+    index = np.arange(1 - _STENCIL // 2, cells + _STENCIL // 2 + 1)
+    distance = step[:, None] * np.arange(2 * (cells + _STENCIL // 2) + 1)
     matrices = []
-    for moments, values, sign in (
-        (gathered @ current, reflected.vector_potential(distance), parity),
-        (gathered @ charge, reflected.scalar_potential(distance), -parity),
+    for moments, potential, sign in (
+        (mesh.test_current(gather * weights[:, None, :]), reflected.vector_potential, parity),
+        (mesh.test_charge(gather), reflected.scalar_potential, -parity),
     ):
-        scaled = 4.0 * pi * np.asarray(values, dtype=complex)
-        kernel = scaled[:, toeplitz] + sign * scaled[:, hankel]
-        transposed = np.swapaxes(moments, 1, 2)
-        matrices.append(
-            transposed @ kernel.real @ moments + 1j * (transposed @ kernel.imag @ moments)
-        )
+        values = 4.0 * pi * potential(distance)
+        kernel = values[:, np.abs(index[:, None] - index)]
+        kernel = kernel + sign * values[:, np.abs(index[:, None] + index)]
+        turned = np.swapaxes(moments, 1, 2)
+        matrices.append(turned @ kernel.real @ moments + 1j * (turned @ kernel.imag @ moments))
     return matrices[0], matrices[1]
 
 

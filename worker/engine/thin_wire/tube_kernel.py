@@ -51,13 +51,13 @@ def width_kernel(x: FloatArray) -> FloatArray:
     return mean_distance(x) - (x * x + 2.0) * static_kernel(x)
 
 
-def distant_kernel(distance_m: FloatArray, radius_squared: FloatArray) -> FloatArray:
+def distant_kernel(inverse_distance_per_m: FloatArray, radius_squared: FloatArray) -> FloatArray:
     r"""Averaged inverse distance (1/m) between points at least about three radii apart.
 
     Parameters
     ----------
-    distance_m
-        Root mean square distance, sqrt(z^2 + 2 a^2).
+    inverse_distance_per_m
+        Inverse of the root mean square distance, 1 / sqrt(z^2 + 2 a^2).
     radius_squared
         Square of the radius, broadcasting with it.
 
@@ -68,15 +68,14 @@ def distant_kernel(distance_m: FloatArray, radius_squared: FloatArray) -> FloatA
     :math:`u^{-1/2}[1 + 3/4\,(a^2/u)^2 + 105/64\,(a^2/u)^4]`; the remainder is below 1e-5 of the
     value from z = 3a on.
     """
-    inverse = 1.0 / distance_m
-    ratio = inverse * inverse
+    ratio = inverse_distance_per_m * inverse_distance_per_m
     ratio *= radius_squared
     ratio *= ratio
     series = 1.640625 * ratio
     series += 0.75
     series *= ratio
     series += 1.0
-    series *= inverse
+    series *= inverse_distance_per_m
     return series
 
 

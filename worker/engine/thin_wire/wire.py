@@ -13,12 +13,8 @@ from numpy.typing import ArrayLike, NDArray
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.errors import OutOfRange
 from worker.engine.thin_wire.basis import reference_element
-from worker.engine.thin_wire.galerkin import (
-    Discretisation,
-    PortSolution,
-    assembled_shapes,
-    solve_ports,
-)
+from worker.engine.thin_wire.discretisation import Discretisation
+from worker.engine.thin_wire.galerkin import PortSolution, solve_ports
 from worker.engine.thin_wire.gap import sharp_admittance, sharp_current
 from worker.engine.thin_wire.mesh import Grading, HalfWires, element_breaks, element_counts
 from worker.engine.thin_wire.reflection import ReflectedPotentials
@@ -40,7 +36,7 @@ GAP_RANGE_RADII: Final = (1e-2, inf)
 # Permitted estimated error, relative to the impedance's magnitude.
 _TOLERANCE = 5e-4
 # What comparison of degrees cannot see, relative: quadrature and the split of the source.
-_ERROR_FLOOR = 5e-5
+_ERROR_FLOOR = 1e-4
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +49,7 @@ class _Level:
 
 
 _LEVELS = (
-    _Level(5, 6, Grading(0.3, 1.8, 2.0, 1.2)),
+    _Level(5, 7, Grading(0.3, 1.8, 2.0, 1.2)),
     _Level(6, 8, Grading(0.2, 1.4, 2.0, 1.2)),
     _Level(8, 11, Grading(0.15, 1.0, 1.5, 1.0)),
 )
@@ -62,7 +58,7 @@ _LEVELS = (
 _SIGMA_PHASE = 0.3
 _SIGMA_CLEARANCE = 1.0 / 6.0
 # Points of the largest kernel array in one chunk; holds memory flat and the caches warm.
-_CHUNK_POINTS = 200000
+_CHUNK_POINTS = 200_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,7 +70,7 @@ class FeedImpedance:
     impedance_ohm
         Gap voltage over mean current in the gap.
     estimated_error_ohm
-        Twice the change from the next lower degree, plus a floor of 5e-5 of the magnitude for
+        Half the change from the next lower degree, plus a floor of 1e-4 of the magnitude for
         what that comparison cannot see.
     unknowns
         Unknowns of the linear system solved, per parity of the current.
@@ -231,7 +227,7 @@ def feed_impedance(
             impedance[rows] = 1.0 / _feed_admittance(part, solution.admittance, sharp)
             coarse = 1.0 / _feed_admittance(part, solution.coarse_admittance, sharp)
             error[rows] = _estimated_error(impedance[rows], coarse)
-            unknowns[rows] = mesh.elements * level.degree
+            unknowns[rows] = mesh.unknowns
         pending = np.nonzero(error > _TOLERANCE * np.abs(impedance))[0]
         if not pending.size:
             break
@@ -287,13 +283,10 @@ def current(
         if converged:
             break
     voltage = _port_voltages(batch, solution.admittance, sharp)[0]
-    z, weight = mesh.points()[0], mesh.jacobian()[0] * np.tile(mesh.element.weight, mesh.elements)
-    value, _slope = assembled_shapes(mesh.element, mesh.elements)
-    even = value @ (solution.coefficients[1][0] @ voltage)
-    odd = np.zeros_like(even)
-    if -1 in solution.coefficients:
-        odd = value[:, 1:] @ (solution.coefficients[-1][0] @ voltage)
-    position = np.concatenate([-z[::-1], z])
+    half_position, half_weight = mesh.nodes()[0], mesh.weights()[0]
+    even = mesh.evaluate(solution.even @ voltage)[0]
+    odd = mesh.evaluate(solution.odd @ voltage)[0]
+    position = np.concatenate([-half_position[::-1], half_position])
     along = np.concatenate([(even - odd)[::-1], even + odd])
     for port, volts in enumerate(voltage):
         along = along + volts * sharp_current(
@@ -306,7 +299,7 @@ def current(
         )
     return WireCurrent(
         position_m=position,
-        weight_m=np.concatenate([weight[::-1], weight]),
+        weight_m=np.concatenate([half_weight[::-1], half_weight]),
         current_a_per_v=along,
         impedance_ohm=complex(impedance[0]),
         estimated_error_ohm=float(error[0]),
@@ -445,7 +438,7 @@ def _solve(
 
 
 def _estimated_error(impedance: ComplexArray, coarse: ComplexArray) -> FloatArray:
-    error: FloatArray = 2.0 * np.abs(impedance - coarse) + _ERROR_FLOOR * np.abs(impedance)
+    error: FloatArray = 0.5 * np.abs(impedance - coarse) + _ERROR_FLOOR * np.abs(impedance)
     return error
 
 

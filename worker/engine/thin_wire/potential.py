@@ -1,0 +1,159 @@
+"""Potentials at the nodes of half wires from unit sources at their nodes.
+
+Between distant elements the averaged kernel is simply evaluated; between elements close together
+its static part is replaced by the effective kernel of product integration (see `basis`).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from worker.engine.thin_wire.basis import end_kernel, product_kernel
+from worker.engine.thin_wire.discretisation import Discretisation
+from worker.engine.thin_wire.tube_kernel import distant_kernel
+
+FloatArray = NDArray[np.float64]
+
+# A target closer than this, in half lengths from the middle of the source element, goes by
+# product integration.
+_NEAR = 2.2
+# (ka)^2 below which the width of the kernel's dynamic part is left out.
+_NEGLIGIBLE_WIDTH = 1e-6
+
+
+@dataclass(frozen=True, slots=True)
+class _Pairs:
+    """Element pairs that may lie close together; sign -1 where the target is mirrored."""
+
+    target: NDArray[np.intp]
+    source: NDArray[np.intp]
+    sign: float
+
+
+def tube_potentials(mesh: Discretisation, nodes: FloatArray) -> tuple[FloatArray, FloatArray]:
+    r"""Averaged exp(-jkR)/R between nodes, and between nodes and mirrored nodes.
+
+    Returns
+    -------
+    Two arrays of shape (2, B, Q, Q), real and imaginary parts stacked; targets before sources.
+
+    Notes
+    -----
+    :math:`\langle e^{-jkR}/R \rangle` is taken as :math:`\cos(kR_2)\langle 1/R \rangle -
+    j \sin(kR_2)/R_2` with :math:`R_2^2 = z^2 + 2a^2`, whose static factor is exact. What this
+    misses is :math:`-\tfrac12 k^2 \langle (4a^2\sin^2(\phi/2) - 2a^2)/R \rangle`, a peak as
+    narrow as the radius, added where (ka)^2 is not negligible, and terms in (ka)^4.
+
+    Sine and cosine of :math:`k|z_i - z_j|` come from products of those at the nodes; the small
+    rest :math:`k(R_2 - |z_i - z_j|)` of the phase is expanded to second order.
+    """
+    phase = mesh.wavenumber_per_m[:, None] * nodes
+    cosine, sine = np.cos(phase)[:, :, None], np.sin(phase)[:, :, None]
+    turned = np.swapaxes(cosine, 1, 2), np.swapaxes(sine, 1, 2)
+    later = np.sign(np.arange(nodes.shape[1])[:, None] - np.arange(nodes.shape[1]))
+    direct = _kernel(
+        mesh,
+        nodes,
+        np.abs(nodes[:, :, None] - nodes[:, None, :]),
+        cosine * turned[0] + sine * turned[1],
+        (sine * turned[0] - cosine * turned[1]) * later,
+        _near_pairs(mesh.elements),
+    )
+    mirrored = _kernel(
+        mesh,
+        nodes,
+        nodes[:, :, None] + nodes[:, None, :],
+        cosine * turned[0] - sine * turned[1],
+        sine * turned[0] + cosine * turned[1],
+        _mirrored_pairs(),
+    )
+    return direct, mirrored
+
+
+def _kernel(
+    mesh: Discretisation,
+    nodes: FloatArray,
+    offset: FloatArray,
+    cosine: FloatArray,
+    sine: FloatArray,
+    pairs: _Pairs,
+) -> FloatArray:
+    """Kernel at axial distances `offset` with the cosine and sine of k times them."""
+    radius_squared = (mesh.radius_m**2)[:, None, None]
+    k = mesh.wavenumber_per_m[:, None, None]
+    thick = bool(np.max(mesh.wavenumber_per_m * mesh.radius_m) ** 2 > _NEGLIGIBLE_WIDTH)
+    distance = offset * offset
+    distance += 2.0 * radius_squared
+    np.sqrt(distance, out=distance)
+    inverse = 1.0 / distance
+    static = distant_kernel(inverse, radius_squared)
+    _put_near_kernel(static, mesh, nodes, pairs)
+    rest = distance
+    rest -= offset
+    rest *= k
+    if thick:
+        shrink = 1.0 - 0.5 * rest * rest
+        cosine, sine = shrink * cosine - rest * sine, shrink * sine + rest * cosine
+    else:
+        cosine, sine = cosine - rest * sine, sine + rest * cosine
+    kernel = np.empty((2, *offset.shape))
+    np.multiply(cosine, static, out=kernel[0])
+    np.multiply(sine, inverse, out=kernel[1])
+    np.negative(kernel[1], out=kernel[1])
+    if thick:
+        peak = np.zeros_like(static)
+        _put_near_kernel(peak, mesh, nodes, pairs, width=True)
+        kernel[0] -= 0.5 * k * k * radius_squared * peak
+    return kernel
+
+
+def _near_pairs(elements: int) -> _Pairs:
+    """Each element with itself and its neighbours, the source not being the end element."""
+    pairs = [
+        (target, source)
+        for source in range(elements - 1)
+        for target in range(max(0, source - 1), min(elements, source + 2))
+    ]
+    target, source = np.array(pairs, dtype=np.intp).T
+    return _Pairs(target, source, 1.0)
+
+
+def _mirrored_pairs() -> _Pairs:
+    """Elements next to the centre against those on its other side."""
+    return _Pairs(np.array([0, 0, 1]), np.array([0, 1, 0]), -1.0)
+
+
+def _put_near_kernel(
+    kernel: FloatArray,
+    mesh: Discretisation,
+    nodes: FloatArray,
+    pairs: _Pairs,
+    *,
+    width: bool = False,
+) -> None:
+    """Replace, in place, the static (or width) kernel between elements that lie close together."""
+    points = mesh.element.node.size
+    count = len(nodes)
+    blocks = kernel.reshape(count, mesh.elements, points, mesh.elements, points)
+    start, stop = mesh.breaks_m[:, :-1], mesh.breaks_m[:, 1:]
+    middle = ((start + stop) / 2.0)[:, pairs.source, None]
+    half = ((stop - start) / 2.0)[:, pairs.source, None]
+    target = nodes.reshape(count, mesh.elements, points)[:, pairs.target]
+    local = (pairs.sign * target - middle) / half
+    near = np.abs(local) < _NEAR
+    effective = product_kernel(
+        mesh.element,
+        np.where(near, local, 0.0),
+        np.broadcast_to(half / mesh.radius_m[:, None, None], local.shape),
+        width=width,
+    )
+    effective = effective / half[..., None]
+    distant = np.moveaxis(blocks[:, pairs.target, :, pairs.source, :], 0, 1)
+    replaced = np.where(near[..., None], effective, distant)
+    blocks[:, pairs.target, :, pairs.source, :] = np.moveaxis(replaced, 1, 0)
+    if pairs.sign > 0.0:
+        end = end_kernel(points, width=width) / mesh.radius_m[:, None, None]
+        kernel[:, -2 * points :, -points:] = end
