@@ -1,0 +1,66 @@
+"""The feed-impedance report as comma-separated values (RFC 4180)."""
+
+from __future__ import annotations
+
+import csv
+import io
+from collections.abc import Iterator
+from typing import Final
+
+from service.contracts.report import BandReport, FeedReport, ReportPoint
+from service.exports import digits
+
+#: Media type of RFC 4180, section 3; the first line names the columns.
+MEDIA_TYPE: Final = "text/csv; charset=utf-8; header=present"
+
+FEED_COLUMNS: Final = (
+    "band",
+    "place",
+    "frequency_mhz",
+    "resistance_ohm",
+    "reactance_ohm",
+    "reflection",
+    "swr",
+)
+
+
+def feed_report_csv(report: FeedReport) -> str:
+    """The report as one table: a line a point, bands in the order of the request.
+
+    Parameters
+    ----------
+    report : FeedReport
+        As stored. Resistance and reactance are those at the feed point; reflection and SWR
+        those on the line side of the transformer.
+
+    Returns
+    -------
+    str
+        Lines ended by CR LF, the first of them the names of the columns.
+    """
+    sheet = io.StringIO(newline="")
+    writer = csv.writer(sheet, dialect="excel")
+    writer.writerow(FEED_COLUMNS)
+    for band in report.bands:
+        name = digits.text_cell(band.name)
+        writer.writerows((name, place, *_figures(point)) for place, point in _places(band))
+    return sheet.getvalue()
+
+
+def _places(band: BandReport) -> Iterator[tuple[str, ReportPoint]]:
+    """Every point of a band by rising frequency; a grid point on a mark is left to the mark."""
+    marks = {"low edge": band.low, "centre": band.centre, "high edge": band.high}
+    marked_mhz = {point.frequency_mhz for point in marks.values()}
+    points = [*marks.items()]
+    points += [("grid", point) for point in band.grid if point.frequency_mhz not in marked_mhz]
+    yield from sorted(points, key=lambda each: each[1].frequency_mhz)
+
+
+def _figures(point: ReportPoint) -> tuple[str, ...]:
+    return (
+        digits.frequency_mhz(point.frequency_mhz),
+        digits.resistance_ohm(point.resistance_ohm),
+        digits.resistance_ohm(point.reactance_ohm),
+        digits.reflection(point.reflection),
+        digits.swr(point.swr),
+    )

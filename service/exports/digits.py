@@ -1,0 +1,37 @@
+"""Numbers and texts as a spreadsheet takes them: plain decimals, and no cell that runs."""
+
+from __future__ import annotations
+
+from typing import Final
+
+_HERTZ_DECIMALS: Final = 6
+_KILOHERTZ_DECIMALS: Final = 3
+#: A cell that opens with one of these may be taken for a formula (common practice).
+_FORMULA_OPENERS: Final = ("=", "+", "-", "@", "\t", "\r", "\n", "＝", "＋", "－", "＠")
+
+
+def frequency_mhz(value: float) -> str:
+    """A frequency in MHz to the kHz, with further digits only where it has them: ``5.3515``."""
+    whole, point, decimals = f"{value:.{_HERTZ_DECIMALS}f}".partition(".")
+    return whole + point + decimals.rstrip("0").ljust(_KILOHERTZ_DECIMALS, "0")
+
+
+def resistance_ohm(value: float) -> str:
+    """A resistance or reactance in Ω to two decimals; a zero carries no sign."""
+    text = f"{value:.2f}"
+    return "0.00" if text == "-0.00" else text
+
+
+def reflection(value: float) -> str:
+    """The magnitude of a reflection coefficient to four decimals."""
+    return f"{value:.4f}"
+
+
+def swr(value: float) -> str:
+    """A standing wave ratio to three decimals, however high, so that a column can be sorted."""
+    return f"{value:.3f}"
+
+
+def text_cell(text: str) -> str:
+    """A text that a spreadsheet shows and never runs: an apostrophe goes before a formula."""
+    return "'" + text if text.lstrip(" ").startswith(_FORMULA_OPENERS) else text

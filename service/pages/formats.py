@@ -1,0 +1,62 @@
+"""Numbers, times and signs on the page: those of the contracts, and a few only a page needs."""
+
+from __future__ import annotations
+
+from datetime import UTC, datetime
+
+from service.contracts.formats import (
+    khz,
+    listed,
+    metres,
+    mhz,
+    millimetres,
+    ohms,
+    ordinal,
+    percent,
+    ratio,
+    reflection,
+    share,
+    swr,
+)
+from service.exports.digits import frequency_mhz as edge_mhz
+
+__all__ = [
+    "count",
+    "edge_mhz",
+    "instant",
+    "khz",
+    "listed",
+    "metres",
+    "mhz",
+    "millimetres",
+    "minus",
+    "ohms",
+    "ordinal",
+    "percent",
+    "ratio",
+    "reflection",
+    "share",
+    "swr",
+    "watts",
+]
+
+
+def minus(text: str) -> str:
+    """A number's text with the true minus sign, as wide as the plus."""
+    return text.replace("-", "−")
+
+
+def count(number: int) -> str:
+    """A whole number in groups of three, ``123 456``, with spaces that do not break."""
+    return f"{number:,}".replace(",", "\u202f")
+
+
+def watts(value: float) -> str:
+    """A power in W, or in kW from ten thousand on."""
+    return f"{value:g} W" if value < 1e4 else f"{value / 1e3:g} kW"  # noqa: PLR2004  # said above
+
+
+def instant(when: datetime) -> str:
+    """A moment in UTC to the minute, ``2 Dec 2025, 14:03 UTC``."""
+    utc = when.replace(tzinfo=UTC) if when.tzinfo is None else when.astimezone(UTC)
+    return f"{utc.day} {utc:%b %Y, %H:%M} UTC"

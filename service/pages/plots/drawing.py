@@ -1,0 +1,115 @@
+"""A drawing in SVG: shapes by class, looks left to the stylesheet, words for those who listen."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from typing import Final, Literal
+
+from markupsafe import Markup, escape
+
+from service.pages.plots.scales import Point
+
+Anchor = Literal["start", "middle", "end"]
+
+#: Points nearer together than this are one spot of ink.
+_SAME_SPOT_PX: Final = 0.1
+
+
+class Drawing:
+    """Collects shapes; every text is escaped.
+
+    Parameters
+    ----------
+    name : str
+        Unique in the page; the ids of title and description are made from it.
+    width, height : float
+        Size in the drawing's own units, which are CSS pixels at full size.
+    """
+
+    def __init__(self, name: str, width: float, height: float, css_class: str) -> None:
+        self._name = name
+        self._size = (width, height)
+        self._class = css_class
+        self._shapes: list[Markup] = []
+
+    def line(self, start: Point, end: Point, css_class: str) -> None:
+        """Draw a straight line."""
+        self._shapes.append(
+            Markup('<line class="{}" x1="{}" y1="{}" x2="{}" y2="{}"/>').format(
+                css_class, _px(start[0]), _px(start[1]), _px(end[0]), _px(end[1])
+            )
+        )
+
+    def box(self, corner: Point, opposite: Point, css_class: str) -> None:
+        """Draw a rectangle between two corners."""
+        left, right = sorted((corner[0], opposite[0]))
+        top, bottom = sorted((corner[1], opposite[1]))
+        self._shapes.append(
+            Markup('<rect class="{}" x="{}" y="{}" width="{}" height="{}"/>').format(
+                css_class, _px(left), _px(top), _px(right - left), _px(bottom - top)
+            )
+        )
+
+    def curve(self, runs: Iterable[Sequence[Point]], css_class: str) -> None:
+        """Draw a line through points, in one or more runs."""
+        path = "".join(
+            "M" + "L".join(f"{_px(x)} {_px(y)}" for x, y in _visible(run)) for run in runs
+        )
+        if path:
+            self._shapes.append(Markup('<path class="{}" d="{}"/>').format(css_class, path))
+
+    def dot(self, centre: Point, radius: float, css_class: str) -> None:
+        """Draw a circle."""
+        self._shapes.append(
+            Markup('<circle class="{}" cx="{}" cy="{}" r="{}"/>').format(
+                css_class, _px(centre[0]), _px(centre[1]), _px(radius)
+            )
+        )
+
+    def diamond(self, centre: Point, radius: float, css_class: str) -> None:
+        """Draw a square on its corner."""
+        x, y = centre
+        corners = ((x, y - radius), (x + radius, y), (x, y + radius), (x - radius, y))
+        points = " ".join(f"{_px(a)},{_px(b)}" for a, b in corners)
+        self._shapes.append(Markup('<polygon class="{}" points="{}"/>').format(css_class, points))
+
+    def text(self, place: Point, words: str, css_class: str, anchor: Anchor = "middle") -> None:
+        """Write a few words."""
+        self._shapes.append(
+            Markup('<text class="{}" x="{}" y="{}" text-anchor="{}">{}</text>').format(
+                css_class, _px(place[0]), _px(place[1]), anchor, words
+            )
+        )
+
+    def markup(self, title: str, description: str) -> Markup:
+        """The finished drawing, with its title and description."""
+        head = Markup(
+            '<svg class="plot {}" viewBox="0 0 {} {}" role="img" '
+            'aria-labelledby="{}-title {}-desc"><title id="{}-title">{}</title>'
+            '<desc id="{}-desc">{}</desc>'
+        ).format(
+            self._class,
+            _px(self._size[0]),
+            _px(self._size[1]),
+            self._name,
+            self._name,
+            self._name,
+            escape(title),
+            self._name,
+            escape(description),
+        )
+        return head + Markup("").join(self._shapes) + Markup("</svg>")
+
+
+def _visible(run: Sequence[Point]) -> list[Point]:
+    """The points of a run without those that fall on the same spot of paper as the last."""
+    kept: list[Point] = []
+    for point in run:
+        if not kept or abs(point[0] - kept[-1][0]) + abs(point[1] - kept[-1][1]) >= _SAME_SPOT_PX:
+            kept.append(point)
+    return kept
+
+
+def _px(value: float) -> str:
+    text = f"{value:.1f}"
+    return text.removesuffix(".0") if text != "-0.0" else "0"

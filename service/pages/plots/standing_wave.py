@@ -1,0 +1,116 @@
+"""SWR against frequency over one band, with its limit and the part of the band within it."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Final
+
+from markupsafe import Markup
+
+from service.contracts import formats
+from service.contracts.candidate import BandOutcome
+from service.contracts.report import BandReport
+from service.exports import digits
+from service.pages.plots.drawing import Drawing
+from service.pages.plots.scales import (
+    LinearScale,
+    Point,
+    clipped_runs,
+    linear_ticks,
+    next_round,
+)
+
+_WIDTH: Final = 344.0
+_LEFT: Final = 34.0
+_RIGHT: Final = _WIDTH - 22.0
+_TOP: Final = 26.0
+_BOTTOM: Final = _TOP + 150.0
+_HEIGHT: Final = _BOTTOM + 36.0
+_LOWEST_TOP: Final = 3.0
+_FREQUENCY_TICKS: Final = 4
+_SWR_TICKS: Final = 5
+
+
+@dataclass(frozen=True, slots=True)
+class _Frame:
+    frequency: LinearScale
+    swr: LinearScale
+
+    def place(self, point: Point) -> Point:
+        return self.frequency(point[0]), self.swr(point[1])
+
+
+def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
+    """Draw the SWR over one band.
+
+    Parameters
+    ----------
+    name : str
+        Unique in the page.
+    band : BandReport
+    outcome : BandOutcome
+        The same band's outcome: its limit and how it is served.
+    """
+    points = [(point.frequency_mhz, point.swr) for point in band.grid]
+    top = _top_of_axis(points, outcome.swr_limit)
+    frame = _Frame(
+        LinearScale(points[0][0], points[-1][0], _LEFT, _RIGHT),
+        LinearScale(1.0, top, _BOTTOM, _TOP),
+    )
+    drawing = Drawing(name, _WIDTH, _HEIGHT, "swr")
+    _draw_axes(drawing, frame)
+    _draw_limit(drawing, frame, points, outcome.swr_limit)
+    runs = clipped_runs(points, 1.0, top)
+    drawing.curve(([frame.place(point) for point in run] for run in runs), "curve swr")
+    _draw_resonance(drawing, frame, outcome)
+    return drawing.markup(f"SWR against frequency, {band.name}", _in_words(outcome))
+
+
+def _top_of_axis(points: Sequence[Point], limit: float) -> float:
+    """High enough for the limit and for the best of the band; what lies above is cut off."""
+    best = min(swr for _, swr in points)
+    worst = max(swr for _, swr in points)
+    wanted = max(_LOWEST_TOP, 1.5 * limit, 1.5 * best)
+    return wanted if wanted <= 2.0 * _LOWEST_TOP or worst <= wanted else next_round(wanted)
+
+
+def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
+    for swr in linear_ticks(1.0, frame.swr.high, _SWR_TICKS):
+        y = frame.swr(swr)
+        drawing.line((_LEFT, y), (_RIGHT, y), "grid")
+        drawing.text((_LEFT - 6.0, y + 4.0), f"{swr:g}", "tick", "end")
+    for mhz in linear_ticks(frame.frequency.low, frame.frequency.high, _FREQUENCY_TICKS):
+        x = frame.frequency(mhz)
+        drawing.line((x, _TOP), (x, _BOTTOM), "grid")
+        drawing.text((x, _BOTTOM + 17.0), digits.frequency_mhz(mhz), "tick")
+    drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
+    drawing.text((_LEFT - 6.0, _TOP - 11.0), "SWR", "unit", "end")
+    drawing.text((_RIGHT, _BOTTOM + 31.0), "MHz", "unit", "end")
+
+
+def _draw_limit(drawing: Drawing, frame: _Frame, points: Sequence[Point], limit: float) -> None:
+    """The limit as a line, and along the foot the part of the band that keeps to it."""
+    y = frame.swr(limit)
+    drawing.line((_LEFT, y), (_RIGHT, y), "limit")
+    drawing.text((_RIGHT - 4.0, y - 4.0), f"limit {formats.swr(limit)}", "limit-name", "end")
+    for run in clipped_runs(points, 1.0, limit):
+        ends = frame.frequency(run[0][0]), frame.frequency(run[-1][0])
+        drawing.box((ends[0], _BOTTOM - 4.0), (ends[1], _BOTTOM), "within")
+
+
+def _draw_resonance(drawing: Drawing, frame: _Frame, outcome: BandOutcome) -> None:
+    if outcome.resonance_mhz is None or outcome.order is None:
+        return
+    if frame.frequency.low <= outcome.resonance_mhz <= frame.frequency.high:
+        x = frame.frequency(outcome.resonance_mhz)
+        drawing.line((x, _TOP), (x, _BOTTOM), "resonance")
+        drawing.text((x, _TOP - 4.0), formats.ordinal(outcome.order), "order series")
+
+
+def _in_words(outcome: BandOutcome) -> str:
+    return (
+        f"Low edge {formats.swr(outcome.swr_low)}, centre {formats.swr(outcome.swr_centre)}, "
+        f"high edge {formats.swr(outcome.swr_high)}, limit {formats.swr(outcome.swr_limit)}: "
+        f"{outcome.service}."
+    )

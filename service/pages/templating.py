@@ -1,0 +1,58 @@
+"""Where templates are read, and what they may call."""
+
+from __future__ import annotations
+
+import hashlib
+from functools import cache
+from importlib.metadata import version
+from pathlib import Path
+from typing import Final
+
+from jinja2 import Environment, FileSystemLoader, StrictUndefined, select_autoescape
+
+from service.pages import formats, wording
+from service.pages.plots import impedance_plot, swr_plot
+
+_HERE: Final = Path(__file__).parent
+STATIC: Final = _HERE / "static"
+
+
+@cache
+def asset(name: str) -> str:
+    """Address of a file of ours, with its content's hash so that it may be kept for long."""
+    digest = hashlib.sha256((STATIC / name).read_bytes()).hexdigest()[:12]
+    return f"/static/{name}?v={digest}"
+
+
+@cache
+def _environment() -> Environment:
+    environment = Environment(
+        loader=FileSystemLoader(_HERE / "templates"),
+        autoescape=select_autoescape(default=True),
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+    )
+    for name in formats.__all__:
+        environment.filters[name] = getattr(formats, name)
+    environment.globals |= {
+        "asset": asset,
+        "product_version": version("spanwright"),
+        "impedance_plot": impedance_plot,
+        "swr_plot": swr_plot,
+        "wording": wording,
+    }
+    return environment
+
+
+def render(template: str, **values: object) -> str:
+    """Fill in a template.
+
+    Parameters
+    ----------
+    template : str
+        Its file name.
+    **values : object
+        What it shows: contract objects, as the API gives them.
+    """
+    return _environment().get_template(template).render(**values)

@@ -1,0 +1,86 @@
+"""A design request in a planner's words, one sentence a subject."""
+
+from __future__ import annotations
+
+from typing import Final
+
+from service.contracts.request import DesignRequest
+from service.contracts.station_site import GroundConstants, Site
+from service.contracts.stock import Conductor, Insulation, Stock
+from service.pages import formats
+
+_GROUNDS: Final = {
+    "medium-hills": "ground of medium hills",
+    "sandy": "sandy ground",
+    "marshy": "marshy ground",
+    "fresh-water": "fresh water",
+    "sea-water": "sea water",
+}
+
+
+def site_in_words(site: Site) -> str:
+    """Span, what of it a wire can use, height and ground."""
+    span = (
+        f"{formats.metres(site.span_m)} m between the points of support, "
+        f"{formats.metres(site.end_allowance_m)} m kept free at each end: "
+        f"at most {formats.metres(site.longest_wire_m)} m of wire"
+    )
+    if site.ground == "free-space":
+        return f"{span}, in free space."
+    height = "" if site.height_m is None else f", {formats.metres(site.height_m)} m"
+    return f"{span}{height} over {_ground(site)}."
+
+
+def stock_in_words(stock: Stock) -> list[str]:
+    """Each conductor of the stock, or the range of diameters, as a buyer would ask for it."""
+    if stock.diameter_range is None:
+        return [_conductor(each) for each in stock.conductors]
+    limits = stock.diameter_range
+    low, high = formats.millimetres(limits.low_mm), formats.millimetres(limits.high_mm)
+    sleeve = "" if limits.insulation is None else f", {_insulation(limits.insulation)}"
+    return [f"any diameter from {low} to {high} mm, {_plain(limits.material)}{sleeve}"]
+
+
+def feed_in_words(request: DesignRequest) -> str:
+    """Reference impedance, the transformers allowed, the line and the power."""
+    feed = request.feed
+    ratios = formats.listed([formats.ratio(each) for each in feed.transformer_ratios])
+    plural = "s" if len(feed.transformer_ratios) > 1 else ""
+    line = (
+        ""
+        if feed.feed_line is None
+        else f", {formats.metres(feed.feed_line.length_m)} m of {feed.feed_line.line}"
+    )
+    return (
+        f"{formats.ohms(feed.reference_ohm)} Ω reference, transformer{plural} {ratios}{line}, "
+        f"{formats.watts(request.power_w)}."
+    )
+
+
+def _ground(site: Site) -> str:
+    if isinstance(site.ground, GroundConstants):
+        return (
+            f"ground of relative permittivity {site.ground.relative_permittivity:g} and "
+            f"{site.ground.conductivity_s_per_m:g} S/m"
+        )
+    return _GROUNDS.get(site.ground, f"{_plain(site.ground)} ground")
+
+
+def _conductor(conductor: Conductor) -> str:
+    label = conductor.label
+    if conductor.awg is not None:
+        label += f" ({formats.millimetres(conductor.bare_diameter_mm)} mm)"
+    if conductor.insulation is not None:
+        label += f": {_insulation(conductor.insulation)}"
+    return f"{label}, item {conductor.item_code}" if conductor.item_code else label
+
+
+def _insulation(insulation: Insulation) -> str:
+    return (
+        f"insulation {formats.millimetres(insulation.thickness_mm)} mm thick, "
+        f"relative permittivity {insulation.relative_permittivity:g}"
+    )
+
+
+def _plain(name: str) -> str:
+    return name.replace("-", " ")
