@@ -9,6 +9,7 @@ from __future__ import annotations
 import cmath
 import json
 import math
+from collections.abc import Callable
 from typing import Any
 
 from service.contracts.candidate import (
@@ -33,7 +34,7 @@ GRID_POINTS = 41
 SWEEP_POINTS = 481
 
 
-def request_fields(**changes: Any) -> dict[str, Any]:  # noqa: ANN401  # any JSON value
+def request_fields(**changes: object) -> dict[str, Any]:
     """A request as a planner would send it, with fields replaced."""
     fields: dict[str, Any] = {
         "name": "Invented station, two bands",
@@ -56,12 +57,12 @@ def request_fields(**changes: Any) -> dict[str, Any]:  # noqa: ANN401  # any JSO
     return fields | changes
 
 
-def request_json(**changes: Any) -> str:  # noqa: ANN401  # any JSON value
+def request_json(**changes: object) -> str:
     """The same as JSON text."""
     return json.dumps(request_fields(**changes))
 
 
-def sample_request(**changes: Any) -> DesignRequest:  # noqa: ANN401  # any JSON value
+def sample_request(**changes: object) -> DesignRequest:
     """The same as a contract."""
     return parse_request(request_json(**changes))
 
@@ -150,7 +151,7 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
     )
 
 
-def _resonance(order: int, length_m: float, at: Any) -> ResonanceLine:  # noqa: ANN401
+def _resonance(order: int, length_m: float, at: Callable[[float], ReportPoint]) -> ResonanceLine:
     turns = (order - 0.03) / 0.97
     frequency_mhz = round(turns * _first_mhz(length_m), 6)
     return ResonanceLine(
