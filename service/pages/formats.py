@@ -53,7 +53,7 @@ def count(number: int) -> str:
 
 def watts(value: float) -> str:
     """A power in W, or in kW from ten thousand on."""
-    return f"{value:g} W" if value < 1e4 else f"{value / 1e3:g} kW"  # noqa: PLR2004  # said above
+    return f"{value:g} W" if value < 1e4 else f"{value / 1e3:g} kW"
 
 
 def instant(when: datetime) -> str:
