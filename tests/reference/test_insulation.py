@@ -74,6 +74,17 @@ def test_usual_insulation_shortens_a_wire_by_one_to_five_per_cent(
     assert 0.01 < shortening < 0.05
 
 
+@pytest.mark.parametrize(
+    ("name", "low", "high"),
+    # Tables of plastics at 1 MHz, found in the text: PE 2.28, PTFE 2.1, PVC 3.5 to 5.
+    [("polyethylene", 2.25, 2.35), ("ptfe", 2.05, 2.15), ("pvc", 3.0, 5.0)],
+)
+def test_permittivity_of_each_insulation_lies_where_tables_put_it(
+    name: str, low: float, high: float
+) -> None:
+    assert low < DIELECTRICS[name].relative_permittivity < high
+
+
 def surface_wave_slowing(a: float, b: float, permittivity: complex, hertz: float) -> complex:
     """Exact kz / k - 1 of the TM01 wave on a perfectly conducting wire with a sleeve.
 
@@ -209,6 +220,11 @@ def test_a_sleeve_too_thick_for_the_frequency_is_refused() -> None:
     coated_wire(1e-3, sleeve, 0.999 * highest_frequency_hz(sleeve))
     with pytest.raises(OutOfRange, match="frequency_hz"):
         coated_wire(1e-3, sleeve, 1.001 * highest_frequency_hz(sleeve))
+
+
+def test_a_denser_dielectric_is_thin_to_a_lower_frequency() -> None:
+    ratio = highest_frequency_hz(Sleeve(2e-3, 1.0)) / highest_frequency_hz(Sleeve(2e-3, 4.0))
+    assert ratio == pytest.approx(2.0, rel=1e-12)
 
 
 def test_a_permittivity_below_vacuum_is_refused() -> None:

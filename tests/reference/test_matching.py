@@ -201,6 +201,15 @@ def test_a_load_with_the_targets_resistance_needs_one_element() -> None:
     assert single[0].series.reactance_ohm == pytest.approx(-30.0, rel=1e-12)
 
 
+def test_a_load_with_the_targets_conductance_keeps_its_one_element_whatever_the_rounding() -> None:
+    for target in np.linspace(10.0, 300.0, 100).tolist():
+        networks = l_networks(1 / (1 / target + 0.007j), target, 7e6, 100.0)
+        single = [network for network in networks if network.series.kind is Kind.NONE]
+        assert len(single) == 1, target
+        # A double root is known to the square root of the rounding.
+        assert single[0].shunt.reactance_ohm == pytest.approx(1 / 0.007, rel=1e-6)
+
+
 @pytest.mark.parametrize("ratio", [1.0, 4.0, 9.0, 0.25])
 def test_a_transformer_divides_impedance_by_its_ratio(ratio: float) -> None:
     transformer = Transformer(ratio, loss_db=0.2)

@@ -193,10 +193,8 @@ def _kind(sign: float, *, shunt: bool) -> Kind:
 def _real_roots(a2: float, a1: float, a0: float) -> tuple[float, ...]:
     if a2 == 0.0:
         return (-a0 / a1,) if a1 != 0.0 else ()
+    # A double root lost to rounding here is a simple one of the other form, with one element.
     discriminant = a1 * a1 - 4.0 * a2 * a0
-    # A double root, as of a load that has the target's conductance, is not lost to rounding.
-    if discriminant < 0.0 and discriminant > -1e-14 * (a1 * a1 + abs(4.0 * a2 * a0)):
-        discriminant = 0.0
     if discriminant < 0.0:
         return ()
     # The sum of equal signs loses no digits; the other root follows from the product.
