@@ -235,13 +235,11 @@ def _antiderivative(
     # R - |u| written without cancellation
     argument = k * np.where(adding, safe_reach, separation**2 / safe_reach)
     si, ci = sici(np.where(argument > 0.0, argument, 1.0))
-    integral = np.where(axial & ~adding, -np.log(safe_reach), ci) - 1j * np.where(
-        axial & ~adding, 0.0, si - pi / 2.0
-    )
+    integral = np.asarray(ci - 1j * (si - pi / 2.0), dtype=complex)
+    integral[axial & ~adding] = -np.log(safe_reach[axial & ~adding])
     leading = np.euler_gamma + np.log(k) + 0.5j * pi
     at_tip = np.where(adding, leading, 0.0)
-    result: ComplexArray = direction * np.where(touching, at_tip, integral)
-    return result
+    return (direction * np.where(touching, at_tip, integral)).astype(complex, copy=False)
 
 
 def _referred(

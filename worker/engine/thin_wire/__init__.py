@@ -7,7 +7,12 @@ through `ReflectedPotentials`.
 
 from worker.engine.thin_wire.reflection import ReflectedPotentials
 from worker.engine.thin_wire.wire import (
+    GAP_RANGE_RADII,
+    LENGTH_RANGE_WAVELENGTHS,
     MODEL,
+    PORT_CLEARANCE_RADII,
+    RADIUS_RANGE_WAVELENGTHS,
+    SHORTEST_LENGTH_RADII,
     FeedImpedance,
     WireCurrent,
     current,
@@ -15,7 +20,12 @@ from worker.engine.thin_wire.wire import (
 )
 
 __all__ = [
+    "GAP_RANGE_RADII",
+    "LENGTH_RANGE_WAVELENGTHS",
     "MODEL",
+    "PORT_CLEARANCE_RADII",
+    "RADIUS_RANGE_WAVELENGTHS",
+    "SHORTEST_LENGTH_RADII",
     "FeedImpedance",
     "ReflectedPotentials",
     "WireCurrent",

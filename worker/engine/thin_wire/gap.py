@@ -15,6 +15,7 @@ tube; T. T. Wu and R. W. P. King, The thick tubular transmitting antenna (1967),
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 from math import factorial, pi, sqrt
 
 import numpy as np
@@ -157,11 +158,16 @@ def _tube_spectrum(
     wire_term = 2.0j * pi * k / FREE_SPACE_IMPEDANCE_OHM * wire_impedance
     response = 1.0 / (gamma**2 * i0e(x) * k0e(x) + wire_term[:, None])
     weight = step * (response - _static_response(zeta, radius))
-    node, node_weight = legendre.leggauss(40)
+    node, node_weight = _gauss_rule()
     reach = (9.0 / sigma)[:, None]
     static_zeta = reach * (node + 1.0) / 2.0
     static_weight = reach * node_weight / 2.0 * _static_response(static_zeta, radius)
     return _TubeSpectrum(zeta, weight, static_zeta, static_weight)
+
+
+@cache
+def _gauss_rule() -> tuple[FloatArray, FloatArray]:
+    return legendre.leggauss(40)
 
 
 def _static_response(zeta: FloatArray, radius: FloatArray) -> FloatArray:

@@ -16,6 +16,7 @@ from worker.engine.thin_wire.basis import END_ELEMENT_RADII, NEXT_ELEMENT_RADII
 
 FloatArray = NDArray[np.float64]
 
+_BISECTIONS = 26
 _LAST_TWO_RADII = END_ELEMENT_RADII + NEXT_ELEMENT_RADII
 
 
@@ -68,7 +69,7 @@ def element_breaks(wires: HalfWires, grading: Grading, count: int) -> FloatArray
     target = _cumulative_density(inner, wires, grading) * np.arange(1, count) / count
     low = np.zeros(target.shape)
     high = np.broadcast_to(inner, target.shape).copy()
-    for _ in range(40):
+    for _ in range(_BISECTIONS):
         middle = 0.5 * (low + high)
         below = _cumulative_density(middle, wires, grading) < target
         low = np.where(below, middle, low)

@@ -22,7 +22,7 @@ from functools import cache
 from math import log, pi
 
 import numpy as np
-from numpy.polynomial import chebyshev, legendre, polynomial
+from numpy.polynomial import chebyshev, legendre
 from numpy.typing import NDArray
 from scipy.special import ellipe, ellipkm1
 
@@ -168,15 +168,19 @@ def scaled_moments(x: FloatArray, count: int) -> FloatArray:
     return moments
 
 
-def _small_moments(x: FloatArray, count: int) -> FloatArray:
+@cache
+def _small_moment_coefficients(count: int) -> FloatArray:
+    """Coefficients (2 * count, terms): plain parts, then factors of ln x, by powers of x^2."""
     alpha, beta = _series_coefficients()
-    logarithm = np.log(np.maximum(x, 1e-300))
-    square = x * x
-    moments = np.empty((count, *x.shape))
-    for i in range(count):
-        order = 2.0 * np.arange(_SERIES_TERMS) + i + 1.0
-        plain = polynomial.polyval(square, alpha / order - beta / order**2)
-        moments[i] = x * (plain + logarithm * polynomial.polyval(square, beta / order))
+    order = np.arange(count)[:, None] + 2.0 * np.arange(_SERIES_TERMS) + 1.0
+    return np.concatenate([alpha / order - beta / order**2, beta / order])
+
+
+def _small_moments(x: FloatArray, count: int) -> FloatArray:
+    powers = np.cumprod(np.broadcast_to(x * x, (_SERIES_TERMS - 1, x.size)), axis=0)
+    powers = np.concatenate([np.ones((1, x.size)), powers])
+    plain, logarithmic = np.split(_small_moment_coefficients(count) @ powers, 2)
+    moments: FloatArray = x * (plain + np.log(np.maximum(x, 1e-300)) * logarithmic)
     return moments
 
 

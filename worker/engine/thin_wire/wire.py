@@ -31,6 +31,7 @@ LENGTH_RANGE_WAVELENGTHS: Final = (0.05, 6.0)
 RADIUS_RANGE_WAVELENGTHS: Final = (1e-7, 5e-3)
 # A port stays this many radii away from the ends, and ports from each other.
 PORT_CLEARANCE_RADII: Final = 5.0
+SHORTEST_LENGTH_RADII: Final = 2.0 * PORT_CLEARANCE_RADII
 GAP_RANGE_RADII: Final = (1e-2, inf)
 
 # Permitted estimated error, relative to the impedance's magnitude.
