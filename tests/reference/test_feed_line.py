@@ -272,6 +272,11 @@ def test_twin_lead_loses_more_than_the_resistance_of_its_wires_alone() -> None:
     assert wires_db_per_m < float(conductor + dielectric) < 1.5 * wires_db_per_m
 
 
+def test_one_law_fits_the_points_of_every_line_within_their_rounding() -> None:
+    for line in FEED_LINES.values():
+        assert line.attenuation.largest_misfit < 0.1, line.name
+
+
 def test_a_fit_through_more_points_states_its_misfit() -> None:
     law = fit_attenuation([1e6, 4e6, 9e6], [0.01, 0.021, 0.03])
     conductor, dielectric = law.terms_db_per_m([1e6, 4e6, 9e6])
