@@ -1,0 +1,56 @@
+"""The application: settings in, routes, pages and guards put together."""
+
+from __future__ import annotations
+
+from collections.abc import AsyncIterator
+from contextlib import ExitStack, asynccontextmanager, closing
+from importlib.metadata import metadata
+
+from fastapi import FastAPI
+
+from service.api import band_lists, candidates, designs, health, openapi, problem_kinds, problems
+from service.api.guard import Guard
+from service.doorbell import Doorbell
+from service.pages import routes as pages
+from service.settings import Settings
+from service.store.session import Store, open_store
+
+
+def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
+    """Put the application together.
+
+    Parameters
+    ----------
+    settings : Settings
+    store : Store, optional
+        One that is open already and stays its owner's; by default the application opens
+        the one its settings name when it starts, and closes it when it ends.
+    """
+
+    @asynccontextmanager
+    async def lifespan(app: FastAPI) -> AsyncIterator[None]:
+        with ExitStack() as opened:
+            if store is None:
+                app.state.store = opened.enter_context(closing(open_store(settings)))
+            app.state.doorbell = opened.enter_context(closing(Doorbell(settings)))
+            yield
+
+    package = metadata("spanwright")
+    app = FastAPI(
+        title="Spanwright",
+        version=package["Version"],
+        description=package["Summary"],
+        lifespan=lifespan,
+        # The ready-made browsers of the description load scripts from other hosts.
+        docs_url=None,
+        redoc_url=None,
+    )
+    if store is not None:
+        app.state.store = store
+    problems.install(app)
+    for each in (designs, candidates, band_lists, health, problem_kinds, pages):
+        app.include_router(each.router)
+    app.mount("/static", pages.static_files, name="static")
+    app.add_middleware(Guard)
+    openapi.describe(app)
+    return app

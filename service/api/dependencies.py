@@ -1,0 +1,74 @@
+"""What routes are given: the store, the doorbell, a request read from the body."""
+
+from __future__ import annotations
+
+from typing import Annotated, Final
+
+from fastapi import Depends, Header, Path, Request
+
+from service.api.problems import MediaTypeRefused
+from service.contracts.request import (
+    LARGEST_REQUEST_BYTES,
+    MOST_CANDIDATES,
+    DesignRequest,
+    parse_request,
+)
+from service.doorbell import Doorbell
+from service.store.session import Store
+
+_JSON: Final = "application/json"
+LONGEST_KEY: Final = 200
+
+
+def store_of(request: Request) -> Store:
+    """The store that the application opened."""
+    store: Store = request.app.state.store
+    return store
+
+
+def doorbell_of(request: Request) -> Doorbell:
+    """The bell that tells the workers of new work."""
+    doorbell: Doorbell = request.app.state.doorbell
+    return doorbell
+
+
+async def design_request(request: Request) -> DesignRequest:
+    """Read a design request from the body, by the contract that every way in shares.
+
+    Raises
+    ------
+    MediaTypeRefused
+        If the body is not plain JSON.
+    RequestRefused
+        If it is too large, malformed, or breaks the contract.
+    """
+    media_type = request.headers.get("content-type", "").partition(";")[0].strip().lower()
+    if media_type != _JSON:
+        raise MediaTypeRefused("Content-Type", media_type, f"Send the request as {_JSON}.")
+    coding = request.headers.get("content-encoding", "identity")
+    if coding != "identity":
+        raise MediaTypeRefused("Content-Encoding", coding, "Send the request uncompressed.")
+    body = bytearray()
+    async for part in request.stream():
+        body += part
+        if len(body) > LARGEST_REQUEST_BYTES:
+            break  # the contract refuses it by what has come so far
+    return parse_request(bytes(body))
+
+
+StoreHere = Annotated[Store, Depends(store_of)]
+DoorbellHere = Annotated[Doorbell, Depends(doorbell_of)]
+RequestedDesign = Annotated[DesignRequest, Depends(design_request)]
+DesignId = Annotated[str, Path(description="Identifier of the design")]
+Rank = Annotated[
+    int, Path(ge=1, le=MOST_CANDIDATES, description="Rank of the candidate, 1 is the best")
+]
+IdempotencyKey = Annotated[
+    str | None,
+    Header(
+        alias="Idempotency-Key",
+        min_length=1,
+        max_length=LONGEST_KEY,
+        description="A name of the sender's own for this request: sent again, it is one design.",
+    ),
+]

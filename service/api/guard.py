@@ -1,0 +1,87 @@
+"""What stands around every answer: its headers, HEAD, and the last resort."""
+
+from __future__ import annotations
+
+from typing import Final
+
+from starlette.datastructures import MutableHeaders
+from starlette.requests import Request
+from starlette.types import ASGIApp, Message, Receive, Scope, Send
+
+from service.api.problems import answer_unexpected
+
+#: Own files only: no script or style in the page itself, no frame, no other host.
+_CONTENT_SECURITY_POLICY: Final = "; ".join(
+    (
+        "default-src 'none'",
+        "base-uri 'none'",
+        "connect-src 'self'",
+        "font-src 'self'",
+        "form-action 'self'",
+        "frame-ancestors 'none'",
+        "img-src 'self'",
+        "script-src 'self'",
+        "style-src 'self'",
+    )
+)
+
+_ALWAYS: Final = {
+    "Content-Security-Policy": _CONTENT_SECURITY_POLICY,
+    "X-Content-Type-Options": "nosniff",
+    "X-Frame-Options": "DENY",
+    "Referrer-Policy": "no-referrer",
+    "Cross-Origin-Opener-Policy": "same-origin",
+    "Cross-Origin-Resource-Policy": "same-origin",
+    "Permissions-Policy": "camera=(), geolocation=(), microphone=()",
+}
+
+#: Files of ours are named with their content's hash, so that they never change.
+_KEEP: Final = "public, max-age=31536000, immutable"
+_ASK_AGAIN: Final = "no-cache"
+
+
+class Guard:
+    """Adds headers to every answer, answers HEAD as GET without a body, and never leaks a trace.
+
+    Parameters
+    ----------
+    app : ASGIApp
+        What is guarded.
+    """
+
+    def __init__(self, app: ASGIApp) -> None:
+        self._app = app
+
+    async def __call__(self, scope: Scope, receive: Receive, send: Send) -> None:
+        """Serve one request."""
+        if scope["type"] != "http":
+            await self._app(scope, receive, send)
+            return
+        without_body = scope["method"] == "HEAD"
+        inner: Scope = {**scope, "method": "GET"} if without_body else scope
+        started = False
+
+        async def guarded_send(message: Message) -> None:
+            nonlocal started
+            if message["type"] == "http.response.start":
+                started = True
+                _add_headers(message, scope)
+            elif message["type"] == "http.response.body" and without_body:
+                message = {**message, "body": b""}
+            await send(message)
+
+        try:
+            await self._app(inner, receive, guarded_send)
+        except Exception as error:
+            if started:
+                raise
+            answer = answer_unexpected(error, Request(inner))
+            await answer(inner, receive, guarded_send)
+
+
+def _add_headers(message: Message, scope: Scope) -> None:
+    headers = MutableHeaders(scope=message)
+    for name, value in _ALWAYS.items():
+        headers.setdefault(name, value)
+    named_by_content = scope["path"].startswith("/static/") and scope["query_string"]
+    headers.setdefault("Cache-Control", _KEEP if named_by_content else _ASK_AGAIN)

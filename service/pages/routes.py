@@ -1,0 +1,103 @@
+"""The pages: the same contract objects as the API, set for reading; nothing is computed."""
+
+from __future__ import annotations
+
+from typing import Annotated, Final
+
+from fastapi import APIRouter, Depends, Query, Request
+from fastapi.responses import HTMLResponse
+from starlette.staticfiles import StaticFiles
+
+from service.contracts.candidate import Candidate
+from service.contracts.progress import Design, DesignSummary
+from service.contracts.report import FeedReport
+from service.pages.templating import STATIC, render
+from service.store import designs
+from service.store.session import Store
+
+PER_PAGE: Final = 20
+#: Seconds after which a page of a design that is not done asks again, without scripts.
+REFRESH_S: Final = 3
+#: Every this many points of the sweep make a line in the table behind its plot.
+SWEEP_STRIDE: Final = 6
+
+router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
+static_files = StaticFiles(directory=STATIC)
+
+
+def store_of(request: Request) -> Store:
+    """The store that the application opened."""
+    store: Store = request.app.state.store
+    return store
+
+
+StoreHere = Annotated[Store, Depends(store_of)]
+
+
+@router.get("/")
+def list_page(
+    request: Request, store: StoreHere, before: Annotated[str | None, Query()] = None
+) -> HTMLResponse:
+    """Show the stored designs, newest first, with the best candidate of each."""
+    page = designs.page(store, limit=PER_PAGE, before=before)
+    lines = [(each, _best_of(store, each)) for each in page.designs]
+    address = str(request.base_url).rstrip("/")
+    return HTMLResponse(
+        render(
+            "designs.html",
+            lines=lines,
+            next_before=page.next_before,
+            is_first=before is None,
+            address=address,
+            refresh_s=None,
+        )
+    )
+
+
+@router.get("/designs/{design_id}")
+def design_page(store: StoreHere, design_id: str) -> HTMLResponse:
+    """Show one design: request, progress, and once done its ranking and best candidate."""
+    design = designs.get(store, design_id)
+    best = design.result.candidates[0] if design.result and design.result.candidates else None
+    report = designs.report(store, design_id, best.rank) if best else None
+    waiting = design.state in {"queued", "running"}
+    return HTMLResponse(
+        render(
+            "design.html",
+            design=design,
+            refresh_s=REFRESH_S if waiting else None,
+            **_sheet(design, best, report),
+        )
+    )
+
+
+@router.get("/designs/{design_id}/candidates/{rank}")
+def candidate_page(store: StoreHere, design_id: str, rank: int) -> HTMLResponse:
+    """Show one candidate's feed-impedance report."""
+    design = designs.get(store, design_id)
+    candidate = designs.candidate(store, design_id, rank)
+    report = designs.report(store, design_id, rank)
+    return HTMLResponse(
+        render("candidate.html", design=design, refresh_s=None, **_sheet(design, candidate, report))
+    )
+
+
+def _best_of(store: Store, summary: DesignSummary) -> Candidate | None:
+    """The first candidate of a design that is done and found any."""
+    return designs.candidate(store, summary.id, 1) if summary.state == "done" else None
+
+
+def _sheet(
+    design: Design, candidate: Candidate | None, report: FeedReport | None
+) -> dict[str, object]:
+    """What the sheet of one candidate shows: its bands beside their edges and their report."""
+    if candidate is None or report is None:
+        return {"candidate": None}
+    return {
+        "candidate": candidate,
+        "report": report,
+        "bands": tuple(zip(candidate.bands, design.request.bands, report.bands, strict=True)),
+        "sweep": report.sweep[::SWEEP_STRIDE],
+        "sweep_stride": SWEEP_STRIDE,
+        "target_ohm": report.reference_ohm * report.transformer_ratio,
+    }
