@@ -11,8 +11,18 @@ from service.contracts.refusals import rule_broken
 
 MOST_RATIOS: Final = 12
 
-#: Feed lines by their standard designation; the engine holds their constants.
-LineName = Literal["RG-58", "RG-213"]
+#: Feed lines by standard designation or construction; the engine holds their constants.
+LineName = Literal[
+    "rg-58",
+    "rg-213",
+    "rg-8x",
+    "rg-174",
+    "rg-59",
+    "rg-11",
+    "twin-lead-300",
+    "window-line-450",
+    "open-wire-600",
+]
 LINE_NAMES: Final[tuple[str, ...]] = get_args(LineName)
 
 

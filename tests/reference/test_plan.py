@@ -34,7 +34,7 @@ def forty_and_fifteen(length_limit_m: float = 22.0) -> PlannedDesign:
         "feed": {"reference_ohm": 50.0, "transformer_ratios": [1.0, 1.5, 2.0]},
         "candidates": 3,
     }
-    return plan(parse_request(json.dumps(request)), lambda part, step: None)
+    return plan(parse_request(json.dumps(request)), lambda _part, _step: None)
 
 
 def resonance(order: int) -> ResonanceLine:

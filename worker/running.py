@@ -1,0 +1,181 @@
+"""Running one job: claim, plan under a heartbeat, finish. What both carriers of work share."""
+
+from __future__ import annotations
+
+import logging
+import os
+import threading
+import time
+from collections.abc import Callable
+from enum import Enum
+from typing import Final
+
+from service.contracts.candidate import PlannedDesign
+from service.contracts.progress import Progress
+from service.contracts.request import DesignRequest
+from service.errors import SpanwrightError, StoreUnavailable
+from service.settings import Settings
+from service.store import jobs
+from service.store.jobs import Beat, ClaimedJob
+from service.store.session import Store
+from worker.engine.errors import EngineError
+
+ProgressCallback = Callable[[float, str], None]
+PlanFunction = Callable[[DesignRequest, ProgressCallback], PlannedDesign]
+
+_log = logging.getLogger(__name__)
+
+#: Progress is stored at most so often; a cancelling is seen within the same time.
+_BEAT_S: Final = 1.0
+
+#: Status of a process that ended itself because planning would not stop.
+EXIT_WOULD_NOT_STOP: Final = 75
+
+
+class Outcome(Enum):
+    """What came of running one job."""
+
+    DONE = "done"
+    FAILED = "failed"
+    CANCELLED = "cancelled"
+    OVERDUE = "overdue"
+    LOST = "lost"
+    RETURNED = "returned"
+
+
+class _StopPlanning(BaseException):
+    """Raised inside planning by its progress callback; no ``except Exception`` may eat it."""
+
+
+def run_next(
+    store: Store, settings: Settings, plan: PlanFunction, worker: str, stopping: threading.Event
+) -> Outcome | None:
+    """Claim the next job and run it to its end; None if none waits.
+
+    Parameters
+    ----------
+    store : Store
+    settings : Settings
+    plan : callable
+        The planning itself: request and progress callback in, planned design out.
+    worker : str
+        Name of this worker, for the record.
+    stopping : Event
+        Set when this process was asked to stop: the job is given back.
+    """
+    if not jobs.any_queued(store):
+        return None
+    job = jobs.claim(store, worker, settings.lease_s)
+    if job is None:
+        return None
+    _log.info("design %s: attempt %d begins", job.design_id, job.attempt)
+    heart = _Heart(store, settings, job, stopping)
+    heart.start()
+    try:
+        outcome = _run(store, job, plan, heart)
+    except StoreUnavailable:
+        # The lease runs out and the job is planned again: late, but not lost.
+        _log.exception("design %s: its end could not be stored", job.design_id)
+        outcome = Outcome.LOST
+    finally:
+        heart.stop()
+    _log.info("design %s: %s", job.design_id, outcome.value)
+    return outcome
+
+
+def _run(store: Store, job: ClaimedJob, plan: PlanFunction, heart: _Heart) -> Outcome:
+    try:
+        planned = plan(job.request, heart.tell)
+    except _StopPlanning:
+        return heart.settle()
+    except EngineError as error:
+        return _failed(store, job, f"The request lies outside what can be planned: {error}.")
+    except SpanwrightError as error:
+        return _failed(store, job, error.detail)
+    except Exception as error:  # noqa: BLE001  # whatever broke, the job must end with a reason and not loop
+        _log.exception("design %s: planning broke down", job.design_id)
+        kind = type(error).__name__
+        return _failed(
+            store, job, f"Planning broke down ({kind}). This is our fault; the log tells more."
+        )
+    heart.stop()
+    return Outcome.DONE if jobs.finish(store, job, planned) else Outcome.LOST
+
+
+def _failed(store: Store, job: ClaimedJob, reason: str) -> Outcome:
+    return Outcome.FAILED if jobs.fail(store, job, reason) else Outcome.LOST
+
+
+class _Heart:
+    """Renews the lease of one job from a thread of its own, and learns whether to go on.
+
+    Planning is asked to stop at its next word of progress; if none comes within the grace,
+    the job is settled from here and the process ends, for a thread cannot be stopped.
+    """
+
+    def __init__(
+        self, store: Store, settings: Settings, job: ClaimedJob, stopping: threading.Event
+    ) -> None:
+        self._store, self._settings, self._job = store, settings, job
+        self._stopping = stopping
+        self._progress = Progress(fraction=0.0, step="taken up by a worker")
+        self._verdict: Outcome | None = None
+        self._ended = threading.Event()
+        self._settled = threading.Lock()
+        self._overdue_at = time.monotonic() + settings.job_deadline_s
+        self._thread = threading.Thread(target=self._beat, name="heartbeat", daemon=True)
+
+    def start(self) -> None:
+        """Begin to beat."""
+        self._thread.start()
+
+    def stop(self) -> None:
+        """End the beat; the job is left as it is."""
+        self._ended.set()
+        if self._thread.is_alive():
+            self._thread.join()
+
+    def tell(self, fraction: float, step: str) -> None:
+        """Take a word of progress from planning; ends planning where it must not go on."""
+        self._progress = Progress(fraction=min(1.0, max(0.0, fraction)), step=step[:200])
+        if self._verdict is not None or self._stopping.is_set():
+            raise _StopPlanning
+
+    def settle(self) -> Outcome:
+        """Store how a job ended that was stopped, and say it."""
+        with self._settled:
+            verdict = self._verdict or Outcome.RETURNED
+            if verdict is Outcome.CANCELLED:
+                jobs.stop_cancelled(self._store, self._job)
+            elif verdict is Outcome.OVERDUE:
+                jobs.fail(
+                    self._store,
+                    self._job,
+                    f"It ran longer than the {self._settings.job_deadline_s:.0f} s a design may "
+                    "take. Ask for fewer bands, conductors or a shorter span.",
+                )
+            elif verdict is Outcome.RETURNED:
+                jobs.release(self._store, self._job)
+            return verdict
+
+    def _beat(self) -> None:
+        pause_s = min(_BEAT_S, self._settings.heartbeat_s)
+        while not self._ended.wait(pause_s):
+            self._verdict = self._learn()
+            if self._verdict is not None or self._stopping.is_set():
+                break
+        if not self._ended.wait(self._settings.cancel_grace_s):
+            self.settle()
+            _log.error("design %s: planning would not stop, ending", self._job.design_id)
+            os._exit(EXIT_WOULD_NOT_STOP)
+
+    def _learn(self) -> Outcome | None:
+        if time.monotonic() > self._overdue_at:
+            return Outcome.OVERDUE
+        try:
+            beat = jobs.heartbeat(self._store, self._job, self._progress, self._settings.lease_s)
+        except StoreUnavailable:
+            # Away for long: go on, and find out at the end whether the job is still ours.
+            _log.warning("design %s: no heartbeat, the store is away", self._job.design_id)
+            return None
+        return {Beat.CANCELLED: Outcome.CANCELLED, Beat.LOST: Outcome.LOST}.get(beat)
