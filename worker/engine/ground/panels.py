@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import factorial
 from typing import Final
 
 import numpy as np
@@ -13,8 +14,8 @@ from worker.engine.ground.spectrum import Complex, Count, Real, reflected
 NODES: Final[int] = 12
 """Chebyshev nodes a panel; the polynomials are of degree NODES - 1."""
 
-_LONGEST_PANEL_RAD: Final[float] = 0.75 * 2.0 * np.pi
-_BEAT_RAD: Final[float] = 10.0
+_LONGEST_PANEL_RAD: Final[float] = 4.0 * np.pi
+_FACTORIAL: Final[float] = float(factorial(NODES - 2))
 _MOST_HALVINGS: Final[int] = 6
 
 
@@ -118,16 +119,16 @@ def resolve(eps: Complex, drop: Real, reach_rad: Real, tolerance: float) -> list
 def _starting_edges(eps: complex, drop: float, reach_rad: float, tolerance: float) -> Real:
     """Panels that double from the height on, since the functions vary on the scale of R1.
 
-    As long as the lateral wave exp(-j k1 rho) may exceed the tolerance, a panel holds little more
-    than one beat between it and the image.
+    Where the lateral wave exp(-j k1 rho) is felt, its beat with the image limits their length:
+    a beat of phase x either way has Chebyshev coefficients of about (x / 2)**n / n!.
     """
     branch, ground_wavenumber = np.sqrt(eps - 1.0), np.sqrt(eps)
-    beat_rad = _BEAT_RAD / max(abs(ground_wavenumber - 1.0), 1e-9)
+    beats = max(abs(ground_wavenumber - 1.0), 1e-9)
     edges = [0.0]
     while (at := edges[-1]) < reach_rad:
         ripple = np.exp(-drop * branch.real + ground_wavenumber.imag * at) / (1.0 + at)
-        longest = _LONGEST_PANEL_RAD if ripple < 10.0 * tolerance else beat_rad
-        edges.append(at + min(max(drop, at), longest, _LONGEST_PANEL_RAD))
+        phase = 2.0 * (_FACTORIAL * tolerance / max(ripple, 1e-30)) ** (1.0 / (NODES - 2))
+        edges.append(at + min(max(drop, at), 2.0 * phase / beats, _LONGEST_PANEL_RAD))
     return np.asarray(edges) * (reach_rad / edges[-1])
 
 
