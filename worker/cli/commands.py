@@ -162,11 +162,17 @@ def bands(
 
 
 @app.command()
-def serve() -> None:
+def serve(
+    workers: Annotated[
+        bool, typer.Option("--workers/--no-workers", help="Whether workers run here too.")
+    ] = True,
+) -> None:
     """Run the API, the pages and the workers on this machine until stopped."""
-    serve_until_stopped(
-        lambda address: err.print(f"Spanwright serves at {address} (Ctrl-C stops).")
-    )
+
+    def announce(address: str) -> None:
+        err.print(f"Spanwright serves at {address} (Ctrl-C stops it).")
+
+    serve_until_stopped(announce, workers=workers)
 
 
 @app.command()
