@@ -1,8 +1,8 @@
 """Errors that the engine raises.
 
-    EngineError
-    ├── OutOfRange       an input lies outside the range where the method holds
-    └── NotConverged     an iteration or a refinement stopped short of its tolerance
+EngineError
+├── OutOfRange       an input lies outside the range where the method holds
+└── NotConverged     an iteration or a refinement stopped short of its tolerance
 """
 
 from __future__ import annotations
@@ -44,8 +44,7 @@ class OutOfRange(EngineError, ValueError):
         self.unit = unit
         suffix = f" {unit}" if unit else ""
         super().__init__(
-            f"{quantity} = {value:.6g}{suffix} is outside the range "
-            f"{low:.6g} to {high:.6g}{suffix}"
+            f"{quantity} = {value:.6g}{suffix} is outside the range {low:.6g} to {high:.6g}{suffix}"
         )
 
     def __reduce__(self) -> tuple[type[OutOfRange], tuple[str, float | complex, float, float, str]]:

@@ -5,14 +5,17 @@ always a uniform field over a gap of stated width, by default the wire's radius.
 through `ReflectedPotentials`.
 """
 
-from worker.engine.thin_wire.reflection import ReflectedPotentials
-from worker.engine.thin_wire.wire import (
+from worker.engine.thin_wire.batch import (
     GAP_RANGE_RADII,
     LENGTH_RANGE_WAVELENGTHS,
-    MODEL,
+    LOWEST_HEIGHT_RADII,
     PORT_CLEARANCE_RADII,
     RADIUS_RANGE_WAVELENGTHS,
     SHORTEST_LENGTH_RADII,
+)
+from worker.engine.thin_wire.reflection import ReflectedPotentials
+from worker.engine.thin_wire.wire import (
+    MODEL,
     FeedImpedance,
     WireCurrent,
     current,
@@ -22,6 +25,7 @@ from worker.engine.thin_wire.wire import (
 __all__ = [
     "GAP_RANGE_RADII",
     "LENGTH_RANGE_WAVELENGTHS",
+    "LOWEST_HEIGHT_RADII",
     "MODEL",
     "PORT_CLEARANCE_RADII",
     "RADIUS_RANGE_WAVELENGTHS",

@@ -26,8 +26,8 @@ class Grading:
 
     Parameters
     ----------
-    largest_wavelengths
-        Size far from ends and ports, in wavelengths.
+    largest_wavelengths, largest_heights
+        Size far from ends and ports, in wavelengths and in heights above ground.
     end_growth
         Size over distance to the end.
     port_sigmas
@@ -36,19 +36,21 @@ class Grading:
         Size over distance to a port.
     """
 
-    largest_wavelengths: float = 0.2
-    end_growth: float = 1.4
-    port_sigmas: float = 2.0
-    port_growth: float = 1.2
+    largest_wavelengths: float
+    largest_heights: float
+    end_growth: float
+    port_sigmas: float
+    port_growth: float
 
 
 @dataclass(frozen=True, slots=True)
 class HalfWires:
-    """Half wires and their ports: radius, half length and wavelength (B,), ports (B, P)."""
+    """Half wires (B,), wavelength and height above ground (inf without), and ports (B, P)."""
 
     half_length_m: FloatArray
     radius_m: FloatArray
     wavelength_m: FloatArray
+    height_m: float
     port_distance_m: FloatArray
     sigma_m: FloatArray
 
@@ -83,7 +85,10 @@ def element_breaks(wires: HalfWires, grading: Grading, count: int) -> FloatArray
 def _cumulative_density(z: FloatArray, wires: HalfWires, grading: Grading) -> FloatArray:
     """Integral of 1 / size from the centre to z, of shape (B, n)."""
     half = wires.half_length_m[:, None]
-    total = z / (grading.largest_wavelengths * wires.wavelength_m[:, None])
+    largest = np.minimum(
+        grading.largest_wavelengths * wires.wavelength_m, grading.largest_heights * wires.height_m
+    )
+    total = z / largest[:, None]
     total = total + np.log(half / (half - z)) / grading.end_growth
     for position, sigma in zip(wires.port_distance_m.T, wires.sigma_m.T, strict=True):
         scale = grading.port_growth / (grading.port_sigmas * sigma[:, None])
