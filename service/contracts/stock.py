@@ -30,6 +30,24 @@ MaterialName = Literal[
 ]
 MATERIAL_NAMES: Final[tuple[str, ...]] = get_args(MaterialName)
 
+# Where a name in words says it better than its spelling.
+_IN_WORDS: Final = {
+    "hard-drawn-copper": "hard-drawn copper",
+    "copper-clad-steel-30": "copper-clad steel, 30 %",
+    "copper-clad-steel-40": "copper-clad steel, 40 %",
+    "aluminium-1350-h19": "aluminium 1350-H19",
+    "aluminium-6061-t6": "aluminium 6061-T6",
+    "aluminium-6063-t5": "aluminium 6063-T5",
+    "aluminium-6063-t6": "aluminium 6063-T6",
+    "phosphor-bronze-c51000": "phosphor bronze C51000",
+    "phosphor-bronze-c50500": "phosphor bronze C50500",
+}
+
+
+def material_in_words(material: str) -> str:
+    """A material as a buyer would write it."""
+    return _IN_WORDS.get(material, material.replace("-", " "))
+
 
 class Insulation(Contract):
     """A dielectric sleeve on the wire."""
@@ -73,7 +91,7 @@ class Conductor(Contract):
         """The conductor as a buyer would ask for it."""
         size = f"{self.bare_diameter_mm:.2f} mm" if self.awg is None else f"AWG {self.awg}"
         sleeve = "" if self.insulation is None else ", insulated"
-        return f"{size} {self.material.replace('-', ' ')}{sleeve}"
+        return f"{size} {material_in_words(self.material)}{sleeve}"
 
 
 class DiameterRange(Contract):

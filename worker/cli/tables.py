@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterable
 from typing import Final
 
+from rich.box import SIMPLE_HEAD
 from rich.console import Console, Group, RenderableType
 from rich.padding import Padding
-from rich.panel import Panel
 from rich.table import Table
 from rich.text import Text
 
@@ -112,7 +112,7 @@ def show_error(console: Console, error: SpanwrightError) -> None:
 
 def swr_strip(band: BandReport, limit: float) -> str:
     """The SWR across a band as a strip of blocks: full height is twice the limit or more."""
-    points = band.grid[:: max(1, len(band.grid) // 20)]
+    points = band.grid[:: max(1, len(band.grid) // 10)]
     top = 2.0 * limit - 1.0
     cells = []
     for point in points:
@@ -123,7 +123,7 @@ def swr_strip(band: BandReport, limit: float) -> str:
 
 def _ranking(result: DesignResult) -> Table:
     table = _table("Candidates, best first")
-    for title in ("rank", "length m", "conductor", "transformer", "required", "width", "worst SWR"):
+    for title in ("rank", "length m", "conductor", "ratio", "required", "width", "worst SWR"):
         table.add_column(title, justify="left" if title == "conductor" else "right")
     for each in result.candidates:
         table.add_row(
@@ -136,38 +136,44 @@ def _ranking(result: DesignResult) -> Table:
             formats.swr(each.swr_worst),
         )
     table.caption = (
-        "required: required bands served whole; width: part of all bands within the limit, "
-        "by weight; worst SWR: over the bands served whole"
+        "required: required bands served whole; width: part of all bands within the limit, by "
+        "weight; worst SWR: over the bands served whole. Below, bands in brackets are wished for; "
+        "MHz and off: the resonance used and how far it lies from the band's centre; low, mid, "
+        "high: SWR at edges and centre."
     )
     return table
 
 
 def _candidate(candidate: Candidate, report: FeedReport | None) -> RenderableType:
     strips = {band.name: band for band in report.bands} if report else {}
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
-    for title in ("band", "", "order", "resonance MHz", "offset kHz", "%"):
-        table.add_column(title, justify="left" if title in ("band", "") else "right")
-    for title in ("SWR low", "centre", "high"):
-        table.add_column(title, justify="right")
-    table.add_column("SWR over the band")
+    table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0))
+    for title in ("band", "service", "order", "MHz", "off kHz", "off %", "low", "mid", "high"):
+        left = title in ("band", "service")
+        table.add_column(title, justify="left" if left else "right", no_wrap=True)
+    table.add_column("SWR across", no_wrap=True)
     for each in candidate.bands:
         strip = swr_strip(strips[each.name], each.swr_limit) if each.name in strips else ""
         table.add_row(*_band_cells(each), strip, style=_SERVICE_STYLE[each.service])
+    heading = Text(f"{candidate.rank}.  {_wire_in_words(candidate)}", style="bold")
     reasons = [Text(f"{each.name}: {each.reason}") for each in candidate.bands]
-    body = Group(table, Text(), *reasons, Text(), Text(candidate.why), Text(candidate.compromise))
-    title = f"{candidate.rank}.  {formats.metres(candidate.length_m)} m of {candidate.conductor}"
-    return Panel(Padding(body, (0, 1)), title=title, title_align="left", border_style="dim")
+    body = (table, Text(), Text(candidate.why), Text(candidate.compromise), Text(), *reasons)
+    return Group(Text(), heading, Padding(Group(*body), (0, 0, 0, 4)))
+
+
+def _wire_in_words(candidate: Candidate) -> str:
+    code = f" [{candidate.item_code}]" if candidate.item_code else ""
+    return f"{formats.metres(candidate.length_m)} m of {candidate.conductor}{code}"
 
 
 def _band_cells(each: BandOutcome) -> tuple[str, ...]:
-    known = each.resonance_mhz is not None
+    worked = each.order is not None
     return (
-        each.name if each.required else f"{each.name} (wished)",
-        each.service,
-        "–" if each.order is None else str(each.order),
-        formats.mhz(each.resonance_mhz or 0.0) if known else "–",
-        formats.khz(each.offset_khz or 0.0) if known else "–",
-        formats.percent(each.offset_percent or 0.0) if known else "–",
+        each.name if each.required else f"({each.name})",
+        each.service.removesuffix(" served"),
+        str(each.order) if worked else "–",
+        formats.mhz(each.resonance_mhz or 0.0) if worked else "–",
+        formats.khz(each.offset_khz or 0.0) if worked else "–",
+        formats.percent(each.offset_percent or 0.0) if worked else "–",
         formats.swr(each.swr_low),
         formats.swr(each.swr_centre),
         formats.swr(each.swr_high),
@@ -185,4 +191,11 @@ def _point_cells(point: ReportPoint) -> tuple[str, ...]:
 
 
 def _table(title: str) -> Table:
-    return Table(title=title, title_justify="left", title_style="bold", caption_justify="left")
+    return Table(
+        title=title,
+        title_justify="left",
+        title_style="bold",
+        caption_justify="left",
+        box=SIMPLE_HEAD,
+        pad_edge=False,
+    )

@@ -5,6 +5,7 @@ from __future__ import annotations
 from service.contracts.formats import metres
 from service.contracts.report import Provenance
 from service.contracts.request import DesignRequest
+from service.contracts.stock import material_in_words
 from worker.engine import ENGINE_VERSION
 from worker.engine.thin_wire import MODEL
 from worker.search.appraisal import Appraisal
@@ -22,7 +23,7 @@ def provenance_of(request: DesignRequest, appraisal: Appraisal) -> Provenance:
         model=MODEL,
         source_gap_mm=0.5 * conductor.bare_diameter_mm,
         ground=ground_in_words(request),
-        conductor_loss=f"{insulated} {conductor.material.replace('-', ' ')} at 20 °C",
+        conductor_loss=f"{insulated} {material_in_words(conductor.material)} at 20 °C",
         largest_error_ohm=max(band.error_ohm for band in appraisal.bands),
         map_error_percent=100.0 * appraisal.largest_miss,
         not_modelled=NOT_MODELLED,

@@ -11,7 +11,7 @@ from worker.engine.ground import GROUND_CLASSES, Ground
 from worker.engine.hung_wire import GroundTables, HungWire
 from worker.engine.insulation import Sleeve
 from worker.engine.material import MATERIALS
-from worker.engine.thin_wire.wire import LENGTH_RANGE_WAVELENGTHS
+from worker.engine.thin_wire.batch import LENGTH_RANGE_WAVELENGTHS
 from worker.search.space import BandGoal, FloatArray, SearchSpace, Solved
 
 #: Tables reach beyond the longest wire, for maps are read at equal electrical length over a
