@@ -200,3 +200,33 @@ def test_names_are_escaped_in_a_drawing(report: FeedReport) -> None:
     svg = impedance_plot(report.model_copy(update={"bands": (wicked,)}))
     assert "<script>" not in svg
     assert "&lt;script&gt;&amp;" in svg
+
+
+def test_a_drawn_curve_passes_within_a_hair_of_every_stored_point(report: FeedReport) -> None:
+    root = drawn(impedance_plot(report))
+    path = next(p for p in root.iter(f"{SVG}path") if p.attrib["class"] == "curve resistance")
+    corners = [
+        tuple(map(float, corner.split())) for corner in path.attrib["d"].lstrip("M").split("L")
+    ]
+    low, high = report.sweep[0].frequency_mhz, report.sweep[-1].frequency_mhz
+    frequency = LogScale(low, high, corners[0][0], corners[-1][0])
+    first, last = report.sweep[0].resistance_ohm, report.sweep[-1].resistance_ohm
+    frame = next(r for r in root.iter(f"{SVG}rect") if r.attrib["class"] == "frame")
+    bottom = float(frame.attrib["y"]) + float(frame.attrib["height"])
+    impedance = CompressedScale(100.0, -5000.0, 10_000.0, bottom, float(frame.attrib["y"]))
+    assert impedance(first) == pytest.approx(corners[0][1], abs=0.06)
+    assert impedance(last) == pytest.approx(corners[-1][1], abs=0.06)
+    for point in report.sweep:
+        x, y = frequency(point.frequency_mhz), impedance(point.resistance_ohm)
+        nearest = min(_distance((x, y), a, b) for a, b in itertools.pairwise(corners))
+        assert nearest < 0.2  # a hair, and the rounding of the corners to a tenth
+
+
+def _distance(
+    point: tuple[float, float], start: tuple[float, ...], end: tuple[float, ...]
+) -> float:
+    """Distance of a point from a piece of a line, by projection."""
+    dx, dy = end[0] - start[0], end[1] - start[1]
+    along = ((point[0] - start[0]) * dx + (point[1] - start[1]) * dy) / (dx * dx + dy * dy)
+    along = min(max(along, 0.0), 1.0)
+    return math.hypot(point[0] - start[0] - along * dx, point[1] - start[1] - along * dy)

@@ -156,7 +156,8 @@ def _candidate(candidate: Candidate, report: FeedReport | None) -> RenderableTyp
         table.add_row(*_band_cells(each), strip, style=_SERVICE_STYLE[each.service])
     heading = Text(f"{candidate.rank}.  {_wire_in_words(candidate)}", style="bold")
     reasons = [Text(f"{each.name}: {each.reason}") for each in candidate.bands]
-    body = (table, Text(), Text(candidate.why), Text(candidate.compromise), Text(), *reasons)
+    body: list[RenderableType] = [table, Text(), Text(candidate.why), Text(candidate.compromise)]
+    body += [Text(), *reasons]
     return Group(Text(), heading, Padding(Group(*body), (0, 0, 0, 4)))
 
 

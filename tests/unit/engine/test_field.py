@@ -21,8 +21,7 @@ from worker.engine.field import (
     radiated_power,
     radiation_intensity,
 )
-from worker.engine.ground import GROUND_CLASSES, PERFECT_GROUND, Ground, tabulate
-from worker.engine.thin_wire import current
+from worker.engine.ground import GROUND_CLASSES, PERFECT_GROUND, Ground
 
 FREQUENCY_HZ = 14.2e6
 WAVELENGTH_M = SPEED_OF_LIGHT_M_PER_S / FREQUENCY_HZ
@@ -116,26 +115,6 @@ def test_power_budget_adds_up_to_the_input() -> None:
     assert (
         budget.radiated_fraction + budget.wire_loss_fraction + budget.ground_loss_fraction
     ) == pytest.approx(1.0)
-
-
-@pytest.mark.parametrize(("ground", "height"), [(None, 0.0), (PERFECT_GROUND, 0.3)])
-def test_current_of_the_solver_radiates_what_its_feed_accepts(
-    ground: Ground | None, height: float
-) -> None:
-    table = None
-    if ground is not None:
-        table = tabulate(ground, FREQUENCY_HZ, height * WAVELENGTH_M, 0.5 * WAVELENGTH_M)
-    solved = current(0.48 * WAVELENGTH_M, 1e-4 * WAVELENGTH_M, FREQUENCY_HZ, reflected=table)
-    wire = RadiatingWire(
-        solved.position_m,
-        solved.current_a_per_v,
-        FREQUENCY_HZ,
-        ground,
-        height * WAVELENGTH_M,
-        solved.weight_m,
-    )
-    accepted = 0.5 * (1.0 / solved.impedance_ohm).real
-    assert power_budget(wire, accepted).radiated_fraction == pytest.approx(1.0, abs=1e-3)
 
 
 def test_elevation_cut_runs_from_horizon_to_horizon() -> None:

@@ -20,7 +20,6 @@ from worker.engine.ground import (
     water,
 )
 from worker.engine.ground.spectrum import reflected
-from worker.engine.thin_wire import ReflectedPotentials, feed_impedance
 
 FREQUENCY_HZ = 7.1e6
 WAVELENGTH_M = SPEED_OF_LIGHT_M_PER_S / FREQUENCY_HZ
@@ -98,15 +97,6 @@ def test_shape_of_the_distances_is_kept() -> None:
     table = tabulate(GROUND_CLASSES["average"], FREQUENCY_HZ, 10.0, 40.0)
     assert table.vector_potential(np.zeros((3, 2))).shape == (3, 2)
     assert table.scalar_potential(1.0).shape == ()
-
-
-def test_table_is_what_the_thin_wire_asks_of_a_ground() -> None:
-    table: ReflectedPotentials = tabulate(
-        GROUND_CLASSES["average"], FREQUENCY_HZ, 0.02 * WAVELENGTH_M, 0.5 * WAVELENGTH_M
-    )
-    # A wire exactly as long as the reach must not run off the table.
-    solved = feed_impedance(0.5 * WAVELENGTH_M, 1e-4 * WAVELENGTH_M, FREQUENCY_HZ, reflected=table)
-    assert np.isfinite(solved.impedance_ohm)
 
 
 def test_table_survives_a_process_border() -> None:

@@ -34,7 +34,7 @@ class OpenLine:
         gamma = 0.1 * np.log1p(k * length_m) / length_m + 1.03j * k
         impedance = 1000.0 / np.tanh(0.5 * gamma * length_m)
         impedance *= 1.0 + self.noise * np.sin(1e5 * length_m)
-        return Solved(impedance, np.zeros(length_m.shape))
+        return Solved(impedance.astype(np.complex128), np.zeros(length_m.shape))
 
 
 def test_a_map_over_length_agrees_with_the_line_between_its_solves() -> None:

@@ -16,7 +16,7 @@ from worker.search.scoring import Merit
 def keys_of(required: list[int], width: list[float], worst: list[float]) -> list[int]:
     merit = Merit(np.array(required), np.array(width), np.array(worst))
     lengths_m = np.linspace(20.0, 21.0, len(required))
-    return best_first(rank_keys(merit, lengths_m)).tolist()
+    return [int(index) for index in best_first(rank_keys(merit, lengths_m))]
 
 
 def test_required_bands_outrank_everything_else() -> None:
