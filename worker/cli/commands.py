@@ -25,6 +25,7 @@ from service.contracts.request import DesignRequest, parse_request
 from service.errors import Fault, RequestRefused, SpanwrightError
 from worker.cli import tables
 from worker.cli.client import ServiceClient, ServiceUnreachable
+from worker.cli.impedance_lines import filter_lines
 from worker.cli.standing import demo_request, serve_until_stopped, standing_service
 from worker.engine.errors import EngineError
 from worker.planning import plan as plan_request
@@ -159,6 +160,20 @@ def bands(
         )
         raise RequestRefused([fault])
     tables.show_band_lists(out, BAND_LISTS.values() if name is None else [BAND_LISTS[name]])
+
+
+@app.command()
+def impedance() -> None:
+    """Filter wires to impedances: one JSON object a line in, one a line out, order kept.
+
+    In: frequency_hz, length_m, radius_m; optional height_m, relative_permittivity,
+    conductivity_s_per_m ("inf": perfect ground), feed_fraction, gap_m, material,
+    temperature_c, id. Out: resistance_ohm, reactance_ohm, estimated_error_ohm, unknowns,
+    gap_m and the id. A bad line is answered by a problem on its own line, and the exit
+    status is then 3.
+    """
+    if filter_lines(sys.stdin.buffer, sys.stdout):
+        sys.exit(ExitStatus.FAILED)
 
 
 @app.command()

@@ -10,7 +10,8 @@ import json
 from collections import defaultdict
 from collections.abc import Iterable, Sequence
 from dataclasses import asdict, dataclass
-from typing import Annotated, Any, Literal, Self
+from io import BufferedIOBase
+from typing import Annotated, Any, BinaryIO, Literal, Self, TextIO
 
 import numpy as np
 from pydantic import Field, ValidationError, model_validator
@@ -26,6 +27,7 @@ from worker.engine.material import MATERIALS, REFERENCE_TEMPERATURE_C
 from worker.engine.thin_wire import feed_impedance
 
 _LONGEST_LINE = 4096
+_CHUNK_BYTES = 1 << 16
 
 
 class WireLine(Contract):
@@ -91,6 +93,36 @@ class _Solved:
 
 
 _Outcome = _Solved | EngineError
+
+
+def filter_lines(source: BinaryIO, sink: TextIO) -> int:
+    """Answer every line of a stream, in order; returns how many were problems.
+
+    What has come so far is answered together, so that a file goes through in large runs and
+    a script that waits for each answer gets it.
+
+    Parameters
+    ----------
+    source : binary file
+        NDJSON in UTF-8, unbuffered or buffered.
+    sink : text file
+        Flushed after each run of answers.
+    """
+    problems, number, rest = 0, 1, b""
+    while True:
+        # read1 gives what is there, and waits only where nothing is.
+        chunk = source.read1(_CHUNK_BYTES) if isinstance(source, BufferedIOBase) else source.read()
+        *whole, rest = (rest + chunk).split(b"\n")
+        if not chunk:
+            whole, rest = [rest], b""
+        lines = [line.decode("utf-8", errors="replace") for line in whole]
+        answers = answer(lines, number)
+        sink.writelines(line + "\n" for line in answers.lines)
+        sink.flush()
+        problems += answers.problems
+        number += len(lines)
+        if not chunk:
+            return problems
 
 
 def answer(lines: Sequence[str], first_number: int) -> Answers:
