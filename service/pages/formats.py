@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from datetime import UTC, datetime
 
+from service.contracts import formats
 from service.contracts.formats import (
     khz,
     listed,
@@ -15,14 +16,13 @@ from service.contracts.formats import (
     percent,
     ratio,
     reflection,
-    share,
-    swr,
 )
 from service.exports.digits import frequency_mhz as edge_mhz
 
 __all__ = [
     "count",
     "edge_mhz",
+    "fine_mhz",
     "instant",
     "khz",
     "listed",
@@ -39,6 +39,25 @@ __all__ = [
     "swr",
     "watts",
 ]
+
+
+def fine_mhz(value: float) -> str:
+    """A frequency in MHz to a tenth of a kHz, for points that lie close together."""
+    return f"{value:.4f}"
+
+
+def share(value: float) -> str:
+    """A part of a whole as per cent, on one line."""
+    return _unbroken(formats.share(value))
+
+
+def swr(value: float) -> str:
+    """A standing wave ratio, on one line."""
+    return _unbroken(formats.swr(value))
+
+
+def _unbroken(text: str) -> str:
+    return text.replace(" ", "\u00a0")
 
 
 def minus(text: str) -> str:

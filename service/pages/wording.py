@@ -6,7 +6,7 @@ from typing import Final
 
 from service.contracts.request import DesignRequest
 from service.contracts.station_site import GroundConstants, Site
-from service.contracts.stock import Conductor, Insulation, Stock
+from service.contracts.stock import Conductor, Insulation, Stock, material_in_words
 from service.pages import formats
 
 _GROUNDS: Final = {
@@ -38,7 +38,7 @@ def stock_in_words(stock: Stock) -> list[str]:
     limits = stock.diameter_range
     low, high = formats.millimetres(limits.low_mm), formats.millimetres(limits.high_mm)
     sleeve = "" if limits.insulation is None else f", {_insulation(limits.insulation)}"
-    return [f"any diameter from {low} to {high} mm, {_plain(limits.material)}{sleeve}"]
+    return [f"any diameter from {low} to {high} mm, {material_in_words(limits.material)}{sleeve}"]
 
 
 def feed_in_words(request: DesignRequest) -> str:
@@ -63,7 +63,7 @@ def _ground(site: Site) -> str:
             f"ground of relative permittivity {site.ground.relative_permittivity:g} and "
             f"{site.ground.conductivity_s_per_m:g} S/m"
         )
-    return _GROUNDS.get(site.ground, f"{_plain(site.ground)} ground")
+    return _GROUNDS.get(site.ground, f"{site.ground.replace('-', ' ')} ground")
 
 
 def _conductor(conductor: Conductor) -> str:
@@ -80,7 +80,3 @@ def _insulation(insulation: Insulation) -> str:
         f"insulation {formats.millimetres(insulation.thickness_mm)} mm thick, "
         f"relative permittivity {insulation.relative_permittivity:g}"
     )
-
-
-def _plain(name: str) -> str:
-    return name.replace("-", " ")

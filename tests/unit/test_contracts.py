@@ -9,6 +9,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from service.contracts.band_lists import BAND_LISTS
+from service.contracts.feed import LINE_NAMES
 from service.contracts.request import LARGEST_REQUEST_BYTES, DesignRequest, parse_request
 from service.contracts.stock import Conductor, DiameterRange
 from service.errors import Fault, RequestRefused
@@ -194,7 +195,7 @@ def test_a_stored_request_reads_back_with_ground_constants_and_a_range_of_diamet
             "ground": {"relative_permittivity": 13.0, "conductivity_s_per_m": 0.005},
         },
         stock={"diameter_range": {"low_mm": 1.0, "high_mm": 3.0}},
-        feed={"feed_line": {"line": "RG-58", "length_m": 12.5}},
+        feed={"feed_line": {"line": LINE_NAMES[0], "length_m": 12.5}},
     )
     assert parse_request(request.canonical_json()) == request
 

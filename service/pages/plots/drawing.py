@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Sequence
 from typing import Final, Literal
 
@@ -11,8 +12,8 @@ from service.pages.plots.scales import Point
 
 Anchor = Literal["start", "middle", "end"]
 
-#: Points nearer together than this are one spot of ink.
-_SAME_SPOT_PX: Final = 0.1
+#: A line may be drawn this far from its points: far less than its own width.
+_HAIR_PX: Final = 0.1
 
 
 class Drawing:
@@ -102,12 +103,34 @@ class Drawing:
 
 
 def _visible(run: Sequence[Point]) -> list[Point]:
-    """The points of a run without those that fall on the same spot of paper as the last."""
-    kept: list[Point] = []
-    for point in run:
-        if not kept or abs(point[0] - kept[-1][0]) + abs(point[1] - kept[-1][1]) >= _SAME_SPOT_PX:
-            kept.append(point)
-    return kept
+    """The points of a run that bend the line as drawn; the rest lie on it within a hair.
+
+    References
+    ----------
+    D. H. Douglas and T. K. Peucker, "Algorithms for the reduction of the number of points
+    required to represent a digitized line or its caricature", Cartographica 10(2), 1973.
+    """
+    kept = {0, len(run) - 1}
+    pending = [(0, len(run) - 1)]
+    while pending:
+        first, last = pending.pop()
+        if last - first < 2:  # no point lies between
+            continue
+        distances = [_off_line(run[i], run[first], run[last]) for i in range(first + 1, last)]
+        farthest = max(distances)
+        if farthest > _HAIR_PX:
+            bend = first + 1 + distances.index(farthest)
+            kept.add(bend)
+            pending += [(first, bend), (bend, last)]
+    return [run[index] for index in sorted(kept)]
+
+
+def _off_line(point: Point, start: Point, end: Point) -> float:
+    """Distance of a point from the straight line through two others."""
+    along_x, along_y = end[0] - start[0], end[1] - start[1]
+    across = along_x * (start[1] - point[1]) - along_y * (start[0] - point[0])
+    length = math.hypot(along_x, along_y)
+    return abs(across) / length if length else math.dist(point, start)
 
 
 def _px(value: float) -> str:

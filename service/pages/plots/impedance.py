@@ -29,7 +29,7 @@ _SMALLEST_TICK_OHM: Final = 50.0
 #: Nothing above this is worth ink; the table behind the plot has it.
 _HIGHEST_OHM: Final = 10_000.0
 _NARROWEST_BAND_PX: Final = 2.5
-_LETTER_PX: Final = 6.6
+_LETTER_PX: Final = 7.6
 _LABEL_ROW_PX: Final = 14.0
 _MARK_PX: Final = 4.5
 
@@ -114,7 +114,7 @@ def _band_labels(
     for band in sorted(bands, key=lambda each: each.centre.frequency_mhz):
         half = 0.5 * _LETTER_PX * len(band.name) + 3.0
         middle = frequency(band.centre.frequency_mhz)
-        middle = min(max(middle, half), width - half)
+        middle = min(max(middle, frequency.start + half), width - half)
         row = next((i for i, end in enumerate(ends) if end <= middle - half), len(ends))
         if row == len(ends):
             ends.append(0.0)

@@ -15,19 +15,23 @@ from service.exports import digits
 from service.pages.plots.drawing import Drawing
 from service.pages.plots.scales import (
     LinearScale,
+    LogScale,
     Point,
     clipped_runs,
     linear_ticks,
+    log_ticks,
     next_round,
 )
 
 _WIDTH: Final = 344.0
-_LEFT: Final = 34.0
+_LEFT: Final = 38.0
 _RIGHT: Final = _WIDTH - 22.0
 _TOP: Final = 26.0
 _BOTTOM: Final = _TOP + 150.0
 _HEIGHT: Final = _BOTTOM + 36.0
 _LOWEST_TOP: Final = 3.0
+#: An axis that must reach higher is logarithmic, so that the limit stays clear of the foot.
+_LINEAR_UP_TO: Final = 6.0
 _FREQUENCY_TICKS: Final = 4
 _SWR_TICKS: Final = 5
 
@@ -35,7 +39,7 @@ _SWR_TICKS: Final = 5
 @dataclass(frozen=True, slots=True)
 class _Frame:
     frequency: LinearScale
-    swr: LinearScale
+    swr: LinearScale | LogScale
 
     def place(self, point: Point) -> Point:
         return self.frequency(point[0]), self.swr(point[1])
@@ -56,7 +60,7 @@ def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
     top = _top_of_axis(points, outcome.swr_limit)
     frame = _Frame(
         LinearScale(points[0][0], points[-1][0], _LEFT, _RIGHT),
-        LinearScale(1.0, top, _BOTTOM, _TOP),
+        (LinearScale if top <= _LINEAR_UP_TO else LogScale)(1.0, top, _BOTTOM, _TOP),
     )
     drawing = Drawing(name, _WIDTH, _HEIGHT, "swr")
     _draw_axes(drawing, frame)
@@ -72,11 +76,13 @@ def _top_of_axis(points: Sequence[Point], limit: float) -> float:
     best = min(swr for _, swr in points)
     worst = max(swr for _, swr in points)
     wanted = max(_LOWEST_TOP, 1.5 * limit, 1.5 * best)
-    return wanted if wanted <= 2.0 * _LOWEST_TOP or worst <= wanted else next_round(wanted)
+    return wanted if wanted <= _LINEAR_UP_TO else next_round(min(wanted, 1.5 * worst))
 
 
 def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
-    for swr in linear_ticks(1.0, frame.swr.high, _SWR_TICKS):
+    is_linear = isinstance(frame.swr, LinearScale)
+    marks = linear_ticks if is_linear else log_ticks
+    for swr in marks(1.0, frame.swr.high, _SWR_TICKS if is_linear else _SWR_TICKS + 3):
         y = frame.swr(swr)
         drawing.line((_LEFT, y), (_RIGHT, y), "grid")
         drawing.text((_LEFT - 6.0, y + 4.0), f"{swr:g}", "tick", "end")
@@ -85,7 +91,7 @@ def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
         drawing.line((x, _TOP), (x, _BOTTOM), "grid")
         drawing.text((x, _BOTTOM + 17.0), digits.frequency_mhz(mhz), "tick")
     drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
-    drawing.text((_LEFT - 6.0, _TOP - 11.0), "SWR", "unit", "end")
+    drawing.text((2.0, _TOP - 11.0), "SWR" if is_linear else "SWR, log scale", "unit", "start")
     drawing.text((_RIGHT, _BOTTOM + 31.0), "MHz", "unit", "end")
 
 
