@@ -10,12 +10,13 @@ from service.contracts.stock import Conductor, Insulation, Stock, material_in_wo
 from service.pages import formats
 
 _GROUNDS: Final = {
-    "medium-hills": "ground of medium hills",
-    "sandy": "sandy ground",
-    "marshy": "marshy ground",
-    "fresh-water": "fresh water",
-    "sea-water": "sea water",
+    "pastoral-hills": "pastoral hills",
+    "marshy-wooded": "marshy, wooded land",
+    "city": "a city",
+    "industrial": "an industrial area",
 }
+#: Classes of the recommendation that gives ground by kind and frequency.
+_ITU: Final = "itu-"
 
 
 def site_in_words(site: Site) -> str:
@@ -49,7 +50,7 @@ def feed_in_words(request: DesignRequest) -> str:
     line = (
         ""
         if feed.feed_line is None
-        else f", {formats.metres(feed.feed_line.length_m)} m of {feed.feed_line.line}"
+        else f", {formats.metres(feed.feed_line.length_m)} m of {_line(feed.feed_line.line)}"
     )
     return (
         f"{formats.ohms(feed.reference_ohm)} Ω reference, transformer{plural} {ratios}{line}, "
@@ -63,7 +64,16 @@ def _ground(site: Site) -> str:
             f"ground of relative permittivity {site.ground.relative_permittivity:g} and "
             f"{site.ground.conductivity_s_per_m:g} S/m"
         )
-    return _GROUNDS.get(site.ground, f"{site.ground.replace('-', ' ')} ground")
+    if site.ground.startswith(_ITU):
+        return f"{_kind(site.ground.removeprefix(_ITU))} (ITU-R P.527)"
+    return _kind(site.ground)
+
+
+def _kind(name: str) -> str:
+    plain = name.replace("-", " ")
+    if name in _GROUNDS or plain.endswith(("water", "ground")):
+        return _GROUNDS.get(name, plain)
+    return f"{plain} ground"
 
 
 def _conductor(conductor: Conductor) -> str:
@@ -73,6 +83,14 @@ def _conductor(conductor: Conductor) -> str:
     if conductor.insulation is not None:
         label += f": {_insulation(conductor.insulation)}"
     return f"{label}, item {conductor.item_code}" if conductor.item_code else label
+
+
+def _line(name: str) -> str:
+    """A feed line by its designation, or by its construction and impedance."""
+    if name.startswith("rg-"):
+        return name.upper()
+    construction, _, impedance_ohm = name.rpartition("-")
+    return f"{impedance_ohm} Ω {construction.replace('-', ' ')}"
 
 
 def _insulation(insulation: Insulation) -> str:
