@@ -16,6 +16,8 @@ NODES: Final[int] = 12
 
 _LONGEST_PANEL_RAD: Final[float] = 4.0 * np.pi
 _FACTORIAL: Final[float] = float(factorial(NODES - 2))
+_FAINT: Final[float] = 0.02
+"""Ripple that no panel need resolve, over the tolerance."""
 _MOST_HALVINGS: Final[int] = 6
 
 
@@ -127,8 +129,11 @@ def _starting_edges(eps: complex, drop: float, reach_rad: float, tolerance: floa
     edges = [0.0]
     while (at := edges[-1]) < reach_rad:
         ripple = np.exp(-drop * branch.real + ground_wavenumber.imag * at) / (1.0 + at)
-        phase = 2.0 * (_FACTORIAL * tolerance / max(ripple, 1e-30)) ** (1.0 / (NODES - 2))
-        edges.append(at + min(max(drop, at), 2.0 * phase / beats, _LONGEST_PANEL_RAD))
+        longest = _LONGEST_PANEL_RAD
+        if ripple > _FAINT * tolerance:
+            phase = 2.0 * (_FACTORIAL * tolerance / ripple) ** (1.0 / (NODES - 2))
+            longest = min(longest, 2.0 * phase / beats)
+        edges.append(at + min(max(drop, at), longest))
     return np.asarray(edges) * (reach_rad / edges[-1])
 
 
