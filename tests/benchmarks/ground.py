@@ -65,7 +65,11 @@ class Case:
     def exact(self, distance: RealArray) -> spectrum.Reflected:
         """Direct spectral integration at distances in wavelengths."""
         rows = np.ones(distance.size)
-        return reflected(rows * self.eps, rows * 4.0 * np.pi * self.height, 2.0 * np.pi * distance)
+        return reflected(
+            np.full(distance.size, self.eps),
+            rows * 4.0 * np.pi * self.height,
+            2.0 * np.pi * distance,
+        )
 
 
 def best_time_s(work: Callable[[], object], repeats: int = 5) -> float:
@@ -90,7 +94,9 @@ def plain_quadrature(case: Case, distance: float) -> tuple[complex, complex]:
 
     def integrand(lam: complex) -> tuple[complex, complex]:
         above, below = np.sqrt(lam * lam - 1.0), np.sqrt(lam * lam - eps)
-        common = np.exp(-2.0 * above * height) * jv(0, lam * far) * lam / above
+        common = (
+            np.exp(-2.0 * above * height) * complex(jv(0.0, np.complex128(lam * far))) * lam / above
+        )
         electric = (above - below) / (above + below)
         return common * electric, common * ((2.0 - eps) * above - below) / (eps * above + below)
 
