@@ -1,0 +1,171 @@
+"""What every test may ask for: both databases, a broker, and a run that allows no skips.
+
+A server is the one the environment names, or a private one started from the programs
+installed; where there is neither, the tests that need it are skipped and the reason says what
+to install.
+"""
+
+from __future__ import annotations
+
+import os
+import shutil
+from collections.abc import Callable, Iterator
+from pathlib import Path
+
+import pytest
+
+from service.settings import Settings
+from service.store.session import Store, open_store
+from tests.service.servers import (
+    PostgresServer,
+    RedisServer,
+    ServerMissing,
+    fresh_database,
+    private_postgres,
+    private_redis,
+)
+
+_NO_SKIPS = "--no-skips"
+
+MakeSettings = Callable[..., Settings]
+
+
+# ------------------------------------------------------------------------- no skips
+def pytest_addoption(parser: pytest.Parser) -> None:
+    parser.addoption(
+        _NO_SKIPS, action="store_true", help="a skipped test fails the run, as in .ci/run"
+    )
+
+
+def pytest_configure(config: pytest.Config) -> None:
+    if config.getoption(_NO_SKIPS):
+        config.pluginmanager.register(_NoSkips(), "no-skips")
+
+
+class _NoSkips:
+    """Remembers what was skipped, and turns a run that skipped anything into a failure."""
+
+    def __init__(self) -> None:
+        self.skipped: list[str] = []
+
+    def pytest_runtest_logreport(self, report: pytest.TestReport) -> None:
+        # An expected failure is reported as skipped too, but it did run.
+        if report.skipped and not hasattr(report, "wasxfail"):
+            self.skipped.append(report.nodeid)
+
+    def pytest_collectreport(self, report: pytest.CollectReport) -> None:
+        if report.skipped:
+            self.skipped.append(report.nodeid)
+
+    def pytest_sessionfinish(self, session: pytest.Session) -> None:
+        if self.skipped and session.exitstatus == pytest.ExitCode.OK:
+            session.exitstatus = pytest.ExitCode.TESTS_FAILED
+
+    def pytest_terminal_summary(self, terminalreporter: pytest.TerminalReporter) -> None:
+        if self.skipped:
+            terminalreporter.section("skipped, which this run does not allow", red=True)
+            for nodeid in self.skipped:
+                terminalreporter.line(nodeid)
+
+
+# -------------------------------------------------------------------------- servers
+@pytest.fixture(scope="session")
+def postgres() -> Iterator[PostgresServer]:
+    """A PostgreSQL server on which databases may be made."""
+    url = os.environ.get("SPANWRIGHT_TEST_POSTGRES_URL")
+    try:
+        with private_postgres() if url is None else PostgresServer.named(url) as server:
+            yield server
+    except ServerMissing as missing:
+        pytest.skip(str(missing))
+
+
+@pytest.fixture(scope="session")
+def redis_url() -> Iterator[str]:
+    """A Redis server that is up throughout."""
+    url = os.environ.get("SPANWRIGHT_TEST_REDIS_URL")
+    if url is not None:
+        yield url
+        return
+    try:
+        server = private_redis()
+    except ServerMissing as missing:
+        pytest.skip(str(missing))
+    with server:
+        yield server.url
+
+
+@pytest.fixture
+def own_redis() -> Iterator[RedisServer]:
+    """A Redis server of the test's own, to be killed, frozen and started again."""
+    try:
+        server = private_redis()
+    except ServerMissing as missing:
+        pytest.skip(str(missing))
+    with server:
+        yield server
+
+
+# ------------------------------------------------------------------------ databases
+@pytest.fixture(scope="session")
+def _migrated_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    file = tmp_path_factory.mktemp("migrated") / "spanwright.db"
+    open_store(Settings(database_url=f"sqlite:///{file}")).close()
+    return file
+
+
+@pytest.fixture(scope="session")
+def _migrated_template(postgres: PostgresServer) -> Iterator[str]:
+    with fresh_database(postgres) as url:
+        open_store(Settings(database_url=url)).close()
+        yield url.rpartition("/")[2].partition("?")[0]
+
+
+@pytest.fixture(params=["sqlite", "postgresql"])
+def database_url(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[str]:
+    """A database with the tables and nothing in them, on SQLite and then on PostgreSQL."""
+    if request.param == "sqlite":
+        file = tmp_path / "spanwright.db"
+        shutil.copyfile(request.getfixturevalue("_migrated_file"), file)
+        yield f"sqlite:///{file}"
+        return
+    server: PostgresServer = request.getfixturevalue("postgres")
+    with fresh_database(server, request.getfixturevalue("_migrated_template")) as url:
+        yield url
+
+
+@pytest.fixture(params=["sqlite", "postgresql"])
+def empty_database_url(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[str]:
+    """A database without even tables, on SQLite and then on PostgreSQL."""
+    if request.param == "sqlite":
+        yield f"sqlite:///{tmp_path / 'empty.db'}"
+        return
+    with fresh_database(request.getfixturevalue("postgres")) as url:
+        yield url
+
+
+@pytest.fixture
+def settings(database_url: str) -> Settings:
+    """Settings with leases so short that a test can wait for one to run out."""
+    return short_lived(database_url)
+
+
+@pytest.fixture
+def store(settings: Settings) -> Iterator[Store]:
+    """The store of those settings, without much patience."""
+    store = open_store(settings, patience_s=5.0)
+    yield store
+    store.close()
+
+
+def short_lived(database_url: str, redis_url: str | None = None) -> Settings:
+    """Settings of a test: everything that takes time takes little."""
+    return Settings(
+        database_url=database_url,
+        redis_url=redis_url,
+        workers=2,
+        lease_s=1.5,
+        sweep_s=0.2,
+        job_deadline_s=30.0,
+        cancel_grace_s=0.4,
+    )
