@@ -180,7 +180,7 @@ def test_the_band_table_shows_the_figures_of_the_api(
 ) -> None:
     page = read(wire, f"/designs/{stored.done}/candidates/{rank}")
     given = wire.get(f"/v1/designs/{stored.done}/candidates/{rank}").json()["bands"]
-    rows = next(t for t in page.tables if t[0][0] == "Band" and "Resonance used" in t[0])[2:]
+    rows = next(t for t in page.tables if t[0][0] == "Band" and "Nearest resonance" in t[0])[2:]
     for row, band in zip(rows, given, strict=True):
         name, _, order, *figures, limit, result = row
         assert name.startswith(band["name"])

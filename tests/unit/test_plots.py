@@ -230,3 +230,14 @@ def _distance(
     along = ((point[0] - start[0]) * dx + (point[1] - start[1]) * dy) / (dx * dx + dy * dy)
     along = min(max(along, 0.0), 1.0)
     return math.hypot(point[0] - start[0] - along * dx, point[1] - start[1] - along * dy)
+
+
+def test_a_band_far_from_use_is_said_to_be_so_where_its_curve_has_no_place(
+    report: FeedReport,
+) -> None:
+    outcome = sample_planned(sample_request()).result.candidates[0].bands[0]
+    band = report.bands[0]
+    high = tuple(point.model_copy(update={"swr": 5000.0}) for point in band.grid)
+    root = drawn(swr_plot("swr", band.model_copy(update={"grid": high}), outcome))
+    assert "above 200 over the whole band" in {text.text for text in root.iter(f"{SVG}text")}
+    assert not list(root.iter(f"{SVG}path"))

@@ -32,6 +32,8 @@ _HEIGHT: Final = _BOTTOM + 36.0
 _LOWEST_TOP: Final = 3.0
 #: An axis that must reach higher is logarithmic, so that the limit stays clear of the foot.
 _LINEAR_UP_TO: Final = 6.0
+#: Above this a band is as far from use as can be, and no axis goes there.
+_HIGHEST_TOP: Final = 200.0
 _FREQUENCY_TICKS: Final = 4
 _SWR_TICKS: Final = 5
 
@@ -67,6 +69,9 @@ def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
     _draw_limit(drawing, frame, points, outcome.swr_limit)
     runs = clipped_runs(points, 1.0, top)
     drawing.curve(([frame.place(point) for point in run] for run in runs), "curve swr")
+    if not runs:
+        middle = 0.5 * (_LEFT + _RIGHT)
+        drawing.text((middle, _TOP + 18.0), f"above {top:g} over the whole band", "tick")
     _draw_resonance(drawing, frame, outcome)
     return drawing.markup(f"SWR against frequency, {band.name}", _in_words(outcome))
 
@@ -76,7 +81,9 @@ def _top_of_axis(points: Sequence[Point], limit: float) -> float:
     best = min(swr for _, swr in points)
     worst = max(swr for _, swr in points)
     wanted = max(_LOWEST_TOP, 1.5 * limit, 1.5 * best)
-    return wanted if wanted <= _LINEAR_UP_TO else next_round(min(wanted, 1.5 * worst))
+    if wanted <= _LINEAR_UP_TO:
+        return wanted
+    return min(next_round(min(wanted, 1.5 * worst)), _HIGHEST_TOP)
 
 
 def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
@@ -89,20 +96,20 @@ def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
     for mhz in linear_ticks(frame.frequency.low, frame.frequency.high, _FREQUENCY_TICKS):
         x = frame.frequency(mhz)
         drawing.line((x, _TOP), (x, _BOTTOM), "grid")
-        drawing.text((x, _BOTTOM + 17.0), digits.frequency_mhz(mhz), "tick")
+        drawing.text((x, _BOTTOM + 18.0), digits.frequency_mhz(mhz), "tick")
     drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
     drawing.text((2.0, _TOP - 11.0), "SWR" if is_linear else "SWR, log scale", "unit", "start")
     drawing.text((_RIGHT, _BOTTOM + 31.0), "MHz", "unit", "end")
 
 
 def _draw_limit(drawing: Drawing, frame: _Frame, points: Sequence[Point], limit: float) -> None:
-    """The limit as a line, and along the foot the part of the band that keeps to it."""
+    """The limit as a line, and under the foot the part of the band that keeps to it."""
     y = frame.swr(limit)
     drawing.line((_LEFT, y), (_RIGHT, y), "limit")
     drawing.text((_RIGHT - 4.0, y - 4.0), f"limit {formats.swr(limit)}", "limit-name", "end")
     for run in clipped_runs(points, 1.0, limit):
         ends = frame.frequency(run[0][0]), frame.frequency(run[-1][0])
-        drawing.box((ends[0], _BOTTOM - 4.0), (ends[1], _BOTTOM), "within")
+        drawing.box((ends[0], _BOTTOM + 1.0), (ends[1], _BOTTOM + 4.5), "within")
 
 
 def _draw_resonance(drawing: Drawing, frame: _Frame, outcome: BandOutcome) -> None:
