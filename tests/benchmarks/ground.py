@@ -95,7 +95,7 @@ def plain_quadrature(case: Case, distance: float) -> tuple[complex, complex]:
     def integrand(lam: complex) -> tuple[complex, complex]:
         above, below = np.sqrt(lam * lam - 1.0), np.sqrt(lam * lam - eps)
         common = (
-            np.exp(-2.0 * above * height) * complex(jv(0.0, np.complex128(lam * far))) * lam / above
+            np.exp(-2.0 * above * height) * complex(np.asarray(jv(0, np.asarray(lam * far)))) * lam / above
         )
         electric = (above - below) / (above + below)
         return common * electric, common * ((2.0 - eps) * above - below) / (eps * above + below)

@@ -35,6 +35,7 @@ from worker.engine.ground import (
     tabulate,
     water,
 )
+from worker.engine.ground.hankel import scaled_hankel
 from worker.engine.ground.water import ionic_conductivity_s_per_m
 
 with (Path(__file__).parent / "ground.csv").open(newline="") as published:
@@ -339,3 +340,15 @@ def test_sea_water_is_close_to_the_constants_of_the_recommendation() -> None:
     sea = water(7e6, 20.0, 35.0)
     constants: NDArray[np.float64] = np.array([sea.relative_permittivity, sea.conductivity_s_per_m])
     assert np.allclose(constants, [70.0, 5.0], rtol=0.06)
+
+
+@pytest.mark.parametrize("magnitude", [0.05, 3.0, 17.9, 18.1, 60.0, 900.0])
+def test_hankel_function_agrees_with_mpmath_on_both_sides_of_the_expansion(
+    magnitude: float,
+) -> None:
+    for angle in (0.0, -0.8, -1.6, -2.4, 0.6):
+        z = magnitude * np.exp(1j * angle)
+        with mpmath.workdps(30):
+            expected = complex(mpmath.hankel2(0, z) * mpmath.exp(1j * mpmath.mpc(z)))
+        found = scaled_hankel(np.array([z], dtype=np.complex128))[0]
+        assert abs(found - expected) < 1e-11 * abs(expected)

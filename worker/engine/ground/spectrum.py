@@ -52,7 +52,9 @@ from typing import Final, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import hankel2e, jv
+from scipy.special import jv
+
+from worker.engine.ground.hankel import scaled_hankel
 
 Real: TypeAlias = NDArray[np.float64]
 Complex: TypeAlias = NDArray[np.complex128]
@@ -193,7 +195,7 @@ def _descent(eps: Complex, drop: Real, r: Real, image: Real) -> tuple[Complex, C
         root = np.sqrt(2j + v * v)
         u = 1j * (cosine * (1.0 - 1j * v * v) - sine * v * root)
         lam = sine * (1.0 - 1j * v * v) + cosine * v * root
-        wave = np.asarray(hankel2e(0, r[rows, None] * lam), dtype=np.complex128)
+        wave = scaled_hankel(r[rows, None] * lam)
         weight = wave * np.exp(-image[rows, None] * v * v)
         weight = (
             weight * np.asarray(slope * lam / root, dtype=np.complex128) * (length[rows, None] * w)
@@ -247,9 +249,9 @@ def _rise(eps: Complex, drop: Real, r: Real, image: Real, rise: Complex) -> tupl
 def _outgoing(u: Complex, drop: Real, r: Real, image: Real) -> Complex:
     """Half the outgoing Hankel function times exp(-drop u), over exp(-j R1)."""
     distance = r[:, None]
-    lam = np.sqrt(u * u + 1.0)
+    lam = np.asarray(np.sqrt(u * u + 1.0), dtype=np.complex128)
     exponent = 1j * (image[:, None] - distance * lam) - drop[:, None] * u
-    wave = np.asarray(hankel2e(0, distance * lam), dtype=np.complex128)
+    wave = scaled_hankel(distance * lam)
     return 0.5 * wave * np.exp(exponent)
 
 
