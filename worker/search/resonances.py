@@ -9,11 +9,11 @@ import numpy as np
 from scipy.optimize import brentq
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.resonance import reactance_zeros
 from worker.search.impedance_map import ImpedanceMap
 from worker.search.space import FloatArray, WireModel
 
-#: The reactance is looked at this many times per half wave of wire; two resonances of one
-#: wire are never closer than a fifth of one.
+#: The map is first looked at this many times per half wave of wire.
 _SAMPLES_PER_HALF_WAVE: Final = 60
 
 #: A wire is moved onto a frequency to this part of its length: 1 mm in 100 m.
@@ -43,26 +43,24 @@ def resonances_of(over_frequency: ImpedanceMap, length_m: float) -> tuple[Resona
     length_m : float
         Its length in m.
     """
-
-    def reactance(frequency_hz: float) -> float:
-        return float(over_frequency.impedance_ohm(np.array([frequency_hz]))[0].imag)
-
     half_waves = half_waves_in(length_m, over_frequency.high - over_frequency.low)
-    count = max(16, int(np.ceil(half_waves * _SAMPLES_PER_HALF_WAVE)))
-    grid_hz = np.linspace(over_frequency.low, over_frequency.high, count)
-    sampled = over_frequency.impedance_ohm(grid_hz).imag
+    zeros = reactance_zeros(
+        over_frequency.impedance_ohm,
+        over_frequency.low,
+        over_frequency.high,
+        max(16, int(np.ceil(half_waves * _SAMPLES_PER_HALF_WAVE))),
+    )
     found: list[Resonance] = []
-    for left in np.flatnonzero(np.signbit(sampled[:-1]) != np.signbit(sampled[1:])):
-        frequency_hz = float(brentq(reactance, grid_hz[left], grid_hz[left + 1], xtol=1.0))
-        resistance_ohm = float(over_frequency.impedance_ohm(np.array([frequency_hz]))[0].real)
-        rising = sampled[left + 1] > sampled[left]
-        pair = int(half_waves_in(length_m, frequency_hz) // 2)
+    for frequency_hz, rising, resistance_ohm in zip(
+        zeros.position, zeros.rising, zeros.resistance_ohm, strict=True
+    ):
+        pair = int(half_waves_in(length_m, float(frequency_hz)) // 2)
         found.append(
             Resonance(
                 order=2 * pair + 1 if rising else 2 * pair + 2,
                 kind="series" if rising else "parallel",
-                frequency_hz=frequency_hz,
-                resistance_ohm=resistance_ohm,
+                frequency_hz=float(frequency_hz),
+                resistance_ohm=float(resistance_ohm),
             )
         )
     return tuple(found)
