@@ -55,18 +55,26 @@ class ReferenceElement:
     taylor_fit: FloatArray
 
 
+def shape_values(degree: int, tau: FloatArray) -> FloatArray:
+    """Shape functions (n, degree + 1) at tau (n,): vertex at -1, bubbles, vertex at +1."""
+    polynomials = legendre.legvander(tau, degree)
+    value = np.empty((tau.size, degree + 1))
+    value[:, 0], value[:, -1] = (1.0 - tau) / 2.0, (1.0 + tau) / 2.0
+    for n in range(2, degree + 1):
+        value[:, n - 1] = (polynomials[:, n] - polynomials[:, n - 2]) / sqrt(2.0 * (2 * n - 1))
+    return value
+
+
 @cache
 def reference_element(degree: int, points: int) -> ReferenceElement:
     """Reference element of the given polynomial degree with that many Gauss points."""
     node, weight = legendre.leggauss(points)
     polynomials = legendre.legvander(node, max(degree, points))
-    value, slope = np.zeros((points, degree + 1)), np.zeros((points, degree + 1))
-    value[:, 0], value[:, -1] = (1.0 - node) / 2.0, (1.0 + node) / 2.0
+    value = shape_values(degree, node)
+    slope = np.zeros((points, degree + 1))
     slope[:, 0], slope[:, -1] = -0.5, 0.5
     for n in range(2, degree + 1):
-        scale = 1.0 / sqrt(2.0 * (2 * n - 1))
-        value[:, n - 1] = scale * (polynomials[:, n] - polynomials[:, n - 2])
-        slope[:, n - 1] = scale * (2 * n - 1) * polynomials[:, n - 1]
+        slope[:, n - 1] = (2 * n - 1) / sqrt(2.0 * (2 * n - 1)) * polynomials[:, n - 1]
     fit = (np.arange(points) + 0.5) * polynomials[:, :points]
     # P_n(t + u) = sum over i, m of taylor[n, i, m] u^i t^m
     taylor = np.zeros((points, points, points))

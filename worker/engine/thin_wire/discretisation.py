@@ -7,7 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from worker.engine.thin_wire.basis import END_ELEMENT_RADII, ReferenceElement
+from worker.engine.thin_wire.basis import (
+    END_ELEMENT_RADII,
+    ReferenceElement,
+    shape_values,
+)
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -85,14 +89,22 @@ class Discretisation:
         sampled = self.test_current(weights[:, None, :] * identity)
         return self.test_current(np.swapaxes(sampled, 1, 2))
 
-    def evaluate(self, coefficients: ComplexArray) -> ComplexArray:
-        """Current (B, Q) at the nodes from the coefficients (B, unknowns) of an even current."""
+    def evaluate(self, coefficients: ComplexArray, position_m: FloatArray) -> ComplexArray:
+        """Current of an even coefficient vector (unknowns,) on the first wire.
+
+        `position_m` (n,) counts from the centre and lies on the half wire.
+        """
+        breaks = self.breaks_m[0]
+        place = np.clip(np.searchsorted(breaks, position_m, side="right") - 1, 0, self.elements - 1)
+        start, stop = breaks[place], breaks[place + 1]
+        tau = 2.0 * (position_m - start) / (stop - start) - 1.0
+        depth = np.maximum(stop - position_m, 0.0) / (stop - start)
+        tau = np.where(place == self.elements - 1, 1.0 - 2.0 * np.sqrt(depth), tau)
         degree = self.element.degree
-        count = len(coefficients)
-        local = np.zeros((count, self.elements, degree + 1), dtype=complex)
-        local[..., :degree] = coefficients.reshape(count, self.elements, degree)
-        local[:, :-1, degree] = local[:, 1:, 0]
-        return (local @ self.element.value.T).reshape(count, -1).astype(complex, copy=False)
+        padded = np.append(coefficients, 0.0)
+        local = padded[place[:, None] * degree + np.arange(degree + 1)]
+        current: ComplexArray = np.sum(local * shape_values(degree, tau), axis=1)
+        return current
 
     def _assemble(self, samples: FloatArray, table: FloatArray) -> FloatArray:
         degree = self.element.degree

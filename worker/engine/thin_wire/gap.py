@@ -30,6 +30,10 @@ ComplexArray = NDArray[np.complex128]
 
 # The smooth source has vanishing moments below order 2 * FLATNESS.
 FLATNESS = 4
+# Steps of the quadrature in the logarithm of the wavenumber: for the mean over the gap, and for
+# currents at some distance, whose cosines need more.
+_LOG_STEP = 0.06
+_FINE_LOG_STEP = 0.02
 
 
 def smooth_source(distance_m: FloatArray, gap_m: FloatArray, sigma_m: FloatArray) -> FloatArray:
@@ -92,7 +96,9 @@ def sharp_admittance(
     :math:`2a^2/\sqrt{(\zeta a)^2 + 1/4}` of :math:`1/(\gamma^2 I_0 K_0)` is integrated in
     closed form by :math:`\int_0^\infty \cos(\zeta y)(\zeta^2 + b^2)^{-1/2} d\zeta = K_0(by)`.
     """
-    spectrum = _tube_spectrum(wavenumber_per_m, radius_m, sigma_m, wire_impedance_ohm_per_m)
+    spectrum = _tube_spectrum(
+        wavenumber_per_m, radius_m, sigma_m, wire_impedance_ohm_per_m, log_step=_LOG_STEP
+    )
     sharp = _gap_spectrum(spectrum.wavenumber, gap_m) ** 2
     sharp *= 1.0 - _smooth_spectrum(spectrum.wavenumber * sigma_m[:, None]) ** 2
     smooth = _gap_spectrum(spectrum.static_wavenumber, gap_m) ** 2
@@ -117,24 +123,34 @@ def sharp_current(
     sigma_m: float,
     wire_impedance_ohm_per_m: complex,
 ) -> ComplexArray:
-    """Current (A per volt) of the sharp part at distances (any shape) from the gap's centre."""
+    """Current (A per volt) of the sharp part at distances (n,) from the gap's centre.
+
+    Notes
+    -----
+    The integral is that of `sharp_admittance` with one gap spectrum replaced by the cosine of
+    zeta z. Away from the gap the current is smooth on the scale of the distance from it, so
+    wavenumbers far above its inverse cancel; a flat-topped Gaussian takes them out before their
+    cosines outrun the quadrature.
+    """
     one = np.ones(1)
     spectrum = _tube_spectrum(
         wavenumber_per_m * one,
         radius_m * one,
         sigma_m * one,
         np.full(1, wire_impedance_ohm_per_m, dtype=np.complex128),
+        log_step=_FINE_LOG_STEP,
     )
     zeta, static_zeta = spectrum.wavenumber[0], spectrum.static_wavenumber[0]
     sharp = spectrum.weight[0] * np.sinc(zeta * gap_m / (2.0 * pi))
     sharp = sharp * (1.0 - _smooth_spectrum(zeta * sigma_m))
     smooth = spectrum.static_weight[0] * np.sinc(static_zeta * gap_m / (2.0 * pi))
     smooth = smooth * _smooth_spectrum(static_zeta * sigma_m)
-    distance = np.abs(np.asarray(distance_m, dtype=float))
-    total = np.cos(distance[..., None] * zeta) @ sharp
-    total = total - np.cos(distance[..., None] * static_zeta) @ smooth
-    upper = (distance + gap_m / 2.0) / (2.0 * radius_m)
-    lower = (distance - gap_m / 2.0) / (2.0 * radius_m)
+    distance = np.abs(distance_m)[:, None]
+    filter_width = np.maximum(distance - gap_m / 2.0, 0.0) / 8.0
+    total = (np.cos(distance * zeta) * _smooth_spectrum(filter_width * zeta)) @ sharp
+    total = total - np.cos(distance * static_zeta) @ smooth
+    upper = (distance[:, 0] + gap_m / 2.0) / (2.0 * radius_m)
+    lower = (distance[:, 0] - gap_m / 2.0) / (2.0 * radius_m)
     integral = iti0k0(upper)[1] - np.sign(lower) * iti0k0(np.abs(lower))[1]
     total = total + 4.0 * radius_m**2 / gap_m * integral
     current: ComplexArray = 2.0j * wavenumber_per_m / FREE_SPACE_IMPEDANCE_OHM * total
@@ -146,10 +162,11 @@ def _tube_spectrum(
     radius: FloatArray,
     sigma: FloatArray,
     wire_impedance: ComplexArray,
+    log_step: float,
 ) -> _TubeSpectrum:
     # Trapezoidal rule in ln(gamma): the integrand is smooth there and dies at both ends.
     low, high = np.log(0.1 / sigma), np.log(40.0 / radius)
-    count = int(np.ceil(np.max(high - low) / 0.06)) + 1
+    count = int(np.ceil(np.max(high - low) / log_step)) + 1
     fraction = np.linspace(0.0, 1.0, count)
     gamma = np.exp(low[:, None] + (high - low)[:, None] * fraction)
     zeta = np.sqrt(gamma**2 + k[:, None] ** 2)

@@ -13,13 +13,15 @@ from numpy.typing import NDArray
 
 from worker.engine.thin_wire.basis import end_kernel, product_kernel
 from worker.engine.thin_wire.discretisation import Discretisation
-from worker.engine.thin_wire.tube_kernel import distant_kernel
+from worker.engine.thin_wire.tube_kernel import distant_kernel, static_kernel
 
 FloatArray = NDArray[np.float64]
 
 # A target closer than this, in half lengths from the middle of the source element, goes by
 # product integration.
 _NEAR = 2.2
+# Points closer than this many radii need the static kernel itself, not its distant form.
+_CLOSE_RADII = 4.0
 # (ka)^2 below which the width of the kernel's dynamic part is left out.
 _NEGLIGIBLE_WIDTH = 1e-6
 
@@ -90,6 +92,7 @@ def _kernel(
     np.sqrt(distance, out=distance)
     inverse = 1.0 / distance
     static = distant_kernel(inverse, radius_squared)
+    _put_close_kernel(static, mesh, offset)
     _put_near_kernel(static, mesh, nodes, pairs)
     rest = distance
     rest -= offset
@@ -108,6 +111,16 @@ def _kernel(
         _put_near_kernel(peak, mesh, nodes, pairs, width=True)
         kernel[0] -= 0.5 * k * k * radius_squared * peak
     return kernel
+
+
+def _put_close_kernel(static: FloatArray, mesh: Discretisation, offset: FloatArray) -> None:
+    """Replace, in place, the distant form of the static kernel where points are too close for it.
+
+    Points of one element are among them and come out infinite; `_put_near_kernel` follows.
+    """
+    wire, target, source = np.nonzero(offset < _CLOSE_RADII * mesh.radius_m[:, None, None])
+    radius = mesh.radius_m[wire]
+    static[wire, target, source] = static_kernel(offset[wire, target, source] / radius) / radius
 
 
 def _near_pairs(elements: int) -> _Pairs:

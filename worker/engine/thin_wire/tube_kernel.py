@@ -52,7 +52,7 @@ def width_kernel(x: FloatArray) -> FloatArray:
 
 
 def distant_kernel(inverse_distance_per_m: FloatArray, radius_squared: FloatArray) -> FloatArray:
-    r"""Averaged inverse distance (1/m) between points at least about three radii apart.
+    r"""Averaged inverse distance (1/m) between points at least about four radii apart.
 
     Parameters
     ----------
@@ -65,8 +65,8 @@ def distant_kernel(inverse_distance_per_m: FloatArray, radius_squared: FloatArra
     -----
     With :math:`u = z^2 + 2a^2` the mean of :math:`R^2`, the central moments of :math:`R^2` over
     the circumference are :math:`2a^4`, 0 and :math:`6a^8`, hence
-    :math:`u^{-1/2}[1 + 3/4\,(a^2/u)^2 + 105/64\,(a^2/u)^4]`; the remainder is below 1e-5 of the
-    value from z = 3a on.
+    :math:`u^{-1/2}[1 + 3/4\,(a^2/u)^2 + 105/64\,(a^2/u)^4]`; the remainder is below 1e-6 of the
+    value from z = 4a on.
     """
     ratio = inverse_distance_per_m * inverse_distance_per_m
     ratio *= radius_squared

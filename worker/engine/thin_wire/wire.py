@@ -10,9 +10,13 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from worker.engine.thin_wire.batch import WireBatch, checked_batch
+from worker.engine.thin_wire.discretisation import Discretisation
 from worker.engine.thin_wire.gap import sharp_current
 from worker.engine.thin_wire.refinement import LEVELS, Solved, solve_level
 from worker.engine.thin_wire.reflection import ReflectedPotentials
+
+# The sharp current has died out this many widths of the smooth source away from its gap.
+_SHARP_REACH_SIGMAS = 8.0
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -223,12 +227,12 @@ def current(
 
 def _current_along(batch: WireBatch, solved: Solved) -> tuple[FloatArray, FloatArray, ComplexArray]:
     """Nodes, weights and current of the only wire of a batch, smooth and sharp parts together."""
-    half_position, half_weight = solved.mesh.nodes()[0], solved.mesh.weights()[0]
+    position, weight = _integration_rule(batch, solved.mesh)
     voltage = solved.port_voltage[0]
-    even = solved.mesh.evaluate(solved.even @ voltage)[0]
-    odd = solved.mesh.evaluate(solved.odd @ voltage)[0]
-    position = np.concatenate([-half_position[::-1], half_position])
-    along = np.concatenate([(even - odd)[::-1], even + odd])
+    distance = np.abs(position)
+    even = solved.mesh.evaluate(solved.even[0] @ voltage, distance)
+    odd = solved.mesh.evaluate(solved.odd[0] @ voltage, distance)
+    along = even + np.sign(position) * odd
     for port, volts in enumerate(voltage):
         along = along + volts * sharp_current(
             position - batch.port_position_m[0, port],
@@ -238,4 +242,30 @@ def _current_along(batch: WireBatch, solved: Solved) -> tuple[FloatArray, FloatA
             float(batch.sigma_m[0, port]),
             complex(batch.wire_impedance_ohm_per_m[0]),
         )
-    return position, np.concatenate([half_weight[::-1], half_weight]), along
+    return position, weight, along
+
+
+def _integration_rule(batch: WireBatch, mesh: Discretisation) -> tuple[FloatArray, FloatArray]:
+    """Positions and weights along the whole wire: the mesh's, and finer towards each gap.
+
+    Panels halve the way to the edges of a gap down to its width, so that the logarithmic peaks
+    of the sharp currents are integrated as exactly as the smooth part.
+    """
+    half_breaks = mesh.breaks_m[0, :-1]
+    edges = [-half_breaks, half_breaks]
+    gap, outermost = float(batch.gap_m[0]), float(half_breaks[-1])
+    for position, sigma in zip(batch.port_position_m[0], batch.sigma_m[0], strict=True):
+        count = int(np.ceil(np.log2(max(_SHARP_REACH_SIGMAS * float(sigma) / gap, 1.0)))) + 5
+        steps = gap / 16.0 * 2.0 ** np.arange(count + 1.0)
+        reach = np.concatenate([[0.0], steps, gap / 2.0 - steps[steps < gap / 2.0]])
+        reach = np.concatenate([reach, gap / 2.0 + steps])
+        edges += [position + reach, position - reach]
+    breaks = np.unique(np.clip(np.concatenate(edges), -outermost, outermost))
+    breaks = breaks[np.append(True, np.diff(breaks) > 1e-12 * outermost)]
+    node, node_weight = mesh.element.node, mesh.element.weight
+    middle, half = (breaks[1:] + breaks[:-1]) / 2.0, (breaks[1:] - breaks[:-1]) / 2.0
+    inner = (middle[:, None] + half[:, None] * node).ravel()
+    inner_weight = (half[:, None] * node_weight).ravel()
+    end, end_weight = mesh.nodes()[0, -node.size :], mesh.weights()[0, -node.size :]
+    position = np.concatenate([-end[::-1], inner, end])
+    return position, np.concatenate([end_weight[::-1], inner_weight, end_weight])
