@@ -8,6 +8,12 @@ def mhz(value: float) -> str:
     return f"{value:.3f}"
 
 
+def edge_mhz(value: float) -> str:
+    """A band edge in MHz to the kHz, with further digits only where it has them: ``5.3515``."""
+    whole, point, decimals = f"{value:.6f}".partition(".")
+    return whole + point + decimals.rstrip("0").ljust(3, "0")
+
+
 def khz(value: float) -> str:
     """A signed offset in kHz, ``+47``."""
     return f"{value:+.0f}"

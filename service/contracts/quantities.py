@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import unicodedata
 from typing import Annotated, Final
 
-from pydantic import BaseModel, ConfigDict, Field, StringConstraints
+from pydantic import BaseModel, ConfigDict, Field, StringConstraints, field_validator
+
+from service.contracts.refusals import rule_broken
 
 #: Speed of light in vacuum, exact by the definition of the metre (SI, 1983).
 SPEED_OF_LIGHT_M_PER_S: Final = 299_792_458.0
@@ -33,6 +36,19 @@ class Contract(BaseModel):
     model_config = ConfigDict(
         frozen=True, extra="forbid", allow_inf_nan=False, str_strip_whitespace=True
     )
+
+    @field_validator("*", mode="after")
+    @classmethod
+    def _text_is_printable(cls, value: object) -> object:
+        # PostgreSQL stores no NUL, and a terminal obeys the others.
+        if isinstance(value, str) and any(unicodedata.category(sign) == "Cc" for sign in value):
+            raise rule_broken(
+                "control-character",
+                "the text holds a control character.",
+                "Leave out line breaks, tabs and other control characters.",
+                value=ascii(value),
+            )
+        return value
 
 
 def wavelength_m(frequency_mhz: float) -> float:

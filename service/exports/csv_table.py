@@ -7,6 +7,7 @@ import io
 from collections.abc import Iterator
 from typing import Final
 
+from service.contracts import formats
 from service.contracts.report import BandReport, FeedReport, ReportPoint
 from service.exports import digits
 
@@ -58,7 +59,7 @@ def _places(band: BandReport) -> Iterator[tuple[str, ReportPoint]]:
 
 def _figures(point: ReportPoint) -> tuple[str, ...]:
     return (
-        digits.frequency_mhz(point.frequency_mhz),
+        formats.edge_mhz(point.frequency_mhz),
         digits.resistance_ohm(point.resistance_ohm),
         digits.resistance_ohm(point.reactance_ohm),
         digits.reflection(point.reflection),

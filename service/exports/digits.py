@@ -4,16 +4,8 @@ from __future__ import annotations
 
 from typing import Final
 
-_HERTZ_DECIMALS: Final = 6
-_KILOHERTZ_DECIMALS: Final = 3
 #: A cell that opens with one of these may be taken for a formula (common practice).
 _FORMULA_OPENERS: Final = ("=", "+", "-", "@", "\t", "\r", "\n", "＝", "＋", "－", "＠")
-
-
-def frequency_mhz(value: float) -> str:
-    """A frequency in MHz to the kHz, with further digits only where it has them: ``5.3515``."""
-    whole, point, decimals = f"{value:.{_HERTZ_DECIMALS}f}".partition(".")
-    return whole + point + decimals.rstrip("0").ljust(_KILOHERTZ_DECIMALS, "0")
 
 
 def resistance_ohm(value: float) -> str:

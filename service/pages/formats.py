@@ -6,6 +6,7 @@ from datetime import UTC, datetime
 
 from service.contracts import formats
 from service.contracts.formats import (
+    edge_mhz,
     khz,
     listed,
     metres,
@@ -17,7 +18,6 @@ from service.contracts.formats import (
     ratio,
     reflection,
 )
-from service.exports.digits import frequency_mhz as edge_mhz
 
 __all__ = [
     "count",

@@ -11,7 +11,7 @@ from typing import Final
 from jinja2 import Environment, FileSystemLoader, StrictUndefined, select_autoescape
 
 from service.pages import formats, wording
-from service.pages.plots import impedance_plot, swr_plot
+from service.plots import impedance_plot, swr_plot
 
 _HERE: Final = Path(__file__).parent
 STATIC: Final = _HERE / "static"

@@ -7,6 +7,7 @@ import io
 
 import pytest
 
+from service.contracts import formats
 from service.contracts.report import FeedReport
 from service.exports import digits
 from service.exports.csv_table import FEED_COLUMNS, feed_report_csv
@@ -82,7 +83,7 @@ def test_any_other_name_comes_back_as_it_was(report: FeedReport, name: str) -> N
 def test_frequencies_have_kilohertz_digits_and_more_only_where_needed(
     value: float, text: str
 ) -> None:
-    assert digits.frequency_mhz(value) == text
+    assert formats.edge_mhz(value) == text
 
 
 def test_a_reactance_that_rounds_to_zero_has_no_sign() -> None:

@@ -231,3 +231,9 @@ def test_a_range_of_diameters_is_sampled_within_its_limits(low: float, high: flo
     assert sampled[0] == low
     assert sampled[-1] == high
     assert all(low <= each <= high * (1 + 1e-12) for each in sampled)
+
+
+@pytest.mark.parametrize("name", ["two\nlines", "a\u0000b", "\u001b[31mred"])
+def test_control_characters_in_a_text_are_refused(name: str) -> None:
+    fault = only_fault(request_json(name=name))
+    assert (fault.field, fault.code) == ("name", "control-character")

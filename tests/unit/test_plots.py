@@ -11,8 +11,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from service.contracts.report import FeedReport
-from service.pages.plots import impedance_plot, swr_plot
-from service.pages.plots.scales import (
+from service.plots import impedance_plot, swr_plot
+from service.plots.scales import (
     CompressedScale,
     LinearScale,
     LogScale,

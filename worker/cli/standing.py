@@ -82,7 +82,12 @@ def _no_workers() -> Iterator[None]:
 
 def _server(settings: Settings, port: int) -> uvicorn.Server:
     config = uvicorn.Config(
-        create_app(settings), host=settings.host, port=port, log_level="warning", access_log=False
+        create_app(settings),
+        host=settings.host,
+        port=port,
+        log_level="warning",
+        access_log=False,
+        server_header=False,
     )
     return uvicorn.Server(config)
 

@@ -93,7 +93,7 @@ def show_band_lists(console: Console, lists: Iterable[BandList]) -> None:
         for band in each.bands:
             obtained = "text read" if band.obtained == "read" else "memory, check"
             table.add_row(
-                band.name, formats.mhz(band.low_mhz), formats.mhz(band.high_mhz), obtained
+                band.name, formats.edge_mhz(band.low_mhz), formats.edge_mhz(band.high_mhz), obtained
             )
         console.print(table)
         console.print(Text(f"{each.source}. National rules may allow less.", style="dim"))
@@ -183,7 +183,7 @@ def _band_cells(each: BandOutcome) -> tuple[str, ...]:
 
 def _point_cells(point: ReportPoint) -> tuple[str, ...]:
     return (
-        formats.mhz(point.frequency_mhz),
+        formats.edge_mhz(point.frequency_mhz),
         formats.ohms(point.resistance_ohm),
         formats.ohms(point.reactance_ohm),
         formats.reflection(point.reflection),

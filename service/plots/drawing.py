@@ -8,7 +8,7 @@ from typing import Final, Literal
 
 from markupsafe import Markup, escape
 
-from service.pages.plots.scales import Point
+from service.plots.scales import Point
 
 Anchor = Literal["start", "middle", "end"]
 

@@ -10,8 +10,8 @@ from markupsafe import Markup
 
 from service.contracts import formats
 from service.contracts.report import BandReport, FeedReport, ReportPoint
-from service.pages.plots.drawing import Drawing
-from service.pages.plots.scales import (
+from service.plots.drawing import Drawing
+from service.plots.scales import (
     CompressedScale,
     LogScale,
     Point,

@@ -1,6 +1,6 @@
 """Plots as inline SVG, drawn from stored figures: nothing computed but where ink goes."""
 
-from service.pages.plots.impedance import impedance_plot
-from service.pages.plots.standing_wave import swr_plot
+from service.plots.impedance import impedance_plot
+from service.plots.standing_wave import swr_plot
 
 __all__ = ["impedance_plot", "swr_plot"]

@@ -11,9 +11,8 @@ from markupsafe import Markup
 from service.contracts import formats
 from service.contracts.candidate import BandOutcome
 from service.contracts.report import BandReport
-from service.exports import digits
-from service.pages.plots.drawing import Drawing
-from service.pages.plots.scales import (
+from service.plots.drawing import Drawing
+from service.plots.scales import (
     LinearScale,
     LogScale,
     Point,
@@ -96,7 +95,7 @@ def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
     for mhz in linear_ticks(frame.frequency.low, frame.frequency.high, _FREQUENCY_TICKS):
         x = frame.frequency(mhz)
         drawing.line((x, _TOP), (x, _BOTTOM), "grid")
-        drawing.text((x, _BOTTOM + 18.0), digits.frequency_mhz(mhz), "tick")
+        drawing.text((x, _BOTTOM + 18.0), formats.edge_mhz(mhz), "tick")
     drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
     drawing.text((2.0, _TOP - 11.0), "SWR" if is_linear else "SWR, log scale", "unit", "start")
     drawing.text((_RIGHT, _BOTTOM + 31.0), "MHz", "unit", "end")
