@@ -138,10 +138,8 @@ def _averaged_kernel(distance: FloatArray, radius: float, k: float) -> ComplexAr
 def _gap_share(offset: NDArray[np.floating], step: float, gap: float) -> NDArray[np.floating]:
     """Mean over the gap of each hat function, offset from the gap's centre to its node."""
 
-    def area(x: NDArray[np.floating]) -> NDArray[np.floating]:
-        """Integral of a hat of unit half width up to x."""
-        y = np.clip(x, -1.0, 1.0)
-        return np.where(y < 0.0, (1.0 + y) ** 2 / 2.0, 1.0 - (1.0 - y) ** 2 / 2.0)
-
-    upper, lower = (gap / 2.0 - offset) / step, (-gap / 2.0 - offset) / step
-    return (area(upper) - area(lower)) * step / gap
+    # Integral of a hat of unit half width up to each edge of the gap.
+    edges = np.clip(np.stack([-gap / 2.0 - offset, gap / 2.0 - offset]) / step, -1.0, 1.0)
+    lower, upper = np.where(edges < 0.0, (1.0 + edges) ** 2 / 2.0, 1.0 - (1.0 - edges) ** 2 / 2.0)
+    share: NDArray[np.floating] = (upper - lower) * step / gap
+    return share
