@@ -34,7 +34,7 @@ ComplexArray: TypeAlias = NDArray[np.complex128]
 
 FREQUENCIES_HZ = (3.6e6, 28.5e6)
 HEIGHTS = (0.011, 0.05, 0.1, 0.25, 1.0)
-GROUNDS = ("very_good", "average", "city", "salt_water", "fresh_water")
+GROUNDS = ("very-good", "average", "city", "salt-water", "fresh-water")
 
 
 @dataclass(frozen=True, slots=True)
@@ -187,7 +187,7 @@ def print_table_costs() -> None:
 def print_ratio_to_plain_quadrature() -> None:
     print("\nBoth Sommerfeld integrals at one distance: contours of the engine, plain quadrature")
     print("ground        h/wl  rho/wl  engine us  plain us   ratio  difference")
-    for name in ("average", "salt_water"):
+    for name in ("average", "salt-water"):
         for height, distance in ((0.05, 0.02), (0.05, 0.5), (0.05, 3.0), (0.25, 0.5), (0.25, 3.0)):
             case = Case(name, 7.1e6, height, 6.0)
             many = np.full(100, distance)

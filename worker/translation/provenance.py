@@ -5,6 +5,7 @@ from __future__ import annotations
 from service.contracts.formats import metres
 from service.contracts.report import Provenance
 from service.contracts.request import DesignRequest
+from service.contracts.station_site import Ground as SaidGround
 from service.contracts.stock import material_in_words
 from worker.engine import ENGINE_VERSION
 from worker.engine.thin_wire import MODEL
@@ -31,11 +32,16 @@ def provenance_of(request: DesignRequest, appraisal: Appraisal) -> Provenance:
 
 
 def ground_in_words(request: DesignRequest) -> str:
-    """The ground and the height over it, as a report names them."""
-    ground = ground_of(request.site)
-    if ground is None or request.site.height_m is None:
+    """The ground of a request's site and the height over it, as a report names them."""
+    return ground_and_height_in_words(request.site.ground, request.site.height_m)
+
+
+def ground_and_height_in_words(said: SaidGround, height_m: float | None) -> str:
+    """A ground and the height over it, as a report names them."""
+    ground = ground_of(said)
+    if ground is None or height_m is None:
         return "free space"
-    height = f"{metres(request.site.height_m)} m over"
+    height = f"{metres(height_m)} m over"
     if ground.is_perfect:
         return f"{height} perfect ground"
     return (

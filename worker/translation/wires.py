@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from service.contracts.request import DesignRequest
-from service.contracts.station_site import GroundConstants, Site
+from service.contracts.station_site import Ground as SaidGround
+from service.contracts.station_site import GroundConstants
 from service.contracts.stock import Conductor
+from service.contracts.sweep import SweepRequest
 from worker.engine.ground import GROUND_CLASSES, Ground
 from worker.engine.hung_wire import GroundTables, HungWire
 from worker.engine.insulation import Sleeve
@@ -43,7 +45,8 @@ class StockWire:
 
 def search_space(request: DesignRequest) -> SearchSpace:
     """What a request allows to vary, and what it wants served."""
-    grounds = _ground_tables(request.site)
+    site = request.site
+    grounds = _ground_tables(site.ground, site.height_m, site.longest_wire_m)
     return SearchSpace(
         bands=tuple(
             BandGoal(
@@ -57,26 +60,38 @@ def search_space(request: DesignRequest) -> SearchSpace:
             for band in request.bands
         ),
         wires=tuple(StockWire(_hung(each, grounds)) for each in request.stock.choices()),
-        site_longest_m=request.site.longest_wire_m,
+        site_longest_m=site.longest_wire_m,
         ratios=request.feed.transformer_ratios,
         reference_ohm=request.feed.reference_ohm,
     )
 
 
-def ground_of(site: Site) -> Ground | None:
-    """The engine's ground for a site; None in free space."""
-    if isinstance(site.ground, GroundConstants):
-        return Ground(site.ground.relative_permittivity, site.ground.conductivity_s_per_m)
-    if site.ground == "free-space":
-        return None
-    return GROUND_CLASSES[site.ground]
+def swept_wire(request: SweepRequest) -> StockWire:
+    """The one wire of a sweep."""
+    longest_m = request.length_m or request.high
+    grounds = _ground_tables(request.ground, request.height_m, longest_m)
+    hung = _hung(request.conductor, grounds)
+    return StockWire(
+        replace(hung, feed_fraction=request.feed_fraction, temperature_c=request.temperature_c)
+    )
 
 
-def _ground_tables(site: Site) -> GroundTables | None:
-    ground = ground_of(site)
-    if ground is None or site.height_m is None:
+def ground_of(said: SaidGround) -> Ground | None:
+    """The engine's ground for what a request says; None in free space."""
+    if isinstance(said, GroundConstants):
+        return Ground(said.relative_permittivity, said.conductivity_s_per_m)
+    if said == "free-space":
         return None
-    return GroundTables(ground, site.height_m, _TABLE_REACH * site.longest_wire_m)
+    return GROUND_CLASSES[said]
+
+
+def _ground_tables(
+    said: SaidGround, height_m: float | None, longest_m: float
+) -> GroundTables | None:
+    ground = ground_of(said)
+    if ground is None or height_m is None:
+        return None
+    return GroundTables(ground, height_m, _TABLE_REACH * longest_m)
 
 
 def _hung(conductor: Conductor, grounds: GroundTables | None) -> HungWire:

@@ -78,7 +78,7 @@ def test_gain_of_a_null_is_the_floor_and_not_minus_infinity() -> None:
 
 
 def test_strongest_lobe_is_the_largest_gain_anywhere() -> None:
-    wire = off_centre(GROUND_CLASSES["very_good"], 20.0)
+    wire = off_centre(GROUND_CLASSES["very-good"], 20.0)
     found = pattern(wire, 10.0)
     elevation = np.linspace(0.0, QUARTER, 181)[:, None]
     everywhere = gain_dbi(wire, 10.0, elevation, np.linspace(0.0, 2.0 * np.pi, 361))
@@ -88,6 +88,12 @@ def test_strongest_lobe_is_the_largest_gain_anywhere() -> None:
     assert float(
         gain_dbi(wire, 10.0, found.take_off_rad, found.take_off_azimuth_rad)
     ) == pytest.approx(found.gain_dbi)
+
+
+def test_directivity_is_the_gain_referred_to_the_power_radiated() -> None:
+    wire = off_centre(GROUND_CLASSES["average"], 8.0)
+    sky = radiated_power(wire).power_w
+    assert pattern(wire, 10.0).directivity_dbi == pytest.approx(pattern(wire, sky).gain_dbi)
 
 
 def test_every_lobe_is_a_local_maximum() -> None:

@@ -9,12 +9,13 @@ import pytest
 from numpy.typing import NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
-from worker.engine.errors import OutOfRange
+from worker.engine.errors import NotConverged, OutOfRange
 from worker.engine.ground import (
     GROUND_CLASSES,
     PERFECT_GROUND,
     Ground,
     GroundTable,
+    panels,
     tabulate,
     tabulate_many,
     water,
@@ -51,7 +52,7 @@ def true_error(table: GroundTable) -> float:
     )
 
 
-@pytest.mark.parametrize("name", ["average", "salt_water", "industrial", "itu_fresh_water"])
+@pytest.mark.parametrize("name", ["average", "salt-water", "industrial", "itu-fresh-water"])
 @pytest.mark.parametrize("height", [0.01, 0.05, 0.3, 2.0])
 def test_error_of_interpolation_stays_below_the_error_stated(name: str, height: float) -> None:
     reach = 6.0 * WAVELENGTH_M
@@ -60,8 +61,28 @@ def test_error_of_interpolation_stays_below_the_error_stated(name: str, height: 
     assert true_error(table) <= table.relative_error
 
 
+def test_panels_too_long_are_halved_until_resolved(monkeypatch: pytest.MonkeyPatch) -> None:
+    reach = 6.0 * WAVELENGTH_M
+    ground, height = GROUND_CLASSES["fresh-water"], 0.05 * WAVELENGTH_M
+    foreseen = tabulate(ground, FREQUENCY_HZ, height, reach)
+    # As if no ripple were foreseen.
+    monkeypatch.setattr(panels, "_FAINT", np.inf)
+    halved = tabulate(ground, FREQUENCY_HZ, height, reach)
+    assert halved.samples > foreseen.samples
+    assert true_error(halved) <= halved.relative_error <= 1.2e-6
+
+
+def test_panels_that_stay_unresolved_are_an_error(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(panels, "_MOST_HALVINGS", 0)
+    monkeypatch.setattr(panels, "_FAINT", np.inf)
+    with pytest.raises(NotConverged):
+        tabulate(
+            GROUND_CLASSES["fresh-water"], FREQUENCY_HZ, 0.05 * WAVELENGTH_M, 6.0 * WAVELENGTH_M
+        )
+
+
 def test_quadrature_error_is_far_below_the_interpolation_tolerance() -> None:
-    for name in ("average", "salt_water", "industrial"):
+    for name in ("average", "salt-water", "industrial"):
         for height in (0.01, 0.1, 1.0):
             table = tabulate(
                 GROUND_CLASSES[name], FREQUENCY_HZ, height * WAVELENGTH_M, 3.0 * WAVELENGTH_M

@@ -93,22 +93,22 @@ GROUND_CLASSES: Final[MappingProxyType[str, Ground]] = MappingProxyType(
     {
         key: Ground(permittivity, conductivity, name, source)
         for key, permittivity, conductivity, name, source in (
-            ("very_good", 20.0, 0.0303, "very good (pastoral, rich soil)", _TRADE),
+            ("very-good", 20.0, 0.0303, "very good (pastoral, rich soil)", _TRADE),
             ("good", 14.0, 0.01, "good (pastoral, low hills)", _TRADE),
-            ("pastoral_hills", 13.0, 0.006, "pastoral, medium hills", _TRADE),
-            ("marshy_wooded", 12.0, 0.0075, "marshy, wooded", _TRADE),
+            ("pastoral-hills", 13.0, 0.006, "pastoral, medium hills", _TRADE),
+            ("marshy-wooded", 12.0, 0.0075, "marshy, wooded", _TRADE),
             ("average", 13.0, 0.005, "average (heavy clay)", _TRADE),
             ("rocky", 13.0, 0.002, "poor (rocky, mountainous)", _TRADE),
             ("sandy", 10.0, 0.002, "sandy, dry, coastal", _TRADE),
             ("city", 5.0, 0.001, "very poor (cities)", _TRADE),
             ("industrial", 3.0, 0.001, "extremely poor (heavy industrial)", _TRADE),
-            ("fresh_water", 80.0, 0.001, "fresh water", _TRADE),
-            ("salt_water", 81.0, 5.0, "salt water", _TRADE),
-            ("itu_sea_water", 70.0, 5.0, "sea water, average salinity, 20 C", _P527),
-            ("itu_wet_ground", 30.0, 0.01, "wet ground", _P527),
-            ("itu_fresh_water", 80.0, 0.003, "fresh water, 20 C", _P527),
-            ("itu_medium_dry_ground", 15.0, 0.001, "medium dry ground", _P527),
-            ("itu_very_dry_ground", 3.0, 0.0001, "very dry ground", _P527),
+            ("fresh-water", 80.0, 0.001, "fresh water", _TRADE),
+            ("salt-water", 81.0, 5.0, "salt water", _TRADE),
+            ("itu-sea-water", 70.0, 5.0, "sea water, average salinity, 20 C", _P527),
+            ("itu-wet-ground", 30.0, 0.01, "wet ground", _P527),
+            ("itu-fresh-water", 80.0, 0.003, "fresh water, 20 C", _P527),
+            ("itu-medium-dry-ground", 15.0, 0.001, "medium dry ground", _P527),
+            ("itu-very-dry-ground", 3.0, 0.0001, "very dry ground", _P527),
         )
     }
     | {"perfect": PERFECT_GROUND}
