@@ -62,23 +62,19 @@ def test_error_of_interpolation_stays_below_the_error_stated(name: str, height: 
 
 
 def test_panels_too_long_are_halved_until_resolved(monkeypatch: pytest.MonkeyPatch) -> None:
-    reach = 6.0 * WAVELENGTH_M
-    ground, height = GROUND_CLASSES["fresh-water"], 0.05 * WAVELENGTH_M
-    foreseen = tabulate(ground, FREQUENCY_HZ, height, reach)
-    # As if no ripple were foreseen.
-    monkeypatch.setattr(panels, "_FAINT", np.inf)
-    halved = tabulate(ground, FREQUENCY_HZ, height, reach)
-    assert halved.samples > foreseen.samples
-    assert true_error(halved) <= halved.relative_error <= 1.2e-6
+    monkeypatch.setattr(panels, "_starting_edges", lambda *case: np.array([0.0, case[2]]))
+    table = tabulate(
+        GROUND_CLASSES["average"], FREQUENCY_HZ, 0.05 * WAVELENGTH_M, 6.0 * WAVELENGTH_M
+    )
+    assert table.samples > panels.NODES
+    assert true_error(table) <= table.relative_error <= 1.2e-6
 
 
 def test_panels_that_stay_unresolved_are_an_error(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(panels, "_starting_edges", lambda *case: np.array([0.0, case[2]]))
     monkeypatch.setattr(panels, "_MOST_HALVINGS", 0)
-    monkeypatch.setattr(panels, "_FAINT", np.inf)
     with pytest.raises(NotConverged):
-        tabulate(
-            GROUND_CLASSES["fresh-water"], FREQUENCY_HZ, 0.05 * WAVELENGTH_M, 6.0 * WAVELENGTH_M
-        )
+        tabulate(GROUND_CLASSES["average"], FREQUENCY_HZ, 0.05 * WAVELENGTH_M, 6.0 * WAVELENGTH_M)
 
 
 def test_quadrature_error_is_far_below_the_interpolation_tolerance() -> None:
