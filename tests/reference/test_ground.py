@@ -36,7 +36,7 @@ from worker.engine.ground import (
     water,
 )
 from worker.engine.ground.hankel import scaled_hankel
-from worker.engine.ground.water import ionic_conductivity_s_per_m
+from worker.engine.ground.natural_water import ionic_conductivity_s_per_m
 
 with (Path(__file__).parent / "ground.csv").open(newline="") as published:
     ROWS = list(csv.DictReader(published))

@@ -1,8 +1,8 @@
 """Ground under a horizontal wire: what it is made of and what it reflects."""
 
 from worker.engine.ground.medium import GROUND_CLASSES, PERFECT_GROUND, Ground
+from worker.engine.ground.natural_water import water
 from worker.engine.ground.table import GroundTable, tabulate, tabulate_many
-from worker.engine.ground.water import water
 
 __all__ = [
     "GROUND_CLASSES",

@@ -117,6 +117,6 @@ GROUND_CLASSES: Final[MappingProxyType[str, Ground]] = MappingProxyType(
 
 The Recommendation draws both constants of soil as level up to about 30 MHz (permittivity up to
 about 1 GHz), so one pair serves all of HF; for water by temperature and salinity see
-:func:`worker.engine.ground.water.water`. The trade gives 12 to 14 for the permittivity of rocky
+:func:`worker.engine.ground.water`. The trade gives 12 to 14 for the permittivity of rocky
 ground; the middle is used.
 """
