@@ -1,12 +1,13 @@
 """The doorbell: tells workers that work has come, and may be lost without harm.
 
-A ring carries nothing; whoever hears it looks into the store. It is sent after the commit, in
-bounded time, and a broker that is away is not the submitter's trouble.
+A ring carries nothing; whoever hears it looks into the store. It is sent after the commit, from
+a thread of its own, so that a broker that is away or silent is not the submitter's trouble.
 """
 
 from __future__ import annotations
 
 import logging
+import threading
 from typing import Final
 
 from celery import Celery
@@ -17,14 +18,18 @@ _log = logging.getLogger(__name__)
 
 TASK: Final = "spanwright.doorbell"
 
-#: A broker that does not answer may hold a ring up for so long.
-_PATIENCE_S: Final = 2.0
+#: A broker that cannot be reached holds up the ringing thread for so long.
+_CONNECT_S: Final = 2.0
+#: Closing waits for rings under way for so long.
+_CLOSE_S: Final = 3.0
+#: More rings than this need not wait at once: there are not that many workers to wake.
+_MOST_WAITING: Final = 64
 
 #: Broker settings for both sides of the bell; Redis by redis-py.
 TRANSPORT: Final = {
     "visibility_timeout": 3600,
     "socket_timeout": 5,
-    "socket_connect_timeout": _PATIENCE_S,
+    "socket_connect_timeout": _CONNECT_S,
     "socket_keepalive": True,
     "health_check_interval": 10,
     "max_retries": 0,
@@ -37,25 +42,59 @@ class Doorbell:
     def __init__(self, settings: Settings) -> None:
         self._app: Celery | None = None
         if settings.redis_url is not None:
-            self._app = Celery("doorbell", broker=settings.redis_url)
+            self._app = Celery("doorbell", broker=settings.redis_url, set_as_current=False)
             self._app.conf.update(
                 task_ignore_result=True,
                 task_publish_retry=False,
                 broker_transport_options=dict(TRANSPORT),
             )
+        self._changed = threading.Condition()
+        self._waiting = 0
+        self._closed = False
+        # Made at the first ring, for a thread would not survive the fork of a worker.
+        self._thread: threading.Thread | None = None
 
     def ring(self) -> None:
-        """Ring once; failures are logged and swallowed."""
+        """Ring once; returns at once, and failures are logged and swallowed."""
         if self._app is None:
             return
-        try:
-            self._app.send_task(TASK, retry=False)
-        except Exception as error:  # noqa: BLE001  # whatever the broker does, the job is stored and the sweep finds it
-            _log.warning(
-                "the doorbell did not ring, workers will find the job by sweeping: %s", error
-            )
+        with self._changed:
+            if self._closed:
+                return
+            self._waiting = min(self._waiting + 1, _MOST_WAITING)
+            self._changed.notify()
+            if self._thread is None:
+                self._thread = threading.Thread(
+                    target=self._send, args=(self._app,), name="doorbell", daemon=True
+                )
+                self._thread.start()
 
     def close(self) -> None:
-        """Give back the connection to the broker."""
+        """Send what waits to be rung, for a short time, and give back the connection."""
+        with self._changed:
+            self._closed = True
+            self._changed.notify()
+        if self._thread is not None:
+            self._thread.join(_CLOSE_S)
         if self._app is not None:
             self._app.close()
+
+    def _send(self, app: Celery) -> None:
+        while self._take_one():
+            try:
+                app.send_task(TASK, retry=False)
+            except Exception as error:  # noqa: BLE001  # whatever the broker does, the job is stored and a sweep finds it
+                with self._changed:
+                    # The broker is away: the other rings would only find out the same.
+                    self._waiting = 0
+                _log.warning(
+                    "the doorbell did not ring, workers will find the job by sweeping: %s", error
+                )
+
+    def _take_one(self) -> bool:
+        with self._changed:
+            self._changed.wait_for(lambda: self._waiting > 0 or self._closed)
+            if self._waiting == 0:
+                return False
+            self._waiting -= 1
+            return True

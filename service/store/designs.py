@@ -2,25 +2,37 @@
 
 from __future__ import annotations
 
+import json
+import re
 import uuid
 from dataclasses import dataclass
 from typing import Any, Final
 
+from pydantic import ValidationError
 from sqlalchemy import Row, Select, and_, func, or_, select
 from sqlalchemy.exc import IntegrityError
 from sqlalchemy.orm import Session
 
 from service.contracts.candidate import Candidate, DesignResult
 from service.contracts.progress import Design, DesignSummary, Progress
+from service.contracts.refusals import faults_of
 from service.contracts.report import FeedReport
 from service.contracts.request import DesignRequest
-from service.errors import CandidateNotFound, DesignNotFound, KeyReused, ResultNotReady
+from service.errors import (
+    CandidateNotFound,
+    DesignNotFound,
+    KeyReused,
+    ResultNotReady,
+    SchemaMismatch,
+)
 from service.store.clock import now
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
 
 #: The priority of ordinary work; smaller comes first.
 ORDINARY: Final = 100
+
+_IDENTIFIER: Final = re.compile(r"[0-9a-f]{32}")
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,6 +115,7 @@ def get(store: Store, design_id: str) -> Design:
     DesignNotFound
         If there is no such design.
     """
+    refuse_malformed(design_id)
 
     def work(session: Session) -> Design:
         found = session.execute(
@@ -118,8 +131,8 @@ def get(store: Store, design_id: str) -> Design:
         result: str | None = stored
         return Design(
             **_summary_fields(design, job),
-            request=DesignRequest.model_validate_json(design.request),
-            result=None if result is None else DesignResult.model_validate_json(result),
+            request=read_request(design),
+            result=None if result is None else _read_result(design_id, result),
         )
 
     return store.read(work)
@@ -141,6 +154,8 @@ def page(store: Store, *, limit: int, before: str | None) -> DesignPage:
     DesignNotFound
         If ``before`` names no design.
     """
+    if before is not None:
+        refuse_malformed(before)
 
     def work(session: Session) -> DesignPage:
         query = (
@@ -182,6 +197,7 @@ def report(store: Store, design_id: str, rank: int) -> FeedReport:
     ------
     DesignNotFound, ResultNotReady, CandidateNotFound
     """
+    refuse_malformed(design_id)
 
     def work(session: Session) -> str | None:
         query = select(ReportRow.report).where(
@@ -199,6 +215,44 @@ def report(store: Store, design_id: str, rank: int) -> FeedReport:
 def count(store: Store) -> int:
     """How many designs are stored."""
     return store.read(lambda session: session.scalar(select(func.count(DesignRow.id))) or 0)
+
+
+def refuse_malformed(design_id: str) -> None:
+    """Refuse what cannot be an identifier before any database has to make sense of it.
+
+    Raises
+    ------
+    DesignNotFound
+    """
+    if _IDENTIFIER.fullmatch(design_id) is None:
+        raise DesignNotFound(design_id)
+
+
+def read_request(design: DesignRow) -> DesignRequest:
+    """The request of a stored design.
+
+    Raises
+    ------
+    SchemaMismatch
+        If it was accepted by a release with another contract.
+    """
+    try:
+        return DesignRequest.model_validate_json(design.request)
+    except ValidationError as error:
+        raise SchemaMismatch(
+            f"The request of design {design.id} was accepted by another release and breaks the "
+            f"contract of this one ({faults_of(error)[0]}) Submit it again in today's form."
+        ) from error
+
+
+def _read_result(design_id: str, result: str) -> DesignResult:
+    try:
+        return DesignResult.model_validate_json(result)
+    except ValidationError as error:
+        raise SchemaMismatch(
+            f"The result of design {design_id} was stored by another release and cannot be read "
+            "by this one. Submit the request again."
+        ) from error
 
 
 def _earlier(session: Session, design_id: str, key: str | None) -> DesignRow | None:
@@ -233,7 +287,6 @@ def _summary(row: Row[DesignRow, JobRow]) -> DesignSummary:
 
 
 def _summary_fields(design: DesignRow, job: JobRow) -> dict[str, Any]:
-    request = DesignRequest.model_validate_json(design.request)
     return {
         "id": design.id,
         "name": design.name,
@@ -244,5 +297,5 @@ def _summary_fields(design: DesignRow, job: JobRow) -> dict[str, Any]:
         "created_at": design.created_at,
         "started_at": job.started_at,
         "finished_at": job.finished_at,
-        "bands": tuple(band.name for band in request.bands),
+        "bands": tuple(band["name"] for band in json.loads(design.request)["bands"]),
     }

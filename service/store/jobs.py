@@ -5,7 +5,7 @@ Only here do jobs change state::
     queued ──claim──▶ running ──finish──▶ done
       ▲ │                │ │ └──fail────▶ failed
       │ └──cancel────────┼─┴─────────────▶ cancelled
-      └──release, sweep──┘
+      └─returned or lost─┘
 
 Every claim raises the job's fence, and so does taking a job away from a worker that was not
 heard of. A worker writes under the fence it was given: what arrives late changes nothing.
@@ -14,26 +14,37 @@ heard of. A worker writes under the fence it was given: what arrives late change
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from datetime import datetime, timedelta
 from enum import Enum
 from typing import Any, Final
 
-from sqlalchemy import ColumnElement, func, select, update
+from sqlalchemy import ColumnElement, Select, func, select, update
 from sqlalchemy.engine import CursorResult
 from sqlalchemy.orm import Session
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
 from service.contracts.request import DesignRequest
-from service.errors import DesignNotFound
+from service.errors import DesignNotFound, SchemaMismatch
 from service.store.clock import now
+from service.store.designs import read_request, refuse_malformed
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
 
 _LONGEST_FAILURE: Final = 500
 _LONGEST_STEP: Final = 200
+
+#: The next job in order, with its design, locked for the one who asks.
+_NEXT: Final = (
+    select(JobRow, DesignRow)
+    .join(DesignRow, DesignRow.id == JobRow.design_id)
+    .where(JobRow.state == "queued", JobRow.cancel_wanted.is_(False))
+    .order_by(JobRow.priority, JobRow.position, JobRow.design_id)
+    .limit(1)
+    .with_for_update(of=JobRow, skip_locked=True)
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,33 +97,25 @@ def claim(store: Store, worker: str, lease_s: float) -> ClaimedJob | None:
     """
 
     def work(session: Session) -> ClaimedJob | None:
-        job = session.scalars(
-            select(JobRow)
-            .where(JobRow.state == "queued", JobRow.cancel_wanted.is_(False))
-            .order_by(JobRow.priority, JobRow.position, JobRow.design_id)
-            .limit(1)
-            .with_for_update(skip_locked=True)
-        ).one_or_none()
-        if job is None:
-            return None
-        moment = now(session)
-        job.state = "running"
-        job.fence += 1
-        job.attempts += 1
-        job.worker = worker
-        job.lease_until = moment + timedelta(seconds=lease_s)
-        job.started_at = job.started_at or moment
-        job.progress, job.step = 0.0, "taken up by a worker"
-        request = session.scalars(
-            select(DesignRow.request).where(DesignRow.id == job.design_id)
-        ).one()
-        return ClaimedJob(
-            job.design_id,
-            DesignRequest.model_validate_json(request),
-            job.fence,
-            job.attempts,
-            worker,
-        )
+        while (found := session.execute(_NEXT).one_or_none()) is not None:
+            job, design = found
+            moment = now(session)
+            try:
+                request = read_request(design)
+            except SchemaMismatch as error:
+                # It would be found unreadable by every worker, and hold up the queue for ever.
+                _set_aside(job, moment, error.detail)
+                session.flush()
+                continue
+            job.state = "running"
+            job.fence += 1
+            job.attempts += 1
+            job.worker = worker
+            job.lease_until = moment + timedelta(seconds=lease_s)
+            job.started_at = job.started_at or moment
+            job.progress, job.step = 0.0, "taken up by a worker"
+            return ClaimedJob(job.design_id, request, job.fence, job.attempts, worker)
+        return None
 
     return store.write(work)
 
@@ -196,7 +199,12 @@ def release(store: Store, job: ClaimedJob) -> bool:
     """Give a job back unharmed, as a worker does that is asked to stop; it costs no attempt."""
 
     def work(session: Session) -> bool:
-        return _change(session, job, _back_in_queue(job.fence, attempts=job.attempt - 1))
+        held = session.scalars(select(JobRow).where(*_held(job)).with_for_update()).one_or_none()
+        if held is None:
+            return False
+        held.attempts -= 1
+        _give_back(held, now(session), "waiting again: its worker was stopped")
+        return True
 
     return store.write(work)
 
@@ -209,6 +217,7 @@ def cancel(store: Store, design_id: str) -> None:
     DesignNotFound
         If there is no such design. One that has ended is left as it is.
     """
+    refuse_malformed(design_id)
 
     def work(session: Session) -> None:
         job = session.get(JobRow, design_id, with_for_update=True)
@@ -223,26 +232,23 @@ def cancel(store: Store, design_id: str) -> None:
 
 
 def sweep(store: Store, max_attempts: int) -> Swept:
-    """Put right what dead workers left: their jobs wait again, or are set aside.
+    """Put right what lost workers left: their jobs wait again, or are set aside.
 
     Idempotent, so any process may do it at any time and no one need lead.
     """
-    if not store.read(_any_expired):
-        return Swept(0, 0, 0)
 
-    def work(session: Session) -> Swept:
-        moment = now(session)
-        expired = session.scalars(
-            select(JobRow)
-            .where(JobRow.state == "running", JobRow.lease_until < moment)
-            .with_for_update(skip_locked=True)
-        ).all()
-        done: Counter[str] = Counter()
-        for job in expired:
-            done[_take_away(job, moment, max_attempts)] += 1
-        return Swept(done["queued"], done["failed"], done["cancelled"])
+    def expired(moment: datetime) -> ColumnElement[bool]:
+        return JobRow.lease_until < moment
 
-    return store.write(work)
+    return _take_away(store, expired, max_attempts)
+
+
+def bury(store: Store, worker: str, max_attempts: int) -> Swept:
+    """Take away what a worker held that is known to be dead, without awaiting its lease.
+
+    Only for whoever has seen the process end, and names workers so that none shares a name.
+    """
+    return _take_away(store, lambda _: JobRow.worker == worker, max_attempts)
 
 
 def depth(store: Store) -> Mapping[str, int]:
@@ -255,29 +261,54 @@ def depth(store: Store) -> Mapping[str, int]:
     return store.read(work)
 
 
-def _any_expired(session: Session) -> bool:
-    query = select(JobRow.design_id).where(
-        JobRow.state == "running", JobRow.lease_until < now(session)
+def _take_away(
+    store: Store, whose: Callable[[datetime], ColumnElement[bool]], max_attempts: int
+) -> Swept:
+    """Take running jobs away from their workers, who can no longer write: the fence rises."""
+
+    def query(session: Session) -> Select[JobRow]:
+        return select(JobRow).where(JobRow.state == "running", whose(now(session)))
+
+    # A reading first, so that a sweep that finds nothing does not hold up writers.
+    if store.read(lambda session: session.scalar(query(session).limit(1))) is None:
+        return Swept(0, 0, 0)
+
+    def work(session: Session) -> Swept:
+        done: Counter[str] = Counter()
+        for job in session.scalars(query(session).with_for_update(skip_locked=True)).all():
+            if job.attempts >= max_attempts and not job.cancel_wanted:
+                _set_aside(job, now(session), _lost_too_often(job))
+            else:
+                _give_back(job, now(session), "waiting again: its worker was lost")
+            done[job.state] += 1
+        return Swept(done["queued"], done["failed"], done["cancelled"])
+
+    return store.write(work)
+
+
+def _lost_too_often(job: JobRow) -> str:
+    times = "once" if job.attempts == 1 else f"{job.attempts} times"
+    return (
+        f"The worker was lost {times} while planning this design (last: {job.worker}). It was "
+        "set aside; the worker's log tells more. Try a smaller request."
     )
-    return session.scalar(query.limit(1)) is not None
 
 
-def _take_away(job: JobRow, moment: datetime, max_attempts: int) -> str:
-    """Move an expired job on; its fence rises, so that its worker can no longer write."""
+def _give_back(job: JobRow, moment: datetime, step: str) -> None:
+    """Let a job wait again, or end it if it was cancelled meanwhile."""
     job.fence += 1
     job.lease_until = None
     if job.cancel_wanted:
         job.state, job.finished_at, job.step = "cancelled", moment, "cancelled"
-    elif job.attempts >= max_attempts:
-        job.state, job.finished_at, job.step = "failed", moment, "set aside"
-        job.failure = (
-            f"The worker was lost {job.attempts} times while planning this design (last: "
-            f"{job.worker}). It was set aside; the worker's log tells more. Try a smaller request."
-        )
     else:
-        job.state, job.progress = "queued", 0.0
-        job.step = "waiting again: its worker was lost"
-    return job.state
+        job.state, job.progress, job.step = "queued", 0.0, step
+
+
+def _set_aside(job: JobRow, moment: datetime, reason: str) -> None:
+    job.fence += 1
+    job.lease_until = None
+    job.state, job.finished_at, job.step = "failed", moment, "set aside"
+    job.failure = reason[:_LONGEST_FAILURE]
 
 
 def _held(job: ClaimedJob) -> tuple[ColumnElement[bool], ...]:
@@ -313,14 +344,3 @@ def _ended_by(session: Session, job: ClaimedJob, state: str) -> bool:
         JobRow.design_id == job.design_id, JobRow.fence == job.fence, JobRow.state == state
     )
     return session.scalar(query) is not None
-
-
-def _back_in_queue(fence: int, attempts: int) -> dict[str, Any]:
-    return {
-        "state": "queued",
-        "fence": fence + 1,
-        "attempts": attempts,
-        "lease_until": None,
-        "progress": 0.0,
-        "step": "waiting again: its worker was stopped",
-    }

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import threading
 from pathlib import Path
 from typing import Final
 
@@ -12,12 +13,16 @@ from alembic.script import ScriptDirectory
 from sqlalchemy import Connection, Engine, text
 
 from service.errors import SchemaMismatch
+from service.store.connection import WRITES
 
 _HERE: Final = Path(__file__).resolve().parent
 
 #: PostgreSQL's advisory lock that lets one process migrate while the others wait: the letters
 #: "span" as a number.
 _MIGRATION_LOCK: Final = 0x7370616E
+
+# Alembic keeps its migration context in a module, so that one process migrates one at a time.
+_one_at_a_time: Final = threading.Lock()
 
 
 def upgrade(engine: Engine, revision: str = "head") -> None:
@@ -28,17 +33,21 @@ def upgrade(engine: Engine, revision: str = "head") -> None:
     SchemaMismatch
         If the database is at a revision this release does not know.
     """
-    with engine.connect() as connection, connection.begin():
-        # SQLite's writers are alone from BEGIN IMMEDIATE on.
-        if connection.dialect.name == "postgresql":
-            connection.execute(text(f"SELECT pg_advisory_xact_lock({_MIGRATION_LOCK})"))
-        _refuse_unknown(connection)
-        command.upgrade(_config(connection), revision)
+    with _one_at_a_time:
+        # A look first: what is up to date already must not wait for writers.
+        with engine.connect().execution_options(**{WRITES: False}) as connection:
+            if revision == "head" and _current(connection) == scripts().get_current_head():
+                return
+        with engine.connect() as connection, connection.begin():
+            _alone(connection)
+            _refuse_unknown(connection)
+            command.upgrade(_config(connection), revision)
 
 
 def downgrade(engine: Engine, revision: str) -> None:
     """Take a database back to an earlier revision, or to ``base``, which is empty."""
-    with engine.connect() as connection, connection.begin():
+    with _one_at_a_time, engine.connect() as connection, connection.begin():
+        _alone(connection)
         command.downgrade(_config(connection), revision)
 
 
@@ -47,14 +56,27 @@ def scripts() -> ScriptDirectory:
     return ScriptDirectory.from_config(_config(None))
 
 
+def _alone(connection: Connection) -> None:
+    # SQLite's writers are alone from BEGIN IMMEDIATE on. On PostgreSQL a migration may take
+    # longer than any other statement, and so may the wait for another process's.
+    if connection.dialect.name == "postgresql":
+        connection.execute(text("SET LOCAL statement_timeout = 0"))
+        connection.execute(text("SET LOCAL lock_timeout = 0"))
+        connection.execute(text(f"SELECT pg_advisory_xact_lock({_MIGRATION_LOCK})"))
+
+
 def _refuse_unknown(connection: Connection) -> None:
-    current = MigrationContext.configure(connection).get_current_revision()
+    current = _current(connection)
     known = {script.revision for script in scripts().walk_revisions()}
     if current is not None and current not in known:
         raise SchemaMismatch(
             f"The database is at revision {current}, which this release does not know. "
             "Run a newer release, or restore a backup made by this one."
         )
+
+
+def _current(connection: Connection) -> str | None:
+    return MigrationContext.configure(connection).get_current_revision()
 
 
 def _config(connection: Connection | None) -> Config:

@@ -1,0 +1,63 @@
+"""Connections to either database, with what each needs set on every one of them.
+
+SQLite is opened with a write-ahead log and full synchronisation; whoever means to write says so
+from the start (BEGIN IMMEDIATE), for a reader that turns writer is refused without waiting.
+PostgreSQL is told how long a statement may take and how long a lock may be held by a client
+that has fallen silent, so that a frozen worker cannot keep its job from the others.
+"""
+
+from __future__ import annotations
+
+from typing import Final
+
+from sqlalchemy import Connection, Engine, create_engine, event
+from sqlalchemy.engine.interfaces import DBAPIConnection
+from sqlalchemy.pool import ConnectionPoolEntry
+
+#: Name of the execution option that says whether a transaction is going to write.
+WRITES: Final = "spanwright_writes"
+
+SQLITE_BUSY_MS: Final = 10_000
+
+_POSTGRESQL: Final = {
+    "connect_timeout": 5,
+    "keepalives_idle": 10,
+    "keepalives_interval": 5,
+    "keepalives_count": 3,
+    "options": " ".join(
+        (
+            "-c lock_timeout=10s",
+            "-c statement_timeout=30s",
+            "-c idle_in_transaction_session_timeout=20s",
+        )
+    ),
+}
+
+
+def make_engine(database_url: str) -> Engine:
+    """An engine for a database of either kind."""
+    if not database_url.startswith("sqlite"):
+        return create_engine(database_url, pool_pre_ping=True, connect_args=_POSTGRESQL)
+    engine = create_engine(database_url)
+    event.listen(engine, "connect", _prepare_sqlite)
+    event.listen(engine, "begin", _begin_sqlite)
+    return engine
+
+
+def _prepare_sqlite(connection: DBAPIConnection, _entry: ConnectionPoolEntry) -> None:
+    # The driver must not begin transactions by itself: _begin_sqlite does.
+    connection.isolation_level = None
+    cursor = connection.cursor()
+    for pragma in (
+        f"busy_timeout = {SQLITE_BUSY_MS}",
+        "journal_mode = WAL",
+        "synchronous = FULL",
+        "foreign_keys = ON",
+    ):
+        cursor.execute(f"PRAGMA {pragma}")
+    cursor.close()
+
+
+def _begin_sqlite(connection: Connection) -> None:
+    writes = connection.get_execution_options().get(WRITES, True)
+    connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
