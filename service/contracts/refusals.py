@@ -43,6 +43,10 @@ _REMEDIES: Mapping[str, str] = {
 }
 
 
+#: Where pydantic's own words would only repeat the remedy.
+_REASONS: Mapping[str, str] = {"literal_error": "this is none of the choices."}
+
+
 def rule_broken(
     code: str, reason: str, remedy: str, *, field: str = "", value: object = None
 ) -> PydanticCustomError:
@@ -97,7 +101,7 @@ def _fault(detail: ErrorDetails) -> Fault:
     return Fault(
         path or "request",
         value,
-        _sentence(detail["msg"]),
+        _REASONS.get(kind) or _sentence(detail["msg"]),
         template.format(**context) if "{" in template else template,
         kind.replace("_", "-"),
     )

@@ -2,5 +2,6 @@
 
 from service.plots.impedance import impedance_plot
 from service.plots.standing_wave import swr_plot
+from service.plots.sweep import sweep_plot
 
-__all__ = ["impedance_plot", "swr_plot"]
+__all__ = ["impedance_plot", "sweep_plot", "swr_plot"]

@@ -14,6 +14,7 @@ Anchor = Literal["start", "middle", "end"]
 
 #: A line may be drawn this far from its points: far less than its own width.
 _HAIR_PX: Final = 0.1
+_SVG_NAMESPACE: Final = "http://www.w3.org/2000/svg"
 
 
 class Drawing:
@@ -81,6 +82,13 @@ class Drawing:
                 css_class, _px(place[0]), _px(place[1]), anchor, words
             )
         )
+
+    def document(self, title: str, description: str, style: str) -> str:
+        """The finished drawing as a file of its own, which carries its looks with it."""
+        inline = str(self.markup(title, description))
+        opening, rest = inline.split(">", 1)
+        size = f' width="{_px(self._size[0])}" height="{_px(self._size[1])}"'
+        return f'{opening} xmlns="{_SVG_NAMESPACE}"{size}><style>{style}</style>{rest}\n'
 
     def markup(self, title: str, description: str) -> Markup:
         """The finished drawing, with its title and description."""

@@ -9,7 +9,6 @@ from __future__ import annotations
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from enum import IntEnum
 from pathlib import Path
 from typing import Annotated, Final
 
@@ -23,23 +22,12 @@ from service.contracts.progress import Design, DesignSummary
 from service.contracts.report import FeedReport
 from service.contracts.request import DesignRequest, parse_request
 from service.errors import Fault, RequestRefused, SpanwrightError
-from worker.cli import tables
+from worker.cli import tables, wire_commands
 from worker.cli.client import ServiceClient, ServiceUnreachable
-from worker.cli.impedance_lines import filter_lines
+from worker.cli.exit_status import ExitStatus
 from worker.cli.standing import demo_request, serve_until_stopped, standing_service
 from worker.engine.errors import EngineError
 from worker.planning import plan as plan_request
-
-
-class ExitStatus(IntEnum):
-    """What the command tells the shell."""
-
-    DONE = 0
-    REFUSED = 2
-    FAILED = 3
-    UNREACHABLE = 4
-    TOO_LONG = 5
-
 
 app = typer.Typer(
     name="spanwright",
@@ -163,20 +151,6 @@ def bands(
 
 
 @app.command()
-def impedance() -> None:
-    """Filter wires to impedances: one JSON object a line in, one a line out, order kept.
-
-    In: frequency_hz, length_m, radius_m; optional height_m, relative_permittivity,
-    conductivity_s_per_m ("inf": perfect ground), feed_fraction, gap_m, material,
-    temperature_c, id. Out: resistance_ohm, reactance_ohm, estimated_error_ohm, unknowns,
-    gap_m and the id. A bad line is answered by a problem on its own line, and the exit
-    status is then 3.
-    """
-    if filter_lines(sys.stdin.buffer, sys.stdout):
-        sys.exit(ExitStatus.FAILED)
-
-
-@app.command()
 def serve(
     workers: Annotated[
         bool, typer.Option("--workers/--no-workers", help="Whether workers run here too.")
@@ -202,6 +176,9 @@ def demo() -> None:
     err.print(
         "The design is stored. See it as a page: run 'spanwright serve' and open its address."
     )
+
+
+wire_commands.add_to(app)
 
 
 def main() -> None:

@@ -16,6 +16,7 @@ from service.contracts.band_lists import BandList
 from service.contracts.candidate import BandOutcome, Candidate, DesignResult
 from service.contracts.progress import DesignSummary
 from service.contracts.report import BandReport, FeedReport, ReportPoint
+from service.contracts.sweep import Sweep, SweepPoint
 from service.errors import SpanwrightError
 
 _SERVICE_STYLE: Final = {"served": "bold", "partly served": "", "unserved": "dim"}
@@ -82,6 +83,36 @@ def show_designs(console: Console, designs: Iterable[DesignSummary]) -> None:
         submitted = f"{design.created_at:%Y-%m-%d %H:%M}"
         table.add_row(design.id, Text(design.name), Text(", ".join(design.bands)), state, submitted)
     console.print(table)
+
+
+def show_sweep(console: Console, found: Sweep) -> None:
+    """Print a sweep: a line a point, then its resonances and what it rests on."""
+    along_frequency = found.request.along == "frequency"
+    with_line = found.request.feed_line is not None
+    table = _table("")
+    for title in ("MHz" if along_frequency else "length m", "R Ω", "X Ω", "|Γ|", "SWR"):
+        table.add_column(title, justify="right")
+    for title in ("SWR at transmitter", "line loss dB") if with_line else ():
+        table.add_column(title, justify="right")
+    for point in found.points:
+        swept = (
+            formats.edge_mhz(point.frequency_mhz) if along_frequency else f"{point.length_m:.3f}"
+        )
+        cells = [swept, *_electrical_cells(point)]
+        if point.transmitter_swr is not None and point.line_loss_db is not None:
+            cells += [formats.swr(point.transmitter_swr), f"{point.line_loss_db:.2f}"]
+        table.add_row(*cells)
+    console.print(table)
+    for each in found.crossings:
+        kind = "Resonance" if each.kind == "series" else "Anti-resonance"
+        where = f"{formats.mhz(each.at)} MHz" if along_frequency else f"{formats.metres(each.at)} m"
+        console.print(f"{kind} at {where}, {formats.ohms(each.resistance_ohm)} Ω", highlight=False)
+    worst_ohm = max(point.error_ohm for point in found.points)
+    console.print(
+        f"{found.model}; source gap {found.source_gap_mm:.3g} mm; {found.ground}; estimated error "
+        f"{worst_ohm:.2g} Ω at most.\nNot modelled: {'; '.join(found.not_modelled)}.",
+        highlight=False,
+    )
 
 
 def show_band_lists(console: Console, lists: Iterable[BandList]) -> None:
@@ -182,8 +213,11 @@ def _band_cells(each: BandOutcome) -> tuple[str, ...]:
 
 
 def _point_cells(point: ReportPoint) -> tuple[str, ...]:
+    return (formats.edge_mhz(point.frequency_mhz), *_electrical_cells(point))
+
+
+def _electrical_cells(point: ReportPoint | SweepPoint) -> tuple[str, ...]:
     return (
-        formats.edge_mhz(point.frequency_mhz),
         formats.ohms(point.resistance_ohm),
         formats.ohms(point.reactance_ohm),
         formats.reflection(point.reflection),

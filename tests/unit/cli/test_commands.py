@@ -2,8 +2,6 @@
 
 import json
 import sys
-from collections.abc import Callable
-from dataclasses import dataclass
 from io import StringIO
 from pathlib import Path
 
@@ -11,7 +9,8 @@ import pytest
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.report import FeedReport
-from worker.cli import main, tables
+from tests.unit.cli.conftest import Type
+from worker.cli import tables
 
 SMALL = {
     "name": "a small one",
@@ -19,35 +18,6 @@ SMALL = {
     "site": {"span_m": 8.0, "ground": "free-space"},
     "stock": {"conductors": [{"awg": 12, "item_code": "W-12"}]},
 }
-
-
-@dataclass(frozen=True)
-class Ended:
-    """What a command printed, and the status it ended with."""
-
-    status: int
-    out: str
-    err: str
-
-
-Type = Callable[..., Ended]
-
-
-@pytest.fixture
-def typed(monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> Type:
-    def run(*words: str) -> Ended:
-        monkeypatch.setattr(sys, "argv", ["spanwright", *words])
-        monkeypatch.setenv("COLUMNS", "100")
-        try:
-            main()
-        except SystemExit as end:
-            status = int(end.code or 0)
-        else:
-            status = 0
-        captured = capsys.readouterr()
-        return Ended(status, captured.out, captured.err)
-
-    return run
 
 
 def unwrapped(text: str) -> str:
