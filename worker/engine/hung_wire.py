@@ -7,13 +7,12 @@ this module finds them from what a buyer and a surveyor would say.
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import Final, TypeVar
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from worker.engine.conductor import internal_impedance_ohm_per_m
-from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.ground import Ground, GroundTable, tabulate
 from worker.engine.insulation import Sleeve, coated_wire
 from worker.engine.material import REFERENCE_TEMPERATURE_C, Material
@@ -21,10 +20,6 @@ from worker.engine.thin_wire import FeedImpedance, feed_impedance
 
 FloatArray = NDArray[np.float64]
 _Scalar = TypeVar("_Scalar", bound=np.generic)
-
-#: The thin-wire solution interpolates a little beyond the wire's own length: by less than
-#: this many wavelengths.
-_REACH_MARGIN_WAVELENGTHS: Final = 0.45
 
 
 @dataclass(slots=True)
@@ -49,8 +44,7 @@ class GroundTables:
         """The table at one frequency in Hz."""
         table = self._tables.get(frequency_hz)
         if table is None:
-            margin_m = _REACH_MARGIN_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / frequency_hz
-            table = tabulate(self.ground, frequency_hz, self.height_m, self.reach_m + margin_m)
+            table = tabulate(self.ground, frequency_hz, self.height_m, self.reach_m)
             self._tables[frequency_hz] = table
         return table
 
