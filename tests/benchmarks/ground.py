@@ -95,7 +95,10 @@ def plain_quadrature(case: Case, distance: float) -> tuple[complex, complex]:
     def integrand(lam: complex) -> tuple[complex, complex]:
         above, below = np.sqrt(lam * lam - 1.0), np.sqrt(lam * lam - eps)
         common = (
-            np.exp(-2.0 * above * height) * complex(np.asarray(jv(0, np.asarray(lam * far)))) * lam / above
+            np.exp(-2.0 * above * height)
+            * complex(np.asarray(jv(0, np.asarray(lam * far))))
+            * lam
+            / above
         )
         electric = (above - below) / (above + below)
         return common * electric, common * ((2.0 - eps) * above - below) / (eps * above + below)
@@ -258,7 +261,7 @@ def print_error_unseen_by_the_image() -> None:
             for height in (0.01, 0.03, 0.1, 0.3, 1.0, 3.0):
                 case = Case(name, frequency, height, 6.0)
                 distance = np.concatenate(
-                    [np.linspace(0.0, 6.0 * height, 19), np.geomspace(0.05, 6.0, 19)]
+                    [np.linspace(0.0, 6.0 * height, 19), np.geomspace(0.05, 12.0, 25)]
                 )
                 normal = case.exact(distance)
                 with patch.multiple(spectrum, **finer):

@@ -257,7 +257,10 @@ def _outgoing(u: Complex, drop: Real, r: Real, image: Real) -> Complex:
 
 def _ray_length(drop: Real, r: Real, start: Complex, direction: Complex) -> Real:
     """Length of the ray on which the integrand falls by exp(-_DECAY)."""
-    longest = (_DECAY + r * start.imag) / (drop * direction.real - r * direction.imag)
+    # Far from the saddle the exponent falls in proportion to the length, near it to its square.
+    linear = (_DECAY + r * start.imag) / (drop * direction.real - r * direction.imag)
+    quadratic = np.sqrt(-_DECAY / (r * direction.real * direction.imag))
+    longest = linear + quadratic
     lengths = longest[:, None] * 2.0 ** (-0.25 * np.arange(24))
     u = start[:, None] + lengths * direction[:, None]
     fall = (drop[:, None] * u + 1j * r[:, None] * np.sqrt(u * u + 1.0)).real

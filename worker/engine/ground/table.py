@@ -25,7 +25,8 @@ UNSEEN_QUADRATURE_ERROR: Final[float] = 5e-8
 """What branch point and pole of the ground may add to the quadrature error of the perfect image.
 
 Largest difference (4.1e-8) to rules of twice the nodes, beyond `quadrature_error`, over all named
-grounds, 1.8 to 50 MHz, 0.01 to 3 wavelengths high; `tests/benchmarks/ground.py` measures it.
+grounds, 1.8 to 50 MHz, 0.01 to 3 wavelengths high, distances to 12 wavelengths;
+`tests/benchmarks/ground.py` measures it.
 """
 
 _MARGIN_WAVELENGTHS: Final[float] = 0.5
