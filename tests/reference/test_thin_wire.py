@@ -15,6 +15,7 @@ from tests.reference.rooftop_wire import extrapolated_impedance
 from worker.engine.constants import FREE_SPACE_IMPEDANCE_OHM, SPEED_OF_LIGHT_M_PER_S
 from worker.engine.induced_emf import mutual_impedance
 from worker.engine.thin_wire import ReflectedPotentials, current, feed_impedance
+from worker.engine.thin_wire.basis import end_kernel
 from worker.engine.thin_wire.gap import sharp_admittance
 from worker.engine.thin_wire.tube_kernel import (
     distant_kernel,
@@ -146,6 +147,17 @@ def test_feed_loads_and_wire_impedance_agree_with_an_independent_solution(
     assert abs(complex(got.impedance_ohm) / expected - 1.0) < 5e-4
 
 
+@pytest.mark.parametrize("feed_fraction", [0.5, 0.4375])
+def test_short_thick_wire_agrees_with_an_independent_solution(feed_fraction: float) -> None:
+    # Generator: rooftop_wire, whose segments here are a small part of the radius. Its ends and
+    # gap are five to eight radii apart, so that every approximation for distance is strained.
+    wire = (0.064 * WAVELENGTH_M, 4e-3 * WAVELENGTH_M, FREQUENCY_HZ)
+    gap_m = 0.008 * WAVELENGTH_M
+    expected = extrapolated_impedance(*wire, segments=32, gap_m=gap_m, feed_fraction=feed_fraction)
+    got = feed_impedance(*wire, gap_m=gap_m, feed_fraction=feed_fraction)
+    assert abs(complex(got.impedance_ohm) / expected - 1.0) < 2e-4
+
+
 @pytest.mark.parametrize("feed_fraction", [0.5, 0.3])
 def test_wire_over_perfect_ground_agrees_with_an_independent_solution(
     feed_fraction: float,
@@ -185,7 +197,13 @@ def test_wire_far_above_ground_is_a_wire_in_free_space() -> None:
 
 @pytest.mark.parametrize(
     ("length", "radius", "feed_fraction"),
-    [(0.48, 1e-5, 0.5), (1.0, 1e-4, 0.5), (1.48, 1e-6, 0.35), (2.7, 1e-3, 0.2)],
+    [
+        (0.48, 1e-5, 0.5),
+        (1.0, 1e-4, 0.5),
+        (1.48, 1e-6, 0.35),
+        (2.7, 1e-3, 0.2),
+        (0.05, 5e-3, 0.5),
+    ],
 )
 def test_lossless_wire_radiates_the_power_it_takes(
     length: float, radius: float, feed_fraction: float
@@ -304,6 +322,27 @@ def _moment(x: float, power: int, kernel: object) -> float:
         return kernel(static, mean, t * t) * (t / x) ** power
 
     return float(mpmath.quad(integrand, [0, x / 1000, x / 30, x / 5, x]))
+
+
+@pytest.mark.parametrize("row", [0, 3, 6, 7, 10, 13])
+@pytest.mark.parametrize("power", [0, 3])
+def test_end_elements_effective_kernel_integrates_its_densities(row: int, power: int) -> None:
+    points = 7
+    node, weight = np.polynomial.legendre.leggauss(points)
+    got = np.sum(weight * node**power * end_kernel(points)[row])
+    # Targets: the element before, 1 to 3 radii from the end, then the end element, 0 to 1.
+    root = (1.0 - node[row % points]) / 2.0
+    depth = 1.0 + 2.0 * root if row < points else root**2
+    mpmath.mp.dps = 20
+
+    def integrand(tau: mpmath.mpf) -> mpmath.mpf:
+        x = abs(((1 - tau) / 2) ** 2 - mpmath.mpf(depth))
+        size = mpmath.sqrt(x * x + 4)
+        return tau**power / (mpmath.agm(1, x / size) * size)
+
+    singular = [1.0 - 2.0 * float(np.sqrt(depth))] if depth < 1.0 else []
+    # Generator: mpmath quadrature over the square-root coordinate.
+    assert got == pytest.approx(float(mpmath.quad(integrand, [-1, *singular, 1])), rel=1e-9)
 
 
 def test_distant_form_of_the_kernel_holds_from_four_radii() -> None:

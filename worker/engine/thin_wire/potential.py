@@ -50,7 +50,7 @@ def tube_potentials(mesh: Discretisation, nodes: FloatArray) -> tuple[FloatArray
     narrow as the radius, added where (ka)^2 is not negligible, and terms in (ka)^4.
 
     Sine and cosine of :math:`k|z_i - z_j|` come from products of those at the nodes; the small
-    rest :math:`k(R_2 - |z_i - z_j|)` of the phase is expanded to second order.
+    rest :math:`k(R_2 - |z_i - z_j|)` of the phase is expanded.
     """
     phase = mesh.wavenumber_per_m[:, None] * nodes
     cosine, sine = np.cos(phase)[:, :, None], np.sin(phase)[:, :, None]
@@ -98,8 +98,10 @@ def _kernel(
     rest -= offset
     rest *= k
     if thick:
-        shrink = 1.0 - 0.5 * rest * rest
-        cosine, sine = shrink * cosine - rest * sine, shrink * sine + rest * cosine
+        # To third order: next to itself a short wire's sin(kR)/R all but cancels.
+        square = rest * rest
+        along, across = 1.0 - 0.5 * square, rest * (1.0 - square / 6.0)
+        cosine, sine = along * cosine - across * sine, along * sine + across * cosine
     else:
         cosine, sine = cosine - rest * sine, sine + rest * cosine
     kernel = np.empty((2, *offset.shape))
