@@ -1,7 +1,7 @@
 """The scaled form: Celery workers that hear the doorbell and drain the store.
 
 Celery carries no work, only the ring: whoever hears it claims jobs from the store until none
-waits. Each worker process also sweeps, and rings again where work waits, so that a lost ring
+waits. Each idle pool process also sweeps, and rings again where work waits, so that a lost ring
 or a broker that came back empty costs seconds and nothing else.
 
 Run as ``celery --app worker.celery_app worker --pool prefork --without-gossip --without-mingle``.
@@ -10,15 +10,21 @@ Run as ``celery --app worker.celery_app worker --pool prefork --without-gossip -
 from __future__ import annotations
 
 import logging
+import mmap
 import os
 import random
 import socket
 import threading
-import time
+import uuid
 from typing import Final
 
 from celery import Celery
-from celery.signals import worker_process_init, worker_process_shutdown
+from celery.signals import (
+    celeryd_init,
+    worker_process_init,
+    worker_process_shutdown,
+    worker_shutting_down,
+)
 
 from service.doorbell import TASK, TRANSPORT, Doorbell
 from service.errors import StoreUnavailable
@@ -26,7 +32,7 @@ from service.settings import Settings
 from service.store import jobs
 from service.store.session import Store, open_store
 from worker.planning import plan
-from worker.running import run_next
+from worker.running import PlanFunction, drain
 
 _log = logging.getLogger(__name__)
 
@@ -50,6 +56,8 @@ app.conf.update(
     worker_prefetch_multiplier=1,
     worker_disable_prefetch=True,
     worker_max_tasks_per_child=500,
+    # In KiB; a process starts at about 150,000 and one design takes a few ten thousand.
+    worker_max_memory_per_child=1_000_000,
     worker_send_task_events=False,
     worker_soft_shutdown_timeout=70,
     worker_hijack_root_logger=False,
@@ -59,59 +67,125 @@ app.conf.update(
 )
 
 
-class _Process:
-    """What one pool process keeps open: its store and its sweeper."""
+class _SharedFlag:
+    """A flag that the main process sets and every pool process sees.
+
+    One byte of memory shared over the fork: it has no lock that a killed process could keep.
+    """
 
     def __init__(self) -> None:
-        self.store: Store = open_store(settings)
-        self.name = f"{socket.gethostname()} ({os.getpid()})"
-        self.stopping = threading.Event()
+        self._page = mmap.mmap(-1, 1)
+
+    def set(self) -> None:
+        self._page[0] = 1
+
+    def is_set(self) -> bool:
+        return self._page[0] != 0
+
+
+_stopping: Final = _SharedFlag()
+
+
+class _PoolProcess:
+    """What one pool process keeps: its store, its name, its sweeper."""
+
+    def __init__(self) -> None:
+        self._name = f"{socket.gethostname()} ({os.getpid()}) {uuid.uuid4().hex[:8]}"
         self._doorbell = Doorbell(settings)
+        self._opening = threading.Lock()
+        self._store: Store | None = None
+        self._draining = threading.Event()
+        self._closing = threading.Event()
         self._sweeper = threading.Thread(target=self._sweep, name="sweeper", daemon=True)
         self._sweeper.start()
 
+    def answer(self, plan: PlanFunction) -> int:
+        """Run jobs until none waits, or enough has been done for one ring."""
+        self._draining.set()
+        try:
+            store = self._open()
+            ran = drain(
+                store,
+                settings,
+                plan,
+                self._name,
+                _stopping,
+                most_jobs=_DRAIN_JOBS,
+                longest_s=_DRAIN_S,
+            )
+            if jobs.any_queued(store):
+                self._doorbell.ring()
+        except StoreUnavailable:
+            _log.warning("the store is away; when it is back a sweep finds what waits")
+            return 0
+        finally:
+            self._draining.clear()
+        return ran
+
     def close(self) -> None:
-        self.stopping.set()
-        self._sweeper.join(settings.sweep_s + 1.0)
+        self._closing.set()
+        self._sweeper.join(settings.sweep_s)
         self._doorbell.close()
-        self.store.close()
+        if self._store is not None:
+            self._store.close()
+
+    def _open(self) -> Store:
+        # Not at the start of the process: the database may be away just then.
+        with self._opening:
+            if self._store is None:
+                self._store = open_store(settings)
+            return self._store
 
     def _sweep(self) -> None:
         # Jittered, so that processes do not sweep in step.
-        while not self.stopping.wait(settings.sweep_s * random.uniform(0.7, 1.3)):  # noqa: S311  # no secret
+        while not self._closing.wait(settings.sweep_s * random.uniform(0.7, 1.3)):  # noqa: S311  # no secret
             try:
-                jobs.sweep(self.store, settings.max_attempts)
-                if jobs.any_queued(self.store):
+                store = self._open()
+                jobs.sweep(store, settings.max_attempts)
+                # A process that drains looks for more by itself, and rings when it stops.
+                idle = not self._draining.is_set() and not _stopping.is_set()
+                if idle and jobs.any_queued(store):
                     self._doorbell.ring()
             except StoreUnavailable:
                 _log.warning("no sweep, the store is away")
+            except Exception:  # noqa: BLE001  # a sweeper that stopped in silence would leave lost jobs lying
+                _log.exception("no sweep")
 
 
-_process: _Process | None = None
+_pool_process: _PoolProcess | None = None
+
+
+@celeryd_init.connect
+def _refuse_without_broker(**_: object) -> None:
+    if settings.redis_url is None:
+        raise SystemExit(
+            "SPANWRIGHT_REDIS_URL is not set: name the broker, redis://host:6379/0, "
+            "or run workers without one by python -m worker.dispatcher."
+        )
 
 
 @worker_process_init.connect
 def _open(**_: object) -> None:
     # After the fork: neither connections nor threads survive one.
-    global _process  # noqa: PLW0603  # Celery offers no other place for what a pool process keeps
-    _process = _Process()
+    global _pool_process  # noqa: PLW0603  # Celery offers no other place for what a pool process keeps
+    _pool_process = _PoolProcess()
+
+
+@worker_shutting_down.connect
+def _stop(**_: object) -> None:
+    # In the main process; Celery itself would only wait until every pool process is idle.
+    _stopping.set()
 
 
 @worker_process_shutdown.connect
 def _close(**_: object) -> None:
-    if _process is not None:
-        _process.close()
+    if _pool_process is not None:
+        _pool_process.close()
 
 
 @app.task(name=TASK)
 def answer() -> int:
     """Claim and run jobs until none waits; returns how many were run."""
-    if _process is None:
+    if _pool_process is None:
         raise RuntimeError("a doorbell was heard outside a pool process")
-    ran, until = 0, time.monotonic() + _DRAIN_S
-    while ran < _DRAIN_JOBS and time.monotonic() < until:
-        outcome = run_next(_process.store, settings, plan, _process.name, _process.stopping)
-        if outcome is None:
-            break
-        ran += 1
-    return ran
+    return _pool_process.answer(plan)

@@ -1,31 +1,33 @@
 """The embedded form: a supervisor and its worker processes, with no broker at all.
 
-Each worker polls the store, runs what it claims, and sweeps up after dead ones. The supervisor
-starts them, starts them again when they die, and stops them gracefully. A worker whose
-supervisor is gone notices by its lifeline, a pipe that closes, and stops by itself.
+Each worker polls the store, runs what it claims, and sweeps up after lost ones. The supervisor
+starts them, gives back at once what a dead one held, starts it again, and stops all gracefully.
+A worker whose supervisor is gone notices by its lifeline, a pipe that closes, and stops by itself.
+
+Run beside the API by ``serve``, or alone as ``python -m worker.dispatcher``, which needs nothing
+but the database.
 """
 
 from __future__ import annotations
 
 import logging
 import multiprocessing
-import os
 import random
 import signal
 import socket
 import threading
 import time
-from dataclasses import dataclass, field
+import uuid
+from dataclasses import dataclass
 from multiprocessing.connection import Connection
 from multiprocessing.context import SpawnContext, SpawnProcess
 from typing import Final
 
-from service.errors import StoreUnavailable
+from service.errors import SpanwrightError, StoreUnavailable
 from service.settings import Settings
 from service.store import jobs
 from service.store.session import Store, open_store
-from worker import planning
-from worker.running import PlanFunction, run_next
+from worker.running import PlanFunction, drain
 
 _log = logging.getLogger(__name__)
 
@@ -41,6 +43,8 @@ _TOO_SOON_S: Final = 5.0
 _LONGEST_PAUSE_S: Final = 10.0
 _SUPERVISE_S: Final = 0.1
 _STOP_PATIENCE_S: Final = 30.0
+#: The supervisor has others to look after, and leases heal what it cannot give back.
+_BURIAL_PATIENCE_S: Final = 1.0
 
 
 def serve(
@@ -53,16 +57,13 @@ def serve(
     settings : Settings
     plan : callable, optional
         The planning each worker runs; must be importable by name, for workers are processes
-        of their own. The real one by default.
+        of their own. The real one by default, loaded by the workers only.
     stop : Event, optional
         Ends the supervisor and its workers; without it they run until the process ends.
     """
     stop = stop or threading.Event()
     context = multiprocessing.get_context("spawn")
-    slots = [
-        _Slot(context, settings, plan or planning.plan, f"{socket.gethostname()}-{index + 1}")
-        for index in range(settings.workers)
-    ]
+    slots = [_Slot(context, settings, plan, index + 1) for index in range(settings.workers)]
     try:
         while not stop.wait(_SUPERVISE_S):
             for slot in slots:
@@ -74,19 +75,49 @@ def serve(
             slot.await_stop()
 
 
+def main() -> None:
+    """Run workers alone, until SIGTERM or SIGINT."""
+    logging.basicConfig(level=logging.INFO, format="%(asctime)s %(processName)s %(message)s")
+    asked, stop = StopFlag(), threading.Event()
+    for number in (signal.SIGTERM, signal.SIGINT):
+        signal.signal(number, lambda _number, _frame: asked.set())
+    supervisor = threading.Thread(target=serve, args=(Settings(),), kwargs={"stop": stop})
+    supervisor.start()
+    while supervisor.is_alive() and not asked.is_set():
+        time.sleep(_SUPERVISE_S)
+    stop.set()
+    supervisor.join()
+
+
+class StopFlag:
+    """A flag that a signal handler may set; an Event's lock may be held by what it interrupts."""
+
+    def __init__(self) -> None:
+        self._set = False
+
+    def set(self) -> None:
+        """Set it, for good."""
+        self._set = True
+
+    def is_set(self) -> bool:
+        """Whether it is set."""
+        return self._set
+
+
 @dataclass(slots=True)
 class _Slot:
     """One place for a worker process, filled again whenever it falls empty."""
 
     context: SpawnContext
     settings: Settings
-    plan: PlanFunction
-    name: str
+    plan: PlanFunction | None
+    index: int
+    name: str = ""
     process: SpawnProcess | None = None
     lifeline: Connection | None = None
     started_at: float = 0.0
     pause_s: float = 0.0
-    not_before: float = field(default_factory=time.monotonic)
+    not_before: float = 0.0
 
     def keep_running(self) -> None:
         if self.process is not None and self.process.is_alive():
@@ -108,52 +139,85 @@ class _Slot:
             _log.error("worker %s did not stop, killing it", self.name)
             self.process.kill()
             self.process.join()
-        self._close()
+        self._bury(self.process)
 
     def _start(self) -> None:
+        # A name is never used twice, so that what a dead worker held is known by it.
+        self.name = f"{socket.gethostname()}-{self.index}-{uuid.uuid4().hex[:8]}"
         theirs, self.lifeline = self.context.Pipe(duplex=False)
-        self.process = self.context.Process(
+        process = self.context.Process(
             target=_work, args=(self.settings, self.plan, self.name, theirs), name=self.name
         )
-        self.process.start()
-        # Only the worker may hold its end, or the pipe would not close with the supervisor.
-        theirs.close()
         self.started_at = time.monotonic()
+        try:
+            process.start()
+        except OSError:
+            _log.exception("no worker could be started, trying again")
+            self._pause()
+            self.lifeline.close()
+        else:
+            self.process = process
+        finally:
+            # Only the worker may hold its end, or the pipe would not close with the supervisor.
+            theirs.close()
 
     def _bury(self, process: SpawnProcess) -> None:
-        lived_s = time.monotonic() - self.started_at
-        if process.exitcode != 0:
-            _log.warning("worker %s ended with status %s", self.name, process.exitcode)
-        died_young = process.exitcode != 0 and lived_s < _TOO_SOON_S
-        self.pause_s = min(2.0 * self.pause_s + 0.1, _LONGEST_PAUSE_S) if died_young else 0.0
-        self.not_before = time.monotonic() + self.pause_s
-        self._close()
-
-    def _close(self) -> None:
+        status = process.exitcode
+        if status == 0:
+            self.pause_s = 0.0
+        else:
+            _log.warning("worker %s ended with status %s", self.name, status)
+            _give_back(self.settings, self.name)
+            self._pause()
+        process.close()
+        self.process = None
         if self.lifeline is not None:
             self.lifeline.close()
-        if self.process is not None:
-            self.process.close()
-        self.process = self.lifeline = None
+
+    def _pause(self) -> None:
+        """Wait a little, and ever longer, before the next start where workers die young."""
+        died_young = time.monotonic() - self.started_at < _TOO_SOON_S
+        self.pause_s = min(2.0 * self.pause_s + 0.1, _LONGEST_PAUSE_S) if died_young else 0.0
+        self.not_before = time.monotonic() + self.pause_s
 
 
-def _work(settings: Settings, plan: PlanFunction, name: str, lifeline: Connection) -> None:
-    """A worker process: poll, run, sweep, until asked to stop or the supervisor is gone."""
-    logging.basicConfig(level=logging.WARNING, format="%(asctime)s %(processName)s %(message)s")
-    stopping = threading.Event()
-    # A Ctrl-C reaches the whole process group; only the supervisor decides what it means.
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
-    signal.signal(signal.SIGTERM, lambda _number, _frame: stopping.set())
-    threading.Thread(target=_watch, args=(lifeline, stopping), daemon=True).start()
-    worker = f"{name} ({os.getpid()})"
-    store = open_store(settings)
+def _give_back(settings: Settings, worker: str) -> None:
+    """Give back at once what a dead worker held, rather than when its lease runs out."""
     try:
-        _poll(store, settings, plan, worker, stopping)
+        store = open_store(settings, patience_s=_BURIAL_PATIENCE_S)
+    except SpanwrightError:
+        _log.warning("the store is away, what %s held waits for its lease", worker)
+        return
+    try:
+        jobs.bury(store, worker, settings.max_attempts)
+    except StoreUnavailable:
+        _log.warning("the store is away, what %s held waits for its lease", worker)
     finally:
         store.close()
 
 
-def _watch(lifeline: Connection, stopping: threading.Event) -> None:
+def _work(settings: Settings, plan: PlanFunction | None, name: str, lifeline: Connection) -> None:
+    """A worker process: poll, run, sweep, until asked to stop or the supervisor is gone."""
+    logging.basicConfig(level=logging.WARNING, format="%(asctime)s %(processName)s %(message)s")
+    stopping = StopFlag()
+    # A Ctrl-C reaches the whole process group; only the supervisor decides what it means.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    signal.signal(signal.SIGTERM, lambda _number, _frame: stopping.set())
+    threading.Thread(target=_watch, args=(lifeline, stopping), daemon=True).start()
+    store = open_store(settings)
+    try:
+        _poll(store, settings, plan or _real_plan(), name, stopping)
+    finally:
+        store.close()
+
+
+def _real_plan() -> PlanFunction:
+    from worker.planning import plan  # noqa: PLC0415  # the supervisor must not load numerics
+
+    return plan
+
+
+def _watch(lifeline: Connection, stopping: StopFlag) -> None:
     try:
         lifeline.recv()
     except (EOFError, OSError):
@@ -161,21 +225,33 @@ def _watch(lifeline: Connection, stopping: threading.Event) -> None:
 
 
 def _poll(
-    store: Store, settings: Settings, plan: PlanFunction, worker: str, stopping: threading.Event
+    store: Store, settings: Settings, plan: PlanFunction, worker: str, stopping: StopFlag
 ) -> None:
     pause_s, ran, sweep_at = SHORTEST_POLL_S, 0, 0.0
     while not stopping.is_set() and ran < MOST_JOBS:
+        now_ran = 0
         try:
             if time.monotonic() >= sweep_at:
                 jobs.sweep(store, settings.max_attempts)
                 # Jittered, so that workers do not sweep in step.
                 sweep_at = time.monotonic() + settings.sweep_s * random.uniform(0.7, 1.3)  # noqa: S311  # no secret
-            outcome = run_next(store, settings, plan, worker, stopping)
+            now_ran = drain(
+                store,
+                settings,
+                plan,
+                worker,
+                stopping,
+                most_jobs=MOST_JOBS - ran,
+                longest_s=sweep_at - time.monotonic(),
+            )
         except StoreUnavailable:
             _log.warning("the store is away, waiting for it")
-            outcome = None
-        if outcome is not None:
-            ran, pause_s = ran + 1, SHORTEST_POLL_S
+        if now_ran:
+            ran, pause_s = ran + now_ran, SHORTEST_POLL_S
             continue
-        stopping.wait(pause_s)
+        time.sleep(pause_s)
         pause_s = min(2.0 * pause_s, LONGEST_POLL_S)
+
+
+if __name__ == "__main__":
+    main()

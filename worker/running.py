@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import logging
+import math
 import os
 import threading
 import time
 from collections.abc import Callable
 from enum import Enum
-from typing import Final
+from typing import Final, Protocol
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
@@ -28,8 +29,18 @@ _log = logging.getLogger(__name__)
 #: Progress is stored at most so often; a cancelling is seen within the same time.
 _BEAT_S: Final = 1.0
 
+#: A result is offered for so long to a store that is away, before it is given up.
+_OFFER_S: Final = 600.0
+
 #: Status of a process that ended itself because planning would not stop.
 EXIT_WOULD_NOT_STOP: Final = 75
+
+
+class Flag(Protocol):
+    """Something that is set once, as an Event is."""
+
+    def is_set(self) -> bool:
+        """Whether it is set."""
 
 
 class Outcome(Enum):
@@ -47,10 +58,17 @@ class _StopPlanning(BaseException):
     """Raised inside planning by its progress callback; no ``except Exception`` may eat it."""
 
 
-def run_next(
-    store: Store, settings: Settings, plan: PlanFunction, worker: str, stopping: threading.Event
-) -> Outcome | None:
-    """Claim the next job and run it to its end; None if none waits.
+def drain(
+    store: Store,
+    settings: Settings,
+    plan: PlanFunction,
+    worker: str,
+    stopping: Flag,
+    *,
+    most_jobs: int,
+    longest_s: float = math.inf,
+) -> int:
+    """Run jobs one after the other until none waits, and say how many were run.
 
     Parameters
     ----------
@@ -60,8 +78,30 @@ def run_next(
         The planning itself: request and progress callback in, planned design out.
     worker : str
         Name of this worker, for the record.
-    stopping : Event
-        Set when this process was asked to stop: the job is given back.
+    stopping : Flag
+        Set when this process was asked to stop: the job under way is given back.
+    most_jobs, longest_s
+        No job is begun after so many, or after so long.
+    """
+    ran, until_s = 0, time.monotonic() + longest_s
+    while ran < most_jobs and time.monotonic() < until_s and not stopping.is_set():
+        if run_next(store, settings, plan, worker, stopping) is None:
+            break
+        ran += 1
+    return ran
+
+
+def run_next(
+    store: Store, settings: Settings, plan: PlanFunction, worker: str, stopping: Flag
+) -> Outcome | None:
+    """Claim the next job and run it to its end; None if none waits.
+
+    Parameters are those of `drain`.
+
+    Raises
+    ------
+    StoreUnavailable
+        If the store stayed away before a job was claimed.
     """
     if not jobs.any_queued(store):
         return None
@@ -72,7 +112,7 @@ def run_next(
     heart = _Heart(store, settings, job, stopping)
     heart.start()
     try:
-        outcome = _run(store, job, plan, heart)
+        outcome = _run(store, job, plan, heart, stopping)
     except StoreUnavailable:
         # The lease runs out and the job is planned again: late, but not lost.
         _log.exception("design %s: its end could not be stored", job.design_id)
@@ -83,23 +123,56 @@ def run_next(
     return outcome
 
 
-def _run(store: Store, job: ClaimedJob, plan: PlanFunction, heart: _Heart) -> Outcome:
+def _run(
+    store: Store, job: ClaimedJob, plan: PlanFunction, heart: _Heart, stopping: Flag
+) -> Outcome:
     try:
         planned = plan(job.request, heart.tell)
     except _StopPlanning:
+        heart.stop()
         return heart.settle()
-    except EngineError as error:
-        return _failed(store, job, f"The request lies outside what can be planned: {error}.")
-    except SpanwrightError as error:
-        return _failed(store, job, error.detail)
     except Exception as error:  # noqa: BLE001  # whatever broke, the job must end with a reason and not loop
-        _log.exception("design %s: planning broke down", job.design_id)
+        heart.stop()
+        return _failed(store, job, _reason(job, error))
+    heart.stop()
+    try:
+        return Outcome.DONE if _hand_in(store, job, planned, stopping) else Outcome.LOST
+    except StoreUnavailable:
+        raise
+    except Exception as error:  # noqa: BLE001  # as above: tried again it would break again
+        _log.exception("design %s: the result cannot be stored", job.design_id)
         kind = type(error).__name__
         return _failed(
-            store, job, f"Planning broke down ({kind}). This is our fault; the log tells more."
+            store, job, f"The result could not be stored ({kind}). This is our fault, not yours."
         )
-    heart.stop()
-    return Outcome.DONE if jobs.finish(store, job, planned) else Outcome.LOST
+
+
+def _hand_in(store: Store, job: ClaimedJob, planned: PlannedDesign, stopping: Flag) -> bool:
+    """Store a result, which cost more than waiting for a store that is away."""
+    until_s = time.monotonic() + _OFFER_S
+    while True:
+        try:
+            return jobs.finish(store, job, planned)
+        except StoreUnavailable:
+            if stopping.is_set() or time.monotonic() > until_s:
+                raise
+            _log.warning("design %s: the store is away, keeping the result", job.design_id)
+
+
+def _reason(job: ClaimedJob, error: Exception) -> str:
+    """Why a planning failed, as a planner may read it; the log gets the rest."""
+    if isinstance(error, EngineError):
+        _log.info("design %s: refused by the engine: %s", job.design_id, error)
+        return f"The request lies outside what can be planned: {_first_line(error)}."
+    if isinstance(error, SpanwrightError):
+        return error.detail
+    _log.error("design %s: planning broke down", job.design_id, exc_info=error)
+    kind = type(error).__name__
+    return f"Planning broke down ({kind}). This is our fault; the log tells more."
+
+
+def _first_line(error: Exception) -> str:
+    return str(error).partition("\n")[0].rstrip(". ")
 
 
 def _failed(store: Store, job: ClaimedJob, reason: str) -> Outcome:
@@ -113,15 +186,12 @@ class _Heart:
     the job is settled from here and the process ends, for a thread cannot be stopped.
     """
 
-    def __init__(
-        self, store: Store, settings: Settings, job: ClaimedJob, stopping: threading.Event
-    ) -> None:
+    def __init__(self, store: Store, settings: Settings, job: ClaimedJob, stopping: Flag) -> None:
         self._store, self._settings, self._job = store, settings, job
         self._stopping = stopping
         self._progress = Progress(fraction=0.0, step="taken up by a worker")
         self._verdict: Outcome | None = None
         self._ended = threading.Event()
-        self._settled = threading.Lock()
         self._overdue_at = time.monotonic() + settings.job_deadline_s
         self._thread = threading.Thread(target=self._beat, name="heartbeat", daemon=True)
 
@@ -143,31 +213,28 @@ class _Heart:
 
     def settle(self) -> Outcome:
         """Store how a job ended that was stopped, and say it."""
-        with self._settled:
-            verdict = self._verdict or Outcome.RETURNED
-            if verdict is Outcome.CANCELLED:
-                jobs.stop_cancelled(self._store, self._job)
-            elif verdict is Outcome.OVERDUE:
-                jobs.fail(
-                    self._store,
-                    self._job,
-                    f"It ran longer than the {self._settings.job_deadline_s:.0f} s a design may "
-                    "take. Ask for fewer bands, conductors or a shorter span.",
-                )
-            elif verdict is Outcome.RETURNED:
-                jobs.release(self._store, self._job)
-            return verdict
+        verdict = self._verdict or Outcome.RETURNED
+        if verdict is Outcome.CANCELLED:
+            jobs.stop_cancelled(self._store, self._job)
+        elif verdict is Outcome.OVERDUE:
+            jobs.fail(
+                self._store,
+                self._job,
+                f"It ran longer than the {self._settings.job_deadline_s:.0f} s a design may "
+                "take. Ask for fewer bands, conductors or a shorter span.",
+            )
+        elif verdict is Outcome.RETURNED:
+            jobs.release(self._store, self._job)
+        return verdict
 
     def _beat(self) -> None:
         pause_s = min(_BEAT_S, self._settings.heartbeat_s)
-        while not self._ended.wait(pause_s):
+        while self._verdict is None and not self._stopping.is_set():
+            if self._ended.wait(pause_s):
+                return
             self._verdict = self._learn()
-            if self._verdict is not None or self._stopping.is_set():
-                break
         if not self._ended.wait(self._settings.cancel_grace_s):
-            self.settle()
-            _log.error("design %s: planning would not stop, ending", self._job.design_id)
-            os._exit(EXIT_WOULD_NOT_STOP)
+            self._end_process()
 
     def _learn(self) -> Outcome | None:
         if time.monotonic() > self._overdue_at:
@@ -178,4 +245,16 @@ class _Heart:
             # Away for long: go on, and find out at the end whether the job is still ours.
             _log.warning("design %s: no heartbeat, the store is away", self._job.design_id)
             return None
+        except Exception:  # noqa: BLE001  # a heart that stopped in silence would leave the planning unwatched
+            _log.exception("design %s: no heartbeat", self._job.design_id)
+            return None
         return {Beat.CANCELLED: Outcome.CANCELLED, Beat.LOST: Outcome.LOST}.get(beat)
+
+    def _end_process(self) -> None:
+        _log.error("design %s: planning would not stop, ending", self._job.design_id)
+        try:
+            self.settle()
+        except Exception:  # noqa: BLE001  # whatever broke, the process must end
+            _log.exception("design %s: left to its lease", self._job.design_id)
+        finally:
+            os._exit(EXIT_WOULD_NOT_STOP)
