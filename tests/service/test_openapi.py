@@ -7,6 +7,6 @@ from service.settings import Settings
 
 
 def test_the_description_is_valid_openapi_3_1() -> None:
-    description = create_app(Settings(database_url="sqlite://")).openapi()
+    description = create_app(Settings()).openapi()
     assert description["openapi"].startswith("3.1")
     assert [error.message for error in OpenAPIV31SpecValidator(description).iter_errors()] == []
