@@ -123,10 +123,11 @@ def _matrix(
     twice the integrals over half the wire, with the kernel to the mirrored half added for an even
     function and subtracted for an odd one; the charge of an even current is odd.
     """
-    weighted = (direct + parity * mirrored) * weights[:, :, None]
-    weighted *= weights[:, None, :]
-    magnetic = _both_sides(mesh.test_current, weighted)
-    electric = _both_sides(mesh.test_charge, direct - parity * mirrored)
+    together, apart = direct + mirrored, direct - mirrored
+    if parity < 0:
+        together, apart = apart, together
+    magnetic = _both_sides(lambda kernel: mesh.test_current(kernel * weights[:, None]), together)
+    electric = _both_sides(mesh.test_charge, apart)
     if reflected is not None:
         extra = reflected_matrices(reflected, mesh, nodes, weights, parity)
         magnetic += extra[0]
@@ -142,7 +143,7 @@ def _matrix(
 def _both_sides(
     test: Callable[[FloatArray], FloatArray], stacked: FloatArray
 ) -> NDArray[np.complex128]:
-    """Test a kernel (2, B, Q, Q), real and imaginary parts stacked, on both sides."""
-    real, imaginary = test(np.ascontiguousarray(np.swapaxes(test(stacked), -1, -2)))
-    result: ComplexArray = real + 1j * imaginary
+    """Test a kernel (2, B, Q, Q), real and minus imaginary part stacked, on both sides."""
+    real, negative = test(np.ascontiguousarray(np.swapaxes(test(stacked), -1, -2)))
+    result: ComplexArray = real - 1j * negative
     return result

@@ -20,8 +20,10 @@ FloatArray = NDArray[np.float64]
 # A target closer than this, in half lengths from the middle of the source element, goes by
 # product integration.
 _NEAR = 2.2
-# Points closer than this many radii need the static kernel itself, not its distant form.
+# Points closer than this many radii need the static kernel itself, up to the second number its
+# distant form; beyond, averaging around the tube changes 1/R_2 by less than 2e-6.
 _CLOSE_RADII = 4.0
+_DISTANT_RADII = 25.0
 # (ka)^2 below which the width of the kernel's dynamic part is left out.
 _NEGLIGIBLE_WIDTH = 1e-6
 
@@ -40,7 +42,8 @@ def tube_potentials(mesh: Discretisation, nodes: FloatArray) -> tuple[FloatArray
 
     Returns
     -------
-    Two arrays of shape (2, B, Q, Q), real and imaginary parts stacked; targets before sources.
+    Two arrays of shape (2, B, Q, Q), the real part and minus the imaginary part stacked; targets
+    before sources.
 
     Notes
     -----
@@ -53,23 +56,28 @@ def tube_potentials(mesh: Discretisation, nodes: FloatArray) -> tuple[FloatArray
     rest :math:`k(R_2 - |z_i - z_j|)` of the phase is expanded.
     """
     phase = mesh.wavenumber_per_m[:, None] * nodes
-    cosine, sine = np.cos(phase)[:, :, None], np.sin(phase)[:, :, None]
-    turned = np.swapaxes(cosine, 1, 2), np.swapaxes(sine, 1, 2)
+    cosine, sine = np.cos(phase), np.sin(phase)
+    # Sums of two products each, as products of matrices with a common side of two.
+    plain = np.stack([cosine, sine], axis=2)
+    turned = np.stack([cosine, sine], axis=1)
+    flipped = np.stack([cosine, -sine], axis=1)
+    crossed = np.stack([-sine, cosine], axis=1)
+    swapped = np.stack([sine, cosine], axis=1)
     later = np.sign(np.arange(nodes.shape[1])[:, None] - np.arange(nodes.shape[1]))
     direct = _kernel(
         mesh,
         nodes,
         np.abs(nodes[:, :, None] - nodes[:, None, :]),
-        cosine * turned[0] + sine * turned[1],
-        (sine * turned[0] - cosine * turned[1]) * later,
+        plain @ turned,
+        (plain @ crossed) * later,
         _near_pairs(mesh.elements),
     )
     mirrored = _kernel(
         mesh,
         nodes,
         nodes[:, :, None] + nodes[:, None, :],
-        cosine * turned[0] - sine * turned[1],
-        sine * turned[0] + cosine * turned[1],
+        plain @ flipped,
+        plain @ swapped,
         _mirrored_pairs(),
     )
     return direct, mirrored
@@ -91,7 +99,7 @@ def _kernel(
     distance += 2.0 * radius_squared
     np.sqrt(distance, out=distance)
     inverse = 1.0 / distance
-    static = distant_kernel(inverse, radius_squared)
+    static = inverse.copy()
     _put_close_kernel(static, mesh, offset)
     _put_near_kernel(static, mesh, nodes, pairs)
     rest = distance
@@ -107,7 +115,6 @@ def _kernel(
     kernel = np.empty((2, *offset.shape))
     np.multiply(cosine, static, out=kernel[0])
     np.multiply(sine, inverse, out=kernel[1])
-    np.negative(kernel[1], out=kernel[1])
     if thick:
         peak = np.zeros_like(static)
         _put_near_kernel(peak, mesh, nodes, pairs, width=True)
@@ -116,13 +123,17 @@ def _kernel(
 
 
 def _put_close_kernel(static: FloatArray, mesh: Discretisation, offset: FloatArray) -> None:
-    """Replace, in place, the distant form of the static kernel where points are too close for it.
+    """Correct, in place, the static kernel where 1/R_2 is not good enough.
 
     Points of one element are among them and come out infinite; `_put_near_kernel` follows.
     """
-    wire, target, source = np.nonzero(offset < _CLOSE_RADII * mesh.radius_m[:, None, None])
+    wire, target, source = np.nonzero(offset < _DISTANT_RADII * mesh.radius_m[:, None, None])
     radius = mesh.radius_m[wire]
-    static[wire, target, source] = static_kernel(offset[wire, target, source] / radius) / radius
+    x = offset[wire, target, source] / radius
+    close = np.nonzero(x < _CLOSE_RADII)[0]
+    kernel = distant_kernel(x)
+    kernel[close] = static_kernel(x[close])
+    static[wire, target, source] = kernel / radius
 
 
 def _near_pairs(elements: int) -> _Pairs:
@@ -158,17 +169,15 @@ def _put_near_kernel(
     half = ((stop - start) / 2.0)[:, pairs.source, None]
     target = nodes.reshape(count, mesh.elements, points)[:, pairs.target]
     local = (pairs.sign * target - middle) / half
-    near = np.abs(local) < _NEAR
+    wire, pair, point = np.nonzero(np.abs(local) < _NEAR)
+    half_length = half[wire, pair, 0]
     effective = product_kernel(
         mesh.element,
-        np.where(near, local, 0.0),
-        np.broadcast_to(half / mesh.radius_m[:, None, None], local.shape),
+        local[wire, pair, point],
+        half_length / mesh.radius_m[wire],
         width=width,
     )
-    effective = effective / half[..., None]
-    distant = np.moveaxis(blocks[:, pairs.target, :, pairs.source, :], 0, 1)
-    replaced = np.where(near[..., None], effective, distant)
-    blocks[:, pairs.target, :, pairs.source, :] = np.moveaxis(replaced, 1, 0)
+    blocks[wire, pairs.target[pair], point, pairs.source[pair]] = effective / half_length[:, None]
     if pairs.sign > 0.0:
         end = end_kernel(points, width=width) / mesh.radius_m[:, None, None]
         kernel[:, -2 * points :, -points:] = end

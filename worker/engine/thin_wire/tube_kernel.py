@@ -51,32 +51,19 @@ def width_kernel(x: FloatArray) -> FloatArray:
     return mean_distance(x) - (x * x + 2.0) * static_kernel(x)
 
 
-def distant_kernel(inverse_distance_per_m: FloatArray, radius_squared: FloatArray) -> FloatArray:
-    r"""Averaged inverse distance (1/m) between points at least about four radii apart.
-
-    Parameters
-    ----------
-    inverse_distance_per_m
-        Inverse of the root mean square distance, 1 / sqrt(z^2 + 2 a^2).
-    radius_squared
-        Square of the radius, broadcasting with it.
+def distant_kernel(x: FloatArray) -> FloatArray:
+    r"""Averaged inverse distance, as `static_kernel`, for points at least about four radii apart.
 
     Notes
     -----
-    With :math:`u = z^2 + 2a^2` the mean of :math:`R^2`, the central moments of :math:`R^2` over
-    the circumference are :math:`2a^4`, 0 and :math:`6a^8`, hence
-    :math:`u^{-1/2}[1 + 3/4\,(a^2/u)^2 + 105/64\,(a^2/u)^4]`; the remainder is below 1e-6 of the
-    value from z = 4a on.
+    With :math:`u = x^2 + 2` the mean of :math:`R^2`, the central moments of :math:`R^2` over the
+    circumference are 2, 0 and 6, hence :math:`u^{-1/2}[1 + 3/4\,u^{-2} + 105/64\,u^{-4}]`; the
+    remainder is below 1e-6 of the value from x = 4 on.
     """
-    ratio = inverse_distance_per_m * inverse_distance_per_m
-    ratio *= radius_squared
-    ratio *= ratio
-    series = 1.640625 * ratio
-    series += 0.75
-    series *= ratio
-    series += 1.0
-    series *= inverse_distance_per_m
-    return series
+    mean_square = x * x + 2.0
+    ratio = mean_square**-2.0
+    kernel: FloatArray = (1.0 + ratio * (0.75 + 1.640625 * ratio)) / np.sqrt(mean_square)
+    return kernel
 
 
 @cache
