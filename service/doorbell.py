@@ -18,8 +18,8 @@ _log = logging.getLogger(__name__)
 
 TASK: Final = "spanwright.doorbell"
 
-#: A broker that cannot be reached holds up the ringing thread for so long.
-_CONNECT_S: Final = 2.0
+#: A broker that cannot be reached, or is silent, holds up the ringing thread for so long.
+_PATIENCE_S: Final = 2.0
 #: Closing waits for rings under way for so long.
 _CLOSE_S: Final = 3.0
 #: More rings than this need not wait at once: there are not that many workers to wake.
@@ -29,7 +29,7 @@ _MOST_WAITING: Final = 64
 TRANSPORT: Final = {
     "visibility_timeout": 3600,
     "socket_timeout": 5,
-    "socket_connect_timeout": _CONNECT_S,
+    "socket_connect_timeout": _PATIENCE_S,
     "socket_keepalive": True,
     "health_check_interval": 10,
     "max_retries": 0,
@@ -46,7 +46,7 @@ class Doorbell:
             self._app.conf.update(
                 task_ignore_result=True,
                 task_publish_retry=False,
-                broker_transport_options=dict(TRANSPORT),
+                broker_transport_options=TRANSPORT | {"socket_timeout": _PATIENCE_S},
             )
         self._changed = threading.Condition()
         self._waiting = 0

@@ -35,6 +35,8 @@ class Settings(BaseSettings):
         How often each process looks for lost jobs, jittered.
     max_attempts : int
         A job that lost its worker so often is set aside.
+    progress_s : float
+        How often a worker stores the progress of its job and looks whether it was cancelled.
     job_deadline_s : float
         A job that runs longer is ended.
     cancel_grace_s : float
@@ -53,6 +55,7 @@ class Settings(BaseSettings):
     lease_s: Annotated[float, Field(gt=0.0)] = 45.0
     sweep_s: Annotated[float, Field(gt=0.0)] = 3.0
     max_attempts: Annotated[int, Field(ge=1, le=20)] = 3
+    progress_s: Annotated[float, Field(gt=0.0)] = 1.0
     job_deadline_s: Annotated[float, Field(gt=0.0)] = 600.0
     cancel_grace_s: Annotated[float, Field(gt=0.0)] = 2.0
 
@@ -68,5 +71,5 @@ class Settings(BaseSettings):
 
     @property
     def heartbeat_s(self) -> float:
-        """How often a worker renews its lease: five times within it."""
-        return self.lease_s / 5.0
+        """How often a worker renews its lease: at least five times within it."""
+        return min(self.progress_s, self.lease_s / 5.0)

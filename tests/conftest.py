@@ -8,14 +8,15 @@ to install.
 from __future__ import annotations
 
 import os
-import shutil
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
+from sqlalchemy import make_url
 
 from service.settings import Settings
 from service.store.session import Store, open_store
+from tests.service.databases import KINDS, database, short_lived
 from tests.service.servers import (
     PostgresServer,
     RedisServer,
@@ -26,8 +27,6 @@ from tests.service.servers import (
 )
 
 _NO_SKIPS = "--no-skips"
-
-MakeSettings = Callable[..., Settings]
 
 
 # ------------------------------------------------------------------------- no skips
@@ -108,39 +107,32 @@ def own_redis() -> Iterator[RedisServer]:
 
 # ------------------------------------------------------------------------ databases
 @pytest.fixture(scope="session")
-def _migrated_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+def migrated_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """An SQLite file with the tables, to be copied."""
     file = tmp_path_factory.mktemp("migrated") / "spanwright.db"
     open_store(Settings(database_url=f"sqlite:///{file}")).close()
     return file
 
 
 @pytest.fixture(scope="session")
-def _migrated_template(postgres: PostgresServer) -> Iterator[str]:
+def migrated_template(postgres: PostgresServer) -> Iterator[str]:
+    """Name of a PostgreSQL database with the tables, to be copied."""
     with fresh_database(postgres) as url:
         open_store(Settings(database_url=url)).close()
-        yield url.rpartition("/")[2].partition("?")[0]
+        yield make_url(url).database or ""
 
 
-@pytest.fixture(params=["sqlite", "postgresql"])
+@pytest.fixture(params=KINDS)
 def database_url(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[str]:
     """A database with the tables and nothing in them, on SQLite and then on PostgreSQL."""
-    if request.param == "sqlite":
-        file = tmp_path / "spanwright.db"
-        shutil.copyfile(request.getfixturevalue("_migrated_file"), file)
-        yield f"sqlite:///{file}"
-        return
-    server: PostgresServer = request.getfixturevalue("postgres")
-    with fresh_database(server, request.getfixturevalue("_migrated_template")) as url:
+    with database(request.param, request, tmp_path) as url:
         yield url
 
 
-@pytest.fixture(params=["sqlite", "postgresql"])
+@pytest.fixture(params=KINDS)
 def empty_database_url(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[str]:
     """A database without even tables, on SQLite and then on PostgreSQL."""
-    if request.param == "sqlite":
-        yield f"sqlite:///{tmp_path / 'empty.db'}"
-        return
-    with fresh_database(request.getfixturevalue("postgres")) as url:
+    with database(request.param, request, tmp_path, migrated=False) as url:
         yield url
 
 
@@ -156,16 +148,3 @@ def store(settings: Settings) -> Iterator[Store]:
     store = open_store(settings, patience_s=5.0)
     yield store
     store.close()
-
-
-def short_lived(database_url: str, redis_url: str | None = None) -> Settings:
-    """Settings of a test: everything that takes time takes little."""
-    return Settings(
-        database_url=database_url,
-        redis_url=redis_url,
-        workers=2,
-        lease_s=1.5,
-        sweep_s=0.2,
-        job_deadline_s=30.0,
-        cancel_grace_s=0.4,
-    )

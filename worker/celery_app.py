@@ -31,7 +31,7 @@ from service.errors import StoreUnavailable
 from service.settings import Settings
 from service.store import jobs
 from service.store.session import Store, open_store
-from worker.planning import plan
+from worker import planning
 from worker.running import PlanFunction, drain
 
 _log = logging.getLogger(__name__)
@@ -188,4 +188,4 @@ def answer() -> int:
     """Claim and run jobs until none waits; returns how many were run."""
     if _pool_process is None:
         raise RuntimeError("a doorbell was heard outside a pool process")
-    return _pool_process.answer(plan)
+    return _pool_process.answer(planning.plan)

@@ -75,13 +75,13 @@ def serve(
             slot.await_stop()
 
 
-def main() -> None:
-    """Run workers alone, until SIGTERM or SIGINT."""
+def main(plan: PlanFunction | None = None) -> None:
+    """Run workers alone, until SIGTERM or SIGINT; `plan` is that of `serve`."""
     logging.basicConfig(level=logging.INFO, format="%(asctime)s %(processName)s %(message)s")
     asked, stop = StopFlag(), threading.Event()
     for number in (signal.SIGTERM, signal.SIGINT):
         signal.signal(number, lambda _number, _frame: asked.set())
-    supervisor = threading.Thread(target=serve, args=(Settings(),), kwargs={"stop": stop})
+    supervisor = threading.Thread(target=serve, args=(Settings(), plan), kwargs={"stop": stop})
     supervisor.start()
     while supervisor.is_alive() and not asked.is_set():
         time.sleep(_SUPERVISE_S)

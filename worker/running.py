@@ -26,9 +26,6 @@ PlanFunction = Callable[[DesignRequest, ProgressCallback], PlannedDesign]
 
 _log = logging.getLogger(__name__)
 
-#: Progress is stored at most so often; a cancelling is seen within the same time.
-_BEAT_S: Final = 1.0
-
 #: A result is offered for so long to a store that is away, before it is given up.
 _OFFER_S: Final = 600.0
 
@@ -228,9 +225,8 @@ class _Heart:
         return verdict
 
     def _beat(self) -> None:
-        pause_s = min(_BEAT_S, self._settings.heartbeat_s)
         while self._verdict is None and not self._stopping.is_set():
-            if self._ended.wait(pause_s):
+            if self._ended.wait(self._settings.heartbeat_s):
                 return
             self._verdict = self._learn()
         if not self._ended.wait(self._settings.cancel_grace_s):

@@ -1,7 +1,7 @@
 """Invented plannings that are told by the request's name what to do, for tests of the queue.
 
 They are found by name from worker processes, as the real planning is. Each tells its process id
-as its step, so that a test can find the process that is at it.
+as its step and as the note of its result, so that a test can find the process that is at it.
 """
 
 from __future__ import annotations
@@ -34,7 +34,9 @@ def as_named(request: DesignRequest, progress: ProgressCallback) -> PlannedDesig
             raise KeyError("a bug\nwith a second line")
         case "refuse":
             raise OutOfRange("radius_m", 1.0, 1e-5, 0.1, "m")
-    return sample_planned(request, 1)
+    planned = sample_planned(request, 1)
+    result = planned.result.model_copy(update={"notes": (f"process {os.getpid()}",)})
+    return planned.model_copy(update={"result": result})
 
 
 def _wait(seconds: float, progress: ProgressCallback) -> None:

@@ -20,13 +20,7 @@ from service.store.session import Store
 from tests.service.plans import as_named
 from tests.service.samples import sample_request
 from tests.service.waiting import in_state, until
-from worker import running
 from worker.running import Outcome, PlanFunction, ProgressCallback, drain, run_next
-
-
-@pytest.fixture(autouse=True)
-def _quick_heart(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(running, "_BEAT_S", 0.05)
 
 
 def submitted(store: Store, name: str) -> str:

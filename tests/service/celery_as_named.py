@@ -1,0 +1,9 @@
+"""The Celery application with an invented planning, as ``celery --app`` finds it."""
+
+from __future__ import annotations
+
+from tests.service.plans import as_named
+from worker import celery_app, planning
+
+planning.plan = as_named
+app = celery_app.app
