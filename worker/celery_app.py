@@ -21,6 +21,7 @@ from typing import Final
 from celery import Celery
 from celery.signals import (
     celeryd_init,
+    worker_init,
     worker_process_init,
     worker_process_shutdown,
     worker_shutting_down,
@@ -31,7 +32,6 @@ from service.errors import StoreUnavailable
 from service.settings import Settings
 from service.store import jobs
 from service.store.session import Store, open_store
-from worker import planning
 from worker.running import PlanFunction, drain
 
 _log = logging.getLogger(__name__)
@@ -65,6 +65,10 @@ app.conf.update(
     broker_connection_max_retries=None,
     broker_transport_options=dict(TRANSPORT),
 )
+
+
+#: The planning that pool processes run; the real one, unless another was put here before.
+plan: PlanFunction | None = None
 
 
 class _SharedFlag:
@@ -164,6 +168,18 @@ def _refuse_without_broker(**_: object) -> None:
         )
 
 
+@worker_init.connect
+def _load_planning(**_: object) -> None:
+    # Before the fork, so that pool processes share what it takes in memory.
+    global plan  # noqa: PLW0603  # Celery offers no other place for what its processes share
+    if plan is None:
+        try:
+            from worker.planning import plan  # noqa: PLC0415  # whoever only looks at the settings needs no numerics
+        except ImportError as error:
+            # Celery only logs what a signal's receiver raises, and would go on without planning.
+            raise SystemExit(f"The planning cannot be loaded: {error}") from error
+
+
 @worker_process_init.connect
 def _open(**_: object) -> None:
     # After the fork: neither connections nor threads survive one.
@@ -186,6 +202,6 @@ def _close(**_: object) -> None:
 @app.task(name=TASK)
 def answer() -> int:
     """Claim and run jobs until none waits; returns how many were run."""
-    if _pool_process is None:
+    if _pool_process is None or plan is None:
         raise RuntimeError("a doorbell was heard outside a pool process")
-    return _pool_process.answer(planning.plan)
+    return _pool_process.answer(plan)

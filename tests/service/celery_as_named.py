@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tests.service.plans import as_named
-from worker import celery_app, planning
+from worker import celery_app
 
-planning.plan = as_named
+celery_app.plan = as_named
 app = celery_app.app

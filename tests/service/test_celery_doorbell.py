@@ -8,7 +8,7 @@ import signal
 import subprocess
 import sys
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import closing, contextmanager
 from dataclasses import dataclass
 from pathlib import Path
@@ -72,6 +72,16 @@ class Scaled:
         return designs.submit(self.store, request, idempotency_key=None).design_id
 
 
+def first_sign(main: subprocess.Popen[bytes], log: Path, found: Callable[[], bool]) -> None:
+    """Wait until workers that were just started show that they work."""
+
+    def look() -> bool:
+        assert main.poll() is None, log.read_text()
+        return found()
+
+    until(look, within_s=30.0)
+
+
 @contextmanager
 def scaled(settings: Settings) -> Iterator[Scaled]:
     with (
@@ -96,8 +106,9 @@ def hearing(
     """Two pool processes that hear rings and, sweeping hardly ever, nothing else."""
     settings = short_lived(postgres_url, redis_url=redis_url, sweep_s=600.0)
     log = tmp_path_factory.mktemp("hearing") / "log"
-    with scaled(settings) as hearing, celery_workers(settings, log):
-        in_state(hearing.store, hearing.submitted("quick"), "done", within_s=30.0)
+    with scaled(settings) as hearing, celery_workers(settings, log) as main:
+        hearing.submitted("quick")
+        first_sign(main, log, lambda: jobs.depth(hearing.store) == {"done": 1})
         yield hearing
 
 
@@ -125,10 +136,10 @@ def test_two_pool_processes_plan_two_designs_side_by_side(hearing: Scaled) -> No
 def test_workers_that_are_asked_to_stop_give_their_jobs_back(
     postgres_url: str, own_redis: RedisServer, tmp_path: Path
 ) -> None:
-    settings = short_lived(postgres_url, redis_url=own_redis.url)
-    with scaled(settings) as house, celery_workers(settings, tmp_path / "log") as main:
+    settings, log = short_lived(postgres_url, redis_url=own_redis.url), tmp_path / "log"
+    with scaled(settings) as house, celery_workers(settings, log) as main:
         design_id = house.submitted("slow 60")
-        process_at(house.store, design_id, within_s=30.0)
+        first_sign(main, log, lambda: designs.get(house.store, design_id).state == "running")
         main.send_signal(signal.SIGTERM)
         assert main.wait(20.0) == 0
         design = designs.get(house.store, design_id)
@@ -140,9 +151,11 @@ def test_sweeps_heal_lost_rings_dead_processes_and_a_broker_that_comes_back_empt
     postgres_url: str, own_redis: RedisServer, tmp_path: Path
 ) -> None:
     settings = short_lived(postgres_url, redis_url=own_redis.url, lease_s=1.0)
-    with scaled(settings) as house, celery_workers(settings, tmp_path / "log"):
+    log = tmp_path / "log"
+    with scaled(settings) as house, celery_workers(settings, log) as main:
         store = house.store
-        in_state(store, house.submitted_unheard("quick"), "done", within_s=30.0)
+        unheard = house.submitted_unheard("quick")
+        first_sign(main, log, lambda: designs.get(store, unheard).state == "done")
 
         killed = house.submitted("slow 0.5")
         os.kill(process_at(store, killed), signal.SIGKILL)
