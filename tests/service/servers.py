@@ -11,7 +11,7 @@ import subprocess
 import tempfile
 import time
 import uuid
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -134,6 +134,14 @@ def fresh_database(server: PostgresServer, template: str = "template0") -> Itera
         yield url.render_as_string(hide_password=False)
     finally:
         server.execute(f'DROP DATABASE "{name}" WITH (FORCE)')
+
+
+def empty(database_url: str, tables: Iterable[str]) -> None:
+    """Empty tables; whoever still holds a lock on them is a test that did not clean up."""
+    url = make_url(database_url).set(drivername="postgresql")
+    with psycopg.connect(url.render_as_string(hide_password=False)) as connection:
+        connection.execute("SET lock_timeout = '5s'")
+        connection.execute(f"TRUNCATE {', '.join(tables)}".encode())
 
 
 def _postgres_programs() -> Path:
