@@ -1,27 +1,51 @@
 """The whole job: a design request in, ranked candidates with their reports out.
 
-A pure function of the request, but for the time it takes, which it reports.
+A pure function of the request, but for the time it takes, which it reports. Its steps: hang
+the wires the request allows, scan them, look closely at those that lead, see how they hold up,
+complete them to sets where one wire is not enough, and put it all in words.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable
 from time import perf_counter
+from typing import Final
 
-from service.contracts.candidate import DesignResult, PlannedDesign
-from service.contracts.request import DesignRequest
+import numpy as np
+
+from service.contracts.candidate import (
+    Candidate,
+    DesignResult,
+    DipoleSet,
+    PlannedDesign,
+    TradeOff,
+)
+from service.contracts.request import LARGEST_SET, MOST_CANDIDATES, DesignRequest
 from worker.engine import ENGINE_VERSION
 from worker.search.appraisal import appraise
-from worker.search.scan import scan
-from worker.translation.outcome import candidate_of, feed_report_of
-from worker.translation.provenance import ground_in_words, notes_on, provenance_of
-from worker.translation.wires import search_space
+from worker.search.ranking import Contender, Pick, distinct_leaders
+from worker.search.scan import Scan, scan
+from worker.search.sets import ChosenSet, best_sets
+from worker.search.steadiness import hold
+from worker.search.trade_off import front_of, gains_of
+from worker.translation.departures import departures_of
+from worker.translation.outcome import Look, candidate_of, feed_report_of
+from worker.translation.provenance import ground_in_words, notes_on
+from worker.translation.relaxing import relaxations, set_in_words
+from worker.translation.wires import Hanging
 
 #: Called with the part done, from 0 to 1, and the step in words.
 ProgressCallback = Callable[[float, str], None]
 
-#: The scan takes about this part of the time, the close look at the leaders the rest.
-_SCAN_PART = 0.75
+#: The scan takes about this part of the time, looking at the leaders and the sets the rest.
+_SCAN_PART: Final = 0.6
+_LOOK_PART: Final = 0.9
+
+#: Sets proposed unasked, where no single wire serves all required bands, are of up to so many.
+_USUAL_SET: Final = 3
+_MOST_IN_POOL: Final = 150
+_MOST_ON_FRONT: Final = 40
+_MOST_FOR_FRONT: Final = 2000
 
 
 def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
@@ -40,26 +64,161 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
         If a wire of the request lies outside what the models cover.
     """
     started_s = perf_counter()
-    space = search_space(request)
-    found = scan(space, request.candidates, lambda part, step: progress(_SCAN_PART * part, step))
-    candidates, reports = [], []
-    solves = found.solves
-    for index, pick in enumerate(found.picks):
-        part = _SCAN_PART + (1.0 - _SCAN_PART) * index / len(found.picks)
-        progress(part, f"appraising candidate {index + 1} of {len(found.picks)}")
-        appraisal = appraise(space, pick)
-        solves += appraisal.solves
-        candidates.append(candidate_of(request, appraisal, index + 1))
-        provenance = provenance_of(request, appraisal)
-        reports.append(feed_report_of(request, appraisal, index + 1, provenance))
-    progress(1.0, "done")
+    job = _Job(request, progress)
+    looks = job.leaders()
+    candidates = [candidate_of(request, look, rank) for rank, look in enumerate(looks, 1)]
+    chosen = job.sets(candidates[0])
+    looks = job.with_members(looks, chosen)
+    candidates = [candidate_of(request, look, rank) for rank, look in enumerate(looks, 1)]
+    reports = tuple(feed_report_of(request, look, rank) for rank, look in enumerate(looks, 1))
     result = DesignResult(
         engine_version=ENGINE_VERSION,
         ground=ground_in_words(request),
-        combinations=found.combinations,
-        solves=solves,
+        combinations=job.found.combinations,
+        solves=job.solves,
         search_s=round(perf_counter() - started_s, 3),
-        notes=notes_on(request, space),
+        notes=notes_on(request, job.found.space),
         candidates=tuple(candidates),
+        map_error_percent=round(100.0 * job.found.largest_miss, 5),
+        trade_off=job.trade_off(looks),
+        sets=tuple(job.told(each, looks, candidates) for each in chosen),
+        relax=relaxations(request, job.found, candidates[0]),
     )
-    return PlannedDesign(result=result, reports=tuple(reports))
+    progress(1.0, "done")
+    return PlannedDesign(result=result, reports=reports)
+
+
+class _Job:
+    """What the steps of one planning share: the wires hung, the scan, and the cost so far."""
+
+    def __init__(self, request: DesignRequest, progress: ProgressCallback) -> None:
+        self._request, self._progress = request, progress
+        self._hanging = Hanging(request)
+        self.found: Scan = scan(
+            self._hanging.space(), lambda part, step: progress(_SCAN_PART * part, step)
+        )
+        self.solves = self.found.solves
+        self._pool = _best_of_each_kind(self.found.contenders)
+
+    def leaders(self) -> list[Look]:
+        """The distinct leaders, looked at closely, in the order the request asks for."""
+        most = self._request.candidates
+        by_worst_case = self._request.rank_by == "worst-case"
+        # The best in the worst case may lead only the second row as planned.
+        wanted = min(2 * most, MOST_CANDIDATES) if by_worst_case else most
+        picks = [each.pick for each in distinct_leaders(list(self.found.contenders), wanted)]
+        looks = [
+            self._look(pick, index / len(picks), f"looking at candidate {index + 1}")
+            for index, pick in enumerate(picks)
+        ]
+        if by_worst_case:
+            looks.sort(key=lambda look: look.held.worst.key() if look.held else (0, 0.0, 0.0))
+        return looks[:most]
+
+    def sets(self, best: Candidate) -> tuple[ChosenSet, ...]:
+        """The best sets of two or more, where asked for or where one wire is not enough."""
+        asked = self._request.largest_set
+        if asked is None and best.required_served == best.required_total:
+            return ()
+        bands = self._request.bands
+        chosen = best_sets(
+            np.array([each.served for each in self._pool]),
+            np.array([band.required for band in bands]),
+            np.array([band.weight for band in bands]),
+            min(asked or _USUAL_SET, LARGEST_SET),
+        )
+        return tuple(each for each in chosen if len(each.members) > 1)
+
+    def with_members(self, looks: list[Look], chosen: tuple[ChosenSet, ...]) -> list[Look]:
+        """The leaders and, after them, the members of sets that are not among them."""
+        looks = list(looks)
+        members = dict.fromkeys(member for each in chosen for member in each.members)
+        for index, member in enumerate(members):
+            pick = self.found.refined(self._pool[member].pick)
+            if _rank_of(looks, pick) is None and len(looks) < MOST_CANDIDATES:
+                part = _LOOK_PART + (1.0 - _LOOK_PART) * index / len(members)
+                looks.append(self._look_at(pick, part, "looking at the members of sets"))
+        return looks
+
+    def told(self, chosen: ChosenSet, looks: list[Look], candidates: list[Candidate]) -> DipoleSet:
+        """A set by the ranks of its members, with what each serves as looked at closely."""
+        ranks = {
+            _rank_of(looks, self.found.refined(self._pool[member].pick))
+            for member in chosen.members
+        }
+        members = [each for each in candidates if each.rank in ranks]
+        serves: list[tuple[str, int]] = []
+        unserved: list[str] = []
+        required_served, width = 0, 0.0
+        for index, band in enumerate(self._request.bands):
+            best = max(members, key=lambda each: each.bands[index].served_fraction)
+            outcome = best.bands[index]
+            width += band.weight * outcome.served_fraction
+            required_served += band.required and outcome.service == "served"
+            if outcome.service != "unserved":
+                serves.append((band.name, best.rank))
+            if outcome.service != "served":
+                unserved.append(band.name)
+        return DipoleSet(
+            ranks=tuple(each.rank for each in members),
+            required_served=required_served,
+            required_total=sum(band.required for band in self._request.bands),
+            weighted_served=round(width / sum(band.weight for band in self._request.bands), 4),
+            serves=tuple(serves),
+            unserved=tuple(unserved),
+            why=set_in_words(serves, unserved),
+        )
+
+    def trade_off(self, looks: list[Look]) -> tuple[TradeOff, ...]:
+        """The front of all criteria, in the order of the ranking."""
+        front = front_of(self.found.contenders[:_MOST_FOR_FRONT], _MOST_ON_FRONT)
+        return tuple(self._on_front(each, looks) for each in front)
+
+    def _on_front(self, contender: Contender, looks: list[Look]) -> TradeOff:
+        conductor = self._hanging.ways[contender.pick.wire].conductor
+        has_line = self._request.feed.feed_line is not None
+        return TradeOff(
+            length_m=round(contender.pick.length_m, 3),
+            conductor=conductor.label,
+            transformer_ratio=contender.pick.ratio,
+            required_served=contender.required_served,
+            weighted_served=round(contender.weighted_served, 4),
+            swr_worst=round(contender.swr_worst, 3),
+            loss_db=round(contender.loss_db, 2) if has_line else None,
+            cost=None if conductor.price_per_m is None else round(contender.cost, 2),
+            rank=_rank_of(looks, self.found.refined(contender.pick)),
+        )
+
+    def _look(self, pick: Pick, part: float, step: str) -> Look:
+        share = _SCAN_PART + (_LOOK_PART - _SCAN_PART) * part
+        return self._look_at(self.found.refined(pick), share, step)
+
+    def _look_at(self, pick: Pick, part: float, step: str) -> Look:
+        self._progress(part, step)
+        way = self._hanging.ways[pick.wire]
+        appraisal = appraise(self.found.space, pick)
+        self.solves += appraisal.solves
+        departures = departures_of(self._hanging, way)
+        held = None
+        if departures:
+            self._progress(part, f"{step}, and how it holds up")
+            held = hold(self.found.space, pick, departures)
+            self.solves += held.solves
+        return Look(way, appraisal, gains_of(self.found, pick), held)
+
+
+def _best_of_each_kind(contenders: tuple[Contender, ...]) -> list[Contender]:
+    """The first contender of every kind: all that a set could need."""
+    first: dict[object, Contender] = {}
+    for each in contenders:
+        if each.weighted_served > 0.0:
+            first.setdefault(each.kind, each)
+    pool = list(first.values()) or list(contenders[:1])
+    return pool[:_MOST_IN_POOL]
+
+
+def _rank_of(looks: list[Look], pick: Pick) -> int | None:
+    for rank, look in enumerate(looks, 1):
+        if look.appraisal.pick == pick:
+            return rank
+    return None

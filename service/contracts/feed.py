@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Final, Literal, get_args
+from typing import Annotated, Final, Literal, Self, get_args
 
-from pydantic import Field, field_validator
+from pydantic import Field, field_validator, model_validator
 
 from service.contracts.quantities import Contract, ImpedanceOhm, TransformerRatio
 from service.contracts.refusals import rule_broken
 
 MOST_RATIOS: Final = 12
+MOST_POSITIONS: Final = 6
 
 #: Feed lines by standard designation or construction; the engine holds their constants.
 LineName = Literal[
@@ -33,11 +34,19 @@ class FeedLine(Contract):
     length_m: Annotated[float, Field(gt=0.0, le=1000.0, description="m")]
 
 
+#: Places of the feed searched when it may be anywhere along the wire: the usual off-centre
+#: ones, about 0.36 and a third among them (common practice).
+ANYWHERE: Final = (0.5, 0.42, 0.36, 1.0 / 3.0, 0.28, 0.2)
+
+
 class Feed(Contract):
     """How power reaches the wire.
 
     ``transformer_ratios`` are impedance ratios, antenna side to line side; 1 means no
-    transformer or a 1:1 balun.
+    transformer or a 1:1 balun. ``positions`` are the permitted places of the feed as
+    fractions of the length from the nearer end, or ``anywhere``. With ``matching`` of
+    ``per-band`` an L-network at the feed point, switched with the band, matches each band at
+    its centre. ``reference_point`` is where the SWR limits apply.
     """
 
     reference_ohm: ImpedanceOhm = 50.0
@@ -45,6 +54,32 @@ class Feed(Contract):
         tuple[TransformerRatio, ...], Field(min_length=1, max_length=MOST_RATIOS)
     ] = (1.0,)
     feed_line: FeedLine | None = None
+    positions: (
+        Annotated[
+            tuple[Annotated[float, Field(ge=0.1, le=0.5)], ...],
+            Field(min_length=1, max_length=MOST_POSITIONS),
+        ]
+        | Literal["anywhere"]
+    ) = (0.5,)
+    matching: Literal["none", "per-band"] = "none"
+    reference_point: Literal["feed-point", "transmitter"] = "feed-point"
+
+    def feed_fractions(self) -> tuple[float, ...]:
+        """The places of the feed to be searched, as fractions of the length."""
+        return ANYWHERE if self.positions == "anywhere" else tuple(dict.fromkeys(self.positions))
+
+    @model_validator(mode="after")
+    def _transmitter_has_its_line(self) -> Self:
+        if self.reference_point == "transmitter" and self.feed_line is None:
+            raise rule_broken(
+                "feed-line-missing",
+                "limits at the transmitter need the feed line.",
+                "Add feed_line with its name and length_m, or let the limits apply at the "
+                "feed point.",
+                field="feed_line",
+                value="",
+            )
+        return self
 
     @field_validator("transformer_ratios")
     @classmethod

@@ -11,7 +11,9 @@ class ReportPoint(Contract):
     """Impedance at one frequency, at the feed point and after the transformer.
 
     ``reflection`` is |Γ| and ``swr`` the standing wave ratio on the line side of the
-    transformer, against the reference impedance.
+    transformer and the matching network, against the reference impedance.
+    ``transmitter_swr`` and ``line_loss_db`` belong to the other end of the feed line, where
+    one is given.
     """
 
     frequency_mhz: float
@@ -19,6 +21,38 @@ class ReportPoint(Contract):
     reactance_ohm: float
     reflection: float
     swr: float
+    transmitter_swr: float | None = None
+    line_loss_db: float | None = None
+
+
+class MatchingPart(Contract):
+    """One part of a matching network, with its stress at the power of the request."""
+
+    kind: Literal["inductor", "capacitor"]
+    place: Literal["series", "shunt"]
+    value: float
+    unit: Literal["µH", "pF"]
+    current_rms_a: float
+    voltage_peak_v: float
+
+
+class Matching(Contract):
+    """An L-network at the feed point that matches one band at its centre.
+
+    ``shunt_at`` tells which side of the series part the shunt part is on.
+    """
+
+    shunt_at: Literal["antenna", "line"]
+    parts: tuple[MatchingPart, ...]
+    loss_db: float
+
+
+class FeedStress(Contract):
+    """Voltage and current at the feed point at the power of the request, band centre."""
+
+    power_w: float
+    voltage_peak_v: float
+    current_rms_a: float
 
 
 class BandReport(Contract):
@@ -29,6 +63,8 @@ class BandReport(Contract):
     centre: ReportPoint
     high: ReportPoint
     grid: tuple[ReportPoint, ...]
+    stress: FeedStress | None = None
+    matching: Matching | None = None
 
 
 class ResonanceLine(Contract):
@@ -65,6 +101,8 @@ class FeedReport(Contract):
     length_m: float
     conductor: str
     diameter_mm: float
+    height_m: float | None = None
+    feed_fraction: float = 0.5
     reference_ohm: float
     transformer_ratio: float
     bands: tuple[BandReport, ...]

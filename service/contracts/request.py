@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import hashlib
-from typing import Annotated, Final, Self
+import math
+from typing import Annotated, Final, Literal, Self
 
 from pydantic import Field, StringConstraints, ValidationError, field_validator, model_validator
 
@@ -15,6 +16,9 @@ from service.contracts.station_site import Site
 from service.contracts.stock import Stock
 
 MOST_CANDIDATES: Final = 20
+LARGEST_SET: Final = 4
+#: Conductors times heights times places of the feed that one request may search.
+MOST_WAYS: Final = 25
 LARGEST_REQUEST_BYTES: Final = 64 * 1024
 
 #: No straight wire resonates below this many wavelengths: even a wire only 10 diameters
@@ -27,11 +31,29 @@ SHORTEST_RESONANCE_WAVELENGTHS: Final = 0.40
 THICKEST_RADIUS_WAVELENGTHS: Final = 5e-3
 
 
+class Tolerances(Contract):
+    """How far the wire as hung may differ from the wire as planned.
+
+    The result is judged with the wire ``cutting_percent`` longer and shorter, ``height_m``
+    higher and lower, over ground ``ground_factor`` times wetter and drier (conductivity;
+    permittivity by its square root), and with insulation of ``insulation_percent`` more and
+    less permittivity.
+    """
+
+    cutting_percent: Annotated[float, Field(ge=0.0, le=5.0)] = 1.0
+    height_m: Annotated[float, Field(ge=0.0, le=20.0)] = 0.5
+    ground_factor: Annotated[float, Field(ge=1.0, le=10.0)] = 2.0
+    insulation_percent: Annotated[float, Field(ge=0.0, le=50.0)] = 10.0
+
+
 class DesignRequest(Contract):
     """What a planner wants designed.
 
     ``bands`` accepts objects with edges, objects that name a ready-made list, and texts
     such as ``amateur-region-2: 40m, 15m``; they are stored as bands with edges.
+    ``largest_set`` asks for sets of up to so many dipoles; without it sets are proposed only
+    where no single wire serves all required bands. ``rank_by`` of ``worst-case`` ranks by how
+    wires hold up under the ``tolerances``.
     """
 
     name: Annotated[str, StringConstraints(strip_whitespace=True, max_length=120)] = (
@@ -43,6 +65,9 @@ class DesignRequest(Contract):
     feed: Feed = Feed()
     power_w: PowerW = 100.0
     candidates: Annotated[int, Field(ge=1, le=MOST_CANDIDATES)] = 5
+    largest_set: Annotated[int, Field(ge=1, le=LARGEST_SET)] | None = None
+    rank_by: Literal["nominal", "worst-case"] = "nominal"
+    tolerances: Tolerances | None = Tolerances()
 
     @field_validator("bands", mode="before")
     @classmethod
@@ -54,7 +79,36 @@ class DesignRequest(Contract):
         check_names_differ(self.bands)
         self._check_span()
         self._check_diameters()
+        self._check_size()
+        self._check_worst_case()
         return self
+
+    def _check_size(self) -> None:
+        counts = {
+            "conductors": len(self.stock.choices()),
+            "heights": max(1, len(self.site.heights_m())),
+            "places of the feed": len(self.feed.feed_fractions()),
+        }
+        ways = math.prod(counts.values())
+        if ways > MOST_WAYS:
+            said = ", ".join(f"{number} {name}" for name, number in counts.items())
+            raise rule_broken(
+                "too-many-ways",
+                f"{said} make {ways} ways to hang the wire.",
+                f"Choose among at most {MOST_WAYS} ways: fewer conductors, heights or places.",
+                field="stock",
+                value=f"{ways} ways",
+            )
+
+    def _check_worst_case(self) -> None:
+        if self.rank_by == "worst-case" and self.tolerances is None:
+            raise rule_broken(
+                "tolerances-missing",
+                "the worst case needs tolerances.",
+                "Give tolerances, or rank by the nominal wire.",
+                field="tolerances",
+                value="",
+            )
 
     def _check_span(self) -> None:
         highest = max(self.bands, key=lambda band: band.high_mhz)

@@ -51,18 +51,64 @@ Ground = Annotated[
 ]
 
 
+MOST_HEIGHTS: Final = 5
+
+HeightM = Annotated[float, Field(gt=0.0, le=300.0, description="m")]
+
+
+class HeightRange(Contract):
+    """Any height between two limits; searched at a few even steps."""
+
+    low_m: HeightM
+    high_m: HeightM
+
+    @model_validator(mode="after")
+    def _limits_are_in_order(self) -> Self:
+        if self.low_m >= self.high_m:
+            raise rule_broken(
+                "heights-swapped",
+                f"the low height {self.low_m:g} m is not below the high one {self.high_m:g} m.",
+                "Swap the heights, or give a single height as a number.",
+                field="low_m",
+                value=self.low_m,
+            )
+        return self
+
+    def sampled(self) -> tuple[float, ...]:
+        """Heights that stand for the range, from low to high."""
+        step = (self.high_m - self.low_m) / (MOST_HEIGHTS - 1)
+        return tuple(round(self.low_m + index * step, 3) for index in range(MOST_HEIGHTS))
+
+
+def _heights_form(given: object) -> str:
+    if isinstance(given, dict | HeightRange):
+        return "~range"
+    return "~list" if isinstance(given, list | tuple) else "~one"
+
+
+Heights = Annotated[
+    Annotated[HeightM, Tag("~one")]
+    | Annotated[
+        Annotated[tuple[HeightM, ...], Field(min_length=1, max_length=MOST_HEIGHTS)], Tag("~list")
+    ]
+    | Annotated[HeightRange, Tag("~range")],
+    Discriminator(_heights_form),
+]
+
+
 class Site(Contract):
     """Two supports and the ground between them.
 
     ``span_m`` is the clear distance between the points the wire's ends are tied to;
     ``end_allowance_m`` is kept free at each end for insulator and rope; ``height_m`` is
-    the height of the wire over ground. ``ground`` is a class of the trade, a pair of
+    the height of the wire over ground, or a list or a range of heights to choose from.
+    ``ground`` is a class of the trade, a pair of
     constants, or ``free-space``, which needs no height.
     """
 
     span_m: Annotated[float, Field(gt=0.0, le=2000.0, description="m")]
     end_allowance_m: Annotated[float, Field(ge=0.0, le=50.0, description="m")] = 0.5
-    height_m: Annotated[float, Field(gt=0.0, le=300.0, description="m")] | None = None
+    height_m: Heights | None = None
     ground: Ground = "average"
 
     @model_validator(mode="after")
@@ -85,6 +131,14 @@ class Site(Contract):
                 value="",
             )
         return self
+
+    def heights_m(self) -> tuple[float, ...]:
+        """The heights to be searched; empty in free space."""
+        if self.height_m is None or self.ground == "free-space":
+            return ()
+        if isinstance(self.height_m, HeightRange):
+            return self.height_m.sampled()
+        return self.height_m if isinstance(self.height_m, tuple) else (self.height_m,)
 
     @property
     def longest_wire_m(self) -> float:

@@ -65,6 +65,7 @@ class Conductor(Contract):
     material: MaterialName = "hard-drawn-copper"
     insulation: Insulation | None = None
     item_code: Annotated[str, StringConstraints(max_length=64)] = ""
+    price_per_m: Annotated[float, Field(ge=0.0, le=1e6)] | None = None
 
     @model_validator(mode="after")
     def _one_size_is_given(self) -> Self:

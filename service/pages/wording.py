@@ -28,8 +28,8 @@ def site_in_words(site: Site) -> str:
     )
     if site.ground == "free-space":
         return f"{span}, in free space."
-    height = "" if site.height_m is None else f", {formats.metres(site.height_m)} m"
-    return f"{span}{height} over {_ground(site)}."
+    heights = [formats.metres(height_m) for height_m in site.heights_m()]
+    return f"{span}, {formats.listed(heights)} m over {_ground(site)}."
 
 
 def stock_in_words(stock: Stock) -> list[str]:

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 import numpy as np
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.search.feeding import Fed, Feeding
 from worker.search.impedance_map import ImpedanceMap, map_over_frequency
 from worker.search.ranking import Pick
 from worker.search.resonances import (
@@ -16,7 +17,7 @@ from worker.search.resonances import (
     nearest_series,
     resonances_of,
 )
-from worker.search.scoring import served_fraction, swr_over_bands
+from worker.search.scoring import served_fraction
 from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace, WireModel
 
 #: Grid of the report within a band: odd, so that the centre is one of its points.
@@ -25,15 +26,17 @@ GRID_POINTS: Final = 41
 NEAR: Final = 0.10
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
+#: Length and frequency are moved by this part to see how a resonance follows.
+_NUDGE: Final = 1e-3
 
 
 @dataclass(frozen=True, slots=True)
 class Curve:
-    """Feed impedance and SWR (behind the transformer) over frequency; shape (n,) each."""
+    """Impedance at the feed point over frequency, and what arrives behind it; shape (n,) each."""
 
     frequency_hz: FloatArray
     impedance_ohm: ComplexArray
-    swr: FloatArray
+    fed: Fed
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,11 +53,15 @@ class BandAppraisal:
     grid : Curve
         Edge to edge, from the map over frequency.
     served_fraction : float
+    network : int or None
+        Which of ``NETWORKS`` matches the band; None without one.
     nearest : Resonance or None
         The series resonance nearest to the band's centre.
     own_length_m : float or None
         The length that would put that resonance on the centre, in m; None where it is too far
         away for the band to be worked on it.
+    hz_per_m : float or None
+        How far that resonance moves with the length; None as above.
     """
 
     goal: BandGoal
@@ -62,8 +69,10 @@ class BandAppraisal:
     error_ohm: float
     grid: Curve
     served_fraction: float
+    network: int | None
     nearest: Resonance | None
     own_length_m: float | None
+    hz_per_m: float | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,20 +99,23 @@ def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
     ----------
     space : SearchSpace
     pick : Pick
-        The wire: conductor, ratio and length.
+        The wire: conductor, height and feed, ratio and length.
     """
-    wire = space.wires[pick.wire]
+    wire = space.wires[pick.wire].model
     over_frequency = _map_whole_range(space, wire, pick.length_m)
     resonances = resonances_of(over_frequency, pick.length_m)
     sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
     bands = tuple(
         _appraise_band(space, pick, goal, over_frequency, resonances) for goal in space.bands
     )
+    # A network is made for one band and says nothing of the frequencies between.
+    unmatched = replace(space.feeding, matched=False)
+    sweep_ohm = over_frequency.impedance_ohm(sweep_hz)
     return Appraisal(
         pick=pick,
         bands=bands,
         resonances=resonances,
-        sweep=_curve(space, pick, sweep_hz, over_frequency.impedance_ohm(sweep_hz)),
+        sweep=_curve(unmatched, pick, sweep_hz, sweep_ohm),
         solves=over_frequency.solves,
         largest_miss=over_frequency.largest_miss,
     )
@@ -113,7 +125,7 @@ def _map_whole_range(space: SearchSpace, wire: WireModel, length_m: float) -> Im
     """From below the wire's first resonance, or the lowest band, to above the highest."""
     one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
     lowest_hz = min(*(goal.low_hz for goal in space.bands), 0.42 * one_wave_hz)
-    highest_hz = max(*(goal.high_hz for goal in space.bands), 0.50 * one_wave_hz)
+    highest_hz = max(*(goal.high_hz for goal in space.bands), 0.5 * one_wave_hz)
     low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
     high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
     return map_over_frequency(wire, length_m, low_hz, high_hz)
@@ -126,24 +138,61 @@ def _appraise_band(
     over_frequency: ImpedanceMap,
     resonances: tuple[Resonance, ...],
 ) -> BandAppraisal:
-    wire = space.wires[pick.wire]
+    wire, feeding = space.wires[pick.wire].model, space.feeding
+    grid_hz = goal.grid_hz(GRID_POINTS)
+    grid_ohm = over_frequency.impedance_ohm(grid_hz)
+    network = None
+    if feeding.matched:
+        network = int(feeding.best_network(grid_ohm[:, None] / pick.ratio, grid_hz)[0][0])
     marks_hz = np.array([goal.low_hz, goal.centre_hz, goal.high_hz])
     solved = wire.solve(np.full(3, pick.length_m), marks_hz)
-    marks = _curve(space, pick, marks_hz, solved.impedance_ohm)
-    grid_hz = goal.grid_hz(GRID_POINTS)
-    grid = _curve(space, pick, grid_hz, over_frequency.impedance_ohm(grid_hz))
-    part = served_fraction(grid.swr[None, :, None], np.array(goal.swr_limit))[0, 0]
+    grid = _curve(feeding, pick, grid_hz, grid_ohm, network)
+    part = served_fraction(grid.fed.limited_swr[None, :, None], np.array(goal.swr_limit))[0, 0]
     nearest = nearest_series(resonances, goal.centre_hz)
-    own_length_m = None
+    own_length_m = hz_per_m = None
     if nearest is not None and is_near(nearest, goal):
         guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
         own_length_m = length_in_resonance_m(wire, guess_m, goal.centre_hz)
-    error_ohm = float(solved.error_ohm.max())
-    return BandAppraisal(goal, marks, error_ohm, grid, float(part), nearest, own_length_m)
+        hz_per_m = _resonance_per_length(wire, pick.length_m, nearest.frequency_hz)
+    return BandAppraisal(
+        goal=goal,
+        marks=_curve(feeding, pick, marks_hz, solved.impedance_ohm, network),
+        error_ohm=float(solved.error_ohm.max()),
+        grid=grid,
+        served_fraction=float(part),
+        network=network,
+        nearest=nearest,
+        own_length_m=own_length_m,
+        hz_per_m=hz_per_m,
+    )
+
+
+def _resonance_per_length(wire: WireModel, length_m: float, frequency_hz: float) -> float:
+    """How far a resonance moves with length: along X = 0, df/dL = -(dX/dL)/(dX/df)."""
+    lengths_m = length_m * np.array([1.0 + _NUDGE, 1.0 - _NUDGE, 1.0, 1.0])
+    frequencies_hz = frequency_hz * np.array([1.0, 1.0, 1.0 + _NUDGE, 1.0 - _NUDGE])
+    reactance = wire.solve(lengths_m, frequencies_hz).impedance_ohm.imag
+    per_length = (reactance[0] - reactance[1]) / length_m
+    per_frequency = (reactance[2] - reactance[3]) / frequency_hz
+    return float(-per_length / per_frequency)
 
 
 def _curve(
-    space: SearchSpace, pick: Pick, frequency_hz: FloatArray, impedance_ohm: ComplexArray
+    feeding: Feeding,
+    pick: Pick,
+    frequency_hz: FloatArray,
+    impedance_ohm: ComplexArray,
+    network: int | None = None,
 ) -> Curve:
-    swr = swr_over_bands(impedance_ohm, space.reference_ohm, pick.ratio)
-    return Curve(frequency_hz, impedance_ohm, swr)
+    fed = feeding.feed(impedance_ohm[:, None], frequency_hz, pick.ratio, network)
+    return Curve(
+        frequency_hz,
+        impedance_ohm,
+        Fed(
+            behind_ohm=fed.behind_ohm[:, 0],
+            swr=fed.swr[:, 0],
+            limited_swr=fed.limited_swr[:, 0],
+            transmitter_swr=None if fed.transmitter_swr is None else fed.transmitter_swr[:, 0],
+            line_loss_db=None if fed.line_loss_db is None else fed.line_loss_db[:, 0],
+        ),
+    )

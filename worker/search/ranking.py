@@ -1,8 +1,8 @@
 """The order of candidates, and which of them are different enough to be worth showing.
 
-Wires are ordered by required bands served, then by weighted served width, then by worst
-SWR, then by length (a shorter wire hangs more easily): each shown, none hidden in one
-number.
+Wires are ordered by required bands served, then by weighted served width, worst SWR, loss of
+the feed line, length (a shorter wire hangs more easily) and cost: each shown, none hidden in
+one number.
 """
 
 from __future__ import annotations
@@ -21,6 +21,7 @@ from worker.search.space import BandGoal, FloatArray
 #: differences are below what can be built, and would hide the next criterion.
 WIDTH_STEP: Final = 1e-3
 SWR_STEP: Final = 1e-2
+LOSS_STEP_DB: Final = 0.1
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,21 +39,41 @@ Kind = tuple[tuple[int, int], ...]
 
 @dataclass(frozen=True, slots=True)
 class Contender:
-    """A local optimum: its sort key, what kind of wire it is, and the wire itself."""
+    """A local optimum of the scan.
+
+    Attributes
+    ----------
+    key : tuple of float
+        Sorts contenders, the best first.
+    kind : Kind
+    pick : Pick
+    served : tuple of float
+        Part of each band within its limit.
+    required_served, weighted_served, swr_worst, loss_db, cost
+        What it is ranked by; cost is 0 where no price is known.
+    """
 
     key: tuple[float, ...]
     kind: Kind
     pick: Pick
+    served: tuple[float, ...] = ()
+    required_served: int = 0
+    weighted_served: float = 0.0
+    swr_worst: float = 1.0
+    loss_db: float = 0.0
+    cost: float = 0.0
 
 
-def rank_keys(merit: Merit, length_m: FloatArray) -> FloatArray:
-    """Columns to sort by, best first when ascending; shape (n, 4)."""
+def rank_keys(merit: Merit, length_m: FloatArray, cost: FloatArray) -> FloatArray:
+    """Columns to sort by, best first when ascending; shape (n, 6)."""
     return np.column_stack(
         [
             -merit.required_served.astype(np.float64),
             -np.round(merit.weighted_served / WIDTH_STEP),
             np.round(merit.swr_worst / SWR_STEP),
+            np.round(merit.loss_db / LOSS_STEP_DB),
             length_m,
+            cost,
         ]
     )
 
@@ -68,7 +89,7 @@ def nearest_odd_order(length_m: FloatArray, frequency_hz: float) -> NDArray[np.i
     return (2 * np.floor(half_waves / 2.0) + 1).astype(np.int64)
 
 
-def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Pick, ...]:
+def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Contender, ...]:
     """The best contenders that differ from each other, best first, at most so many.
 
     A contender adds nothing to a better one that uses the same order of resonance on every
@@ -83,7 +104,7 @@ def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Pick, ...]
             leaders.append(contender)
         if len(leaders) == most:
             break
-    return tuple(leader.pick for leader in leaders)
+    return tuple(leaders)
 
 
 def _adds_nothing(kind: Kind, better: Kind) -> bool:
@@ -100,8 +121,9 @@ def contenders_of(
     bands: tuple[BandGoal, ...],
     wire: int,
     ratio: float,
+    price_per_m: float = 0.0,
 ) -> list[Contender]:
-    """The local optima along length for one conductor and one ratio.
+    """The best local optimum along length of each kind, for one conductor and one ratio.
 
     Parameters
     ----------
@@ -115,22 +137,34 @@ def contenders_of(
     wire : int
         Index of the conductor.
     ratio : float
+    price_per_m : float
+        Of the conductor; 0 where none is known.
     """
-    keys = rank_keys(merit, length_m)
+    cost = length_m * price_per_m
+    keys = rank_keys(merit, length_m, cost)
     place = np.empty(len(length_m), dtype=np.int64)
     place[best_first(keys)] = np.arange(len(length_m))
     # Beyond either end there is nothing better.
     walled = np.concatenate([[len(length_m)], place, [len(length_m)]])
     tops = np.flatnonzero((place < walled[:-2]) & (place < walled[2:]))
+    tops = tops[np.argsort(place[tops])]
     orders = np.array([nearest_odd_order(length_m[tops], band.centre_hz) for band in bands])
     fractions = scored.served_fraction[:, tops]
     service = np.where(fractions >= FULLY_SERVED, 2, np.where(fractions > 0.0, 1, 0))
     orders = np.where(service > 0, orders, 0)
-    return [
-        Contender(
-            key=(*map(float, keys[top]), float(wire), ratio),
-            kind=tuple(zip(orders[:, column].tolist(), service[:, column].tolist(), strict=True)),
-            pick=Pick(wire, ratio, float(length_m[top])),
-        )
-        for column, top in enumerate(tops)
-    ]
+    best_of_kind: dict[Kind, Contender] = {}
+    for column, top in enumerate(tops.tolist()):
+        kind = tuple(zip(orders[:, column].tolist(), service[:, column].tolist(), strict=True))
+        if kind not in best_of_kind:
+            best_of_kind[kind] = Contender(
+                key=(*keys[top].tolist(), float(wire), ratio),
+                kind=kind,
+                pick=Pick(wire, ratio, float(length_m[top])),
+                served=tuple(fractions[:, column].tolist()),
+                required_served=int(merit.required_served[top]),
+                weighted_served=float(merit.weighted_served[top]),
+                swr_worst=float(merit.swr_worst[top]),
+                loss_db=float(merit.loss_db[top]),
+                cost=float(cost[top]),
+            )
+    return list(best_of_kind.values())

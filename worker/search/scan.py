@@ -1,7 +1,7 @@
-"""The scan: every length of every conductor at every ratio, read from maps of impedance.
+"""The scan: every length of every wire at every ratio, read from maps of impedance.
 
-Deterministic: the same space gives the same picks, for nothing in it is drawn by chance and
-ties are broken by length, then by the order of conductors and ratios.
+Deterministic: the same space gives the same answer, for nothing in it is drawn by chance and
+ties are broken by length, then by the order of wires and ratios.
 """
 
 from __future__ import annotations
@@ -13,16 +13,9 @@ from typing import Final
 import numpy as np
 
 from worker.search.impedance_map import BandMap, map_band
-from worker.search.ranking import (
-    Contender,
-    Pick,
-    best_first,
-    contenders_of,
-    distinct_leaders,
-    rank_keys,
-)
-from worker.search.scoring import merit, score, swr_over_bands
-from worker.search.space import ComplexArray, FloatArray, SearchSpace, WireModel
+from worker.search.ranking import Contender, Pick, best_first, contenders_of, rank_keys
+from worker.search.scoring import Score, merit, score
+from worker.search.space import ComplexArray, FloatArray, SearchSpace, WireOffer
 
 #: Called with the part done (0 to 1) and what is being done, in words.
 ProgressCallback = Callable[[float, str], None]
@@ -30,22 +23,34 @@ ProgressCallback = Callable[[float, str], None]
 #: Around a pick the map is read once more at this many finer lengths.
 FINE_POINTS: Final = 81
 
+#: Lengths read at a time, so that memory does not grow with the fineness of the scan.
+_CHUNK_LENGTHS: Final = 8192
+
 
 @dataclass(frozen=True, slots=True)
 class WireMaps:
-    """Maps of one conductor, one for each band of a search space."""
+    """Maps of one wire, one for each band of a search space."""
 
     space: SearchSpace
     maps: tuple[BandMap, ...]
 
     def impedance_ohm(self, length_m: FloatArray) -> ComplexArray:
         """Impedance in Ω over bands, grid frequencies and lengths; shape (b, p, n)."""
-        return np.array(
-            [
-                each.impedance_ohm(length_m, band.grid_hz())
-                for each, band in zip(self.maps, self.space.bands, strict=True)
-            ]
-        )
+        pairs = zip(self.maps, self.space.bands, strict=True)
+        return np.array([each.impedance_ohm(length_m, band.grid_hz()) for each, band in pairs])
+
+    def over_even_ratios(self, length_m: FloatArray) -> ComplexArray:
+        """The same for lengths in an even ratio, at a small part of the cost."""
+        pairs = zip(self.maps, self.space.bands, strict=True)
+        return np.array([each.over_even_ratios(length_m, band.grid_hz()) for each, band in pairs])
+
+
+@dataclass(frozen=True, slots=True)
+class Closest:
+    """For each band the wire, of all, whose SWR over it is lowest where it is highest."""
+
+    swr_worst: tuple[float, ...]
+    picks: tuple[Pick, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,51 +59,85 @@ class Scan:
 
     Attributes
     ----------
-    picks : tuple of Pick
-        The distinct leaders, best first.
+    space : SearchSpace
+    contenders : tuple of Contender
+        The local optima, best first.
+    closest : Closest
+    maps : tuple of WireMaps
+        One for each wire of the space.
     combinations : int
-        How many (conductor, ratio, length) were compared.
+        How many (wire, ratio, length) were compared.
     solves : int
         Direct solves behind the maps.
     largest_miss : float
         Largest departure of any map from fresh solves, relative to |Z|.
     """
 
-    picks: tuple[Pick, ...]
+    space: SearchSpace
+    contenders: tuple[Contender, ...]
+    closest: Closest
+    maps: tuple[WireMaps, ...]
     combinations: int
     solves: int
     largest_miss: float
 
+    def score_at(self, pick: Pick, length_m: FloatArray) -> Score:
+        """The score of a pick's wire and ratio at other lengths, from its maps."""
+        impedance = self.maps[pick.wire].impedance_ohm(length_m)
+        return score(impedance, self.space.bands, self.space.feeding, pick.ratio)
 
-def scan(space: SearchSpace, most: int, progress: ProgressCallback) -> Scan:
-    """Find the distinct leaders among all wires of a search space.
+    def refined(self, pick: Pick) -> Pick:
+        """The best length that can be cut, between a pick's neighbours in the scan."""
+        lengths_m = self.space.lengths_m()
+        index = int(np.searchsorted(lengths_m, pick.length_m))
+        low_m = float(lengths_m[max(index - 1, 0)])
+        high_m = float(lengths_m[min(index + 1, len(lengths_m) - 1)])
+        step_m = cutting_step_m(pick.length_m)
+        fine_m = np.linspace(low_m, high_m, FINE_POINTS)
+        cut_m = np.unique(np.round(fine_m / step_m)) * step_m
+        cut_m = cut_m[(cut_m >= self.space.shortest_m) & (cut_m <= self.space.longest_m)]
+        if cut_m.size == 0:
+            return pick
+        cost = cut_m * (self.space.wires[pick.wire].price_per_m or 0.0)
+        keys = rank_keys(merit(self.score_at(pick, cut_m), self.space.bands), cut_m, cost)
+        return Pick(pick.wire, pick.ratio, float(cut_m[best_first(keys)[0]]))
+
+
+def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
+    """Compare all wires of a search space.
 
     Parameters
     ----------
     space : SearchSpace
-    most : int
-        How many leaders to return at the most.
     progress : callable
         Called with the part done, from 0 to 1, and the step in words.
     """
     lengths_m = space.lengths_m()
     contenders: list[Contender] = []
+    closest = _ClosestSoFar(len(space.bands))
     maps: list[WireMaps] = []
     for index, wire in enumerate(space.wires):
 
         def wire_progress(part: float, step: str, done: int = index) -> None:
             progress((done + part) / len(space.wires), step)
 
-        maps.append(_map_bands(space, wire, f"conductor {index + 1}", wire_progress))
-        impedance = maps[-1].impedance_ohm(lengths_m)
-        for ratio in space.ratios:
-            swr = swr_over_bands(impedance, space.reference_ohm, ratio)
-            scored = score(swr, space.bands)
-            gained = merit(scored, space.bands)
-            contenders += contenders_of(scored, gained, lengths_m, space.bands, index, ratio)
-    picks = distinct_leaders(contenders, most)
+        maps.append(_map_bands(space, wire, f"wire {index + 1}", wire_progress))
+        for ratio, scored in _scores(space, maps[-1], lengths_m, wire_progress):
+            closest.see(scored, index, ratio, lengths_m)
+            contenders += contenders_of(
+                scored,
+                merit(scored, space.bands),
+                lengths_m,
+                space.bands,
+                index,
+                ratio,
+                wire.price_per_m or 0.0,
+            )
     return Scan(
-        picks=tuple(_refine(space, maps[pick.wire], pick, lengths_m) for pick in picks),
+        space=space,
+        contenders=tuple(sorted(contenders, key=lambda each: each.key)),
+        closest=closest.found(),
+        maps=tuple(maps),
         combinations=len(lengths_m) * len(space.wires) * len(space.ratios),
         solves=sum(each.solves for wire_maps in maps for each in wire_maps.maps),
         largest_miss=max(each.largest_miss for wire_maps in maps for each in wire_maps.maps),
@@ -110,29 +149,57 @@ def cutting_step_m(length_m: float) -> float:
     return 0.01 if length_m >= 5.0 else 0.001
 
 
+class _ClosestSoFar:
+    """Keeps, for each band, the wire that comes closest to serving it by itself."""
+
+    def __init__(self, bands: int) -> None:
+        self._swr = [np.inf] * bands
+        self._picks = [Pick(0, 1.0, 0.0)] * bands
+
+    def see(self, scored: Score, wire: int, ratio: float, lengths_m: FloatArray) -> None:
+        lowest = np.argmin(scored.swr_worst, axis=1)
+        for band, index in enumerate(lowest.tolist()):
+            if scored.swr_worst[band, index] < self._swr[band]:
+                self._swr[band] = float(scored.swr_worst[band, index])
+                self._picks[band] = Pick(wire, ratio, float(lengths_m[index]))
+
+    def found(self) -> Closest:
+        return Closest(tuple(self._swr), tuple(self._picks))
+
+
 def _map_bands(
-    space: SearchSpace, wire: WireModel, name: str, progress: ProgressCallback
+    space: SearchSpace, wire: WireOffer, name: str, progress: ProgressCallback
 ) -> WireMaps:
     maps: list[BandMap] = []
     for index, band in enumerate(space.bands):
-        progress(index / len(space.bands), f"mapping {name} on {band.name}")
-        maps.append(map_band(wire, band.low_hz, band.high_hz, space.shortest_m, space.longest_m))
+        progress(index / len(space.bands), f"mapping {name} of {len(space.wires)} on {band.name}")
+        maps.append(
+            map_band(wire.model, band.low_hz, band.high_hz, space.shortest_m, space.longest_m)
+        )
     return WireMaps(space, tuple(maps))
 
 
-def _refine(space: SearchSpace, maps: WireMaps, pick: Pick, lengths_m: FloatArray) -> Pick:
-    """The best length that can be cut, between the neighbours of a pick."""
-    index = int(np.searchsorted(lengths_m, pick.length_m))
-    low_m = float(lengths_m[max(index - 1, 0)])
-    high_m = float(lengths_m[min(index + 1, len(lengths_m) - 1)])
-    step_m = cutting_step_m(pick.length_m)
-    fine_m = np.linspace(low_m, high_m, FINE_POINTS)
-    # Down at the upper limit, so that the wire still fits the span.
-    cut_m = np.unique(np.floor(fine_m / step_m + 1e-9)) * step_m
-    cut_m = cut_m[cut_m >= space.shortest_m]
-    if cut_m.size == 0:
-        return pick
-    swr = swr_over_bands(maps.impedance_ohm(cut_m), space.reference_ohm, pick.ratio)
-    keys = rank_keys(merit(score(swr, space.bands), space.bands), cut_m)
-    best_m = float(cut_m[best_first(keys)[0]])
-    return Pick(pick.wire, pick.ratio, best_m)
+def _scores(
+    space: SearchSpace, maps: WireMaps, lengths_m: FloatArray, progress: ProgressCallback
+) -> list[tuple[float, Score]]:
+    """The score of one wire at every ratio, over all lengths of the scan."""
+    parts: list[list[Score]] = [[] for _ in space.ratios]
+    for start in range(0, len(lengths_m), _CHUNK_LENGTHS):
+        chunk_m = lengths_m[start : start + _CHUNK_LENGTHS]
+        if len(chunk_m) > 1:
+            impedance = maps.over_even_ratios(chunk_m)
+        else:
+            impedance = maps.impedance_ohm(chunk_m)
+        for place, ratio in enumerate(space.ratios):
+            progress(1.0, "comparing lengths and ratios")
+            parts[place].append(score(impedance, space.bands, space.feeding, ratio))
+    return [(ratio, joined(each)) for ratio, each in zip(space.ratios, parts, strict=True)]
+
+
+def joined(parts: list[Score]) -> Score:
+    """Scores of neighbouring runs of lengths as one."""
+    return Score(
+        np.concatenate([part.served_fraction for part in parts], axis=1),
+        np.concatenate([part.swr_worst for part in parts], axis=1),
+        np.concatenate([part.loss_db for part in parts], axis=1),
+    )

@@ -12,7 +12,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
-from worker.engine.reflection import standing_wave_ratio
+from worker.search.feeding import Feeding
 from worker.search.space import BandGoal, ComplexArray, FloatArray
 
 #: A band counts as served from this part of its width on: rounding at an edge is no fault.
@@ -29,31 +29,39 @@ class Score:
         Part of each band's width within its SWR limit.
     swr_worst : ndarray, shape (b, n)
         Largest SWR within each band.
+    loss_db : ndarray, shape (b, n)
+        Loss of the feed line at the band's centre; zero without a line.
     """
 
     served_fraction: FloatArray
     swr_worst: FloatArray
+    loss_db: FloatArray
 
 
-def swr_over_bands(impedance_ohm: ComplexArray, reference_ohm: float, ratio: float) -> FloatArray:
-    """Standing wave ratio on the line side of an ideal transformer; shape of the impedance."""
-    return np.asarray(standing_wave_ratio(impedance_ohm / ratio, reference_ohm))
-
-
-def score(swr: FloatArray, bands: tuple[BandGoal, ...]) -> Score:
-    """Score wires by their SWR on each band's grid.
+def score(
+    impedance_ohm: ComplexArray, bands: tuple[BandGoal, ...], feeding: Feeding, ratio: float
+) -> Score:
+    """Score wires by what arrives where the limits apply, over each band's grid.
 
     Parameters
     ----------
-    swr : ndarray, shape (b, p, n)
-        Standing wave ratio of n wires at p evenly spaced frequencies of b bands.
+    impedance_ohm : ndarray, shape (b, p, n)
+        At the feed points of n wires, at p evenly spaced frequencies of b bands.
     bands : tuple of BandGoal, length b
+    feeding : Feeding
+    ratio : float
+        Impedance ratio of the transformer.
     """
+    points = impedance_ohm.shape[1]
+    swr = np.empty(impedance_ohm.shape)
+    loss_db = np.zeros((len(bands), impedance_ohm.shape[2]))
+    for index, band in enumerate(bands):
+        fed = feeding.feed(impedance_ohm[index], band.grid_hz(points), ratio)
+        swr[index] = fed.limited_swr
+        if fed.line_loss_db is not None:
+            loss_db[index] = fed.line_loss_db[points // 2]
     limits = np.array([band.swr_limit for band in bands])
-    return Score(
-        served_fraction=served_fraction(swr, limits[:, None, None]),
-        swr_worst=np.max(swr, axis=1),
-    )
+    return Score(served_fraction(swr, limits[:, None, None]), np.max(swr, axis=1), loss_db)
 
 
 def served_fraction(swr: FloatArray, limit: FloatArray) -> FloatArray:
@@ -88,6 +96,7 @@ class Merit:
     required_served: NDArray[np.int64]
     weighted_served: FloatArray
     swr_worst: FloatArray
+    loss_db: FloatArray
 
 
 def merit(scored: Score, bands: tuple[BandGoal, ...]) -> Merit:
@@ -95,7 +104,8 @@ def merit(scored: Score, bands: tuple[BandGoal, ...]) -> Merit:
 
     ``weighted_served`` is the mean served width by weight, from 0 to 1. ``swr_worst`` is
     taken over the bands served whole, for an SWR of 40 on a band that cannot be had says
-    nothing of the others; where none is, it is the lowest of the worst.
+    nothing of the others; where none is, it is the lowest of the worst. ``loss_db`` is the
+    largest over the bands served at least in part.
     """
     required = np.array([band.required for band in bands])
     weights = np.array([band.weight for band in bands])
@@ -106,4 +116,5 @@ def merit(scored: Score, bands: tuple[BandGoal, ...]) -> Merit:
         required_served=np.sum(whole & required[:, None], axis=0),
         weighted_served=weights @ scored.served_fraction / weights.sum(),
         swr_worst=np.where(whole.any(axis=0), worst_of_served, least_of_all),
+        loss_db=np.max(np.where(scored.served_fraction > 0.0, scored.loss_db, 0.0), axis=0),
     )

@@ -9,16 +9,20 @@ import numpy as np
 from numpy.typing import NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.search.feeding import Feeding
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
-#: Neighbouring lengths of the scan differ by this ratio: 4 cm on a 40 m wire, 7 kHz at 7 MHz.
-SCAN_STEP: Final = 1e-3
+#: The scan compares about so many (wire, ratio, length), in steps of length between these
+#: two ratios: 2 mm to 4 cm on a 20 m wire.
+COMBINATIONS: Final = 1_200_000
+FINEST_STEP: Final = 1e-4
+COARSEST_STEP: Final = 2e-3
 
 #: Frequencies per band at which the scan judges a wire; the widest amateur HF band, 10 m,
-#: is then sampled every 0.7 %, a quarter of the width of a wire's resonance at SWR 2.
-POINTS_PER_BAND: Final = 9
+#: is then sampled every 1 %, a third of the width of a wire's resonance at SWR 2.
+POINTS_PER_BAND: Final = 7
 
 #: The scan starts at this many wavelengths at the highest frequency asked for; see
 #: ``SHORTEST_RESONANCE_WAVELENGTHS`` of the request contract, which refuses shorter spans.
@@ -52,6 +56,14 @@ class WireModel(Protocol):
 
 
 @dataclass(frozen=True, slots=True)
+class WireOffer:
+    """One way to hang one conductor: its model, and its price per metre where one is known."""
+
+    model: WireModel
+    price_per_m: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class BandGoal:
     """One band to be served; frequencies in Hz."""
 
@@ -79,24 +91,24 @@ class SearchSpace:
     Attributes
     ----------
     bands : tuple of BandGoal
-    wires : tuple of WireModel
-        One for each conductor on offer.
+    wires : tuple of WireOffer
+        One for each conductor, height and place of the feed on offer.
     site_longest_m : float
         The longest wire the site can take, in m.
     ratios : tuple of float
         Permitted impedance ratios of the transformer, antenna side to line side.
-    reference_ohm : float
-        Impedance the SWR is taken against, in Ω.
+    feeding : Feeding
+        What lies between the wire and the point where the limits apply.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
     """
 
     bands: tuple[BandGoal, ...]
-    wires: tuple[WireModel, ...]
+    wires: tuple[WireOffer, ...]
     site_longest_m: float
     ratios: tuple[float, ...]
-    reference_ohm: float
+    feeding: Feeding
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -105,7 +117,7 @@ class SearchSpace:
         top_wavelength_m = SPEED_OF_LIGHT_M_PER_S / max(band.high_hz for band in self.bands)
         # Maps reach beyond the longest wire by the relative width of a band.
         widest = max(band.high_hz / band.low_hz for band in self.bands)
-        modelled_m = top_wavelength_m * min(wire.longest_wavelengths for wire in self.wires)
+        modelled_m = top_wavelength_m * min(wire.model.longest_wavelengths for wire in self.wires)
         longest_m = min(self.site_longest_m, modelled_m / widest)
         object.__setattr__(self, "longest_m", longest_m)
         object.__setattr__(
@@ -114,7 +126,9 @@ class SearchSpace:
 
     def lengths_m(self) -> FloatArray:
         """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""
-        span = np.log(self.longest_m / self.shortest_m)
-        count = max(2, int(np.ceil(span / SCAN_STEP)) + 1)
+        span = float(np.log(self.longest_m / self.shortest_m))
+        each = COMBINATIONS / (len(self.wires) * len(self.ratios))
+        step = min(max(span / each, FINEST_STEP), COARSEST_STEP)
+        count = max(2, int(np.ceil(span / step)) + 1)
         lengths_m: FloatArray = np.geomspace(self.shortest_m, self.longest_m, count)
         return lengths_m

@@ -3,34 +3,73 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
+from typing import Final, Literal
 
 import numpy as np
 
-from service.contracts.candidate import BandOutcome, Candidate, Service
-from service.contracts.report import BandReport, FeedReport, Provenance, ReportPoint, ResonanceLine
+from service.contracts.candidate import (
+    BandOutcome,
+    Candidate,
+    Departure,
+    Service,
+    Steadiness,
+    Trim,
+)
+from service.contracts.report import (
+    BandReport,
+    FeedReport,
+    FeedStress,
+    Matching,
+    MatchingPart,
+    ReportPoint,
+    ResonanceLine,
+)
 from service.contracts.request import DesignRequest
+from worker.engine.matching import Component, Form, Kind, l_networks
 from worker.engine.reflection import reflection_coefficient
 from worker.search.appraisal import Appraisal, BandAppraisal, Curve
+from worker.search.feeding import NETWORKS, network_values
 from worker.search.scoring import FULLY_SERVED
+from worker.search.steadiness import Held
+from worker.search.trade_off import Gain
+from worker.translation.provenance import provenance_of
+from worker.translation.wires import Way
 from worker.translation.wording import (
     CAUTIONS,
     band_reason,
     compromise,
+    improvement,
     is_used,
     why_it_ranks,
 )
 
+#: Quality of a coil as usually wound for this use (common practice).
+_COIL_Q: Final = 200.0
 
-def candidate_of(request: DesignRequest, appraisal: Appraisal, rank: int) -> Candidate:
+
+@dataclass(frozen=True, slots=True)
+class Look:
+    """One wire looked at closely, and all that is told of it."""
+
+    way: Way
+    appraisal: Appraisal
+    gains: tuple[Gain, ...]
+    held: Held | None
+
+
+def candidate_of(request: DesignRequest, look: Look, rank: int) -> Candidate:
     """One candidate with its outcome on every band and the sentences that explain it."""
-    conductor = request.stock.choices()[appraisal.pick.wire]
+    appraisal, conductor = look.appraisal, look.way.conductor
+    length_m = appraisal.pick.length_m
     outcomes = tuple(_band_outcome(band, appraisal) for band in appraisal.bands)
     weights = [band.weight for band in request.bands]
     shares = [weight * each.served_fraction for weight, each in zip(weights, outcomes, strict=True)]
     whole = [each.swr_worst for each in outcomes if each.service == "served"]
+    price = conductor.price_per_m
     return Candidate(
         rank=rank,
-        length_m=_rounded(appraisal.pick.length_m, 6),
+        length_m=_rounded(length_m, 6),
         conductor=conductor.label,
         diameter_mm=_rounded(conductor.bare_diameter_mm, 4),
         item_code=conductor.item_code,
@@ -39,26 +78,42 @@ def candidate_of(request: DesignRequest, appraisal: Appraisal, rank: int) -> Can
         required_total=sum(each.required for each in outcomes),
         weighted_served=_rounded(sum(shares) / sum(weights), 4),
         swr_worst=max(whole) if whole else min(each.swr_worst for each in outcomes),
+        loss_db=_largest_loss_db(appraisal, outcomes),
+        cost=None if price is None else _rounded(price * length_m, 2),
+        height_m=look.way.height_m,
+        feed_fraction=look.way.feed_fraction,
         bands=outcomes,
         why=why_it_ranks(outcomes, appraisal),
         compromise=compromise(appraisal),
+        improvements=tuple(improvement(gain, length_m) for gain in look.gains),
+        trims=tuple(
+            Trim(
+                band=band.goal.name,
+                order=band.nearest.order,
+                # Cutting shortens, which raises the resonance.
+                khz_per_cm=_rounded(-band.hz_per_m * 1e-5, 3),
+            )
+            for band in appraisal.bands
+            if band.nearest is not None and band.hz_per_m is not None
+        ),
+        steadiness=None if look.held is None else _steadiness(look.held, appraisal),
     )
 
 
-def feed_report_of(
-    request: DesignRequest, appraisal: Appraisal, rank: int, provenance: Provenance
-) -> FeedReport:
+def feed_report_of(request: DesignRequest, look: Look, rank: int) -> FeedReport:
     """The feed-impedance report of one candidate."""
-    conductor = request.stock.choices()[appraisal.pick.wire]
+    appraisal, conductor = look.appraisal, look.way.conductor
     reference_ohm, ratio = request.feed.reference_ohm, appraisal.pick.ratio
     return FeedReport(
         rank=rank,
         length_m=_rounded(appraisal.pick.length_m, 6),
         conductor=conductor.label,
         diameter_mm=_rounded(conductor.bare_diameter_mm, 4),
+        height_m=look.way.height_m,
+        feed_fraction=look.way.feed_fraction,
         reference_ohm=reference_ohm,
         transformer_ratio=ratio,
-        bands=tuple(_band_report(band, reference_ohm, ratio) for band in appraisal.bands),
+        bands=tuple(_band_report(band, request, ratio) for band in appraisal.bands),
         resonances=tuple(
             ResonanceLine(
                 order=each.order,
@@ -68,9 +123,40 @@ def feed_report_of(
             )
             for each in appraisal.resonances
         ),
-        sweep=_points(appraisal.sweep, reference_ohm, ratio),
-        provenance=provenance,
+        sweep=_points(appraisal.sweep, reference_ohm),
+        provenance=provenance_of(request, look.way, appraisal),
         cautions=CAUTIONS,
+    )
+
+
+def _largest_loss_db(appraisal: Appraisal, outcomes: tuple[BandOutcome, ...]) -> float | None:
+    """Loss of the feed line on the worst band served at least in part, at its centre."""
+    losses = [
+        float(band.marks.fed.line_loss_db[1])
+        for band, outcome in zip(appraisal.bands, outcomes, strict=True)
+        if band.marks.fed.line_loss_db is not None and outcome.service != "unserved"
+    ]
+    return _rounded(max(losses), 3) if losses else None
+
+
+def _steadiness(held: Held, appraisal: Appraisal) -> Steadiness:
+    planned = np.array([band.served_fraction for band in appraisal.bands])
+    return Steadiness(
+        required_served=int(held.worst.merit.required_served[0]),
+        weighted_served=_rounded(held.worst.merit.weighted_served[0], 4),
+        swr_worst=_rounded(held.swr_of_served(planned), 4),
+        worst=held.worst.what,
+        departures=tuple(
+            Departure(
+                what=each.what,
+                band=band.goal.name,
+                served_fraction=_rounded(each.scored.served_fraction[index, 0], 4),
+                swr_worst=_rounded(each.scored.swr_worst[index, 0], 4),
+            )
+            for each in held.departed
+            for index, band in enumerate(appraisal.bands)
+            if planned[index] > 0.0
+        ),
     )
 
 
@@ -91,10 +177,12 @@ def _band_outcome(band: BandAppraisal, appraisal: Appraisal) -> BandOutcome:
         resonance_mhz=_rounded(near.frequency_hz / 1e6, 6) if near else None,
         offset_khz=_rounded((near.frequency_hz - centre_hz) / 1e3, 3) if near else None,
         offset_percent=_rounded(100.0 * (near.frequency_hz / centre_hz - 1.0), 4) if near else None,
-        swr_low=_rounded(band.marks.swr[0], 4),
-        swr_centre=_rounded(band.marks.swr[1], 4),
-        swr_high=_rounded(band.marks.swr[2], 4),
-        swr_worst=_rounded(max(band.grid.swr.max(), band.marks.swr.max()), 4),
+        swr_low=_rounded(band.marks.fed.limited_swr[0], 4),
+        swr_centre=_rounded(band.marks.fed.limited_swr[1], 4),
+        swr_high=_rounded(band.marks.fed.limited_swr[2], 4),
+        swr_worst=_rounded(
+            max(band.grid.fed.limited_swr.max(), band.marks.fed.limited_swr.max()), 4
+        ),
         swr_limit=band.goal.swr_limit,
         reason="",
     )
@@ -102,30 +190,88 @@ def _band_outcome(band: BandAppraisal, appraisal: Appraisal) -> BandOutcome:
     return outcome.model_copy(update={"reason": reason})
 
 
-def _band_report(band: BandAppraisal, reference_ohm: float, ratio: float) -> BandReport:
-    low, centre, high = _points(band.marks, reference_ohm, ratio)
+def _band_report(band: BandAppraisal, request: DesignRequest, ratio: float) -> BandReport:
+    reference_ohm = request.feed.reference_ohm
+    low, centre, high = _points(band.marks, reference_ohm)
+    at_feed = complex(band.marks.impedance_ohm[1])
+    current_a = math.sqrt(request.power_w / at_feed.real)
     return BandReport(
         name=band.goal.name,
         low=low,
         centre=centre,
         high=high,
-        grid=_points(band.grid, reference_ohm, ratio),
+        grid=_points(band.grid, reference_ohm),
+        stress=FeedStress(
+            power_w=request.power_w,
+            voltage_peak_v=_rounded(math.sqrt(2.0) * abs(at_feed) * current_a, 1),
+            current_rms_a=_rounded(current_a, 3),
+        ),
+        matching=_matching(band, at_feed / ratio, request),
     )
 
 
-def _points(curve: Curve, reference_ohm: float, ratio: float) -> tuple[ReportPoint, ...]:
-    reflection = np.abs(reflection_coefficient(curve.impedance_ohm / ratio, reference_ohm))
+def _matching(band: BandAppraisal, load_ohm: complex, request: DesignRequest) -> Matching | None:
+    """The network of one band with its values and stresses, as chosen by the search."""
+    if band.network is None:
+        return None
+    shunt_at_load, sign = NETWORKS[band.network]
+    series_ohm, _ = network_values(
+        np.array([load_ohm]), request.feed.reference_ohm, shunt_at_load=shunt_at_load, sign=sign
+    )
+    form = Form.SHUNT_AT_LOAD if shunt_at_load else Form.SERIES_AT_LOAD
+    found = [
+        each
+        for each in l_networks(
+            load_ohm,
+            request.feed.reference_ohm,
+            band.goal.centre_hz,
+            request.power_w,
+            inductor_q=_COIL_Q,
+        )
+        if each.form is form
+    ]
+    if not found:
+        return None
+    # A coil's loss moves the values a little, so the nearest of that form is the one meant.
+    chosen = min(found, key=lambda each: abs(each.series.reactance_ohm - float(series_ohm[0])))
+    return Matching(
+        shunt_at="antenna" if shunt_at_load else "line",
+        parts=(*_part(chosen.series, "series"), *_part(chosen.shunt, "shunt")),
+        loss_db=_rounded(chosen.loss_db, 3),
+    )
+
+
+def _part(component: Component, place: Literal["series", "shunt"]) -> tuple[MatchingPart, ...]:
+    if component.kind is Kind.NONE:
+        return ()
+    is_coil = component.kind is Kind.INDUCTOR
+    return (
+        MatchingPart(
+            kind="inductor" if is_coil else "capacitor",
+            place=place,
+            value=_rounded(component.value * (1e6 if is_coil else 1e12), 3),
+            unit="µH" if is_coil else "pF",
+            current_rms_a=_rounded(component.current_rms_a, 3),
+            voltage_peak_v=_rounded(component.voltage_peak_v, 1),
+        ),
+    )
+
+
+def _points(curve: Curve, reference_ohm: float) -> tuple[ReportPoint, ...]:
+    fed = curve.fed
+    reflection = np.abs(reflection_coefficient(fed.behind_ohm, reference_ohm))
+    far, loss_db = fed.transmitter_swr, fed.line_loss_db
     return tuple(
         ReportPoint(
-            frequency_mhz=_rounded(frequency_hz / 1e6, 6),
-            resistance_ohm=_rounded(impedance.real, 3),
-            reactance_ohm=_rounded(impedance.imag, 3),
-            reflection=_rounded(gamma, 5),
-            swr=_rounded(swr, 4),
+            frequency_mhz=_rounded(curve.frequency_hz[index] / 1e6, 6),
+            resistance_ohm=_rounded(curve.impedance_ohm[index].real, 3),
+            reactance_ohm=_rounded(curve.impedance_ohm[index].imag, 3),
+            reflection=_rounded(reflection[index], 5),
+            swr=_rounded(fed.swr[index], 4),
+            transmitter_swr=None if far is None else _rounded(far[index], 4),
+            line_loss_db=None if loss_db is None else _rounded(loss_db[index], 3),
         )
-        for frequency_hz, impedance, gamma, swr in zip(
-            curve.frequency_hz, curve.impedance_ohm, reflection, curve.swr, strict=True
-        )
+        for index in range(len(curve.frequency_hz))
     )
 
 

@@ -11,19 +11,19 @@ from worker.engine import ENGINE_VERSION
 from worker.engine.thin_wire import MODEL
 from worker.search.appraisal import Appraisal
 from worker.search.space import SearchSpace
-from worker.translation.wires import ground_of
+from worker.translation.wires import Way, ground_of
 from worker.translation.wording import NOT_MODELLED
 
 
-def provenance_of(request: DesignRequest, appraisal: Appraisal) -> Provenance:
+def provenance_of(request: DesignRequest, way: Way, appraisal: Appraisal) -> Provenance:
     """The provenance of one candidate's report."""
-    conductor = request.stock.choices()[appraisal.pick.wire]
+    conductor = way.conductor
     insulated = "bare" if conductor.insulation is None else "insulated"
     return Provenance(
         engine_version=ENGINE_VERSION,
         model=MODEL,
         source_gap_mm=0.5 * conductor.bare_diameter_mm,
-        ground=ground_in_words(request),
+        ground=ground_and_height_in_words(request.site.ground, way.height_m),
         conductor_loss=f"{insulated} {material_in_words(conductor.material)} at 20 °C",
         largest_error_ohm=max(band.error_ohm for band in appraisal.bands),
         map_error_percent=100.0 * appraisal.largest_miss,
@@ -32,8 +32,13 @@ def provenance_of(request: DesignRequest, appraisal: Appraisal) -> Provenance:
 
 
 def ground_in_words(request: DesignRequest) -> str:
-    """The ground of a request's site and the height over it, as a report names them."""
-    return ground_and_height_in_words(request.site.ground, request.site.height_m)
+    """The ground of a request's site and the heights searched, as a report names them."""
+    heights = request.site.heights_m()
+    if len(heights) < 2:
+        return ground_and_height_in_words(request.site.ground, heights[0] if heights else None)
+    low, high = metres(min(heights)), metres(max(heights))
+    words = ground_and_height_in_words(request.site.ground, heights[0])
+    return f"{low} to {high} m over{words.partition(' over')[2]}"
 
 
 def ground_and_height_in_words(said: SaidGround, height_m: float | None) -> str:
@@ -59,6 +64,9 @@ def notes_on(request: DesignRequest, space: SearchSpace) -> tuple[str, ...]:
             f"Wires longer than {metres(space.longest_m)} m were not searched: on {top.name} they "
             "are longer than the model covers. Leave that band out to search them."
         )
-    if request.feed.feed_line is not None:
-        notes.append("The loss and the transformation of the feed line are not in these figures.")
+    if request.feed.matching == "per-band":
+        notes.append(
+            "Each band has an L-network of its own at the feed point, matched at the band's "
+            "centre and switched with the band; a coil's loss at a Q of 200 is in its report."
+        )
     return tuple(notes)

@@ -1,8 +1,9 @@
-"""From a request to what is searched: conductors as hung wires, bands as goals."""
+"""From a request to what is searched: ways to hang the wire, and bands as goals."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
+from itertools import product
 
 from service.contracts.request import DesignRequest
 from service.contracts.station_site import Ground as SaidGround
@@ -12,13 +13,15 @@ from service.contracts.sweep import SweepRequest
 from worker.engine.ground import GROUND_CLASSES, Ground
 from worker.engine.hung_wire import GroundTables, HungWire
 from worker.engine.insulation import Sleeve
+from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.material import MATERIALS
-from worker.engine.thin_wire.batch import LENGTH_RANGE_WAVELENGTHS
-from worker.search.space import BandGoal, FloatArray, SearchSpace, Solved
+from worker.engine.thin_wire import LENGTH_RANGE_WAVELENGTHS
+from worker.search.feeding import Feeding
+from worker.search.space import BandGoal, FloatArray, SearchSpace, Solved, WireOffer
 
 #: Tables reach beyond the longest wire, for maps are read at equal electrical length over a
 #: band, and the length a band would want by itself may be a little beyond the site.
-_TABLE_REACH = 1.6
+_TABLE_REACH = 1.2
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,33 +46,79 @@ class StockWire:
         return Solved(found.impedance_ohm, found.estimated_error_ohm)
 
 
-def search_space(request: DesignRequest) -> SearchSpace:
-    """What a request allows to vary, and what it wants served."""
-    site = request.site
-    grounds = _ground_tables(site.ground, site.height_m, site.longest_wire_m)
-    return SearchSpace(
-        bands=tuple(
-            BandGoal(
-                name=band.name,
-                low_hz=band.low_mhz * 1e6,
-                high_hz=band.high_mhz * 1e6,
-                required=band.required,
-                weight=band.weight,
-                swr_limit=band.swr_limit,
+@dataclass(frozen=True, slots=True)
+class Way:
+    """One way to hang the wire: which conductor, how high (None in free space), fed where."""
+
+    conductor: Conductor
+    height_m: float | None
+    feed_fraction: float
+
+
+@dataclass(slots=True)
+class Hanging:
+    """Hangs wires for one request; ground tables are shared by all that need the same."""
+
+    request: DesignRequest
+    ways: tuple[Way, ...] = field(init=False)
+    _tables: dict[tuple[Ground, float], GroundTables] = field(init=False, default_factory=dict)
+
+    def __post_init__(self) -> None:
+        """List the ways the request allows."""
+        heights: tuple[float | None, ...] = self.request.site.heights_m() or (None,)
+        self.ways = tuple(
+            Way(conductor, height_m, fraction)
+            for conductor, height_m, fraction in product(
+                self.request.stock.choices(), heights, self.request.feed.feed_fractions()
             )
-            for band in request.bands
-        ),
-        wires=tuple(StockWire(_hung(each, grounds)) for each in request.stock.choices()),
-        site_longest_m=site.longest_wire_m,
-        ratios=request.feed.transformer_ratios,
-        reference_ohm=request.feed.reference_ohm,
-    )
+        )
+
+    def space(self) -> SearchSpace:
+        """What the request allows to vary, and what it wants served."""
+        feed = self.request.feed
+        line = feed.feed_line
+        return SearchSpace(
+            bands=tuple(
+                BandGoal(
+                    name=band.name,
+                    low_hz=band.low_mhz * 1e6,
+                    high_hz=band.high_mhz * 1e6,
+                    required=band.required,
+                    weight=band.weight,
+                    swr_limit=band.swr_limit,
+                )
+                for band in self.request.bands
+            ),
+            wires=tuple(WireOffer(self.wire(way), way.conductor.price_per_m) for way in self.ways),
+            site_longest_m=self.request.site.longest_wire_m,
+            ratios=feed.transformer_ratios,
+            feeding=Feeding(
+                reference_ohm=feed.reference_ohm,
+                line=None if line is None else FEED_LINES[line.line],
+                line_length_m=0.0 if line is None else line.length_m,
+                at_transmitter=feed.reference_point == "transmitter",
+                matched=feed.matching == "per-band",
+            ),
+        )
+
+    def wire(self, way: Way, ground: Ground | None = None) -> StockWire:
+        """One way as a model, over the site's ground or another."""
+        ground = ground or ground_of(self.request.site.ground)
+        grounds = None
+        if ground is not None and way.height_m is not None:
+            reach_m = _TABLE_REACH * self.request.site.longest_wire_m
+            key = (ground, way.height_m)
+            grounds = self._tables.setdefault(key, GroundTables(ground, way.height_m, reach_m))
+        hung = _hung(way.conductor, grounds)
+        return StockWire(replace(hung, feed_fraction=way.feed_fraction))
 
 
 def swept_wire(request: SweepRequest) -> StockWire:
     """The one wire of a sweep."""
-    longest_m = request.length_m or request.high
-    grounds = _ground_tables(request.ground, request.height_m, longest_m)
+    ground, grounds = ground_of(request.ground), None
+    if ground is not None and request.height_m is not None:
+        reach_m = _TABLE_REACH * (request.length_m or request.high)
+        grounds = GroundTables(ground, request.height_m, reach_m)
     hung = _hung(request.conductor, grounds)
     return StockWire(
         replace(hung, feed_fraction=request.feed_fraction, temperature_c=request.temperature_c)
@@ -83,15 +132,6 @@ def ground_of(said: SaidGround) -> Ground | None:
     if said == "free-space":
         return None
     return GROUND_CLASSES[said]
-
-
-def _ground_tables(
-    said: SaidGround, height_m: float | None, longest_m: float
-) -> GroundTables | None:
-    ground = ground_of(said)
-    if ground is None or height_m is None:
-        return None
-    return GroundTables(ground, height_m, _TABLE_REACH * longest_m)
 
 
 def _hung(conductor: Conductor, grounds: GroundTables | None) -> HungWire:

@@ -8,6 +8,8 @@ from service.contracts.candidate import BandOutcome
 from service.contracts.formats import listed, metres, mhz, ohms, ordinal, ratio, share, swr
 from worker.search.appraisal import NEAR, Appraisal, BandAppraisal, is_near
 from worker.search.resonances import Resonance
+from worker.search.scoring import FULLY_SERVED
+from worker.search.trade_off import Gain
 
 CAUTIONS: Final = (
     (
@@ -35,6 +37,7 @@ NOT_MODELLED: Final = (
     "nearby metal, buildings, trees and other antennas",
     "radiation and loss of the feed line and its outer surface",
     "loss of the transformer",
+    "couplings between the dipoles of a set",
 )
 
 
@@ -51,7 +54,7 @@ def band_reason(
             f"up to {swr(outcome.swr_worst)} in the rest"
         )
     else:
-        best = float(band.grid.swr.min())
+        best = float(band.grid.fed.limited_swr.min())
         lead = f"SWR {swr(best)} at best, above {limit}"
     if band.nearest is None:
         return f"{lead}; this wire has no usable resonance in the range looked at."
@@ -112,7 +115,7 @@ def _used(outcome: BandOutcome) -> str:
 
 
 def compromise(appraisal: Appraisal) -> str:
-    """What the length trades between the bands it is used on, and what a centimetre does."""
+    """What the length trades between the bands it is used on."""
     length_m = appraisal.pick.length_m
     used = [band for band in appraisal.bands if is_used(band)]
     own = [
@@ -132,12 +135,6 @@ def compromise(appraisal: Appraisal) -> str:
         sentences.append(
             f"For resonance at its centre {own[0]}; this wire is {metres(length_m)} m."
         )
-    moves = [
-        f"{band.goal.name} by {band.nearest.frequency_hz / length_m * 1e-5:.1f} kHz"
-        for band in used
-        if band.nearest is not None
-    ]
-    sentences.append(f"Each centimetre off the whole length raises {listed(moves)} or so.")
     return " ".join(filter(None, sentences))
 
 
@@ -162,3 +159,16 @@ def _orders_in_proportion(used: list[BandAppraisal], resonances: tuple[Resonance
         )
     text = listed(clauses)
     return text[:1].upper() + text[1:] + ": the end effect weighs less on the higher orders."
+
+
+def improvement(gain: Gain, length_m: float) -> str:
+    """What another length would bring, and what it would take."""
+    step = f"{metres(abs(gain.by_m))} m {'longer' if gain.by_m > 0.0 else 'shorter'}"
+    brought = (
+        f"would serve {gain.serves.name} whole"
+        if gain.fraction >= FULLY_SERVED
+        else f"would serve {share(gain.fraction)} of {gain.serves.name}"
+    )
+    lost = [each.name for each in gain.loses]
+    but = f", but no longer all of {listed(lost)}" if lost else ""
+    return f"{step} ({metres(length_m + gain.by_m)} m) {brought}{but}."

@@ -1,0 +1,142 @@
+"""Sets of dipoles that serve the bands together, chosen exactly.
+
+Choosing wires so that every required band is served by one of them is set cover; it is solved
+as a mixed-integer linear programme, to proven optimality.
+
+References
+----------
+R. M. Karp, "Reducibility among combinatorial problems" (1972), problem 14 (set covering).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.optimize import Bounds, LinearConstraint, milp
+from scipy.sparse import coo_array
+
+from worker.engine.errors import NotConverged
+from worker.search.scoring import FULLY_SERVED
+from worker.search.space import FloatArray
+
+#: One required band more outweighs all width, and all width outweighs the burden.
+_REQUIRED_WEIGHT: Final = 100.0
+_BURDEN_WEIGHT: Final = 1e-3
+
+
+@dataclass(frozen=True, slots=True)
+class ChosenSet:
+    """Wires that serve together.
+
+    Attributes
+    ----------
+    members : tuple of int
+        Indices of the wires, rising.
+    server : tuple of (int or None), length b
+        For each band the wire that serves the most of it; None where none serves any.
+    required_served : int
+    weighted_served : float
+        Served width by weight, from 0 to 1.
+    """
+
+    members: tuple[int, ...]
+    server: tuple[int | None, ...]
+    required_served: int
+    weighted_served: float
+
+
+def best_sets(
+    served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, largest: int
+) -> tuple[ChosenSet, ...]:
+    """The best set of each size that gains on the smaller ones, up to the largest.
+
+    The first that serves all required bands is the smallest that can.
+
+    Parameters
+    ----------
+    served : ndarray, shape (m, b)
+        Part of each of b bands that each of m wires serves; wires in order of preference.
+    required : ndarray, shape (b,)
+    weight : ndarray, shape (b,)
+    largest : int
+
+    Returns
+    -------
+    tuple of ChosenSet
+
+    Raises
+    ------
+    NotConverged
+        If the programme could not be solved.
+    """
+    chosen: list[ChosenSet] = []
+    for size in range(1, min(largest, len(served)) + 1):
+        found = _best_of_size(served, required, weight, size)
+        before = (chosen[-1].required_served, chosen[-1].weighted_served) if chosen else (-1, -1.0)
+        if (found.required_served, found.weighted_served) > (before[0], before[1] + 1e-9):
+            chosen.append(found)
+    return tuple(chosen)
+
+
+def _best_of_size(
+    served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, size: int
+) -> ChosenSet:
+    """At most ``size`` wires: x says which are taken, y which serves which band."""
+    wires, bands = served.shape
+    whole = served >= FULLY_SERVED
+    gain = served * (weight / weight.sum()) + _REQUIRED_WEIGHT * (whole & required)
+    # Earlier wires are preferred; the burden of all together stays below any gain.
+    burden = _BURDEN_WEIGHT * (1.0 + np.arange(wires) / wires) / wires
+    cost = np.concatenate([burden, -gain.ravel()])
+    x = np.arange(wires)
+    y = wires + np.arange(wires * bands)
+    owner, band = np.divmod(np.arange(wires * bands), bands)
+    ones = np.ones(wires * bands)
+    width = wires + wires * bands
+    few = coo_array((np.ones(wires), (np.zeros(wires, dtype=int), x)), shape=(1, width))
+    one_server = coo_array((ones, (band, y)), shape=(bands, width))
+    only_taken = coo_array(
+        (
+            np.concatenate([ones, -ones]),
+            (np.tile(np.arange(wires * bands), 2), np.concatenate([y, owner])),
+        ),
+        shape=(wires * bands, width),
+    )
+    solved = milp(
+        cost,
+        integrality=np.concatenate([np.ones(wires), np.zeros(wires * bands)]),
+        bounds=Bounds(0.0, 1.0),
+        constraints=[
+            LinearConstraint(few.tocsr(), ub=float(size)),
+            LinearConstraint(one_server.tocsr(), ub=1.0),
+            LinearConstraint(only_taken.tocsr(), ub=0.0),
+        ],
+        options={"mip_rel_gap": 0.0},
+    )
+    if solved.x is None:
+        raise NotConverged("set cover", float("inf"), 0.0)
+    members = np.flatnonzero(np.round(solved.x[:wires]) > 0.5)
+    return _as_set(served, required, weight, members)
+
+
+def _as_set(
+    served: FloatArray,
+    required: NDArray[np.bool_],
+    weight: FloatArray,
+    members: NDArray[np.intp],
+) -> ChosenSet:
+    of_members = served[members]
+    best = np.argmax(of_members, axis=0)
+    most = np.max(of_members, axis=0)
+    return ChosenSet(
+        members=tuple(members.tolist()),
+        server=tuple(
+            int(members[index]) if part > 0.0 else None
+            for index, part in zip(best, most, strict=True)
+        ),
+        required_served=int(np.sum((most >= FULLY_SERVED) & required)),
+        weighted_served=float(most @ weight / weight.sum()),
+    )
