@@ -212,7 +212,7 @@ def test_estimated_error_bounds_the_change_to_a_much_finer_solution(
 ) -> None:
     rng = np.random.default_rng(20)
     radius = WAVELENGTH_M * 10.0 ** rng.uniform(-7.0, np.log10(5e-3), 60)
-    length = WAVELENGTH_M * 10.0 ** rng.uniform(np.log10(0.06), np.log10(5.9), 60)
+    length = WAVELENGTH_M * 10.0 ** rng.uniform(np.log10(0.06), np.log10(9.9), 60)
     result = feed_impedance(length, radius, FREQUENCY_HZ)
     fine = (Level(8, 12, Grading(0.12, 5.0, 0.9, 1.2, 0.7)),)
     monkeypatch.setattr(wire_module, "LEVELS", fine)
