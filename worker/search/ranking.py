@@ -22,6 +22,8 @@ from worker.search.space import BandGoal, FloatArray
 WIDTH_STEP: Final = 1e-3
 SWR_STEP: Final = 1e-2
 LOSS_STEP_DB: Final = 0.1
+#: Lengths are compared to half a per cent, or the price would never be asked.
+LENGTH_STEP: Final = 5e-3
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,14 +67,17 @@ class Contender:
 
 
 def rank_keys(merit: Merit, length_m: FloatArray, cost: FloatArray) -> FloatArray:
-    """Columns to sort by, best first when ascending; shape (n, 6)."""
+    """Columns to sort by, best first when ascending; shape (n, 6).
+
+    Of rows alike the first is meant, so lengths are given rising.
+    """
     return np.column_stack(
         [
             -merit.required_served.astype(np.float64),
             -np.round(merit.weighted_served / WIDTH_STEP),
             np.round(merit.swr_worst / SWR_STEP),
             np.round(merit.loss_db / LOSS_STEP_DB),
-            length_m,
+            np.round(np.log(length_m) / LENGTH_STEP),
             cost,
         ]
     )

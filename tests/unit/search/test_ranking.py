@@ -13,10 +13,23 @@ from worker.search.ranking import (
 from worker.search.scoring import Merit
 
 
-def keys_of(required: list[int], width: list[float], worst: list[float]) -> list[int]:
-    merit = Merit(np.array(required), np.array(width), np.array(worst))
-    lengths_m = np.linspace(20.0, 21.0, len(required))
-    return [int(index) for index in best_first(rank_keys(merit, lengths_m))]
+def keys_of(
+    required: list[int],
+    width: list[float],
+    worst: list[float],
+    *,
+    loss_db: list[float] | None = None,
+    lengths_m: list[float] | None = None,
+    cost: list[float] | None = None,
+) -> list[int]:
+    """The order of wires, each longer than the one before unless lengths are given."""
+    count = len(required)
+    merit = Merit(
+        np.array(required), np.array(width), np.array(worst), np.array(loss_db or [0.0] * count)
+    )
+    longer_m = np.array(lengths_m or np.linspace(20.0, 21.0, count))
+    keys = rank_keys(merit, longer_m, np.array(cost or [0.0] * count))
+    return [int(index) for index in best_first(keys)]
 
 
 def test_required_bands_outrank_everything_else() -> None:
@@ -31,8 +44,32 @@ def test_then_the_lower_worst_swr_ranks_first() -> None:
     assert keys_of([1, 1], [0.9, 0.9], [1.9, 1.1]) == [1, 0]
 
 
+def test_then_the_lower_loss_of_the_line_ranks_first() -> None:
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], loss_db=[1.9, 1.1]) == [1, 0]
+
+
 def test_then_the_shorter_wire_ranks_first() -> None:
     assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5]) == [0, 1]
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], lengths_m=[21.0, 20.0]) == [1, 0]
+
+
+def test_then_the_cheaper_wire_ranks_first() -> None:
+    same: dict[str, list[float]] = {"lengths_m": [20.0, 20.0], "cost": [9.0, 8.0]}
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], **same) == [1, 0]
+
+
+def test_a_few_centimetres_of_length_do_not_hide_the_price() -> None:
+    near: dict[str, list[float]] = {"lengths_m": [20.0, 20.02], "cost": [9.0, 8.0]}
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], **near) == [1, 0]
+
+
+def test_of_wires_alike_the_first_and_shorter_stays_first() -> None:
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], lengths_m=[20.0, 20.001]) == [0, 1]
+
+
+def test_a_difference_in_width_or_loss_too_small_to_matter_does_not_decide() -> None:
+    assert keys_of([1, 1], [0.9001, 0.9003], [1.5, 1.5]) == [0, 1]
+    assert keys_of([1, 1], [0.9, 0.9], [1.5, 1.5], loss_db=[1.02, 0.98]) == [0, 1]
 
 
 def test_a_difference_in_swr_too_small_to_build_does_not_decide() -> None:
@@ -50,13 +87,13 @@ def contender(place: float, kind: tuple[tuple[int, int], ...]) -> Contender:
 
 
 def test_neighbours_of_one_optimum_are_shown_once() -> None:
-    picks = distinct_leaders([contender(2.0, ((1, 2),)), contender(1.0, ((1, 2),))], 5)
-    assert [pick.length_m for pick in picks] == [1.0]
+    shown = distinct_leaders([contender(2.0, ((1, 2),)), contender(1.0, ((1, 2),))], 5)
+    assert [each.pick.length_m for each in shown] == [1.0]
 
 
 def test_a_wire_that_serves_a_band_on_another_order_is_shown_too() -> None:
-    picks = distinct_leaders([contender(1.0, ((1, 2),)), contender(2.0, ((3, 2),))], 5)
-    assert [pick.length_m for pick in picks] == [1.0, 2.0]
+    shown = distinct_leaders([contender(1.0, ((1, 2),)), contender(2.0, ((3, 2),))], 5)
+    assert [each.pick.length_m for each in shown] == [1.0, 2.0]
 
 
 def test_a_wire_that_serves_less_on_the_same_orders_adds_nothing() -> None:
