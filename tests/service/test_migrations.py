@@ -7,6 +7,7 @@ import subprocess
 import sys
 import zipfile
 from collections.abc import Iterator
+from concurrent.futures import ThreadPoolExecutor
 from contextlib import ExitStack
 from pathlib import Path
 
@@ -120,6 +121,20 @@ def test_processes_that_start_at_once_migrate_once(engine: Engine, empty_databas
             assert starter.stdin is not None
             starter.stdin.close()
     assert [starter.returncode for starter in starters] == [0] * STARTERS
+    assert differences(engine) == []
+
+
+def test_a_start_waits_while_another_process_migrates(
+    engine: Engine, empty_database_url: str
+) -> None:
+    settings = Settings(database_url=empty_database_url)
+    with ThreadPoolExecutor(1) as pool:
+        with engine.begin() as other:
+            schema._alone(other)
+            start = pool.submit(open_store, settings)
+            with pytest.raises(TimeoutError):
+                start.result(0.5)
+        start.result(10.0).close()
     assert differences(engine) == []
 
 
