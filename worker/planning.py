@@ -196,7 +196,7 @@ class _Job:
     def _look_at(self, pick: Pick, part: float, step: str) -> Look:
         self._progress(part, step)
         way = self._hanging.ways[pick.wire]
-        appraisal = appraise(self.found.space, pick)
+        appraisal = appraise(self.found.space, pick, self.found.maps[pick.wire].maps)
         self.solves += appraisal.solves
         departures = departures_of(self._hanging, way)
         held = None

@@ -6,6 +6,7 @@ this module finds them from what a buyer and a surveyor would say.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import TypeVar
 
@@ -19,6 +20,7 @@ from worker.engine.material import REFERENCE_TEMPERATURE_C, Material
 from worker.engine.thin_wire import FeedImpedance, feed_impedance
 
 FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
 _Scalar = TypeVar("_Scalar", bound=np.generic)
 
 
@@ -128,19 +130,35 @@ class HungWire:
             model=parts[0].model,
         )
 
+    def electrical(self, frequency_hz: ArrayLike) -> tuple[FloatArray, ComplexArray]:
+        """Radius in m and series impedance in Ω/m that stand for metal and insulation.
+
+        Parameters
+        ----------
+        frequency_hz : array_like
+
+        Returns
+        -------
+        radius_m, series_ohm_per_m : ndarray
+            Of the frequency's shape.
+        """
+        frequency = np.asarray(frequency_hz, dtype=np.float64)
+        radius_m = np.full(frequency.shape, self.radius_m)
+        series_ohm_per_m = np.zeros(frequency.shape, dtype=np.complex128)
+        if self.material is not None:
+            series_ohm_per_m += internal_impedance_ohm_per_m(
+                self.radius_m, frequency, self.material, self.temperature_c
+            )
+        if self.sleeve is not None:
+            coated = coated_wire(self.radius_m, self.sleeve, frequency)
+            radius_m = np.broadcast_to(coated.equivalent_radius_m, frequency.shape)
+            series_ohm_per_m += coated.series_impedance_ohm_per_m
+        return radius_m, series_ohm_per_m
+
     def _solve(
         self, length_m: FloatArray, frequency_hz: FloatArray, table: GroundTable | None
     ) -> FeedImpedance:
-        radius_m: float | FloatArray = self.radius_m
-        series_ohm_per_m = np.zeros(frequency_hz.shape, dtype=np.complex128)
-        if self.material is not None:
-            series_ohm_per_m += internal_impedance_ohm_per_m(
-                self.radius_m, frequency_hz, self.material, self.temperature_c
-            )
-        if self.sleeve is not None:
-            coated = coated_wire(self.radius_m, self.sleeve, frequency_hz)
-            radius_m = coated.equivalent_radius_m
-            series_ohm_per_m += coated.series_impedance_ohm_per_m
+        radius_m, series_ohm_per_m = self.electrical(frequency_hz)
         return feed_impedance(
             length_m,
             radius_m,
@@ -150,3 +168,48 @@ class HungWire:
             wire_impedance_ohm_per_m=series_ohm_per_m,
             reflected=table,
         )
+
+
+def survey_impedances(
+    wires: Sequence[HungWire], length_m: ArrayLike, frequency_hz: float
+) -> ComplexArray:
+    """Impedances of several wires at one frequency, solved together and no closer than a survey.
+
+    Parameters
+    ----------
+    wires : sequence of HungWire
+        k wires; those that share their ground tables and the place of the feed are one batch.
+    length_m : array_like, shape (n,)
+        Lengths in m, the same for all.
+    frequency_hz : float
+
+    Returns
+    -------
+    ndarray, shape (k, n)
+        In Ω, with the error of `thin_wire.feed_impedance` at ``survey``.
+
+    Raises
+    ------
+    OutOfRange
+        As for `HungWire.feed_impedance`.
+    """
+    length = np.asarray(length_m, dtype=np.float64)
+    impedance = np.empty((len(wires), length.size), dtype=np.complex128)
+    batches: dict[tuple[int, float], list[int]] = {}
+    for index, wire in enumerate(wires):
+        batches.setdefault((id(wire.grounds), wire.feed_fraction), []).append(index)
+    for members in batches.values():
+        first = wires[members[0]]
+        radii, series = zip(*(wires[i].electrical(frequency_hz) for i in members), strict=True)
+        solved = feed_impedance(
+            length[None, :],
+            np.array(radii)[:, None],
+            frequency_hz,
+            feed_fraction=first.feed_fraction,
+            gap_m=np.array([wires[i].radius_m for i in members])[:, None],
+            wire_impedance_ohm_per_m=np.array(series)[:, None],
+            reflected=None if first.grounds is None else first.grounds.at(frequency_hz),
+            survey=True,
+        )
+        impedance[members] = solved.impedance_ohm
+    return impedance

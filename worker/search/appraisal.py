@@ -9,11 +9,11 @@ import numpy as np
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.search.feeding import Fed, Feeding
-from worker.search.impedance_map import ImpedanceMap, map_over_frequency
+from worker.search.impedance_map import BandMap, ImpedanceMap, map_over_frequency
 from worker.search.ranking import Pick
 from worker.search.resonances import (
     Resonance,
-    length_in_resonance_m,
+    lengths_in_resonance,
     nearest_series,
     resonances_of,
 )
@@ -26,8 +26,6 @@ GRID_POINTS: Final = 41
 NEAR: Final = 0.10
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
-#: Length and frequency are moved by this part to see how a resonance follows.
-_NUDGE: Final = 1e-3
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,7 +90,7 @@ def is_near(resonance: Resonance, goal: BandGoal) -> bool:
     return abs(resonance.frequency_hz / goal.centre_hz - 1.0) < NEAR
 
 
-def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
+def appraise(space: SearchSpace, pick: Pick, maps: tuple[BandMap, ...]) -> Appraisal:
     """Look closely at one wire of the space.
 
     Parameters
@@ -100,13 +98,16 @@ def appraise(space: SearchSpace, pick: Pick) -> Appraisal:
     space : SearchSpace
     pick : Pick
         The wire: conductor, height and feed, ratio and length.
+    maps : tuple of BandMap
+        Of the same wire over length, one for each band.
     """
     wire = space.wires[pick.wire].model
     over_frequency = _map_whole_range(space, wire, pick.length_m)
     resonances = resonances_of(over_frequency, pick.length_m)
     sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
     bands = tuple(
-        _appraise_band(space, pick, goal, over_frequency, resonances) for goal in space.bands
+        _appraise_band(space, pick, goal, band_map, over_frequency, resonances)
+        for goal, band_map in zip(space.bands, maps, strict=True)
     )
     # A network is made for one band and says nothing of the frequencies between.
     unmatched = replace(space.feeding, matched=False)
@@ -135,6 +136,7 @@ def _appraise_band(
     space: SearchSpace,
     pick: Pick,
     goal: BandGoal,
+    band_map: BandMap,
     over_frequency: ImpedanceMap,
     resonances: tuple[Resonance, ...],
 ) -> BandAppraisal:
@@ -152,8 +154,9 @@ def _appraise_band(
     own_length_m = hz_per_m = None
     if nearest is not None and is_near(nearest, goal):
         guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
-        own_length_m = length_in_resonance_m(wire, guess_m, goal.centre_hz)
-        hz_per_m = _resonance_per_length(wire, pick.length_m, nearest.frequency_hz)
+        own_length_m, slope = lengths_in_resonance(band_map, guess_m, goal)
+        # Of one order, resonance goes as a power of length; its exponent is that within the band.
+        hz_per_m = None if slope is None else slope * nearest.frequency_hz / pick.length_m
     return BandAppraisal(
         goal=goal,
         marks=_curve(feeding, pick, marks_hz, solved.impedance_ohm, network),
@@ -165,16 +168,6 @@ def _appraise_band(
         own_length_m=own_length_m,
         hz_per_m=hz_per_m,
     )
-
-
-def _resonance_per_length(wire: WireModel, length_m: float, frequency_hz: float) -> float:
-    """How far a resonance moves with length: along X = 0, df/dL = -(dX/dL)/(dX/df)."""
-    lengths_m = length_m * np.array([1.0 + _NUDGE, 1.0 - _NUDGE, 1.0, 1.0])
-    frequencies_hz = frequency_hz * np.array([1.0, 1.0, 1.0 + _NUDGE, 1.0 - _NUDGE])
-    reactance = wire.solve(lengths_m, frequencies_hz).impedance_ohm.imag
-    per_length = (reactance[0] - reactance[1]) / length_m
-    per_frequency = (reactance[2] - reactance[3]) / frequency_hz
-    return float(-per_length / per_frequency)
 
 
 def _curve(

@@ -103,6 +103,39 @@ class Feeding:
         limited = far if self.at_transmitter else swr
         return Fed(behind, swr, limited, far, np.asarray(state.total_loss_db))
 
+    def reflected_power(
+        self, impedance_ohm: ComplexArray, frequency_hz: FloatArray, ratio: float
+    ) -> tuple[FloatArray, FloatArray | None]:
+        """What the scan needs, and no more: |Γ|² where the limits apply, and the line's loss.
+
+        Parameters
+        ----------
+        impedance_ohm : ndarray, shape (b, p, n)
+            At the feed points of n wires, at p frequencies of b bands.
+        frequency_hz : ndarray, shape (b, p)
+        ratio : float
+
+        Returns
+        -------
+        reflected : ndarray, shape (b, p, n)
+        loss_db : ndarray, shape (b, n), or None
+            At the middle frequency of each band; None without a line.
+        """
+        if self.line is None and not self.matched:
+            match_ohm = ratio * self.reference_ohm
+            squared = impedance_ohm.imag**2
+            against = (impedance_ohm.real - match_ohm) ** 2 + squared
+            along = (impedance_ohm.real + match_ohm) ** 2 + squared
+            return np.divide(against, along, out=against), None
+        reflected = np.empty(impedance_ohm.shape)
+        loss_db = None if self.line is None else np.empty(impedance_ohm[:, 0].shape)
+        for index in range(len(impedance_ohm)):
+            fed = self.feed(impedance_ohm[index], frequency_hz[index], ratio)
+            reflected[index] = reflected_of(fed.limited_swr)
+            if loss_db is not None and fed.line_loss_db is not None:
+                loss_db[index] = fed.line_loss_db[len(frequency_hz[index]) // 2]
+        return reflected, loss_db
+
     def best_network(
         self, load_ohm: ComplexArray, frequency_hz: FloatArray
     ) -> tuple[NDArray[np.intp], ComplexArray]:
@@ -154,6 +187,11 @@ class Feeding:
             else:
                 through = 1.0 / (1j * shunt + 1.0 / (load_ohm + 1j * series))
         return np.where(np.isfinite(through), through, _NO_MATCH_OHM)
+
+
+def reflected_of(swr: FloatArray) -> FloatArray:
+    """The part of the power that is reflected at a standing wave ratio, |Γ|²."""
+    return np.asarray(((swr - 1.0) / (swr + 1.0)) ** 2)
 
 
 def network_values(

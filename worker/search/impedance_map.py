@@ -16,6 +16,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from itertools import pairwise
 from typing import Final
 
@@ -28,14 +29,16 @@ from worker.search.space import ComplexArray, FloatArray, WireModel
 
 #: Impedance in Ω at every length (m) or frequency (Hz).
 Curve = Callable[[FloatArray], ComplexArray]
+#: Impedances in Ω of k wires, shape (k, n), for n lengths (m) at one frequency (Hz).
+Survey = Callable[[FloatArray, float], ComplexArray]
 
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
 STRETCH_WAVELENGTHS: Final = 6.0
 #: Direct solves an interpolant is first built on: so many, and so many more a wavelength.
-#: Measured: 4 a wavelength and 5 leave a tenth of the tolerance or less, in free space and
+#: Measured: 3.5 a wavelength and 6 leave a fifth of the tolerance or less, in free space and
 #: over ground, from 2 to 6 wavelengths.
 FIRST_NODES: Final = 6
-NODES_PER_WAVELENGTH: Final = 4.0
+NODES_PER_WAVELENGTH: Final = 3.5
 #: A stretch that this many do not hold is given up. Once doubled they are at most 197, which
 #: a fit of less than a hundred terms goes through, so that it never stops short with a warning.
 MOST_NODES: Final = 100
@@ -167,15 +170,44 @@ class BandMap:
 def map_band(
     wire: WireModel, low_hz: float, high_hz: float, low_m: float, high_m: float
 ) -> BandMap:
-    """Map the feed impedance of one conductor over a band and a range of lengths.
+    """Map the feed impedance of one wire over a band and a range of lengths.
+
+    As `map_band_together`, for one wire.
+    """
+
+    def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
+        return wire.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm[None]
+
+    limits_m = (low_m, high_m)
+    return map_band_together(survey, wire.shortest_wavelengths, low_hz, high_hz, limits_m)[0]
+
+
+def map_band_together(
+    survey: Survey,
+    shortest_wavelengths: float,
+    low_hz: float,
+    high_hz: float,
+    limits_m: tuple[float, float],
+) -> tuple[BandMap, ...]:
+    """Map the feed impedances of several wires over a band and a range of lengths.
+
+    Solved together, wires cost less than one by one.
 
     Parameters
     ----------
-    wire : WireModel
+    survey : callable
+        Impedances in Ω of k wires, shape (k, n), for n lengths in m at one frequency in Hz.
+    shortest_wavelengths : float
+        Length in wavelengths from which the models hold.
     low_hz, high_hz : float
         Edges of the band in Hz.
-    low_m, high_m : float
+    limits_m : (float, float)
         Limits of length in m.
+
+    Returns
+    -------
+    tuple of BandMap
+        One for each wire.
 
     Raises
     ------
@@ -184,14 +216,26 @@ def map_band(
     """
     count = 2 if high_hz < (1.0 + _NARROW_BAND) * low_hz else 3
     frequencies_hz = np.linspace(low_hz, high_hz, count)
-    shortest_m_hz = SPEED_OF_LIGHT_M_PER_S * wire.shortest_wavelengths
+    shortest_m_hz = SPEED_OF_LIGHT_M_PER_S * shortest_wavelengths
     # Read at equal electrical length: the low edge is asked for longer wire, the high for shorter.
-    least = max(low_m * low_hz, shortest_m_hz)
-    most = max(high_m * high_hz, 1.5 * shortest_m_hz)
-    maps = tuple(
-        map_over_length(wire, float(f), least / float(f), most / float(f)) for f in frequencies_hz
+    least = max(limits_m[0] * low_hz, shortest_m_hz)
+    most = max(limits_m[1] * high_hz, 1.5 * shortest_m_hz)
+    by_frequency = [
+        _map(
+            partial(_at_frequency, survey, float(f)),
+            least / float(f),
+            most / float(f),
+            SPEED_OF_LIGHT_M_PER_S / float(f),
+        )
+        for f in frequencies_hz
+    ]
+    return tuple(
+        BandMap(frequencies_hz, maps, shortest_m_hz) for maps in zip(*by_frequency, strict=True)
     )
-    return BandMap(frequencies_hz, maps, shortest_m_hz)
+
+
+def _at_frequency(survey: Survey, frequency_hz: float, length_m: FloatArray) -> ComplexArray:
+    return survey(length_m, frequency_hz)
 
 
 def map_over_length(
@@ -214,9 +258,9 @@ def map_over_length(
     wavelength_m = SPEED_OF_LIGHT_M_PER_S / frequency_hz
 
     def solve(length_m: FloatArray) -> ComplexArray:
-        return wire.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm
+        return wire.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm[None]
 
-    return _map(solve, low_m, high_m, wavelength_m)
+    return _map(solve, low_m, high_m, wavelength_m)[0]
 
 
 def map_over_frequency(
@@ -239,48 +283,58 @@ def map_over_frequency(
     one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
 
     def solve(frequency_hz: FloatArray) -> ComplexArray:
-        return wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz).impedance_ohm
+        solved = wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz)
+        return solved.impedance_ohm[None]
 
-    return _map(solve, low_hz, high_hz, one_wave_hz)
+    return _map(solve, low_hz, high_hz, one_wave_hz)[0]
 
 
-def _map(solve: Curve, low: float, high: float, wavelength: float) -> ImpedanceMap:
-    """One interpolant a stretch; ``wavelength`` in the unit of what is mapped."""
+def _map(solve: Curve, low: float, high: float, wavelength: float) -> tuple[ImpedanceMap, ...]:
+    """One map for each row that ``solve`` gives; ``wavelength`` in the unit of what is mapped."""
     waves = (high - low) / wavelength
     count = max(1, int(np.ceil(waves / STRETCH_WAVELENGTHS)))
     nodes = FIRST_NODES + int(np.ceil(NODES_PER_WAVELENGTH * waves / count))
     edges = np.linspace(low, high, count + 1)
-    stretches = tuple(_interpolate(solve, float(a), float(b), nodes) for a, b in pairwise(edges))
-    return ImpedanceMap(
-        low,
-        high,
-        sum(each.solves for each in stretches),
-        max(each.miss for each in stretches),
-        stretches,
+    by_stretch = [_interpolate(solve, float(a), float(b), nodes) for a, b in pairwise(edges)]
+    return tuple(
+        ImpedanceMap(
+            low,
+            high,
+            sum(each.solves for each in stretches),
+            max(each.miss for each in stretches),
+            stretches,
+        )
+        for stretches in zip(*by_stretch, strict=True)
     )
 
 
-def _interpolate(solve: Curve, low: float, high: float, first_nodes: int) -> _Stretch:
+def _interpolate(solve: Curve, low: float, high: float, first_nodes: int) -> tuple[_Stretch, ...]:
+    """One stretch for each row; all take the nodes that the hardest of them needs."""
     nodes = _chebyshev_points(low, high, first_nodes)
     values = solve(nodes)
     while True:
-        curve = _rational_through(nodes, values)
+        curves = [_rational_through(nodes, row) for row in values]
         gaps = 0.5 * (nodes[:-1] + nodes[1:])
         few = len(nodes) == first_nodes
         fresh = gaps[1::_CHECK_EVERY] if few else gaps
         solved = solve(fresh)
-        miss, size = np.abs(curve(fresh) - solved), np.abs(solved)
-        relative = float(np.max(miss / size))
+        read = np.array([curve(fresh) for curve in curves])
+        miss, size = np.abs(read - solved), np.abs(solved)
+        relative = np.max(miss / size, axis=1)
         allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * size)
         if np.all(miss <= (_FEW_CHECKS_MARGIN if few else 1.0) * allowed):
-            return _Stretch(high, curve, len(nodes) + len(fresh), relative)
+            spent = len(nodes) + len(fresh)
+            return tuple(
+                _Stretch(high, curve, spent, float(off))
+                for curve, off in zip(curves, relative, strict=True)
+            )
         if len(nodes) >= MOST_NODES:
             where = f"impedance map from {low:.6g} to {high:.6g}"
-            raise NotConverged(where, relative, TOLERANCE_RELATIVE)
+            raise NotConverged(where, float(relative.max()), TOLERANCE_RELATIVE)
         # The fresh solves become nodes: nothing spent is thrown away.
         order = np.argsort(np.concatenate([nodes, fresh]))
         nodes = np.concatenate([nodes, fresh])[order]
-        values = np.concatenate([values, solved])[order]
+        values = np.concatenate([values, solved], axis=1)[:, order]
 
 
 def _lagrange_weight(nodes: FloatArray, index: int, at: FloatArray) -> FloatArray:

@@ -10,11 +10,15 @@ from scipy.optimize import brentq
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.resonance import reactance_zeros
-from worker.search.impedance_map import ImpedanceMap
-from worker.search.space import FloatArray, WireModel
+from worker.search.impedance_map import BandMap, ImpedanceMap
+from worker.search.space import BandGoal, FloatArray
 
 #: The map is first looked at this many times per half wave of wire.
 _SAMPLES_PER_HALF_WAVE: Final = 60
+
+#: A length in resonance is looked for within this part of the given one.
+_REACH: Final = 0.08
+_LOOKS: Final = 65
 
 #: A wire is moved onto a frequency to this part of its length: 1 mm in 100 m.
 _LENGTH_RELATIVE: Final = 1e-5
@@ -72,32 +76,55 @@ def nearest_series(resonances: tuple[Resonance, ...], frequency_hz: float) -> Re
     return min(series, key=lambda each: abs(each.frequency_hz - frequency_hz), default=None)
 
 
-def length_in_resonance_m(wire: WireModel, near_m: float, frequency_hz: float) -> float | None:
-    """The length at which a wire's series resonance falls on a frequency.
+def lengths_in_resonance(
+    band_map: BandMap, near_m: float, goal: BandGoal
+) -> tuple[float | None, float | None]:
+    """The length in series resonance at a band's centre, and how frequency goes with length.
 
     Parameters
     ----------
-    wire : WireModel
+    band_map : BandMap
+        Of the wire over length.
     near_m : float
         A length within a few per cent of the answer, in m.
-    frequency_hz : float
+    goal : BandGoal
 
     Returns
     -------
-    float or None
-        Length in m; None if the reactance has no rising zero near the given length.
+    length_m : float or None
+        None if the reactance has no rising zero near the given length.
+    exponent : float or None
+        Of the power by which the resonance goes with length, near minus one.
     """
+    edges_hz = np.array([goal.low_hz, goal.centre_hz, goal.high_hz])
+    found = [_rising_zero(band_map, near_m * goal.centre_hz / at_hz, at_hz) for at_hz in edges_hz]
+    low_m, centre_m, high_m = found
+    if low_m is None or high_m is None:
+        return centre_m, None
+    return centre_m, float(np.log(goal.high_hz / goal.low_hz) / np.log(high_m / low_m))
 
-    def reactance(length_m: float) -> float:
-        at: FloatArray = np.array([length_m])
-        return float(wire.solve(at, np.array([frequency_hz])).impedance_ohm[0].imag)
 
-    for margin in (0.01, 0.03, 0.08):
-        low_m, high_m = near_m * (1.0 - margin), near_m * (1.0 + margin)
-        if reactance(low_m) < 0.0 < reactance(high_m):
-            found = brentq(reactance, low_m, high_m, xtol=_LENGTH_RELATIVE * near_m)
-            return float(found)
-    return None
+def _rising_zero(band_map: BandMap, near_m: float, frequency_hz: float) -> float | None:
+    """The length nearest to a given one at which the reactance rises through zero."""
+    low_m, high_m = near_m * (1.0 - _REACH), near_m * (1.0 + _REACH)
+
+    def reactance(length_m: FloatArray) -> FloatArray:
+        return np.asarray(band_map.impedance_ohm(length_m, np.array([frequency_hz]))[0].imag)
+
+    lengths_m = np.linspace(low_m, high_m, _LOOKS)
+    looked = reactance(lengths_m)
+    rising = np.flatnonzero((looked[:-1] < 0.0) & (looked[1:] >= 0.0))
+    if not rising.size:
+        return None
+    left = rising[np.argmin(np.abs(lengths_m[rising] - near_m))]
+    return float(
+        brentq(
+            lambda length_m: float(reactance(np.array([length_m]))[0]),
+            lengths_m[left],
+            lengths_m[left + 1],
+            xtol=_LENGTH_RELATIVE * near_m,
+        )
+    )
 
 
 def half_waves_in(length_m: float, frequency_hz: float) -> float:

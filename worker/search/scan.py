@@ -6,16 +6,16 @@ ties are broken by length, then by the order of wires and ratios.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
 
-from worker.search.impedance_map import BandMap, map_band
+from worker.search.impedance_map import BandMap, map_band_together
 from worker.search.ranking import Contender, Pick, best_first, contenders_of, rank_keys
 from worker.search.scoring import Score, merit, score
-from worker.search.space import ComplexArray, FloatArray, SearchSpace, WireOffer
+from worker.search.space import ComplexArray, FloatArray, SearchSpace
 
 #: Called with the part done (0 to 1) and what is being done, in words.
 ProgressCallback = Callable[[float, str], None]
@@ -23,8 +23,11 @@ ProgressCallback = Callable[[float, str], None]
 #: Around a pick the map is read once more at this many finer lengths.
 FINE_POINTS: Final = 81
 
-#: Lengths read at a time, so that memory does not grow with the fineness of the scan.
-_CHUNK_LENGTHS: Final = 8192
+#: Mapping takes about this part of the time, comparing the rest.
+_MAP_PART: Final = 0.75
+
+#: Lengths scored at a time: what they need then stays in the processor's cache.
+_CHUNK_LENGTHS: Final = 2048
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,14 +118,11 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
     lengths_m = space.lengths_m()
     contenders: list[Contender] = []
     closest = _ClosestSoFar(len(space.bands))
-    maps: list[WireMaps] = []
+    maps = _map_wires(space, progress)
     for index, wire in enumerate(space.wires):
-
-        def wire_progress(part: float, step: str, done: int = index) -> None:
-            progress((done + part) / len(space.wires), step)
-
-        maps.append(_map_bands(space, wire, f"wire {index + 1}", wire_progress))
-        for ratio, scored in _scores(space, maps[-1], lengths_m, wire_progress):
+        part = _MAP_PART + (1.0 - _MAP_PART) * index / len(space.wires)
+        progress(part, f"comparing {len(lengths_m)} lengths of wire {index + 1}")
+        for ratio, scored in _scores(space, maps[index], lengths_m):
             closest.see(scored, index, ratio, lengths_m)
             contenders += contenders_of(
                 scored,
@@ -137,7 +137,7 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
         space=space,
         contenders=tuple(sorted(contenders, key=lambda each: each.key)),
         closest=closest.found(),
-        maps=tuple(maps),
+        maps=maps,
         combinations=len(lengths_m) * len(space.wires) * len(space.ratios),
         solves=sum(each.solves for wire_maps in maps for each in wire_maps.maps),
         largest_miss=max(each.largest_miss for wire_maps in maps for each in wire_maps.maps),
@@ -167,33 +167,35 @@ class _ClosestSoFar:
         return Closest(tuple(self._swr), tuple(self._picks))
 
 
-def _map_bands(
-    space: SearchSpace, wire: WireOffer, name: str, progress: ProgressCallback
-) -> WireMaps:
-    maps: list[BandMap] = []
+def _map_wires(space: SearchSpace, progress: ProgressCallback) -> tuple[WireMaps, ...]:
+    """The maps of all wires, band by band, for wires are solved together."""
+    by_band: list[tuple[BandMap, ...]] = []
+    shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
     for index, band in enumerate(space.bands):
-        progress(index / len(space.bands), f"mapping {name} of {len(space.wires)} on {band.name}")
-        maps.append(
-            map_band(wire.model, band.low_hz, band.high_hz, space.shortest_m, space.longest_m)
-        )
-    return WireMaps(space, tuple(maps))
+        progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")
+        limits_m = (space.shortest_m, space.longest_m)
+
+        def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
+            progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")  # noqa: B023  # used within its own round only
+            return space.surveyed(length_m, frequency_hz)
+
+        by_band.append(map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m))
+    return tuple(WireMaps(space, maps) for maps in zip(*by_band, strict=True))
 
 
 def _scores(
-    space: SearchSpace, maps: WireMaps, lengths_m: FloatArray, progress: ProgressCallback
-) -> list[tuple[float, Score]]:
+    space: SearchSpace, maps: WireMaps, lengths_m: FloatArray
+) -> Iterator[tuple[float, Score]]:
     """The score of one wire at every ratio, over all lengths of the scan."""
-    parts: list[list[Score]] = [[] for _ in space.ratios]
-    for start in range(0, len(lengths_m), _CHUNK_LENGTHS):
-        chunk_m = lengths_m[start : start + _CHUNK_LENGTHS]
-        if len(chunk_m) > 1:
-            impedance = maps.over_even_ratios(chunk_m)
-        else:
-            impedance = maps.impedance_ohm(chunk_m)
-        for place, ratio in enumerate(space.ratios):
-            progress(1.0, "comparing lengths and ratios")
-            parts[place].append(score(impedance, space.bands, space.feeding, ratio))
-    return [(ratio, joined(each)) for ratio, each in zip(space.ratios, parts, strict=True)]
+    impedance = maps.over_even_ratios(lengths_m)
+    for ratio in space.ratios:
+        parts = [
+            score(
+                impedance[:, :, start : start + _CHUNK_LENGTHS], space.bands, space.feeding, ratio
+            )
+            for start in range(0, len(lengths_m), _CHUNK_LENGTHS)
+        ]
+        yield ratio, joined(parts)
 
 
 def joined(parts: list[Score]) -> Score:

@@ -12,7 +12,8 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
-from worker.search.feeding import Feeding
+from worker.engine.reflection import LARGEST_STANDING_WAVE_RATIO
+from worker.search.feeding import Feeding, reflected_of
 from worker.search.space import BandGoal, ComplexArray, FloatArray
 
 #: A band counts as served from this part of its width on: rounding at an edge is no fault.
@@ -52,16 +53,29 @@ def score(
     ratio : float
         Impedance ratio of the transformer.
     """
-    points = impedance_ohm.shape[1]
-    swr = np.empty(impedance_ohm.shape)
-    loss_db = np.zeros((len(bands), impedance_ohm.shape[2]))
-    for index, band in enumerate(bands):
-        fed = feeding.feed(impedance_ohm[index], band.grid_hz(points), ratio)
-        swr[index] = fed.limited_swr
-        if fed.line_loss_db is not None:
-            loss_db[index] = fed.line_loss_db[points // 2]
-    limits = np.array([band.swr_limit for band in bands])
-    return Score(served_fraction(swr, limits[:, None, None]), np.max(swr, axis=1), loss_db)
+    grids = np.array([band.grid_hz(impedance_ohm.shape[1]) for band in bands])
+    reflected, loss_db = feeding.reflected_power(impedance_ohm, grids, ratio)
+    limits = np.array([reflected_of(np.asarray(band.swr_limit)) for band in bands])
+    most = reflected.max(axis=1)
+    served = (most <= limits[:, None]).astype(np.float64)
+    # Most wires serve a band whole or not at all; only the rest need a closer look.
+    for index, limit in enumerate(limits):
+        partly = (most[index] > limit) & (reflected[index].min(axis=0) <= limit)
+        if partly.any():
+            swr = _swr_of(reflected[index][:, partly])
+            goal = np.array(bands[index].swr_limit)
+            served[index, partly] = served_fraction(swr[None], goal)[0]
+    if loss_db is None:
+        loss_db = np.zeros(most.shape)
+    return Score(served, _swr_of(most), loss_db)
+
+
+def _swr_of(reflected: FloatArray) -> FloatArray:
+    """Standing wave ratio at a reflected part of the power, up to the largest told of."""
+    magnitude = np.sqrt(reflected)
+    # Total reflection, and a little more by rounding, is the largest ratio that is told of.
+    away = np.maximum(1.0 - magnitude, 2.0 / (LARGEST_STANDING_WAVE_RATIO + 1.0))
+    return np.asarray((1.0 + np.minimum(magnitude, 1.0)) / away)
 
 
 def served_fraction(swr: FloatArray, limit: FloatArray) -> FloatArray:

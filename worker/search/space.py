@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 from typing import Final, Protocol
 
@@ -99,6 +100,9 @@ class SearchSpace:
         Permitted impedance ratios of the transformer, antenna side to line side.
     feeding : Feeding
         What lies between the wire and the point where the limits apply.
+    survey : callable, optional
+        Impedances of all the wires, shape (k, n), for n lengths in m at one frequency in Hz,
+        solved together; without it each wire's own model is asked in turn.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
@@ -109,6 +113,7 @@ class SearchSpace:
     site_longest_m: float
     ratios: tuple[float, ...]
     feeding: Feeding
+    survey: Callable[[FloatArray, float], ComplexArray] | None = None
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -123,6 +128,13 @@ class SearchSpace:
         object.__setattr__(
             self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
         )
+
+    def surveyed(self, length_m: FloatArray, frequency_hz: float) -> ComplexArray:
+        """Impedances of all wires in Ω at one frequency in Hz; shape (k, n) for n lengths."""
+        if self.survey is not None:
+            return self.survey(length_m, frequency_hz)
+        at_hz = np.full(length_m.shape, frequency_hz)
+        return np.array([each.model.solve(length_m, at_hz).impedance_ohm for each in self.wires])
 
     def lengths_m(self) -> FloatArray:
         """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""

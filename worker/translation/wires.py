@@ -11,7 +11,7 @@ from service.contracts.station_site import GroundConstants
 from service.contracts.stock import Conductor
 from service.contracts.sweep import SweepRequest
 from worker.engine.ground import GROUND_CLASSES, Ground
-from worker.engine.hung_wire import GroundTables, HungWire
+from worker.engine.hung_wire import GroundTables, HungWire, survey_impedances
 from worker.engine.insulation import Sleeve
 from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.material import MATERIALS
@@ -77,6 +77,8 @@ class Hanging:
         """What the request allows to vary, and what it wants served."""
         feed = self.request.feed
         line = feed.feed_line
+        wires = [self.wire(way) for way in self.ways]
+        hung = [wire.hung for wire in wires]
         return SearchSpace(
             bands=tuple(
                 BandGoal(
@@ -89,7 +91,10 @@ class Hanging:
                 )
                 for band in self.request.bands
             ),
-            wires=tuple(WireOffer(self.wire(way), way.conductor.price_per_m) for way in self.ways),
+            wires=tuple(
+                WireOffer(wire, way.conductor.price_per_m)
+                for wire, way in zip(wires, self.ways, strict=True)
+            ),
             site_longest_m=self.request.site.longest_wire_m,
             ratios=feed.transformer_ratios,
             feeding=Feeding(
@@ -99,6 +104,7 @@ class Hanging:
                 at_transmitter=feed.reference_point == "transmitter",
                 matched=feed.matching == "per-band",
             ),
+            survey=lambda length_m, frequency_hz: survey_impedances(hung, length_m, frequency_hz),
         )
 
     def wire(self, way: Way, ground: Ground | None = None) -> StockWire:

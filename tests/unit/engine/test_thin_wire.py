@@ -222,13 +222,13 @@ def test_estimated_error_bounds_the_change_to_a_much_finer_solution(
 
 def test_unknowns_are_chosen_by_the_estimate(monkeypatch: pytest.MonkeyPatch) -> None:
     easy = feed_impedance(LENGTH_M, RADIUS_M, FREQUENCY_HZ)
-    monkeypatch.setattr(refinement_module, "_TOLERANCE_RAD", 2.01e-5)
+    monkeypatch.setattr(wire_module, "TOLERANCE_RAD", 2.01e-5)
     hard = feed_impedance(LENGTH_M, RADIUS_M, FREQUENCY_HZ)
     assert int(hard.unknowns) > int(easy.unknowns)
 
 
 def test_an_unreachable_tolerance_is_reported(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(refinement_module, "_TOLERANCE_RAD", 1e-9)
+    monkeypatch.setattr(wire_module, "TOLERANCE_RAD", 1e-9)
     assert not feed_impedance(LENGTH_M, RADIUS_M, FREQUENCY_HZ).converged
 
 

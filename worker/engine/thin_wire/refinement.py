@@ -37,9 +37,13 @@ LEVELS: Final = (
     Level(8, 11, Grading(0.15, 6.0, 1.0, 1.2, 0.7)),
 )
 
+# A coarser start, for those who solve thousands of wires to choose among them: half the time.
+SURVEY_LEVEL: Final = Level(4, 6, Grading(0.35, 12.0, 2.2, 2.0, 0.9))
+
 # Errors are judged as errors of the wire's electrical half length, in radians. On a lossless wire
 # of characteristic impedance Zc, Z = -j Zc cot x, so that |dZ/dx| = (Zc^2 + |Z|^2) / Zc.
-_TOLERANCE_RAD = 1e-4
+TOLERANCE_RAD: Final = 1e-4
+SURVEY_TOLERANCE_RAD: Final = 1e-3
 # What comparison of degrees cannot see: quadrature and the split of the source.
 _FLOOR_RAD = 2e-5
 # Share of the change from the degree before that is counted as error.
@@ -70,6 +74,7 @@ def solve_level(
     rows: NDArray[np.intp],
     level: Level,
     reflected: ReflectedPotentials | None,
+    tolerance_rad: float = TOLERANCE_RAD,
 ) -> Iterator[tuple[NDArray[np.intp], Solved]]:
     """Solve some rows of a batch, in runs of one mesh shape that fit the working memory."""
     part = batch[rows]
@@ -79,11 +84,15 @@ def solve_level(
         size = max(1, _CHUNK_ENTRIES // ((int(count) + 2) * level.points) ** 2)
         for start in range(0, members.size, size):
             some = members[start : start + size]
-            yield rows[some], _solve(part[some], int(count), level, reflected)
+            yield rows[some], _solve(part[some], int(count), level, reflected, tolerance_rad)
 
 
 def _solve(
-    part: WireBatch, elements: int, level: Level, reflected: ReflectedPotentials | None
+    part: WireBatch,
+    elements: int,
+    level: Level,
+    reflected: ReflectedPotentials | None,
+    tolerance_rad: float,
 ) -> Solved:
     mesh = Discretisation(
         element=reference_element(level.degree, level.points),
@@ -103,7 +112,7 @@ def _solve(
         mesh=mesh,
         impedance_ohm=impedance,
         estimated_error_ohm=error,
-        converged=error <= _TOLERANCE_RAD * per_radian,
+        converged=error <= tolerance_rad * per_radian,
         port_voltage=voltage,
         even=ports.even,
         odd=ports.odd,
