@@ -84,12 +84,29 @@ def best_sets(
 def _best_of_size(
     served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, size: int
 ) -> ChosenSet:
-    """At most ``size`` wires: x says which are taken, y which serves which band."""
+    """The best of at most ``size`` wires, each the first that does as well."""
+    useful = _undominated(served)
+    members = useful[_taken(served[useful], required, weight, size)]
+    return _with_the_preferred(served, required, weight, _as_set(served, required, weight, members))
+
+
+def _undominated(served: FloatArray) -> NDArray[np.intp]:
+    """Wires of which no other serves as much of every band; of wires alike the first."""
+    as_much = np.all(served[:, None, :] >= served[None, :, :], axis=2)
+    alike = as_much & as_much.T
+    dominates = as_much & (~alike | np.triu(np.ones(alike.shape, dtype=np.bool_), 1))
+    return np.flatnonzero(~dominates.any(axis=0))
+
+
+def _taken(
+    served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, size: int
+) -> NDArray[np.intp]:
+    """The programme: x says which wires are taken, y which serves which band."""
     wires, bands = served.shape
     whole = served >= FULLY_SERVED
     gain = served * (weight / weight.sum()) + _REQUIRED_WEIGHT * (whole & required)
-    # Earlier wires are preferred; the burden of all together stays below any gain.
-    burden = _BURDEN_WEIGHT * (1.0 + np.arange(wires) / wires) / wires
+    # No wire more than needed: the burden of all together stays below any gain.
+    burden = np.full(wires, _BURDEN_WEIGHT / wires)
     cost = np.concatenate([burden, -gain.ravel()])
     x = np.arange(wires)
     y = wires + np.arange(wires * bands)
@@ -118,8 +135,32 @@ def _best_of_size(
     )
     if solved.x is None:
         raise NotConverged("set cover", float("inf"), 0.0)
-    members = np.flatnonzero(np.round(solved.x[:wires]) > 0.5)
-    return _as_set(served, required, weight, members)
+    return np.flatnonzero(np.round(solved.x[:wires]) > 0.5)
+
+
+def _with_the_preferred(
+    served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, chosen: ChosenSet
+) -> ChosenSet:
+    """The set with each wire exchanged for the first that would do as well in its place.
+
+    A preference in the programme itself would be lost in the solver's own tolerance.
+    """
+    for member in chosen.members:
+        others = [each for each in chosen.members if each != member]
+        for preferred in range(member):
+            if preferred in others:
+                continue
+            members = np.array(sorted([*others, preferred]), dtype=np.intp)
+            exchanged = _as_set(served, required, weight, members)
+            if _worth(exchanged) >= _worth(chosen):
+                chosen = exchanged
+                break
+    return chosen
+
+
+def _worth(chosen: ChosenSet) -> tuple[int, float]:
+    """What sets are compared by, without the last digits of a sum."""
+    return chosen.required_served, round(chosen.weighted_served, 12)
 
 
 def _as_set(
