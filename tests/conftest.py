@@ -81,6 +81,16 @@ def postgres() -> Iterator[PostgresServer]:
         pytest.skip(str(missing))
 
 
+@pytest.fixture
+def own_postgres() -> Iterator[PostgresServer]:
+    """A PostgreSQL server of the test's own, to be stopped as if it had crashed."""
+    try:
+        with private_postgres() as server:
+            yield server
+    except ServerMissing as missing:
+        pytest.skip(str(missing))
+
+
 @pytest.fixture(scope="session")
 def redis_url() -> Iterator[str]:
     """A Redis server that is up throughout."""

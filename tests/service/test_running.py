@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import logging
+import signal
 import threading
 import time
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
+from contextlib import closing
 
 import pytest
 from sqlalchemy.exc import IntegrityError
@@ -16,9 +18,11 @@ from service.contracts.request import DesignRequest
 from service.errors import StoreUnavailable
 from service.settings import Settings
 from service.store import designs, jobs
-from service.store.session import Store
+from service.store.session import Store, open_store
+from tests.service.databases import short_lived
 from tests.service.plans import as_named
 from tests.service.samples import sample_request
+from tests.service.servers import PostgresServer
 from tests.service.waiting import in_state, until
 from worker.running import Outcome, PlanFunction, ProgressCallback, drain, run_next
 
@@ -230,6 +234,26 @@ def test_a_heartbeat_that_breaks_does_not_stop_the_heart(
     monkeypatch.setattr(jobs, "heartbeat", breaks)
     outcome = run_meanwhile(store, settings, design_id, lambda: jobs.cancel(store, design_id))
     assert outcome is Outcome.CANCELLED
+
+
+def test_a_database_that_crashes_and_comes_back_is_ridden_out(
+    own_postgres: PostgresServer,
+) -> None:
+    url = own_postgres.url.render_as_string(hide_password=False)
+    settings = short_lived(url, lease_s=30.0)
+    with closing(open_store(settings)) as store:
+        planned, waiting = submitted(store, "slow 0.5"), submitted(store, "quick")
+
+        def crash() -> None:
+            own_postgres.stop(signal.SIGQUIT)
+            time.sleep(0.7)
+            own_postgres.start()
+
+        assert run_meanwhile(store, settings, planned, crash) is Outcome.DONE
+        assert run(store, settings) is Outcome.DONE
+        for design_id in (planned, waiting):
+            design = designs.get(store, design_id)
+            assert (design.state, design.attempts) == ("done", 1)
 
 
 # ------------------------------------------------------------------------- draining
