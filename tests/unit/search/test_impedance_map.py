@@ -3,16 +3,18 @@
 import numpy as np
 import pytest
 
-from tests.unit.search.open_line import OpenLine, resonant_m
+from tests.unit.search.open_line import OpenLine, goal, resonant_m
 from worker.engine.errors import NotConverged
 from worker.search.impedance_map import (
     TOLERANCE_OHM,
     TOLERANCE_RELATIVE,
     map_band,
+    map_band_together,
     map_over_frequency,
     map_over_length,
 )
-from worker.search.resonances import length_in_resonance_m, resonances_of
+from worker.search.resonances import lengths_in_resonance, resonances_of
+from worker.search.space import ComplexArray, FloatArray
 
 
 def test_a_map_over_length_agrees_with_the_line_between_its_solves() -> None:
@@ -98,13 +100,33 @@ def test_a_lines_resonances_lie_where_its_electrical_length_says() -> None:
         assert each.frequency_hz == pytest.approx(each.order * quarter_hz, rel=1e-6)
 
 
-def test_a_length_is_moved_onto_a_frequency() -> None:
+def test_a_length_is_moved_onto_the_centre_of_a_band() -> None:
+    band = goal("15m", 21.0, 21.4)
     wanted_m = resonant_m(3, 21.2e6)
-    assert length_in_resonance_m(OpenLine(), 1.02 * wanted_m, 21.2e6) == pytest.approx(
-        wanted_m, rel=1e-4
-    )
+    mapped = map_band(OpenLine(), 21.0e6, 21.4e6, 15.0, 30.0)
+    length_m, exponent = lengths_in_resonance(mapped, 1.02 * wanted_m, band)
+    assert length_m == pytest.approx(wanted_m, rel=1e-4)
+    # On a line frequency and length go as one over the other.
+    assert exponent == pytest.approx(-1.0, abs=1e-3)
 
 
 def test_no_length_is_claimed_where_the_reactance_has_no_rising_zero() -> None:
+    mapped = map_band(OpenLine(), 21.0e6, 21.4e6, 10.0, 30.0)
     antiresonant_m = resonant_m(2, 21.2e6)
-    assert length_in_resonance_m(OpenLine(), antiresonant_m, 21.2e6) is None
+    assert lengths_in_resonance(mapped, antiresonant_m, goal("15m", 21.0, 21.4)) == (None, None)
+
+
+def test_wires_mapped_together_are_mapped_as_each_alone() -> None:
+    lines = [OpenLine(surge_ohm=700.0), OpenLine(surge_ohm=1100.0)]
+
+    def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
+        at_hz = np.full(length_m.shape, frequency_hz)
+        return np.array([line.solve(length_m, at_hz).impedance_ohm for line in lines])
+
+    together = map_band_together(survey, 0.05, 14.0e6, 14.35e6, (5.0, 40.0))
+    lengths_m, frequency_hz = np.linspace(5.0, 40.0, 201), np.array([14.1e6])
+    for line, mapped in zip(lines, together, strict=True):
+        alone = map_band(line, 14.0e6, 14.35e6, 5.0, 40.0)
+        assert mapped.impedance_ohm(lengths_m, frequency_hz) == pytest.approx(
+            alone.impedance_ohm(lengths_m, frequency_hz), rel=1e-12
+        )
