@@ -12,19 +12,26 @@ from typing import Final
 
 import numpy as np
 
-from worker.search.impedance_map import BandMap, map_band_together
+from worker.search.impedance_map import (
+    TOLERANCE_OHM,
+    TOLERANCE_RELATIVE,
+    BandMap,
+    map_band_together,
+)
 from worker.search.ranking import Contender, Pick, best_first, contenders_of, rank_keys
 from worker.search.scoring import Score, merit, score
-from worker.search.space import ComplexArray, FloatArray, SearchSpace
+from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace
 
 #: Called with the part done (0 to 1) and what is being done, in words.
 ProgressCallback = Callable[[float, str], None]
 
-#: Around a pick the map is read once more at this many finer lengths.
-FINE_POINTS: Final = 81
-
 #: Mapping takes about this part of the time, comparing the rest.
 _MAP_PART: Final = 0.75
+
+#: Each map is held to so many fresh solves, this far into the band, at lengths by this section.
+_PROBES: Final = 2
+_PROBE_AT: Final = 0.23
+_GOLDEN: Final = 0.618033988749895
 
 #: Lengths scored at a time: what they need then stays in the processor's cache.
 _CHUNK_LENGTHS: Final = 2048
@@ -73,7 +80,7 @@ class Scan:
     solves : int
         Direct solves behind the maps.
     largest_miss : float
-        Largest departure of any map from fresh solves, relative to |Z|.
+        Largest departure of any map from fresh, full solves between its own, relative to |Z|.
     """
 
     space: SearchSpace
@@ -95,9 +102,10 @@ class Scan:
         index = int(np.searchsorted(lengths_m, pick.length_m))
         low_m = float(lengths_m[max(index - 1, 0)])
         high_m = float(lengths_m[min(index + 1, len(lengths_m) - 1)])
-        step_m = cutting_step_m(pick.length_m)
-        fine_m = np.linspace(low_m, high_m, FINE_POINTS)
-        cut_m = np.unique(np.round(fine_m / step_m)) * step_m
+        per_m = cuts_per_m(pick.length_m)
+        # To either side of the neighbours too: the nearest cut may lie beyond a band's edge.
+        cuts = np.arange(np.floor(low_m * per_m), np.ceil(high_m * per_m) + 1.0)
+        cut_m = cuts / per_m
         cut_m = cut_m[(cut_m >= self.space.shortest_m) & (cut_m <= self.space.longest_m)]
         if cut_m.size == 0:
             return pick
@@ -118,7 +126,7 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
     lengths_m = space.lengths_m()
     contenders: list[Contender] = []
     closest = _ClosestSoFar(len(space.bands))
-    maps = _map_wires(space, progress)
+    maps, largest_miss = _map_wires(space, progress)
     for index, wire in enumerate(space.wires):
         part = _MAP_PART + (1.0 - _MAP_PART) * index / len(space.wires)
         progress(part, f"comparing {len(lengths_m)} lengths of wire {index + 1}")
@@ -139,14 +147,14 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
         closest=closest.found(),
         maps=maps,
         combinations=len(lengths_m) * len(space.wires) * len(space.ratios),
-        solves=sum(each.solves for wire_maps in maps for each in wire_maps.maps),
-        largest_miss=max(each.largest_miss for wire_maps in maps for each in wire_maps.maps),
+        solves=sum(each.solves + _PROBES for wire_maps in maps for each in wire_maps.maps),
+        largest_miss=largest_miss,
     )
 
 
-def cutting_step_m(length_m: float) -> float:
+def cuts_per_m(length_m: float) -> int:
     """The fineness a wire of that length is cut to: 1 cm, or 1 mm below 5 m."""
-    return 0.01 if length_m >= 5.0 else 0.001
+    return 100 if length_m >= 5.0 else 1000
 
 
 class _ClosestSoFar:
@@ -167,20 +175,65 @@ class _ClosestSoFar:
         return Closest(tuple(self._swr), tuple(self._picks))
 
 
-def _map_wires(space: SearchSpace, progress: ProgressCallback) -> tuple[WireMaps, ...]:
-    """The maps of all wires, band by band, for wires are solved together."""
+def _map_wires(
+    space: SearchSpace, progress: ProgressCallback
+) -> tuple[tuple[WireMaps, ...], float]:
+    """The maps of all wires, band by band, for wires are solved together; and their miss."""
     by_band: list[tuple[BandMap, ...]] = []
-    shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
+    largest_miss = 0.0
     for index, band in enumerate(space.bands):
-        progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")
-        limits_m = (space.shortest_m, space.longest_m)
 
-        def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
-            progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")  # noqa: B023  # used within its own round only
-            return space.surveyed(length_m, frequency_hz)
+        def tell(band: BandGoal = band, index: int = index) -> None:
+            progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")
 
-        by_band.append(map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m))
-    return tuple(WireMaps(space, maps) for maps in zip(*by_band, strict=True))
+        maps, miss = _map_band(space, band, tell)
+        by_band.append(maps)
+        largest_miss = max(largest_miss, miss)
+    return tuple(WireMaps(space, maps) for maps in zip(*by_band, strict=True)), largest_miss
+
+
+def _map_band(
+    space: SearchSpace, band: BandGoal, tell: Callable[[], None]
+) -> tuple[tuple[BandMap, ...], float]:
+    """The maps of all wires on one band, made again with more care where fresh solves differ."""
+    shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
+    limits_m = (space.shortest_m, space.longest_m)
+    for careful in (False, True):
+
+        def survey(
+            length_m: FloatArray, frequency_hz: float, careful: bool = careful
+        ) -> ComplexArray:
+            tell()
+            return space.surveyed(length_m, frequency_hz, careful=careful)
+
+        maps = map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m)
+        tell()
+        probed = [_probe(space, band, index, band_map) for index, band_map in enumerate(maps)]
+        if all(within for within, _ in probed):
+            break
+    return maps, max(miss for _, miss in probed)
+
+
+def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> tuple[bool, float]:
+    """Hold a map to fresh, full solves where it is least sure: between its frequencies.
+
+    Returns
+    -------
+    within : bool
+        Whether every one is within the tolerance.
+    miss : float
+        The largest, relative to |Z|.
+    """
+    at_hz = band.low_hz + _PROBE_AT * (band.high_hz - band.low_hz)
+    # Spread evenly in logarithm by the golden section, and differently for each wire.
+    parts = np.modf((1.0 + np.arange(_PROBES) + 0.5 * wire) * _GOLDEN)[0]
+    lowest_m = max(space.shortest_m, band_map.shortest_m_hz / at_hz)
+    highest_m = max(space.longest_m, 1.01 * lowest_m)
+    length_m = lowest_m * (highest_m / lowest_m) ** parts
+    fresh = space.wires[wire].model.solve(length_m, np.full(length_m.shape, at_hz)).impedance_ohm
+    off = np.abs(band_map.impedance_ohm(length_m, np.array([at_hz]))[0] - fresh)
+    allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * np.abs(fresh))
+    return bool(np.all(off <= allowed)), float(np.max(off / np.abs(fresh)))
 
 
 def _scores(
