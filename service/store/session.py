@@ -10,7 +10,7 @@ from collections.abc import Callable
 from typing import Final, TypeVar
 
 from sqlalchemy import Engine
-from sqlalchemy.exc import InterfaceError, OperationalError
+from sqlalchemy.exc import DBAPIError, InterfaceError, OperationalError
 from sqlalchemy.exc import TimeoutError as PoolExhausted
 from sqlalchemy.orm import Session
 
@@ -117,22 +117,30 @@ def riding_out(transaction: Callable[[], T], patience_s: float) -> T:
         except PoolExhausted as error:
             # Every connection of this process has been in use for the pool's own patience.
             raise StoreUnavailable("Too much is asked of the database at once.") from error
-        except (OperationalError, InterfaceError) as error:
+        except DBAPIError as error:
             if not _will_pass(error):
                 raise
             if time.monotonic() + pause_s > give_up_at:
                 raise StoreUnavailable(
                     f"The database did not answer within {patience_s:.0f} s."
                 ) from error
-            _log.warning("the database is away or busy, trying again: %s", error.orig)
+            # Once a transaction: an outage has many of them, each of which tries many times.
+            level = logging.WARNING if pause_s == _FIRST_PAUSE_S else logging.DEBUG
+            _log.log(level, "the database is away or busy, trying again: %s", error.orig)
         time.sleep(pause_s * random.uniform(0.5, 1.0))  # noqa: S311  # jitter, no secret
         pause_s = min(2.0 * pause_s, _LONGEST_PAUSE_S)
 
 
-def _will_pass(error: OperationalError | InterfaceError) -> bool:
+def _will_pass(error: DBAPIError) -> bool:
     """Whether the database is away or busy; a mistake in our own SQL must not be tried again.
 
-    psycopg tells the two apart by class, sqlite3 only by its error code.
+    psycopg tells the two apart by class, sqlite3 only by its error code. Whatever else ended
+    the connection passes with it, as when PostgreSQL has given up a transaction that was idle
+    for too long, because its process was frozen.
     """
+    if error.connection_invalidated:
+        return True
     code = getattr(error.orig, "sqlite_errorcode", None)
-    return code is None or code & _SQLITE_PRIMARY_CODE in _SQLITE_PASSING
+    if code is not None:
+        return code & _SQLITE_PRIMARY_CODE in _SQLITE_PASSING
+    return isinstance(error, OperationalError | InterfaceError)

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import logging
 import sqlite3
 import threading
 import time
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
-from contextlib import suppress
+from contextlib import closing, suppress
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 from typing import TypeVar
@@ -241,6 +242,39 @@ def test_a_transaction_is_run_again_while_the_database_is_away(store: Store) -> 
 
     assert store.read(work) == "answered"
     assert len(runs) == 3
+
+
+def test_an_outage_is_told_once_however_often_a_transaction_tries(
+    store: Store, caplog: pytest.LogCaptureFixture
+) -> None:
+    left = [3]
+
+    def work(_session: Session) -> None:
+        if left[0]:
+            left[0] -= 1
+            raise OperationalError("SELECT", None, ConnectionResetError())
+
+    with caplog.at_level(logging.WARNING):
+        store.read(work)
+    assert caplog.text.count("trying again") == 1
+
+
+def test_a_transaction_given_up_while_its_process_was_frozen_is_run_again(
+    shared_database: str,
+) -> None:
+    runs: list[int] = []
+
+    def work(session: Session) -> str:
+        runs.append(1)
+        session.execute(text("SET LOCAL idle_in_transaction_session_timeout = '50ms'"))
+        if len(runs) == 1:
+            time.sleep(0.2)
+        session.execute(text("SELECT 1"))
+        return "answered"
+
+    with closing(open_store(Settings(database_url=shared_database), patience_s=5.0)) as store:
+        assert store.write(work) == "answered"
+    assert len(runs) == 2
 
 
 def test_patience_with_a_database_that_stays_away_is_bounded(settings: Settings) -> None:
