@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 
 def mhz(value: float) -> str:
     """A frequency in MHz to the kHz, ``7.100``."""
@@ -52,6 +54,49 @@ def swr(value: float) -> str:
     return f"{value:.2f}" if value < 10.0 else f"{value:.0f}"
 
 
+def decibels(value: float) -> str:
+    """A loss in dB, ``0.84``."""
+    return f"{value:.2f}"
+
+
+def volts(value: float) -> str:
+    """A voltage in V to three figures, whole from a hundred on: ``59.3``, ``1999``."""
+    return _three_figures(value)
+
+
+def amperes(value: float) -> str:
+    """A current in A to three figures, ``2.47``."""
+    return _three_figures(value)
+
+
+def component(value: float) -> str:
+    """A coil in µH or a capacitor in pF to three figures, whole from a hundred on: ``5.43``."""
+    return _three_figures(value)
+
+
+def khz_per_cm(value: float) -> str:
+    """How far a resonance moves in kHz for a centimetre, signed, to three figures: ``+3.53``."""
+    return ("+" if value > 0.0 else "") + _three_figures(value)
+
+
+def money(value: float) -> str:
+    """A sum in the currency of the prices given, ``19.43``, finer only where it is: ``0.425``."""
+    whole, point, decimals = f"{value:.4f}".partition(".")
+    return whole + point + decimals.rstrip("0").ljust(2, "0")
+
+
+def part(fraction: float) -> str:
+    """A place along the wire as per cent of its length, ``36 %``, ``33.3 %``."""
+    return f"{100.0 * fraction:.1f}".removesuffix(".0") + " %"
+
+
+def feed_place(fraction: float, length_m: float) -> str:
+    """Where a wire is fed, as one says it to who cuts it: ``7.36 m from one end (36 %)``."""
+    if fraction == 0.5:
+        return "at the centre"
+    return f"{metres(fraction * length_m)} m from one end ({part(fraction)})"
+
+
 def reflection(value: float) -> str:
     """A reflection coefficient's magnitude, ``0.294``."""
     return f"{value:.3f}"
@@ -62,6 +107,13 @@ def ratio(value: float) -> str:
     return f"{value:g}:1"
 
 
+def _three_figures(value: float) -> str:
+    """Three figures where that takes no more than three decimals; whole from a hundred on."""
+    if abs(value) < 1.0:
+        return f"{value:.3f}"
+    return f"{value:.{max(0, 2 - math.floor(math.log10(abs(value))))}f}"
+
+
 def ordinal(number: int) -> str:
     """A small ordinal, ``1st``, ``3rd``, ``11th``."""
     if number % 100 in (11, 12, 13):
@@ -69,8 +121,8 @@ def ordinal(number: int) -> str:
     return f"{number}{ {1: 'st', 2: 'nd', 3: 'rd'}.get(number % 10, 'th') }"
 
 
-def listed(words: tuple[str, ...] | list[str]) -> str:
-    """Words joined as in a sentence: ``a, b and c``."""
+def listed(words: tuple[str, ...] | list[str], last: str = "and") -> str:
+    """Words joined as in a sentence: ``a, b and c``, or with another ``last`` joint."""
     if len(words) <= 1:
         return "".join(words)
-    return ", ".join(words[:-1]) + " and " + words[-1]
+    return ", ".join(words[:-1]) + f" {last} " + words[-1]

@@ -11,6 +11,7 @@ from starlette.staticfiles import StaticFiles
 from service.contracts.candidate import Candidate
 from service.contracts.progress import Design, DesignSummary
 from service.contracts.report import FeedReport
+from service.pages.arrangement import has_line, sets_table, steadiness_table
 from service.pages.templating import STATIC, render
 from service.store import designs
 from service.store.session import Store
@@ -66,6 +67,8 @@ def design_page(store: StoreHere, design_id: str) -> HTMLResponse:
             "design.html",
             design=design,
             refresh_s=REFRESH_S if waiting else None,
+            own_page=False,
+            **_beyond(design),
             **_sheet(design, best, report),
         )
     )
@@ -78,7 +81,13 @@ def candidate_page(store: StoreHere, design_id: str, rank: int) -> HTMLResponse:
     candidate = designs.candidate(store, design_id, rank)
     report = designs.report(store, design_id, rank)
     return HTMLResponse(
-        render("candidate.html", design=design, refresh_s=None, **_sheet(design, candidate, report))
+        render(
+            "candidate.html",
+            design=design,
+            refresh_s=None,
+            own_page=True,
+            **_sheet(design, candidate, report),
+        )
     )
 
 
@@ -87,15 +96,36 @@ def _best_of(store: Store, summary: DesignSummary) -> Candidate | None:
     return designs.candidate(store, summary.id, 1) if summary.state == "done" else None
 
 
+def _beyond(design: Design) -> dict[str, object]:
+    """What the page of a design shows beside its candidates: sets and the trade-off."""
+    result = design.result
+    if result is None or not result.candidates:
+        return {}
+    on_front = {each.rank for each in result.trade_off}
+    return {
+        "sets": sets_table(result),
+        "off_front": [str(each.rank) for each in result.candidates if each.rank not in on_front],
+        "with_loss": any(each.loss_db is not None for each in result.trade_off),
+        "with_cost": any(each.cost is not None for each in result.trade_off),
+    }
+
+
 def _sheet(
     design: Design, candidate: Candidate | None, report: FeedReport | None
 ) -> dict[str, object]:
     """What the sheet of one candidate shows: its bands beside their edges and their report."""
     if candidate is None or report is None:
         return {"candidate": None}
+    held = candidate.steadiness
     return {
         "candidate": candidate,
         "report": report,
+        "asked": design.request,
+        "at_transmitter": design.request.feed.reference_point == "transmitter",
+        "has_line": has_line(report),
+        "matched": any(band.matching for band in report.bands),
+        "stressed": any(band.stress for band in report.bands),
+        "steadiness": None if held is None else steadiness_table(candidate, held),
         "bands": tuple(zip(candidate.bands, design.request.bands, report.bands, strict=True)),
         "sweep": report.sweep[::SWEEP_STRIDE],
         "sweep_stride": SWEEP_STRIDE,

@@ -11,7 +11,8 @@ from typing import Final
 from jinja2 import Environment, FileSystemLoader, StrictUndefined, select_autoescape
 
 from service.pages import formats, wording
-from service.plots import impedance_plot, swr_plot
+from service.pages.arrangement import matching_parts
+from service.plots import impedance_plot, steadiness_plot, swr_plot, trade_off_plot
 
 _HERE: Final = Path(__file__).parent
 STATIC: Final = _HERE / "static"
@@ -39,7 +40,10 @@ def _environment() -> Environment:
         "asset": asset,
         "product_version": version("spanwright"),
         "impedance_plot": impedance_plot,
+        "matching_parts": matching_parts,
+        "steadiness_plot": steadiness_plot,
         "swr_plot": swr_plot,
+        "trade_off_plot": trade_off_plot,
         "wording": wording,
     }
     return environment

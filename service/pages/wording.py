@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from typing import Final
 
-from service.contracts.request import DesignRequest
-from service.contracts.station_site import GroundConstants, Site
+from service.contracts.feed import Feed
+from service.contracts.request import DesignRequest, Tolerances
+from service.contracts.station_site import GroundConstants, HeightRange, Site
 from service.contracts.stock import Conductor, Insulation, Stock, material_in_words
 from service.pages import formats
 
@@ -28,8 +29,7 @@ def site_in_words(site: Site) -> str:
     )
     if site.ground == "free-space":
         return f"{span}, in free space."
-    heights = [formats.metres(height_m) for height_m in site.heights_m()]
-    return f"{span}, {formats.listed(heights)} m over {_ground(site)}."
+    return f"{span}, {_heights(site)} over {_ground(site)}."
 
 
 def stock_in_words(stock: Stock) -> list[str]:
@@ -43,19 +43,82 @@ def stock_in_words(stock: Stock) -> list[str]:
 
 
 def feed_in_words(request: DesignRequest) -> str:
-    """Reference impedance, the transformers allowed, the line and the power."""
+    """Where the wire may be fed, through what, against what, the line and the power."""
     feed = request.feed
-    ratios = formats.listed([formats.ratio(each) for each in feed.transformer_ratios])
-    plural = "s" if len(feed.transformer_ratios) > 1 else ""
+    ratios = formats.listed([formats.ratio(each) for each in feed.transformer_ratios], "or")
+    network = ", an L-network for each band" if feed.matching == "per-band" else ""
     line = (
         ""
         if feed.feed_line is None
         else f", {formats.metres(feed.feed_line.length_m)} m of {_line(feed.feed_line.line)}"
     )
     return (
-        f"{formats.ohms(feed.reference_ohm)} Ω reference, transformer{plural} {ratios}{line}, "
-        f"{formats.watts(request.power_w)}."
+        f"{_places(feed)}, transformer {ratios}{network}{line}, "
+        f"{formats.ohms(feed.reference_ohm)} Ω reference, {formats.watts(request.power_w)}. "
+        f"SWR limits apply {limits_apply_at(feed)}."
     )
+
+
+def limits_apply_at(feed: Feed) -> str:
+    """The end of the feed line at which the SWR is held to its limits."""
+    return "at the transmitter" if feed.reference_point == "transmitter" else "at the feed point"
+
+
+def ranking_in_words(request: DesignRequest) -> str:
+    """What the ranking goes by, and whether sets of dipoles were asked for."""
+    by = (
+        "By how each wire holds up where it departs most from the plan."
+        if request.rank_by == "worst-case"
+        else "By each wire as planned."
+    )
+    if request.largest_set is None:
+        return f"{by} Sets of dipoles only where no single wire serves all required bands."
+    if request.largest_set == 1:
+        return f"{by} No sets of dipoles."
+    return f"{by} Sets of up to {request.largest_set} dipoles asked for."
+
+
+def tolerances_in_words(tolerances: Tolerances | None) -> str:
+    """How far the wire as hung may depart from the plan."""
+    if tolerances is None:
+        return "None given: how a wire holds up was not looked at."
+    said = []
+    if tolerances.cutting_percent:
+        said.append(f"length ±{tolerances.cutting_percent:g} %")
+    if tolerances.height_m:
+        said.append(f"height ±{tolerances.height_m:g} m")
+    if tolerances.ground_factor > 1.0:
+        said.append(f"ground {tolerances.ground_factor:g} times wetter and drier")
+    if tolerances.insulation_percent:
+        said.append(f"permittivity of insulation ±{tolerances.insulation_percent:g} %")
+    text = formats.listed(said) or "no departure"
+    return f"{text[:1].upper()}{text[1:]}."
+
+
+def departed(what: str) -> str:
+    """A departure as it is said of the wire: ``when 1 % longer``, ``over wetter ground``."""
+    if what.endswith("ground"):
+        return f"over {what}"
+    if what.endswith("insulation"):
+        return f"with {what}"
+    return f"when {what}"
+
+
+def _places(feed: Feed) -> str:
+    if feed.positions == "anywhere":
+        return "Fed anywhere along the wire"
+    fractions = sorted(feed.feed_fractions(), reverse=True)
+    if fractions == [0.5]:
+        return "Fed at the centre"
+    places = ["the centre" if each == 0.5 else formats.part(each) for each in fractions]
+    return f"Fed at {formats.listed(places, 'or')} of the length"
+
+
+def _heights(site: Site) -> str:
+    if isinstance(site.height_m, HeightRange):
+        low, high = formats.metres(site.height_m.low_m), formats.metres(site.height_m.high_m)
+        return f"any height from {low} to {high} m"
+    return formats.listed([formats.metres(each) for each in site.heights_m()], "or") + " m"
 
 
 def _ground(site: Site) -> str:
@@ -82,7 +145,11 @@ def _conductor(conductor: Conductor) -> str:
         label += f" ({formats.millimetres(conductor.bare_diameter_mm)} mm)"
     if conductor.insulation is not None:
         label += f": {_insulation(conductor.insulation)}"
-    return f"{label}, item {conductor.item_code}" if conductor.item_code else label
+    if conductor.item_code:
+        label += f", item {conductor.item_code}"
+    if conductor.price_per_m is not None:
+        label += f", {formats.money(conductor.price_per_m)} a metre"
+    return label
 
 
 def _line(name: str) -> str:

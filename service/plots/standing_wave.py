@@ -10,7 +10,7 @@ from markupsafe import Markup
 
 from service.contracts import formats
 from service.contracts.candidate import BandOutcome
-from service.contracts.report import BandReport
+from service.contracts.report import BandReport, ReportPoint
 from service.plots.drawing import Drawing
 from service.plots.scales import (
     LinearScale,
@@ -46,8 +46,10 @@ class _Frame:
         return self.frequency(point[0]), self.swr(point[1])
 
 
-def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
-    """Draw the SWR over one band.
+def swr_plot(
+    name: str, band: BandReport, outcome: BandOutcome, *, at_transmitter: bool = False
+) -> Markup:
+    """Draw the SWR over one band: where its limit applies, and at the line's other end.
 
     Parameters
     ----------
@@ -56,8 +58,10 @@ def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
     band : BandReport
     outcome : BandOutcome
         The same band's outcome: its limit and how it is served.
+    at_transmitter : bool
+        Whether the limit applies at the transmitter, else at the feed point.
     """
-    points = [(point.frequency_mhz, point.swr) for point in band.grid]
+    points, other = _swr_along(band.grid, at_transmitter)
     top = _top_of_axis(points, outcome.swr_limit)
     frame = _Frame(
         LinearScale(points[0][0], points[-1][0], _LEFT, _RIGHT),
@@ -66,6 +70,8 @@ def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
     drawing = Drawing(name, _WIDTH, _HEIGHT, "swr")
     _draw_axes(drawing, frame)
     _draw_limit(drawing, frame, points, outcome.swr_limit)
+    beside = clipped_runs(other, 1.0, top)
+    drawing.curve(([frame.place(point) for point in run] for run in beside), "curve beside")
     runs = clipped_runs(points, 1.0, top)
     drawing.curve(([frame.place(point) for point in run] for run in runs), "curve swr")
     if not runs:
@@ -73,6 +79,19 @@ def swr_plot(name: str, band: BandReport, outcome: BandOutcome) -> Markup:
         drawing.text((middle, _TOP + 18.0), f"above {top:g} over the whole band", "tick")
     _draw_resonance(drawing, frame, outcome)
     return drawing.markup(f"SWR against frequency, {band.name}", _in_words(outcome))
+
+
+def _swr_along(
+    grid: Sequence[ReportPoint], at_transmitter: bool
+) -> tuple[list[Point], list[Point]]:
+    """SWR against frequency where the limit applies, and at the other end of a feed line."""
+    feed = [(point.frequency_mhz, point.swr) for point in grid]
+    far = [
+        (point.frequency_mhz, point.transmitter_swr)
+        for point in grid
+        if point.transmitter_swr is not None
+    ]
+    return (far, feed) if at_transmitter and far else (feed, far)
 
 
 def _top_of_axis(points: Sequence[Point], limit: float) -> float:

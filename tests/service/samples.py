@@ -27,6 +27,7 @@ from service.contracts.report import (
     ResonanceLine,
 )
 from service.contracts.request import DesignRequest, parse_request
+from tests.service import sample_extras
 
 SURGE_OHM = 850.0
 LOSS_NEPER = 0.085
@@ -57,6 +58,33 @@ def request_fields(**changes: object) -> dict[str, Any]:
     return fields | changes
 
 
+#: Everything a request may say beyond the plain one: line, networks, prices, heights, sets.
+FULL: dict[str, Any] = {
+    "site": {"span_m": 24.0, "height_m": [10.0, 12.0], "ground": "average"},
+    "stock": {
+        "conductors": [
+            {
+                "diameter_mm": 1.5,
+                "price_per_m": 0.425,
+                "insulation": {"thickness_mm": 0.8, "relative_permittivity": 2.3},
+            },
+            {"awg": 12, "item_code": "W-12", "price_per_m": 0.5},
+        ]
+    },
+    "feed": {
+        "transformer_ratios": [1.0, 2.0],
+        "feed_line": {"line": "rg-213", "length_m": 20.0},
+        "positions": [0.5, 0.36],
+        "matching": "per-band",
+        "reference_point": "transmitter",
+    },
+    "power_w": 400.0,
+    "candidates": 3,
+    "largest_set": 3,
+    "rank_by": "worst-case",
+}
+
+
 def request_json(**changes: object) -> str:
     """The same as JSON text."""
     return json.dumps(request_fields(**changes))
@@ -71,6 +99,8 @@ def sample_planned(request: DesignRequest, count: int = 2) -> PlannedDesign:
     """What a worker might hand in for a request: candidates and one report for each."""
     lengths_m = [20.31 + 0.27 * index for index in range(count)]
     reports = tuple(_report(request, rank, length) for rank, length in enumerate(lengths_m, 1))
+    candidates = tuple(_candidate(request, report) for report in reports)
+    whole = candidates[0].required_served == candidates[0].required_total
     result = DesignResult(
         engine_version="0.0-invented",
         ground="invented ground",
@@ -78,7 +108,11 @@ def sample_planned(request: DesignRequest, count: int = 2) -> PlannedDesign:
         solves=789,
         search_s=1.25,
         notes=("An invented note on the search.",),
-        candidates=tuple(_candidate(request, report) for report in reports),
+        candidates=candidates,
+        map_error_percent=0.0173,
+        trade_off=sample_extras.trade_off(candidates),
+        sets=sample_extras.sets(candidates, request),
+        relax=() if whole else ("Invented advice on what to relax.",),
     )
     return PlannedDesign(result=result, reports=reports)
 
@@ -110,7 +144,8 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
     conductor = request.stock.choices()[0]
 
     def at(frequency_mhz: float) -> ReportPoint:
-        return _point(frequency_mhz, length_m, reference_ohm, ratio)
+        point = _point(frequency_mhz, length_m, reference_ohm, ratio)
+        return sample_extras.with_line(point, request)
 
     def spread(low: float, high: float, count: int) -> tuple[ReportPoint, ...]:
         return tuple(at(low + (high - low) * i / (count - 1)) for i in range(count))
@@ -122,8 +157,10 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
             centre=at(band.centre_mhz),
             high=at(band.high_mhz),
             grid=spread(band.low_mhz, band.high_mhz, GRID_POINTS),
+            stress=sample_extras.stress(at(band.centre_mhz), request.power_w),
+            matching=sample_extras.matching(index, request),
         )
-        for band in request.bands
+        for index, band in enumerate(request.bands)
     )
     lowest = min(band.low_mhz for band in request.bands)
     highest = max(band.high_mhz for band in request.bands)
@@ -132,6 +169,8 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
         length_m=length_m,
         conductor=conductor.label,
         diameter_mm=round(conductor.bare_diameter_mm, 4),
+        height_m=max(request.site.heights_m(), default=None),
+        feed_fraction=request.feed.feed_fractions()[-1],
         reference_ohm=reference_ohm,
         transformer_ratio=ratio,
         bands=bands,
@@ -164,32 +203,44 @@ def _resonance(order: int, length_m: float, at: Callable[[float], ReportPoint]) 
 
 def _candidate(request: DesignRequest, report: FeedReport) -> Candidate:
     outcomes = tuple(
-        _outcome(report, index, band.required, band.swr_limit)
+        _outcome(request, report, index, band.required, band.swr_limit)
         for index, band in enumerate(request.bands)
     )
+    conductor = request.stock.choices()[0]
+    price, losses = conductor.price_per_m, [band.centre.line_loss_db for band in report.bands]
     return Candidate(
         rank=report.rank,
         length_m=report.length_m,
         conductor=report.conductor,
         diameter_mm=report.diameter_mm,
-        item_code=request.stock.choices()[0].item_code,
+        item_code=conductor.item_code,
         transformer_ratio=report.transformer_ratio,
         required_served=sum(o.required and o.service == "served" for o in outcomes),
         required_total=sum(o.required for o in outcomes),
         weighted_served=0.8125,
         swr_worst=max(o.swr_worst for o in outcomes if o.required),
+        loss_db=max((each for each in losses if each is not None), default=None),
+        cost=None if price is None else round(price * report.length_m, 2),
+        height_m=report.height_m,
+        feed_fraction=report.feed_fraction,
         bands=outcomes,
         why=f"Invented reason for rank {report.rank}.",
         compromise=f"Invented compromise of candidate {report.rank}.",
+        improvements=(f"Invented improvement of candidate {report.rank}.",),
+        trims=sample_extras.trims(outcomes),
+        steadiness=sample_extras.steadiness(outcomes, request),
     )
 
 
-def _outcome(report: FeedReport, index: int, required: bool, limit: float) -> BandOutcome:
+def _outcome(
+    request: DesignRequest, report: FeedReport, index: int, required: bool, limit: float
+) -> BandOutcome:
     band = report.bands[index]
     centre = band.centre.frequency_mhz
     series = [each for each in report.resonances if each.kind == "series"]
     near = min(series, key=lambda each: abs(each.frequency_mhz - centre))
-    within = sum(point.swr <= limit for point in band.grid) / len(band.grid)
+    judged = [sample_extras.judged_swr(point, request) for point in band.grid]
+    within = sum(swr <= limit for swr in judged) / len(band.grid)
     service: Service = "partly served" if within else "unserved"
     return BandOutcome(
         name=band.name,
@@ -200,10 +251,10 @@ def _outcome(report: FeedReport, index: int, required: bool, limit: float) -> Ba
         resonance_mhz=near.frequency_mhz,
         offset_khz=round(1e3 * (near.frequency_mhz - centre), 3),
         offset_percent=round(100.0 * (near.frequency_mhz / centre - 1.0), 4),
-        swr_low=band.low.swr,
-        swr_centre=band.centre.swr,
-        swr_high=band.high.swr,
-        swr_worst=max(point.swr for point in band.grid),
+        swr_low=sample_extras.judged_swr(band.low, request),
+        swr_centre=sample_extras.judged_swr(band.centre, request),
+        swr_high=sample_extras.judged_swr(band.high, request),
+        swr_worst=max(judged),
         swr_limit=limit,
         reason=f"Invented reason for {band.name}.",
     )
