@@ -21,6 +21,11 @@ from worker.engine.thin_wire import FeedImpedance, feed_impedance
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+#: Radii that stand for all bare wires of a survey.
+_RADII = 3
+#: Series impedances within this part of the median are put in by their first order.
+_ALIKE = 0.6
+
 _Scalar = TypeVar("_Scalar", bound=np.generic)
 
 
@@ -124,6 +129,7 @@ class HungWire:
         return FeedImpedance(
             impedance_ohm=gathered([each.impedance_ohm for each in parts]),
             estimated_error_ohm=gathered([each.estimated_error_ohm for each in parts]),
+            wire_impedance_slope_m=gathered([each.wire_impedance_slope_m for each in parts]),
             unknowns=gathered([each.unknowns for each in parts]),
             gap_m=gathered([each.gap_m for each in parts]),
             converged=gathered([each.converged for each in parts]),
@@ -171,7 +177,7 @@ class HungWire:
 
 
 def survey_impedances(
-    wires: Sequence[HungWire], length_m: ArrayLike, frequency_hz: float
+    wires: Sequence[HungWire], length_m: ArrayLike, frequency_hz: float, *, careful: bool = False
 ) -> ComplexArray:
     """Impedances of several wires at one frequency, solved together and no closer than a survey.
 
@@ -182,6 +188,10 @@ def survey_impedances(
     length_m : array_like, shape (n,)
         Lengths in m, the same for all.
     frequency_hz : float
+    careful : bool
+        Solve every wire by itself and closely; by default bare wires of more than three radii
+        are told from three, for impedance is smooth in the logarithm of the radius, and their
+        metal is put in by its first order, for which the current's own integral is known.
 
     Returns
     -------
@@ -195,21 +205,93 @@ def survey_impedances(
     """
     length = np.asarray(length_m, dtype=np.float64)
     impedance = np.empty((len(wires), length.size), dtype=np.complex128)
-    batches: dict[tuple[int, float], list[int]] = {}
+    batches: dict[tuple[int, float, bool], list[int]] = {}
     for index, wire in enumerate(wires):
-        batches.setdefault((id(wire.grounds), wire.feed_fraction), []).append(index)
-    for members in batches.values():
-        first = wires[members[0]]
-        radii, series = zip(*(wires[i].electrical(frequency_hz) for i in members), strict=True)
-        solved = feed_impedance(
-            length[None, :],
-            np.array(radii)[:, None],
-            frequency_hz,
-            feed_fraction=first.feed_fraction,
-            gap_m=np.array([wires[i].radius_m for i in members])[:, None],
-            wire_impedance_ohm_per_m=np.array(series)[:, None],
-            reflected=None if first.grounds is None else first.grounds.at(frequency_hz),
-            survey=True,
-        )
-        impedance[members] = solved.impedance_ohm
+        key = (id(wire.grounds), wire.feed_fraction, wire.sleeve is None)
+        batches.setdefault(key, []).append(index)
+    for (_, _, bare), members in batches.items():
+        alike = _alike(wires, members, frequency_hz) if bare and not careful else []
+        if len(alike) <= _RADII:
+            alike = []
+        rest = [index for index in members if index not in alike]
+        if alike:
+            chosen = [wires[index] for index in alike]
+            impedance[alike] = _from_few_radii(chosen, length, frequency_hz)
+        if rest:
+            chosen = [wires[index] for index in rest]
+            impedance[rest] = _each_by_itself(chosen, length, frequency_hz, survey=not careful)
     return impedance
+
+
+def _alike(wires: Sequence[HungWire], members: list[int], frequency_hz: float) -> list[int]:
+    """The members whose metal is near enough to the usual one for its first order to do."""
+    series = np.array([wires[index].electrical(frequency_hz)[1] for index in members])
+    usual = np.median(series.real) + 1j * np.median(series.imag)
+    near = np.abs(series - usual) <= _ALIKE * np.abs(usual)
+    return [index for index, is_near in zip(members, near.tolist(), strict=True) if is_near]
+
+
+def _each_by_itself(
+    wires: list[HungWire], length_m: FloatArray, frequency_hz: float, *, survey: bool
+) -> ComplexArray:
+    """Any wires of one hanging, each with its own radius, gap and series impedance."""
+    radii, series = zip(*(wire.electrical(frequency_hz) for wire in wires), strict=True)
+    rows = _Rows(np.array(radii), np.array([wire.radius_m for wire in wires]), np.array(series))
+    return _batch(wires[0], length_m, frequency_hz, rows, survey=survey).impedance_ohm
+
+
+def _from_few_radii(
+    wires: list[HungWire], length_m: FloatArray, frequency_hz: float
+) -> ComplexArray:
+    """Bare wires from solutions at three radii: smallest, geometric mean, largest."""
+    electrical = [wire.electrical(frequency_hz) for wire in wires]
+    radius_m = np.array([radius for radius, _ in electrical])
+    series_ohm_per_m = np.array([series for _, series in electrical])
+    nodes_m = np.geomspace(radius_m.min(), radius_m.max(), _RADII)
+    typical = np.full(_RADII, series_ohm_per_m.mean())
+    rows = _Rows(nodes_m, nodes_m, typical)
+    found = _batch(wires[0], length_m, frequency_hz, rows, survey=True)
+    # Where all radii are one, the three nodes are too, and any one of them will do.
+    weights = _lagrange_weights(np.log(nodes_m), np.log(radius_m))
+    departure = (series_ohm_per_m - typical[0])[:, None]
+    impedance: ComplexArray = weights @ found.impedance_ohm + departure * (
+        weights @ found.wire_impedance_slope_m
+    )
+    return impedance
+
+
+@dataclass(frozen=True, slots=True)
+class _Rows:
+    """Radius and gap in m and series impedance in Ω/m of k wires, (k,) each."""
+
+    radius_m: FloatArray
+    gap_m: FloatArray
+    series_ohm_per_m: ComplexArray
+
+
+def _batch(
+    hung: HungWire, length_m: FloatArray, frequency_hz: float, rows: _Rows, *, survey: bool
+) -> FeedImpedance:
+    """Wires of one hanging, (k, n), for n lengths."""
+    return feed_impedance(
+        length_m[None, :],
+        rows.radius_m[:, None],
+        frequency_hz,
+        feed_fraction=hung.feed_fraction,
+        gap_m=rows.gap_m[:, None],
+        wire_impedance_ohm_per_m=rows.series_ohm_per_m[:, None],
+        reflected=None if hung.grounds is None else hung.grounds.at(frequency_hz),
+        survey=survey,
+    )
+
+
+def _lagrange_weights(nodes: FloatArray, at: FloatArray) -> FloatArray:
+    """Weights (m, k) that interpolate from k nodes to m places."""
+    weights = np.ones((len(at), len(nodes)))
+    if np.ptp(nodes) == 0.0:
+        return weights / len(nodes)
+    for index in range(len(nodes)):
+        others = np.delete(nodes, index)
+        factors = (at[:, None] - others) / (nodes[index] - others)
+        weights[:, index] = np.prod(factors, axis=1)
+    return weights

@@ -35,9 +35,9 @@ Survey = Callable[[FloatArray, float], ComplexArray]
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
 STRETCH_WAVELENGTHS: Final = 6.0
 #: Direct solves an interpolant is first built on: so many, and so many more a wavelength.
-#: Measured: 3.5 a wavelength and 6 leave a fifth of the tolerance or less, in free space and
+#: Measured: 3.5 a wavelength and 8 leave a fifth of the tolerance or less, in free space and
 #: over ground, from 2 to 6 wavelengths.
-FIRST_NODES: Final = 6
+FIRST_NODES: Final = 8
 NODES_PER_WAVELENGTH: Final = 3.5
 #: A stretch that this many do not hold is given up. Once doubled they are at most 197, which
 #: a fit of less than a hundred terms goes through, so that it never stops short with a warning.

@@ -102,7 +102,8 @@ class SearchSpace:
         What lies between the wire and the point where the limits apply.
     survey : callable, optional
         Impedances of all the wires, shape (k, n), for n lengths in m at one frequency in Hz,
-        solved together; without it each wire's own model is asked in turn.
+        solved together, more carefully where the third argument says so; without it each
+        wire's own model is asked in turn.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
@@ -113,7 +114,7 @@ class SearchSpace:
     site_longest_m: float
     ratios: tuple[float, ...]
     feeding: Feeding
-    survey: Callable[[FloatArray, float], ComplexArray] | None = None
+    survey: Callable[[FloatArray, float, bool], ComplexArray] | None = None
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -129,10 +130,10 @@ class SearchSpace:
             self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
         )
 
-    def surveyed(self, length_m: FloatArray, frequency_hz: float) -> ComplexArray:
+    def surveyed(self, length_m: FloatArray, frequency_hz: float, *, careful: bool) -> ComplexArray:
         """Impedances of all wires in Ω at one frequency in Hz; shape (k, n) for n lengths."""
         if self.survey is not None:
-            return self.survey(length_m, frequency_hz)
+            return self.survey(length_m, frequency_hz, careful)
         at_hz = np.full(length_m.shape, frequency_hz)
         return np.array([each.model.solve(length_m, at_hz).impedance_ohm for each in self.wires])
 

@@ -104,7 +104,9 @@ class Hanging:
                 at_transmitter=feed.reference_point == "transmitter",
                 matched=feed.matching == "per-band",
             ),
-            survey=lambda length_m, frequency_hz: survey_impedances(hung, length_m, frequency_hz),
+            survey=lambda length_m, frequency_hz, careful: survey_impedances(
+                hung, length_m, frequency_hz, careful=careful
+            ),
         )
 
     def wire(self, way: Way, ground: Ground | None = None) -> StockWire:

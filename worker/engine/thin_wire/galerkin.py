@@ -36,12 +36,15 @@ class PortSolution:
         The same without the highest degree, for the error estimate.
     even, odd
         Coefficients (B, unknowns, P) of the currents; odd is zero where all ports are central.
+    current_products
+        Integrals (B, P, P) along the wire of the product of the currents of two ports.
     """
 
     admittance: ComplexArray
     coarse_admittance: ComplexArray
     even: ComplexArray
     odd: ComplexArray
+    current_products: ComplexArray
 
 
 def solve_ports(
@@ -75,9 +78,14 @@ def solve_ports(
     count, ports = port_position_m.shape
     admittance = np.zeros((count, ports, ports), dtype=complex)
     coarse_admittance = np.zeros_like(admittance)
+    products = np.zeros_like(admittance)
+    # Over both halves; symmetric, as the rest is made to be.
+    half = mesh.overlap(weights)
+    overlap = half + np.swapaxes(half, 1, 2)
     currents = {parity: np.zeros((count, mesh.unknowns, ports), complex) for parity in (1, -1)}
     for parity in (1, -1) if np.any(port_position_m) else (1,):
         matrix = _matrix(mesh, nodes, weights, direct, mirrored, parity, reflected)
+        matrix += mesh.wire_impedance_ohm_per_m[:, None, None] * overlap
         source = mesh.test_current((here + parity * there) * weights[:, None, :])
         # An odd current vanishes at the centre, so its first unknown goes.
         kept = np.ones(mesh.unknowns, dtype=bool)
@@ -87,7 +95,9 @@ def solve_ports(
         response, solution = _respond(matrix, source, all_kept)
         admittance += response
         currents[parity][:, all_kept] = solution
-    return PortSolution(admittance, coarse_admittance, currents[1], currents[-1])
+        along = currents[parity]
+        products += np.swapaxes(along, 1, 2) @ (overlap @ along)
+    return PortSolution(admittance, coarse_admittance, currents[1], currents[-1], products)
 
 
 def _respond(
@@ -118,7 +128,7 @@ def _matrix(
     .. math::
 
         A_{mn} = \frac{j\eta}{4\pi} \Big[ k \iint f_m f_n (K + 4\pi g_A)
-                 - \frac1k \iint f_m' f_n' (K + 4\pi g_\Phi) \Big] + Z_w \int f_m f_n,
+                 - \frac1k \iint f_m' f_n' (K + 4\pi g_\Phi) \Big],
 
     twice the integrals over half the wire, with the kernel to the mirrored half added for an even
     function and subtracted for an odd one; the charge of an even current is odd.
@@ -134,8 +144,6 @@ def _matrix(
         electric += extra[1]
     k = mesh.wavenumber_per_m[:, None, None]
     matrix = (0.5j * FREE_SPACE_IMPEDANCE_OHM / pi) * (k * magnetic - electric / k)
-    if np.any(mesh.wire_impedance_ohm_per_m):
-        matrix += 2.0 * mesh.wire_impedance_ohm_per_m[:, None, None] * mesh.overlap(weights)
     symmetric: ComplexArray = 0.5 * (matrix + np.swapaxes(matrix, 1, 2))
     return symmetric
 

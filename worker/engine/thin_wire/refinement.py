@@ -62,6 +62,7 @@ class Solved:
 
     mesh: Discretisation
     impedance_ohm: ComplexArray
+    wire_impedance_slope_m: ComplexArray
     estimated_error_ohm: FloatArray
     converged: NDArray[np.bool_]
     port_voltage: ComplexArray
@@ -104,6 +105,8 @@ def _solve(
     ports = solve_ports(mesh, part.port_position_m, part.gap_m, part.sigma_m, reflected)
     sharp = _sharp_admittances(part)
     voltage, impedance = _feed(part, ports.admittance + sharp)
+    # Stationary in the current: dZ/dz is the integral of I^2 over the square at the feed.
+    products = np.einsum("bp,bpq,bq->b", voltage, ports.current_products, voltage)
     _, coarse = _feed(part, ports.coarse_admittance + sharp)
     characteristic = 120.0 * (np.log(part.length_m / part.radius_m) - 1.0)
     per_radian = (characteristic**2 + np.abs(impedance) ** 2) / characteristic
@@ -111,6 +114,7 @@ def _solve(
     return Solved(
         mesh=mesh,
         impedance_ohm=impedance,
+        wire_impedance_slope_m=products * impedance**2,
         estimated_error_ohm=error,
         converged=error <= tolerance_rad * per_radian,
         port_voltage=voltage,

@@ -45,6 +45,9 @@ class FeedImpedance:
     estimated_error_ohm
         Half the change from the next lower degree, plus what an error of 2e-5 rad in electrical
         half length would cause, for what that comparison cannot see.
+    wire_impedance_slope_m
+        Change of the impedance with `wire_impedance_ohm_per_m`: the integral of the squared
+        current along the wire over its square at the feed.
     unknowns
         Unknowns of the linear system solved, per parity of the current.
     gap_m
@@ -58,6 +61,7 @@ class FeedImpedance:
 
     impedance_ohm: ComplexArray
     estimated_error_ohm: FloatArray
+    wire_impedance_slope_m: ComplexArray
     unknowns: NDArray[np.intp]
     gap_m: FloatArray
     converged: NDArray[np.bool_]
@@ -167,6 +171,7 @@ def feed_impedance(
     )
     count = batch.length_m.size
     impedance = np.zeros(count, dtype=complex)
+    slope = np.zeros(count, dtype=complex)
     error = np.zeros(count)
     unknowns = np.zeros(count, dtype=np.intp)
     converged = np.zeros(count, dtype=bool)
@@ -177,12 +182,14 @@ def feed_impedance(
             break
         for rows, solved in solve_level(batch, pending, level, reflected, tolerance_rad):
             impedance[rows] = solved.impedance_ohm
+            slope[rows] = solved.wire_impedance_slope_m
             error[rows] = solved.estimated_error_ohm
             unknowns[rows] = solved.mesh.unknowns
             converged[rows] = solved.converged
     return FeedImpedance(
         impedance_ohm=impedance.reshape(batch.shape),
         estimated_error_ohm=error.reshape(batch.shape),
+        wire_impedance_slope_m=slope.reshape(batch.shape),
         unknowns=unknowns.reshape(batch.shape),
         gap_m=batch.gap_m.reshape(batch.shape),
         converged=converged.reshape(batch.shape),
