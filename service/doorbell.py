@@ -64,10 +64,7 @@ class Doorbell:
             self._waiting = min(self._waiting + 1, _MOST_WAITING)
             self._changed.notify()
             if self._thread is None:
-                self._thread = threading.Thread(
-                    target=self._send, args=(self._app,), name="doorbell", daemon=True
-                )
-                self._thread.start()
+                self._begin(self._app)
 
     def close(self) -> None:
         """Send what waits to be rung, for a short time, and give back the connection."""
@@ -79,7 +76,18 @@ class Doorbell:
         if self._app is not None:
             self._app.close()
 
+    def _begin(self, app: Celery) -> None:
+        thread = threading.Thread(target=self._send, args=(app,), name="doorbell", daemon=True)
+        try:
+            thread.start()
+        except RuntimeError as error:
+            # The machine has no thread to spare just now, perhaps for the next ring.
+            _log.warning("the doorbell did not ring: %s", error)
+        else:
+            self._thread = thread
+
     def _send(self, app: Celery) -> None:
+        silent = False
         while self._take_one():
             try:
                 app.send_task(TASK, retry=False)
@@ -87,9 +95,17 @@ class Doorbell:
                 with self._changed:
                     # The broker is away: the other rings would only find out the same.
                     self._waiting = 0
-                _log.warning(
-                    "the doorbell did not ring, workers will find the job by sweeping: %s", error
+                # Told once an outage, for it is rung again and again while work waits.
+                _log.log(
+                    logging.DEBUG if silent else logging.WARNING,
+                    "the doorbell did not ring, workers will find the job by sweeping: %s",
+                    error,
                 )
+                silent = True
+            else:
+                if silent:
+                    _log.warning("the doorbell rings again")
+                silent = False
 
     def _take_one(self) -> bool:
         with self._changed:

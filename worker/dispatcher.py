@@ -18,6 +18,7 @@ import socket
 import threading
 import time
 import uuid
+from contextlib import closing
 from dataclasses import dataclass
 from multiprocessing.connection import Connection
 from multiprocessing.context import SpawnContext, SpawnProcess
@@ -71,13 +72,16 @@ def serve(
     finally:
         for slot in slots:
             slot.ask_to_stop()
+        until_s = time.monotonic() + _STOP_PATIENCE_S
         for slot in slots:
-            slot.await_stop()
+            slot.await_stop(until_s)
 
 
 def main(plan: PlanFunction | None = None) -> None:
     """Run workers alone, until SIGTERM or SIGINT; `plan` is that of `serve`."""
     logging.basicConfig(level=logging.INFO, format="%(asctime)s %(processName)s %(message)s")
+    # It tells at every look at the schema of which kind the database is.
+    logging.getLogger("alembic").setLevel(logging.WARNING)
     asked, stop = StopFlag(), threading.Event()
     for number in (signal.SIGTERM, signal.SIGINT):
         signal.signal(number, lambda _number, _frame: asked.set())
@@ -87,6 +91,8 @@ def main(plan: PlanFunction | None = None) -> None:
         time.sleep(_SUPERVISE_S)
     stop.set()
     supervisor.join()
+    if not asked.is_set():
+        raise SystemExit("The supervisor of the workers broke down; the log above says why.")
 
 
 class StopFlag:
@@ -131,10 +137,10 @@ class _Slot:
         if self.process is not None and self.process.is_alive():
             self.process.terminate()
 
-    def await_stop(self) -> None:
+    def await_stop(self, until_s: float) -> None:
         if self.process is None:
             return
-        self.process.join(_STOP_PATIENCE_S)
+        self.process.join(max(0.0, until_s - time.monotonic()))
         if self.process.is_alive():
             _log.error("worker %s did not stop, killing it", self.name)
             self.process.kill()
@@ -144,22 +150,21 @@ class _Slot:
     def _start(self) -> None:
         # A name is never used twice, so that what a dead worker held is known by it.
         self.name = f"{socket.gethostname()}-{self.index}-{uuid.uuid4().hex[:8]}"
-        theirs, self.lifeline = self.context.Pipe(duplex=False)
-        process = self.context.Process(
-            target=_work, args=(self.settings, self.plan, self.name, theirs), name=self.name
-        )
         self.started_at = time.monotonic()
         try:
-            process.start()
+            theirs, self.lifeline = self.context.Pipe(duplex=False)
+            # The worker gets an end of its own; this one would only be left over.
+            with theirs:
+                process = self.context.Process(
+                    target=_work, args=(self.settings, self.plan, self.name, theirs), name=self.name
+                )
+                process.start()
         except OSError:
             _log.exception("no worker could be started, trying again")
             self._pause()
-            self.lifeline.close()
+            self._cut_lifeline()
         else:
             self.process = process
-        finally:
-            # Only the worker may hold its end, or the pipe would not close with the supervisor.
-            theirs.close()
 
     def _bury(self, process: SpawnProcess) -> None:
         status = process.exitcode
@@ -171,8 +176,12 @@ class _Slot:
             self._pause()
         process.close()
         self.process = None
+        self._cut_lifeline()
+
+    def _cut_lifeline(self) -> None:
         if self.lifeline is not None:
             self.lifeline.close()
+            self.lifeline = None
 
     def _pause(self) -> None:
         """Wait a little, and ever longer, before the next start where workers die young."""
@@ -184,16 +193,12 @@ class _Slot:
 def _give_back(settings: Settings, worker: str) -> None:
     """Give back at once what a dead worker held, rather than when its lease runs out."""
     try:
-        store = open_store(settings, patience_s=_BURIAL_PATIENCE_S)
-    except SpanwrightError:
-        _log.warning("the store is away, what %s held waits for its lease", worker)
-        return
-    try:
-        jobs.bury(store, worker, settings.max_attempts)
-    except StoreUnavailable:
-        _log.warning("the store is away, what %s held waits for its lease", worker)
-    finally:
-        store.close()
+        with closing(open_store(settings, patience_s=_BURIAL_PATIENCE_S)) as store:
+            jobs.bury(store, worker, settings.max_attempts)
+    except SpanwrightError as error:
+        _log.warning("what worker %s held waits for its lease: %s", worker, error)
+    except Exception:  # noqa: BLE001  # without its supervisor no worker would be started again
+        _log.exception("what worker %s held waits for its lease", worker)
 
 
 def _work(settings: Settings, plan: PlanFunction | None, name: str, lifeline: Connection) -> None:
@@ -204,11 +209,13 @@ def _work(settings: Settings, plan: PlanFunction | None, name: str, lifeline: Co
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     signal.signal(signal.SIGTERM, lambda _number, _frame: stopping.set())
     threading.Thread(target=_watch, args=(lifeline, stopping), daemon=True).start()
-    store = open_store(settings)
     try:
+        store = open_store(settings)
+    except SpanwrightError as error:
+        _log.error("worker %s cannot begin: %s", name, error)
+        raise SystemExit(1) from error
+    with closing(store):
         _poll(store, settings, plan or _real_plan(), name, stopping)
-    finally:
-        store.close()
 
 
 def _real_plan() -> PlanFunction:

@@ -212,6 +212,24 @@ def test_a_request_sent_again_does_not_ring(own_redis: RedisServer, store: Store
     assert rings_in(own_redis) == 1
 
 
+def test_an_outage_of_the_broker_is_told_once_and_so_is_its_end(
+    own_redis: RedisServer, caplog: pytest.LogCaptureFixture
+) -> None:
+    def told(words: str) -> list[int]:
+        return [each.levelno for each in caplog.records if words in each.getMessage()]
+
+    own_redis.kill()
+    with closing(bell(own_redis.url)) as doorbell, caplog.at_level(logging.DEBUG):
+        for times in (1, 2, 3):
+            doorbell.ring()
+            until(lambda times=times: len(told("did not ring")) == times)  # type: ignore[misc]  # mypy does not infer a lambda's default
+        own_redis.start()
+        doorbell.ring()
+        until(lambda: told("rings again"))
+    assert told("did not ring") == [logging.WARNING, logging.DEBUG, logging.DEBUG]
+    assert told("rings again") == [logging.WARNING]
+
+
 @pytest.mark.parametrize("trouble", ["killed", "frozen"])
 def test_a_broker_in_trouble_holds_no_one_up_and_rings_again_when_well(
     own_redis: RedisServer, trouble: str, caplog: pytest.LogCaptureFixture

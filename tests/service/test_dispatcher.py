@@ -9,6 +9,7 @@ import sys
 import threading
 import time
 from collections.abc import Iterator
+from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
@@ -19,6 +20,7 @@ from sqlalchemy.exc import OperationalError
 from sqlalchemy.orm import Session
 
 from service.contracts.progress import Design
+from service.errors import StoreUnavailable
 from service.settings import Settings
 from service.store import designs, jobs
 from service.store.session import Store, open_store
@@ -220,7 +222,86 @@ def test_workers_that_die_young_are_started_ever_more_seldom() -> None:
     assert pauses[-1] == dispatcher._LONGEST_PAUSE_S
 
 
+def test_the_supervisor_outlives_a_burial_that_breaks(
+    monkeypatch: pytest.MonkeyPatch, caplog: pytest.LogCaptureFixture, tmp_path: Path
+) -> None:
+    def breaks(*_: object, **__: object) -> None:
+        raise ZeroDivisionError
+
+    monkeypatch.setattr(jobs, "bury", breaks)
+    settings = short_lived(f"sqlite:///{tmp_path / 'spanwright.db'}")
+    dispatcher._give_back(settings, "the dead")
+    assert "the dead" in caplog.text
+
+
+def test_the_supervisor_does_not_wait_long_for_a_store_that_is_away(
+    monkeypatch: pytest.MonkeyPatch, caplog: pytest.LogCaptureFixture, tmp_path: Path
+) -> None:
+    monkeypatch.setattr(dispatcher, "_BURIAL_PATIENCE_S", 0.1)
+    away = short_lived(f"sqlite:///{tmp_path / 'no such folder' / 'spanwright.db'}")
+    started = time.monotonic()
+    dispatcher._give_back(away, "the dead")
+    assert time.monotonic() - started < 2.0
+    assert "waits for its lease" in caplog.text
+
+
+def test_a_supervisor_that_breaks_down_ends_with_a_failure(settings: Settings) -> None:
+    # A planning that no process of its own can find by name.
+    program = "from worker.dispatcher import main; main(lambda request, progress: None)"
+    run = subprocess.run(
+        [sys.executable, "-c", program],
+        cwd=CHECKOUT,
+        env=os.environ | environment(settings),
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert run.returncode == 1
+    assert "broke down" in run.stderr
+
+
 def test_the_supervisor_loads_no_numerics() -> None:
     program = "import sys, worker.dispatcher; sys.exit('numpy' in sys.modules)"
     run = subprocess.run([sys.executable, "-c", program], cwd=CHECKOUT, check=False)
     assert run.returncode == 0
+
+
+# ------------------------------------------------------------------------- polling
+@contextmanager
+def polling(store: Store, settings: Settings) -> Iterator[Future[None]]:
+    """What a worker does once it is open, in a thread of the test."""
+    stopping = dispatcher.StopFlag()
+    with ThreadPoolExecutor(1) as pool:
+        try:
+            yield pool.submit(dispatcher._poll, store, settings, as_named, "the test", stopping)
+        finally:
+            stopping.set()
+
+
+def test_a_worker_ends_after_so_many_jobs_to_be_replaced(
+    store: Store, settings: Settings, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(dispatcher, "MOST_JOBS", 2)
+    for _ in range(3):
+        submitted(store, "quick")
+    with polling(store, settings) as worker:
+        worker.result(10.0)
+    assert jobs.depth(store) == {"done": 2, "queued": 1}
+
+
+def test_a_worker_waits_for_a_store_that_is_away(
+    store: Store, settings: Settings, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    sweep, left = jobs.sweep, [3]
+
+    def away(store: Store, max_attempts: int) -> jobs.Swept:
+        if left[0]:
+            left[0] -= 1
+            raise StoreUnavailable("away")
+        return sweep(store, max_attempts)
+
+    monkeypatch.setattr(jobs, "sweep", away)
+    design_id = submitted(store, "quick")
+    with polling(store, settings):
+        in_state(store, design_id, "done")
+    assert left == [0]
