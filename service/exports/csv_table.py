@@ -22,6 +22,8 @@ FEED_COLUMNS: Final = (
     "reactance_ohm",
     "reflection",
     "swr",
+    "transmitter_swr",
+    "line_loss_db",
 )
 
 
@@ -32,7 +34,8 @@ def feed_report_csv(report: FeedReport) -> str:
     ----------
     report : FeedReport
         As stored. Resistance and reactance are those at the feed point; reflection and SWR
-        those on the line side of the transformer.
+        those on the line side of the transformer and the matching network. The last two
+        columns belong to the other end of the feed line and are empty without one.
 
     Returns
     -------
@@ -64,4 +67,6 @@ def _figures(point: ReportPoint) -> tuple[str, ...]:
         digits.resistance_ohm(point.reactance_ohm),
         digits.reflection(point.reflection),
         digits.swr(point.swr),
+        "" if point.transmitter_swr is None else digits.swr(point.transmitter_swr),
+        "" if point.line_loss_db is None else f"{point.line_loss_db:.3f}",
     )

@@ -10,7 +10,6 @@ from service.contracts.formats import (
     component,
     decibels,
     edge_mhz,
-    feed_place,
     khz,
     khz_per_cm,
     listed,
@@ -20,7 +19,6 @@ from service.contracts.formats import (
     money,
     ohms,
     ordinal,
-    part,
     percent,
     ratio,
     reflection,
@@ -65,6 +63,18 @@ def fine_mhz(value: float) -> str:
 def share(value: float) -> str:
     """A part of a whole as per cent, on one line."""
     return _unbroken(formats.share(value))
+
+
+def part(fraction: float) -> str:
+    """A place along the wire as per cent of its length, on one line."""
+    return _unbroken(formats.part(fraction))
+
+
+def feed_place(fraction: float, length_m: float) -> str:
+    """Where a wire is fed, its figures each on one line."""
+    return (
+        formats.feed_place(fraction, length_m).replace(" m ", "\u00a0m ").replace(" %", "\u00a0%")
+    )
 
 
 def swr(value: float) -> str:

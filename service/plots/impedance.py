@@ -78,7 +78,8 @@ def impedance_plot(report: FeedReport, paper: Paper = "wide") -> Markup:
     drawing = Drawing(f"rx-{report.rank}-{paper}", width, top + height + 36.0, f"rx {paper}")
     _draw_bands(drawing, frame, report.bands, labels)
     _draw_axes(drawing, frame, most_ticks)
-    _draw_target(drawing, frame, report)
+    if not any(band.matching for band in report.bands):
+        _draw_target(drawing, frame, report)
     for quantity, read in _CURVES:
         points = [(p.frequency_mhz, read(p)) for p in report.sweep]
         runs = clipped_runs(points, lowest_ohm, highest_ohm)

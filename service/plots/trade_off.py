@@ -1,4 +1,4 @@
-"""What the wires of the front trade: served width against length, or against worst SWR."""
+"""What the wires of the front trade: served width against length, SWR, cost or loss."""
 
 from __future__ import annotations
 
@@ -13,7 +13,14 @@ from service.contracts.candidate import TradeOff
 from service.plots.drawing import Drawing
 from service.plots.scales import LinearScale, LogScale, Point, linear_ticks, log_ticks
 
-Against = Literal["length", "swr"]
+Against = Literal["length", "swr", "cost", "loss"]
+
+_AXES: Final[dict[Against, str]] = {
+    "length": "length, m",
+    "swr": "worst SWR",
+    "cost": "cost of the wire",
+    "loss": "line loss, dB",
+}
 
 _WIDTH: Final = 344.0
 _LEFT: Final = 38.0
@@ -43,7 +50,7 @@ class _Frame:
     served: LinearScale
 
     def place(self, each: TradeOff, against: Against) -> Point:
-        return self.across(_value(each, against)), self.served(100.0 * each.weighted_served)
+        return self.across(_value(each, against) or 0.0), self.served(100.0 * each.weighted_served)
 
 
 def trade_off_plot(front: Sequence[TradeOff], against: Against) -> Markup:
@@ -54,26 +61,38 @@ def trade_off_plot(front: Sequence[TradeOff], against: Against) -> Markup:
     front : sequence of TradeOff
         At least one; those with a rank are marked by it, those that serve fewer required
         bands than another are drawn small.
-    against : {"length", "swr"}
+    against : {"length", "swr", "cost", "loss"}
+        What is paid; wires of which it is not known are left out.
     """
-    drawn = [each for each in front if against == "length" or each.swr_worst <= _HIGHEST_SWR]
+    drawn = [each for each in front if _is_drawn(_value(each, against), against)]
     drawing = Drawing(f"trade-{against}", _WIDTH, _HEIGHT, "trade")
     if drawn:
         frame = _frame(drawn, against)
         _draw_axes(drawing, frame, against)
         _draw_marks(drawing, frame, drawn, against)
-    name = "length of the wire" if against == "length" else "worst SWR"
-    return drawing.markup(f"Served width against {name}", _in_words(front, drawn))
+    return drawing.markup(f"Served width against {_AXES[against]}", _in_words(front, drawn))
 
 
-def _value(each: TradeOff, against: Against) -> float:
-    return each.length_m if against == "length" else each.swr_worst
+def _value(each: TradeOff, against: Against) -> float | None:
+    match against:
+        case "length":
+            return each.length_m
+        case "swr":
+            return each.swr_worst
+        case "cost":
+            return each.cost
+        case "loss":
+            return each.loss_db
+
+
+def _is_drawn(value: float | None, against: Against) -> bool:
+    return value is not None and (against != "swr" or value <= _HIGHEST_SWR)
 
 
 def _frame(front: Sequence[TradeOff], against: Against) -> _Frame:
     served = [100.0 * each.weighted_served for each in front]
     low, high = _with_margin(min(served), max(served), least=0.0, most=100.0)
-    values = [_value(each, against) for each in front]
+    values = [_value(each, against) or 0.0 for each in front]
     left, right = _with_margin(min(values), max(values), least=1.0 if against == "swr" else 0.0)
     is_log = against == "swr" and right > _LINEAR_UP_TO
     return _Frame(
@@ -102,8 +121,7 @@ def _draw_axes(drawing: Drawing, frame: _Frame, against: Against) -> None:
         drawing.text((x, _BOTTOM + 16.0), f"{value:g}", "tick")
     drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
     drawing.text((2.0, _TOP - 11.0), "served width by weight, %", "unit", "start")
-    unit = "length, m" if against == "length" else "worst SWR"
-    drawing.text((_RIGHT, _BOTTOM + 31.0), unit, "unit", "end")
+    drawing.text((_RIGHT, _BOTTOM + 31.0), _AXES[against], "unit", "end")
 
 
 def _draw_marks(
@@ -169,5 +187,5 @@ def _in_words(front: Sequence[TradeOff], drawn: Sequence[TradeOff]) -> str:
         if each.rank is not None
     ]
     left_out = len(front) - len(drawn)
-    more = f" {left_out} with an SWR above {_HIGHEST_SWR:g} are not drawn." if left_out else ""
+    more = f" {left_out} of them beyond the axis or unknown on it." if left_out else ""
     return f"{len(front)} wires; {formats.listed(shown) or 'none of them a candidate'}.{more}"
