@@ -152,6 +152,9 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
     bool
         False if the job was taken away in the meantime.
     """
+    # Written out before the transaction, which holds up every other writer of SQLite.
+    result = planned.result.model_dump_json()
+    reports = [(each.rank, each.model_dump_json()) for each in planned.reports]
 
     def work(session: Session) -> bool:
         moment = now(session)
@@ -172,13 +175,12 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
             ResultRow(
                 design_id=job.design_id,
                 engine_version=planned.result.engine_version,
-                result=planned.result.model_dump_json(),
+                result=result,
                 created_at=moment,
             )
         )
         session.add_all(
-            ReportRow(design_id=job.design_id, rank=each.rank, report=each.model_dump_json())
-            for each in planned.reports
+            ReportRow(design_id=job.design_id, rank=rank, report=report) for rank, report in reports
         )
         return True
 
