@@ -121,6 +121,15 @@ def ordinal(number: int) -> str:
     return f"{number}{ {1: 'st', 2: 'nd', 3: 'rd'}.get(number % 10, 'th') }"
 
 
+def departed(what: str) -> str:
+    """A departure as it is said of the wire: ``when 1 % longer``, ``over wetter ground``."""
+    if what.endswith("ground"):
+        return f"over {what}"
+    if what.endswith("insulation"):
+        return f"with {what}"
+    return f"when {what}"
+
+
 def listed(words: tuple[str, ...] | list[str], last: str = "and") -> str:
     """Words joined as in a sentence: ``a, b and c``, or with another ``last`` joint."""
     if len(words) <= 1:

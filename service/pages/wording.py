@@ -95,15 +95,6 @@ def tolerances_in_words(tolerances: Tolerances | None) -> str:
     return f"{text[:1].upper()}{text[1:]}."
 
 
-def departed(what: str) -> str:
-    """A departure as it is said of the wire: ``when 1 % longer``, ``over wetter ground``."""
-    if what.endswith("ground"):
-        return f"over {what}"
-    if what.endswith("insulation"):
-        return f"with {what}"
-    return f"when {what}"
-
-
 def _places(feed: Feed) -> str:
     if feed.positions == "anywhere":
         return "Fed anywhere along the wire"

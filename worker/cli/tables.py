@@ -2,25 +2,25 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from typing import Final
 
 from rich.box import SIMPLE_HEAD
-from rich.console import Console, Group, RenderableType
-from rich.padding import Padding
+from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
 from service.contracts import formats
 from service.contracts.band_lists import BandList
-from service.contracts.candidate import BandOutcome, Candidate, DesignResult
+from service.contracts.candidate import DesignResult, TradeOff
 from service.contracts.progress import DesignSummary
-from service.contracts.report import BandReport, FeedReport, ReportPoint
+from service.contracts.report import FeedReport, MatchingPart, ReportPoint
 from service.contracts.sweep import Sweep, SweepPoint
 from service.errors import SpanwrightError
+from worker.cli.candidate_lines import candidate_in_full
 
-_SERVICE_STYLE: Final = {"served": "bold", "partly served": "", "unserved": "dim"}
-_LEVELS: Final = "▁▂▃▄▅▆▇█"
+#: Lines of the trade-off that are printed; --json has all of them.
+_MOST_TRADED: Final = 8
 
 
 def show_result(console: Console, result: DesignResult, reports: Iterable[FeedReport]) -> None:
@@ -28,12 +28,32 @@ def show_result(console: Console, result: DesignResult, reports: Iterable[FeedRe
     by_rank = {report.rank: report for report in reports}
     console.print(_ranking(result))
     for candidate in result.candidates:
-        console.print(_candidate(candidate, by_rank.get(candidate.rank)))
+        console.print(candidate_in_full(candidate, by_rank.get(candidate.rank)))
+    for chosen in result.sets:
+        console.print(Text(f"\nA set of {len(chosen.ranks)} dipoles", style="bold"))
+        console.print(
+            Text(
+                f"{chosen.required_served} of {chosen.required_total} required bands served, "
+                f"{formats.share(chosen.weighted_served)} of the width by weight. {chosen.why}"
+            )
+        )
+    if result.relax:
+        console.print(Text("\nWhat to relax", style="bold"))
+    for each in result.relax:
+        console.print(Text(f"- {each}"))
+    if result.trade_off:
+        console.print(Text())
+        console.print(_trade_off(result.trade_off))
     for note in result.notes:
         console.print(Text(f"Note: {note}"))
+    map_error = (
+        f", read from maps off by {result.map_error_percent:.2g} % of |Z| at most"
+        if result.map_error_percent
+        else ""
+    )
     console.print(
         f"{result.combinations:,} combinations of length, conductor and transformer compared "
-        f"from {result.solves:,} solutions in {result.search_s:.1f} s; {result.ground}; "
+        f"from {result.solves:,} solutions in {result.search_s:.1f} s{map_error}; {result.ground}; "
         f"engine {result.engine_version}.",
         style="dim",
     )
@@ -42,13 +62,16 @@ def show_result(console: Console, result: DesignResult, reports: Iterable[FeedRe
 def show_report(console: Console, report: FeedReport) -> None:
     """Print a feed-impedance report: edges and centre of each band, then resonances."""
     table = _table("Feed-impedance report, candidate " + str(report.rank))
-    for title in ("band", "at", "MHz", "R Ω", "X Ω", "|Γ|", "SWR"):
+    with_line = any(band.centre.transmitter_swr is not None for band in report.bands)
+    far_end = ("SWR at tx", "loss dB") if with_line else ()
+    for title in ("band", "at", "MHz", "R Ω", "X Ω", "|Γ|", "SWR", *far_end):
         table.add_column(title, justify="left" if title in ("band", "at") else "right")
     for band in report.bands:
         for place, point in (("low", band.low), ("centre", band.centre), ("high", band.high)):
             table.add_row(band.name if place == "low" else "", place, *_point_cells(point))
         table.add_section()
     console.print(table)
+    console.print(_stress(report))
     lines = _table("Resonances of the wire")
     for title in ("order", "kind", "MHz", "R Ω"):
         lines.add_column(title, justify="left" if title == "kind" else "right")
@@ -58,10 +81,14 @@ def show_report(console: Console, report: FeedReport) -> None:
         lines.add_row(str(each.order), kind, frequency, formats.ohms(each.resistance_ohm))
     console.print(lines)
     found = report.provenance
+    matched = any(band.matching for band in report.bands)
     console.print(
         f"R and X at the feed point; |Γ| and SWR behind the "
-        f"{formats.ratio(report.transformer_ratio)} transformer against "
-        f"{formats.ohms(report.reference_ohm)} Ω.\n"
+        f"{formats.ratio(report.transformer_ratio)} transformer"
+        f"{' and the matching network' if matched else ''} against "
+        f"{formats.ohms(report.reference_ohm)} Ω"
+        f"{'; SWR at tx and loss: at the transmitter end of the feed line' if with_line else ''}."
+        "\n"
         f"{found.model}; source gap {found.source_gap_mm:.3g} mm; {found.ground}; "
         f"{found.conductor_loss}; estimated error {found.largest_error_ohm:.2g} Ω at most, "
         f"{found.map_error_percent:.2g} % between solved points.\n"
@@ -141,17 +168,6 @@ def show_error(console: Console, error: SpanwrightError) -> None:
         console.print(Text(f"    {fault.remedy}"))
 
 
-def swr_strip(band: BandReport, limit: float) -> str:
-    """The SWR across a band as a strip of blocks: full height is twice the limit or more."""
-    points = band.grid[:: max(1, len(band.grid) // 10)]
-    top = 2.0 * limit - 1.0
-    cells = []
-    for point in points:
-        height = min(1.0, (point.swr - 1.0) / top)
-        cells.append(_LEVELS[min(len(_LEVELS) - 1, int(height * len(_LEVELS)))])
-    return "".join(cells)
-
-
 def _ranking(result: DesignResult) -> Table:
     table = _table("Candidates, best first")
     for title in ("rank", "length m", "conductor", "ratio", "required", "width", "worst SWR"):
@@ -175,45 +191,75 @@ def _ranking(result: DesignResult) -> Table:
     return table
 
 
-def _candidate(candidate: Candidate, report: FeedReport | None) -> RenderableType:
-    strips = {band.name: band for band in report.bands} if report else {}
-    table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0))
-    for title in ("band", "service", "order", "MHz", "off kHz", "off %", "low", "mid", "high"):
-        left = title in ("band", "service")
-        table.add_column(title, justify="left" if left else "right", no_wrap=True)
-    table.add_column("SWR across", no_wrap=True)
-    for each in candidate.bands:
-        strip = swr_strip(strips[each.name], each.swr_limit) if each.name in strips else ""
-        table.add_row(*_band_cells(each), strip, style=_SERVICE_STYLE[each.service])
-    heading = Text(f"{candidate.rank}.  {_wire_in_words(candidate)}", style="bold")
-    reasons = [Text(f"{each.name}: {each.reason}") for each in candidate.bands]
-    body: list[RenderableType] = [table, Text(), Text(candidate.why), Text(candidate.compromise)]
-    body += [Text(), *reasons]
-    return Group(Text(), heading, Padding(Group(*body), (0, 0, 0, 4)))
+def _trade_off(front: Sequence[TradeOff]) -> Table:
+    table = _table("What the best wires trade")
+    table.padding = (0, 1, 0, 0)
+    with_loss = any(each.loss_db is not None for each in front)
+    with_cost = any(each.cost is not None for each in front)
+    known = (["loss"] if with_loss else []) + (["cost"] if with_cost else [])
+    for title in ("rank", "m", "ratio", "req.", "width", "SWR", *known):
+        table.add_column(title, justify="right")
+    table.add_column("conductor")
+    for each in front[:_MOST_TRADED]:
+        cells = [
+            "–" if each.rank is None else str(each.rank),
+            formats.metres(each.length_m),
+            formats.ratio(each.transformer_ratio),
+            str(each.required_served),
+            formats.share(each.weighted_served),
+            formats.swr(each.swr_worst),
+        ]
+        if with_loss:
+            cells.append("–" if each.loss_db is None else formats.decibels(each.loss_db))
+        if with_cost:
+            cells.append("–" if each.cost is None else formats.money(each.cost))
+        table.add_row(*cells, each.conductor)
+    table.caption = "m: length; req.: required bands served; SWR: the worst; loss: of the line, dB."
+    if len(front) > _MOST_TRADED:
+        table.caption += f" The first {_MOST_TRADED} of {len(front)}; --json has all of them."
+    return table
 
 
-def _wire_in_words(candidate: Candidate) -> str:
-    code = f" [{candidate.item_code}]" if candidate.item_code else ""
-    return f"{formats.metres(candidate.length_m)} m of {candidate.conductor}{code}"
+def _stress(report: FeedReport) -> Table:
+    """Voltage and current at the feed, and the parts of each band's network, where it has one."""
+    matched = any(band.matching for band in report.bands)
+    powers = [band.stress.power_w for band in report.bands if band.stress]
+    at_power = f" at {powers[0]:g} W" if powers else ""
+    table = _table(f"Voltage (peak) and current (rms){at_power}, band centres")
+    table.add_column("band")
+    table.add_column("feed point", justify="right")
+    for title in ("series part", "shunt part", "loss dB") if matched else ():
+        table.add_column(title, justify="right")
+    for band in report.bands:
+        cells = [band.name, "–"]
+        if band.stress is not None:
+            cells[1] = _stressed(band.stress.voltage_peak_v, band.stress.current_rms_a)
+        if band.matching is not None:
+            parts = {each.place: each for each in band.matching.parts}
+            shunt = _part(parts.get("shunt"), f", {band.matching.shunt_at} side")
+            cells += [_part(parts.get("series")), shunt, formats.decibels(band.matching.loss_db)]
+        elif matched:
+            cells += ["none", "none", "–"]
+        table.add_row(*cells)
+    return table
 
 
-def _band_cells(each: BandOutcome) -> tuple[str, ...]:
-    worked = each.order is not None
-    return (
-        each.name if each.required else f"({each.name})",
-        each.service.removesuffix(" served"),
-        str(each.order) if worked else "–",
-        formats.mhz(each.resonance_mhz or 0.0) if worked else "–",
-        formats.khz(each.offset_khz or 0.0) if worked else "–",
-        formats.percent(each.offset_percent or 0.0) if worked else "–",
-        formats.swr(each.swr_low),
-        formats.swr(each.swr_centre),
-        formats.swr(each.swr_high),
-    )
+def _part(part: MatchingPart | None, side: str = "") -> str:
+    if part is None:
+        return "none"
+    value = f"{formats.component(part.value)} {part.unit}{side}"
+    return f"{value}\n{_stressed(part.voltage_peak_v, part.current_rms_a)}"
+
+
+def _stressed(voltage_v: float, current_a: float) -> str:
+    return f"{formats.volts(voltage_v)} V, {formats.amperes(current_a)} A"
 
 
 def _point_cells(point: ReportPoint) -> tuple[str, ...]:
-    return (formats.edge_mhz(point.frequency_mhz), *_electrical_cells(point))
+    cells = (formats.edge_mhz(point.frequency_mhz), *_electrical_cells(point))
+    if point.transmitter_swr is None or point.line_loss_db is None:
+        return cells
+    return (*cells, formats.swr(point.transmitter_swr), formats.decibels(point.line_loss_db))
 
 
 def _electrical_cells(point: ReportPoint | SweepPoint) -> tuple[str, ...]:
