@@ -19,9 +19,8 @@ from worker.engine.thin_wire import LENGTH_RANGE_WAVELENGTHS
 from worker.search.feeding import Feeding
 from worker.search.space import BandGoal, FloatArray, SearchSpace, Solved, WireOffer
 
-#: Tables reach beyond the longest wire, for maps are read at equal electrical length over a
-#: band, and the length a band would want by itself may be a little beyond the site.
-_TABLE_REACH = 1.2
+#: Tables reach this much beyond the longest wire looked at: a departure may be longer.
+_TABLE_REACH = 1.1
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,7 +113,9 @@ class Hanging:
         ground = ground or ground_of(self.request.site.ground)
         grounds = None
         if ground is not None and way.height_m is not None:
-            reach_m = _TABLE_REACH * self.request.site.longest_wire_m
+            # Maps are read at equal electrical length: at the low edge of a band for longer wire.
+            widest = max(band.high_mhz / band.low_mhz for band in self.request.bands)
+            reach_m = _TABLE_REACH * widest * self.request.site.longest_wire_m
             key = (ground, way.height_m)
             grounds = self._tables.setdefault(key, GroundTables(ground, way.height_m, reach_m))
         hung = _hung(way.conductor, grounds)
