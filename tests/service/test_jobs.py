@@ -132,6 +132,35 @@ def test_two_claimers_never_get_the_same_job(store: Store, second_store: Store) 
     assert len(set(got)) == number
 
 
+@pytest.mark.parametrize("database_url", ["postgresql"], indirect=True)
+def test_a_claimer_passes_over_the_job_another_is_just_claiming(
+    store: Store, second_store: Store
+) -> None:
+    first, second = submitted(store, "First"), submitted(store, "Second")
+    claiming, claimed_meanwhile = threading.Event(), threading.Event()
+
+    def claim_slowly(session: Session) -> bool:
+        job, _ = session.execute(jobs._NEXT).one()
+        assert job.design_id == first
+        claiming.set()
+        return claimed_meanwhile.wait(3.0)
+
+    with ThreadPoolExecutor(1) as pool:
+        slow = pool.submit(store.write, claim_slowly)
+        assert claiming.wait(5.0)
+        assert claimed(second_store).design_id == second
+        claimed_meanwhile.set()
+        assert slow.result()
+
+
+def test_urgent_jobs_are_claimed_before_those_submitted_earlier(store: Store) -> None:
+    submitted(store, "Ordinary")
+    urgent = submitted(store, "Urgent")
+    sooner = update(JobRow).where(JobRow.design_id == urgent).values(priority=designs.ORDINARY - 1)
+    store.write(lambda session: session.execute(sooner))
+    assert claimed(store).design_id == urgent
+
+
 def test_a_request_this_release_cannot_read_fails_and_does_not_hold_up_the_queue(
     store: Store,
 ) -> None:

@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 import logging
+import os
 import signal
+import subprocess
+import sys
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
-from contextlib import closing
+from contextlib import closing, contextmanager
+from pathlib import Path
 
 import pytest
 from sqlalchemy.exc import IntegrityError
@@ -19,12 +23,30 @@ from service.errors import StoreUnavailable
 from service.settings import Settings
 from service.store import designs, jobs
 from service.store.session import Store, open_store
-from tests.service.databases import short_lived
+from tests.service.databases import environment, short_lived
 from tests.service.plans import as_named
 from tests.service.samples import sample_request
 from tests.service.servers import PostgresServer
-from tests.service.waiting import in_state, until
-from worker.running import Outcome, PlanFunction, ProgressCallback, drain, run_next
+from tests.service.waiting import in_state, process_at, until
+from worker.running import (
+    EXIT_WOULD_NOT_STOP,
+    Outcome,
+    PlanFunction,
+    ProgressCallback,
+    drain,
+    run_next,
+)
+
+CHECKOUT = Path(__file__).parents[2]
+ALONE = """
+from threading import Event
+from service.settings import Settings
+from service.store.session import open_store
+from tests.service.plans import as_named
+from worker.running import run_next
+settings = Settings()
+run_next(open_store(settings), settings, as_named, "alone", Event())
+"""
 
 
 def submitted(store: Store, name: str) -> str:
@@ -49,6 +71,21 @@ def run_meanwhile(
         until(lambda: designs.get(store, design_id).progress.step.startswith("process"))
         meanwhile()
         return ran.result(10.0)
+
+
+@contextmanager
+def alone(settings: Settings) -> Iterator[subprocess.Popen[bytes]]:
+    """One job run in a process of its own, with no one to sweep or bury after it."""
+    with subprocess.Popen(
+        [sys.executable, "-c", ALONE],
+        cwd=CHECKOUT,
+        env=os.environ | environment(settings),
+        stderr=subprocess.DEVNULL,
+    ) as process:
+        try:
+            yield process
+        finally:
+            process.kill()
 
 
 # --------------------------------------------------------------------------- ending
@@ -173,6 +210,42 @@ def test_a_process_that_is_asked_to_stop_gives_its_job_back(
         assert ran.result(5.0) is Outcome.RETURNED
     design = designs.get(store, design_id)
     assert (design.state, design.attempts) == ("queued", 0)
+
+
+def test_a_planning_that_ends_within_the_grace_is_stored_although_it_was_to_stop(
+    store: Store, settings: Settings
+) -> None:
+    patient = settings.model_copy(update={"cancel_grace_s": 30.0})
+    design_id, stopping = submitted(store, "deaf 1"), threading.Event()
+    with ThreadPoolExecutor(1) as pool:
+        ran = pool.submit(run, store, patient, as_named, stopping)
+        until(lambda: designs.get(store, design_id).progress.step.startswith("process"))
+        stopping.set()
+        assert ran.result(10.0) is Outcome.DONE
+    assert designs.get(store, design_id).state == "done"
+
+
+def test_an_overdue_planning_that_does_not_listen_is_settled_and_its_process_ends(
+    store: Store, settings: Settings
+) -> None:
+    design_id = submitted(store, "deaf 60")
+    with alone(settings.model_copy(update={"job_deadline_s": 0.2})) as process:
+        assert process.wait(20.0) == EXIT_WOULD_NOT_STOP
+    design = designs.get(store, design_id)
+    assert design.state == "failed"
+    assert design.failure is not None
+    assert "longer than" in design.failure
+
+
+def test_a_cancelled_planning_that_does_not_listen_is_settled_and_its_process_ends(
+    store: Store, settings: Settings
+) -> None:
+    design_id = submitted(store, "deaf 60")
+    with alone(settings) as process:
+        process_at(store, design_id)
+        jobs.cancel(store, design_id)
+        assert process.wait(20.0) == EXIT_WOULD_NOT_STOP
+    assert designs.get(store, design_id).state == "cancelled"
 
 
 # ----------------------------------------------------------------- a store that is away
