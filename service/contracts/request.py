@@ -15,10 +15,10 @@ from service.contracts.refusals import refusal_of, rule_broken
 from service.contracts.station_site import Site
 from service.contracts.stock import Stock
 
-MOST_CANDIDATES: Final = 20
+MOST_CANDIDATES: Final = 15
 LARGEST_SET: Final = 4
 #: Conductors times heights times places of the feed that one request may search.
-MOST_WAYS: Final = 25
+MOST_WAYS: Final = 15
 LARGEST_REQUEST_BYTES: Final = 64 * 1024
 
 #: No straight wire resonates below this many wavelengths: even a wire only 10 diameters

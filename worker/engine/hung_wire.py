@@ -14,7 +14,9 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from worker.engine.conductor import internal_impedance_ohm_per_m
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.ground import Ground, GroundTable, tabulate
+from worker.engine.ground.table import LONGEST_REACH_WAVELENGTHS
 from worker.engine.insulation import Sleeve, coated_wire
 from worker.engine.material import REFERENCE_TEMPERATURE_C, Material
 from worker.engine.thin_wire import FeedImpedance, feed_impedance
@@ -51,7 +53,10 @@ class GroundTables:
         """The table at one frequency in Hz."""
         table = self._tables.get(frequency_hz)
         if table is None:
-            table = tabulate(self.ground, frequency_hz, self.height_m, self.reach_m)
+            # No wire solved is longer than the tables can be.
+            most_m = LONGEST_REACH_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / frequency_hz
+            reach_m = min(self.reach_m, most_m)
+            table = tabulate(self.ground, frequency_hz, self.height_m, reach_m)
             self._tables[frequency_hz] = table
         return table
 

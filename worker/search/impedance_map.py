@@ -45,7 +45,7 @@ MOST_NODES: Final = 100
 #: Of the gaps between solves every fifth is checked at first, and must agree to this part of
 #: the tolerance, for the gaps not checked are worse; else all are checked from then on.
 _CHECK_EVERY: Final = 5
-_FEW_CHECKS_MARGIN: Final = 0.2
+_FEW_CHECKS_MARGIN: Final = 0.5
 #: A band narrower than this part of its frequency is mapped at its edges alone, a wider one
 #: at its centre too.
 _NARROW_BAND: Final = 0.03
@@ -188,6 +188,7 @@ def map_band_together(
     low_hz: float,
     high_hz: float,
     limits_m: tuple[float, float],
+    finer: int = 1,
 ) -> tuple[BandMap, ...]:
     """Map the feed impedances of several wires over a band and a range of lengths.
 
@@ -203,6 +204,8 @@ def map_band_together(
         Edges of the band in Hz.
     limits_m : (float, float)
         Limits of length in m.
+    finer : int
+        So many times as many steps from edge to edge as usual.
 
     Returns
     -------
@@ -214,8 +217,8 @@ def map_band_together(
     NotConverged
         If a stretch still departs from fresh solves with the most nodes allowed.
     """
-    count = 2 if high_hz < (1.0 + _NARROW_BAND) * low_hz else 3
-    frequencies_hz = np.linspace(low_hz, high_hz, count)
+    steps = finer * (1 if high_hz < (1.0 + _NARROW_BAND) * low_hz else 2)
+    frequencies_hz = _chebyshev_points(low_hz, high_hz, steps + 1)
     shortest_m_hz = SPEED_OF_LIGHT_M_PER_S * shortest_wavelengths
     # Read at equal electrical length: the low edge is asked for longer wire, the high for shorter.
     least = max(limits_m[0] * low_hz, shortest_m_hz)

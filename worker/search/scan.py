@@ -12,6 +12,7 @@ from typing import Final
 
 import numpy as np
 
+from worker.engine.errors import NotConverged
 from worker.search.impedance_map import (
     TOLERANCE_OHM,
     TOLERANCE_RELATIVE,
@@ -28,10 +29,16 @@ ProgressCallback = Callable[[float, str], None]
 #: Mapping takes about this part of the time, comparing the rest.
 _MAP_PART: Final = 0.75
 
-#: Each map is held to so many fresh solves, this far into the band, at lengths by this section.
-_PROBES: Final = 2
+#: A band's maps are held to so many fresh solves, at least so many a map, this far into the
+#: band, at lengths by this section.
+_PROBES: Final = 12
+_LEAST_PROBES: Final = 2
 _PROBE_AT: Final = 0.23
 _GOLDEN: Final = 0.618033988749895
+
+#: Whether wires are solved with care, and how many times as many steps of frequency as usual a
+#: band is mapped in: tried in turn until fresh solves agree.
+_ATTEMPTS: Final = ((False, 1), (True, 1), (True, 2), (True, 4))
 
 #: Lengths scored at a time: what they need then stays in the processor's cache.
 _CHUNK_LENGTHS: Final = 2048
@@ -129,8 +136,10 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
     maps, largest_miss = _map_wires(space, progress)
     for index, wire in enumerate(space.wires):
         part = _MAP_PART + (1.0 - _MAP_PART) * index / len(space.wires)
-        progress(part, f"comparing {len(lengths_m)} lengths of wire {index + 1}")
+        step = f"comparing {len(lengths_m)} lengths of wire {index + 1} of {len(space.wires)}"
+        progress(part, step)
         for ratio, scored in _scores(space, maps[index], lengths_m):
+            progress(part, step)
             closest.see(scored, index, ratio, lengths_m)
             contenders += contenders_of(
                 scored,
@@ -147,7 +156,7 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
         closest=closest.found(),
         maps=maps,
         combinations=len(lengths_m) * len(space.wires) * len(space.ratios),
-        solves=sum(each.solves + _PROBES for wire_maps in maps for each in wire_maps.maps),
+        solves=sum(each.solves + _probes(space) for wire_maps in maps for each in wire_maps.maps),
         largest_miss=largest_miss,
     )
 
@@ -198,7 +207,8 @@ def _map_band(
     """The maps of all wires on one band, made again with more care where fresh solves differ."""
     shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
     limits_m = (space.shortest_m, space.longest_m)
-    for careful in (False, True):
+    miss = np.inf
+    for careful, finer in _ATTEMPTS:
 
         def survey(
             length_m: FloatArray, frequency_hz: float, careful: bool = careful
@@ -206,12 +216,18 @@ def _map_band(
             tell()
             return space.surveyed(length_m, frequency_hz, careful=careful)
 
-        maps = map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m)
+        try:
+            maps = map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m, finer)
+        except NotConverged:
+            if careful:
+                raise
+            continue
         tell()
         probed = [_probe(space, band, index, band_map) for index, band_map in enumerate(maps)]
+        miss = max(*(off for _, off in probed), *(each.largest_miss for each in maps))
         if all(within for within, _ in probed):
-            break
-    return maps, max(miss for _, miss in probed)
+            return maps, miss
+    raise NotConverged(f"impedance map on {band.name}", miss, TOLERANCE_RELATIVE)
 
 
 def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> tuple[bool, float]:
@@ -226,7 +242,7 @@ def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> 
     """
     at_hz = band.low_hz + _PROBE_AT * (band.high_hz - band.low_hz)
     # Spread evenly in logarithm by the golden section, and differently for each wire.
-    parts = np.modf((1.0 + np.arange(_PROBES) + 0.5 * wire) * _GOLDEN)[0]
+    parts = np.modf((1.0 + np.arange(_probes(space)) + 0.5 * wire) * _GOLDEN)[0]
     lowest_m = max(space.shortest_m, band_map.shortest_m_hz / at_hz)
     highest_m = max(space.longest_m, 1.01 * lowest_m)
     length_m = lowest_m * (highest_m / lowest_m) ** parts
@@ -234,6 +250,11 @@ def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> 
     off = np.abs(band_map.impedance_ohm(length_m, np.array([at_hz]))[0] - fresh)
     allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * np.abs(fresh))
     return bool(np.all(off <= allowed)), float(np.max(off / np.abs(fresh)))
+
+
+def _probes(space: SearchSpace) -> int:
+    """How many fresh solves each map of a space is held to."""
+    return max(_LEAST_PROBES, _PROBES // len(space.wires))
 
 
 def _scores(

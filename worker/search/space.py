@@ -140,7 +140,10 @@ class SearchSpace:
     def lengths_m(self) -> FloatArray:
         """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""
         span = float(np.log(self.longest_m / self.shortest_m))
-        each = COMBINATIONS / (len(self.wires) * len(self.ratios))
+        # A line or networks cost several times as much to look through as a bare feed point.
+        simple = self.feeding.line is None and not self.feeding.matched
+        combinations = COMBINATIONS if simple else COMBINATIONS // 4
+        each = combinations / (len(self.wires) * len(self.ratios))
         step = min(max(span / each, FINEST_STEP), COARSEST_STEP)
         count = max(2, int(np.ceil(span / step)) + 1)
         lengths_m: FloatArray = np.geomspace(self.shortest_m, self.longest_m, count)
