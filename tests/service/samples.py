@@ -60,6 +60,12 @@ def request_fields(**changes: object) -> dict[str, Any]:
 
 #: Everything a request may say beyond the plain one: line, networks, prices, heights, sets.
 FULL: dict[str, Any] = {
+    "bands": [
+        {"name": "40m", "low_mhz": 7.0, "high_mhz": 7.2, "swr_limit": 2.0},
+        {"name": "15m", "low_mhz": 21.0, "high_mhz": 21.45, "swr_limit": 2.0},
+        {"name": "20m", "low_mhz": 14.0, "high_mhz": 14.35, "required": False, "weight": 0.5},
+        {"name": "10m", "low_mhz": 28.0, "high_mhz": 28.5, "required": False, "swr_limit": 3.0},
+    ],
     "site": {"span_m": 24.0, "height_m": [10.0, 12.0], "ground": "average"},
     "stock": {
         "conductors": [

@@ -11,7 +11,7 @@ from service.contracts import formats
 from service.contracts.report import FeedReport
 from service.exports import digits
 from service.exports.csv_table import FEED_COLUMNS, feed_report_csv
-from tests.service.samples import sample_planned, sample_request
+from tests.service.samples import FULL, sample_planned, sample_request
 
 
 @pytest.fixture(scope="module")
@@ -62,6 +62,21 @@ def test_edges_and_centre_carry_the_stored_figures_to_the_digits_shown(
             assert float(line["reactance_ohm"]) == pytest.approx(point.reactance_ohm, abs=0.00501)
             assert float(line["reflection"]) == pytest.approx(point.reflection, abs=0.0000501)
             assert float(line["swr"]) == pytest.approx(point.swr, abs=0.000501)
+
+
+def test_the_far_end_of_the_line_is_given_to_the_digits_shown() -> None:
+    with_line = sample_planned(sample_request(**FULL)).reports[0]
+    lines = {(line["band"], line["place"]): line for line in rows(with_line)}
+    for band in with_line.bands:
+        line = lines[band.name, "centre"]
+        assert float(line["transmitter_swr"]) == pytest.approx(
+            band.centre.transmitter_swr, abs=0.000501
+        )
+        assert float(line["line_loss_db"]) == band.centre.line_loss_db
+
+
+def test_without_a_line_its_columns_are_there_and_empty(report: FeedReport) -> None:
+    assert {(line["transmitter_swr"], line["line_loss_db"]) for line in rows(report)} == {("", "")}
 
 
 @pytest.mark.parametrize(

@@ -22,7 +22,7 @@ from service.plots.scales import (
     log_ticks,
     next_round,
 )
-from tests.service.samples import sample_planned, sample_request
+from tests.service.samples import FULL, sample_planned, sample_request
 
 SVG = "{http://www.w3.org/2000/svg}"
 
@@ -241,3 +241,35 @@ def test_a_band_far_from_use_is_said_to_be_so_where_its_curve_has_no_place(
     root = drawn(swr_plot("swr", band.model_copy(update={"grid": high}), outcome))
     assert "above 200 over the whole band" in {text.text for text in root.iter(f"{SVG}text")}
     assert not list(root.iter(f"{SVG}path"))
+
+
+@pytest.mark.parametrize(("at_transmitter", "judged"), [(True, "transmitter_swr"), (False, "swr")])
+def test_the_swr_that_the_limit_applies_to_is_the_one_drawn_strong(
+    at_transmitter: bool, judged: str
+) -> None:
+    full = sample_planned(sample_request(**FULL))
+    outcome, band = full.result.candidates[0].bands[1], full.reports[0].bands[1]
+    root = drawn(swr_plot("swr", band, outcome, at_transmitter=at_transmitter))
+    strong, beside = (
+        [path for path in root.iter(f"{SVG}path") if path.attrib["class"] == name]
+        for name in ("curve swr", "curve beside")
+    )
+    assert (len(strong), len(beside)) == (1, 1)
+    frame = next(r for r in root.iter(f"{SVG}rect") if r.attrib["class"] == "frame").attrib
+    bottom = float(frame["y"]) + float(frame["height"])
+    scale = LinearScale(1.0, 3.0, bottom, float(frame["y"]))  # all SWR here is below 3
+    first = float(strong[0].attrib["d"].lstrip("M").split("L")[0].split()[1])
+    assert first == pytest.approx(scale(getattr(band.grid[0], judged)), abs=0.06)
+
+
+def test_without_a_line_one_swr_is_drawn(report: FeedReport) -> None:
+    outcome = sample_planned(sample_request()).result.candidates[0].bands[1]
+    svg = swr_plot("swr", report.bands[1], outcome)
+    assert svg.count("curve swr") == 1
+    assert "curve beside" not in svg
+
+
+def test_no_match_is_drawn_where_a_network_matches_each_band(report: FeedReport) -> None:
+    matched = sample_planned(sample_request(**FULL)).reports[0]
+    assert 'class="target"' in impedance_plot(report)
+    assert 'class="target"' not in impedance_plot(matched)

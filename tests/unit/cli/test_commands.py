@@ -6,11 +6,15 @@ from io import StringIO
 from pathlib import Path
 
 import pytest
+from rich.console import Console
 
+from service.contracts import formats
 from service.contracts.candidate import PlannedDesign
 from service.contracts.report import FeedReport
+from tests.service.samples import FULL, sample_planned, sample_request
 from tests.unit.cli.conftest import Type
 from worker.cli import tables
+from worker.cli.candidate_lines import swr_strip
 
 SMALL = {
     "name": "a small one",
@@ -104,6 +108,117 @@ def test_a_strip_rises_with_the_swr_and_is_full_at_twice_the_limit(
     end = typed("plan", request_file(tmp_path), "--json")
     report: FeedReport = PlannedDesign.model_validate_json(end.out).reports[0]
     band = report.bands[0]
-    assert tables.swr_strip(band, limit=2.0)[0] > "▁"
-    assert set(tables.swr_strip(band, limit=0.5001)) == {"█"}
-    assert set(tables.swr_strip(band, limit=1e6)) == {"▁"}
+    assert swr_strip(band, limit=2.0)[0] > "▁"
+    assert set(swr_strip(band, limit=0.5001)) == {"█"}
+    assert set(swr_strip(band, limit=1e6)) == {"▁"}
+
+
+#: A line, a network and a price on the small request: everything its report can show.
+FED = {
+    "feed": {
+        "feed_line": {"line": "rg-213", "length_m": 20.0},
+        "matching": "per-band",
+        "reference_point": "transmitter",
+    },
+    "stock": {"conductors": [{"awg": 12, "price_per_m": 0.5}]},
+    "power_w": 400.0,
+}
+
+
+def test_a_report_shows_stress_network_and_the_far_end_as_in_json(
+    typed: Type, tmp_path: Path
+) -> None:
+    file = request_file(tmp_path, **FED)
+    planned = PlannedDesign.model_validate_json(typed("plan", file, "--json").out)
+    band, out = planned.reports[0].bands[0], typed("plan", file, "--report", "1").out
+    assert band.stress is not None
+    assert band.matching is not None
+    assert band.centre.transmitter_swr is not None
+    assert band.centre.line_loss_db is not None
+    assert f"{band.stress.voltage_peak_v:.0f} V, {band.stress.current_rms_a:.2f} A" in out
+    assert "at 400 W" in out
+    for part in band.matching.parts:
+        assert f" {part.unit}" in out
+        assert f"{formats.volts(part.voltage_peak_v)} V, " in out
+    centre = next(line for line in out.splitlines() if line.split()[:2] == ["centre", "24.940"])
+    assert centre.split()[-2:] == [
+        formats.swr(band.centre.transmitter_swr),
+        formats.decibels(band.centre.line_loss_db),
+    ]
+
+
+def test_a_candidate_prints_feed_loss_cost_trimming_and_where_limits_apply(
+    typed: Type, tmp_path: Path
+) -> None:
+    file = request_file(tmp_path, **FED)
+    planned = PlannedDesign.model_validate_json(typed("plan", file, "--json").out)
+    candidate, out = planned.result.candidates[0], unwrapped(typed("plan", file).out)
+    assert candidate.loss_db is not None
+    assert candidate.cost is not None
+    assert (
+        f"Fed at the centre, line loss {formats.decibels(candidate.loss_db)} dB at most, wire for "
+        f"{formats.money(candidate.cost)}. SWR limits apply at the transmitter."
+    ) in out
+    (trim,) = candidate.trims
+    assert f"12m {formats.khz_per_cm(trim.khz_per_cm)} (1st)" in out
+
+
+@pytest.fixture
+def printed() -> str:
+    """An invented result that has everything, as printed on 80 columns."""
+    planned = sample_planned(sample_request(**FULL), 3)
+    paper = StringIO()
+    console = Console(file=paper, width=80)
+    tables.show_result(console, planned.result, planned.reports)
+    tables.show_report(console, planned.reports[0])
+    return paper.getvalue()
+
+
+def test_all_that_is_printed_keeps_to_80_columns(printed: str) -> None:
+    assert max(len(line) for line in printed.splitlines()) == 80
+
+
+def test_sets_of_dipoles_and_what_they_leave_are_printed(printed: str) -> None:
+    assert "A set of 2 dipoles 1 of 2 required bands served, 88 % of the width" in unwrapped(
+        printed
+    )
+    assert "Invented reason for a set of 3." in unwrapped(printed)
+
+
+def test_what_to_relax_is_printed() -> None:
+    planned = sample_planned(sample_request())
+    paper = StringIO()
+    tables.show_result(Console(file=paper, width=80), planned.result, planned.reports)
+    assert "What to relax\n- Invented advice on what to relax." in paper.getvalue()
+
+
+def test_each_departure_is_a_column_and_a_band_no_longer_whole_is_starred(printed: str) -> None:
+    lines = iter(printed.splitlines())
+    assert any("Fares worst with lighter insulation: 0 of 2" in line for line in lines)
+    head = next(line for line in lines if line.lstrip().startswith("band"))
+    assert head.split()[1:] == [
+        *("longer", "shorter", "higher", "lower", "ground", "ground", "insulation", "insulation")
+    ]
+    first = next(lines).split()
+    planned = sample_planned(sample_request(**FULL), 3)
+    held = planned.result.candidates[0].steadiness
+    assert held is not None
+    for shown, each in zip(
+        first[1:], [d for d in held.departures if d.band == first[0]], strict=True
+    ):
+        assert shown.endswith("*") is (each.served_fraction < 1.0)
+        assert shown.removesuffix("*") == formats.swr(each.swr_worst)
+
+
+def test_the_trade_off_is_printed_in_short_and_says_where_the_rest_is(printed: str) -> None:
+    assert "What the best wires trade" in printed
+    assert "The first 8 of 40; --json has all of them." in unwrapped(printed)
+
+
+def test_the_strip_across_a_band_shows_the_swr_the_limit_applies_to() -> None:
+    planned = sample_planned(sample_request(**FULL))
+    band = planned.reports[0].bands[1]
+    flat = tuple(point.model_copy(update={"transmitter_swr": 1.0}) for point in band.grid)
+    level = band.model_copy(update={"grid": flat})
+    assert set(swr_strip(level, 1.2, at_transmitter=True)) == {"▁"}
+    assert set(swr_strip(level, 1.2)) != {"▁"}
