@@ -2,7 +2,8 @@
 
 Each worker polls the store, runs what it claims, and sweeps up after lost ones. The supervisor
 starts them, gives back at once what a dead one held, starts it again, and stops all gracefully.
-A worker whose supervisor is gone notices by its lifeline, a pipe that closes, and stops by itself.
+Between them runs a lifeline, a pipe: a worker gives signs of life on it, and is ended when they
+fail; it closes with the supervisor, and the worker then stops by itself.
 
 Run beside the API by ``serve``, or alone as ``python -m worker.dispatcher``, which needs nothing
 but the database.
@@ -18,7 +19,7 @@ import socket
 import threading
 import time
 import uuid
-from contextlib import closing
+from contextlib import closing, suppress
 from dataclasses import dataclass
 from multiprocessing.connection import Connection
 from multiprocessing.context import SpawnContext, SpawnProcess
@@ -43,6 +44,10 @@ MOST_JOBS: Final = 200
 _TOO_SOON_S: Final = 5.0
 _LONGEST_PAUSE_S: Final = 10.0
 _SUPERVISE_S: Final = 0.1
+#: How often a worker gives a sign of life, whatever it plans.
+_SIGN_S: Final = 1.0
+#: A worker that is silent for so long is stuck where not even its deadline reaches it.
+_SILENCE_S: Final = 60.0
 _STOP_PATIENCE_S: Final = 30.0
 #: The supervisor has others to look after, and leases heal what it cannot give back.
 _BURIAL_PATIENCE_S: Final = 1.0
@@ -122,13 +127,14 @@ class _Slot:
     process: SpawnProcess | None = None
     lifeline: Connection | None = None
     started_at: float = 0.0
+    heard_at: float = 0.0
     pause_s: float = 0.0
     not_before: float = 0.0
 
     def keep_running(self) -> None:
-        if self.process is not None and self.process.is_alive():
-            return
         if self.process is not None:
+            if self._lives(self.process):
+                return
             self._bury(self.process)
         if time.monotonic() >= self.not_before:
             self._start()
@@ -150,9 +156,9 @@ class _Slot:
     def _start(self) -> None:
         # A name is never used twice, so that what a dead worker held is known by it.
         self.name = f"{socket.gethostname()}-{self.index}-{uuid.uuid4().hex[:8]}"
-        self.started_at = time.monotonic()
+        self.started_at = self.heard_at = time.monotonic()
         try:
-            theirs, self.lifeline = self.context.Pipe(duplex=False)
+            theirs, self.lifeline = self.context.Pipe()
             # The worker gets an end of its own; this one would only be left over.
             with theirs:
                 process = self.context.Process(
@@ -165,6 +171,24 @@ class _Slot:
             self._cut_lifeline()
         else:
             self.process = process
+
+    def _lives(self, process: SpawnProcess) -> bool:
+        if not process.is_alive():
+            return False
+        self._listen()
+        if time.monotonic() - self.heard_at < _SILENCE_S:
+            return True
+        _log.error("worker %s gave no sign of life for %.0f s, killing it", self.name, _SILENCE_S)
+        process.kill()
+        process.join()
+        return False
+
+    def _listen(self) -> None:
+        # A lifeline that has closed ends the listening; that the process ended is seen next time.
+        with suppress(EOFError, OSError):
+            while self.lifeline is not None and self.lifeline.poll():
+                self.lifeline.recv_bytes()
+                self.heard_at = time.monotonic()
 
     def _bury(self, process: SpawnProcess) -> None:
         status = process.exitcode
@@ -225,10 +249,11 @@ def _real_plan() -> PlanFunction:
 
 
 def _watch(lifeline: Connection, stopping: StopFlag) -> None:
-    try:
-        lifeline.recv()
-    except (EOFError, OSError):
-        stopping.set()
+    """Give signs of life until the supervisor, which sends nothing, closes the lifeline."""
+    with suppress(OSError):
+        while not lifeline.poll(_SIGN_S):
+            lifeline.send_bytes(b"alive")
+    stopping.set()
 
 
 def _poll(

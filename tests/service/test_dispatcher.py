@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import multiprocessing
 import os
 import signal
 import subprocess
@@ -209,6 +210,70 @@ def test_workers_do_not_outlive_a_killed_supervisor_and_give_their_jobs_back(
 
 
 # ---------------------------------------------------------------------- supervision
+# A frozen process may hold SQLite's lock, which would hold up this test.
+@pytest.mark.parametrize("database_url", ["postgresql"], indirect=True)
+def test_a_worker_that_is_frozen_for_good_is_killed_and_replaced(
+    store: Store, settings: Settings
+) -> None:
+    one = settings.model_copy(update={"lease_s": 600.0})
+    slot = dispatcher._Slot(multiprocessing.get_context("spawn"), one, as_named, 1)
+    slot.keep_running()
+    try:
+        design_id = submitted(store, "slow 0.5")
+        frozen = process_at(store, design_id)
+        os.kill(frozen, signal.SIGSTOP)
+
+        def found_dead() -> bool:
+            slot.heard_at -= dispatcher._SILENCE_S
+            slot.keep_running()
+            return is_gone(frozen)
+
+        def planned_again() -> bool:
+            slot.keep_running()
+            return designs.get(store, design_id).state == "done"
+
+        until(found_dead)
+        until(planned_again, within_s=20.0)
+        assert designs.get(store, design_id).attempts == 2
+    finally:
+        slot.ask_to_stop()
+        slot.await_stop(time.monotonic() + 20.0)
+
+
+def test_a_worker_gives_signs_of_life_and_stops_when_its_lifeline_closes(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    monkeypatch.setattr(dispatcher, "_SIGN_S", 0.01)
+    ours, theirs = multiprocessing.Pipe()
+    stopping = dispatcher.StopFlag()
+    with theirs, ThreadPoolExecutor(1) as pool:
+        watching = pool.submit(dispatcher._watch, theirs, stopping)
+        with ours:
+            for _ in range(3):
+                assert ours.poll(5.0)
+                ours.recv_bytes()
+            assert not stopping.is_set()
+        watching.result(5.0)
+    assert stopping.is_set()
+
+
+def test_a_worker_that_is_heard_of_is_left_alone(settings: Settings) -> None:
+    slot = dispatcher._Slot(multiprocessing.get_context("spawn"), settings, as_named, 1)
+    slot.keep_running()
+    try:
+        process = slot.process
+        assert process is not None
+        assert slot.lifeline is not None
+        assert slot.lifeline.poll(20.0)
+        slot.heard_at -= dispatcher._SILENCE_S
+        slot.keep_running()
+        assert slot.process is process
+        assert process.is_alive()
+    finally:
+        slot.ask_to_stop()
+        slot.await_stop(time.monotonic() + 20.0)
+
+
 def test_workers_that_die_young_are_started_ever_more_seldom() -> None:
     slot = dispatcher._Slot.__new__(dispatcher._Slot)
     slot.pause_s, slot.started_at = 0.0, 0.0
