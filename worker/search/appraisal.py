@@ -125,11 +125,14 @@ def appraise(space: SearchSpace, pick: Pick, maps: tuple[BandMap, ...]) -> Appra
 def _map_whole_range(space: SearchSpace, wire: WireModel, length_m: float) -> ImpedanceMap:
     """From below the wire's first resonance, or the lowest band, to above the highest."""
     one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
-    lowest_hz = min(*(goal.low_hz for goal in space.bands), 0.42 * one_wave_hz)
-    highest_hz = max(*(goal.high_hz for goal in space.bands), 0.5 * one_wave_hz)
+    lowest_hz = min(goal.low_hz for goal in space.bands)
+    if 0.5 * one_wave_hz < lowest_hz:
+        lowest_hz = 0.42 * one_wave_hz
+    highest_hz = max(goal.high_hz for goal in space.bands)
     low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
     high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
-    return map_over_frequency(wire, length_m, low_hz, high_hz)
+    as_for_m = max(length_m, space.longest_m)
+    return map_over_frequency(wire, length_m, low_hz, high_hz, as_for_m=as_for_m)
 
 
 def _appraise_band(

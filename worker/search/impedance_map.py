@@ -35,9 +35,9 @@ Survey = Callable[[FloatArray, float], ComplexArray]
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
 STRETCH_WAVELENGTHS: Final = 6.0
 #: Direct solves an interpolant is first built on: so many, and so many more a wavelength.
-#: Measured: 3.5 a wavelength and 8 leave a fifth of the tolerance or less, in free space and
+#: Measured: 3.5 a wavelength and 6 leave a quarter of the tolerance or less, in free space and
 #: over ground, from 2 to 6 wavelengths.
-FIRST_NODES: Final = 8
+FIRST_NODES: Final = 6
 NODES_PER_WAVELENGTH: Final = 3.5
 #: A stretch that this many do not hold is given up. Once doubled they are at most 197, which
 #: a fit of less than a hundred terms goes through, so that it never stops short with a warning.
@@ -54,9 +54,13 @@ TOLERANCE_OHM: Final = 0.1
 TOLERANCE_RELATIVE: Final = 1e-3
 #: A wire too short for the model: hardly any resistance, and all the reactance in the world.
 _STUB_OHM: Final = complex(0.01, -1e5)
-#: The solver's mesh changes with length and leaves steps of some 1e-5; a much closer fit would
-#: only chase them.
-_FIT_RELATIVE: Final = 1e-6
+#: What is fitted is the reflection against this resistance, about a wire's own as a line: it is
+#: a ratio of smooth functions as impedance is, but keeps below one at an anti-resonance too,
+#: which else decides alone how close the fit is everywhere.
+_FIT_AGAINST_OHM: Final = 600.0
+#: The solver's mesh changes with length and leaves steps of some 1e-5; a closer fit would only
+#: chase them.
+_FIT_WITHIN: Final = 1e-5
 
 
 @dataclass(frozen=True, slots=True)
@@ -205,7 +209,7 @@ def map_band_together(
     limits_m : (float, float)
         Limits of length in m.
     finer : int
-        So many times as many steps from edge to edge as usual.
+        So many times as many nodes as usual, from edge to edge and along the lengths.
 
     Returns
     -------
@@ -229,6 +233,7 @@ def map_band_together(
             least / float(f),
             most / float(f),
             SPEED_OF_LIGHT_M_PER_S / float(f),
+            finer,
         )
         for f in frequencies_hz
     ]
@@ -267,7 +272,12 @@ def map_over_length(
 
 
 def map_over_frequency(
-    wire: WireModel, length_m: float, low_hz: float, high_hz: float
+    wire: WireModel,
+    length_m: float,
+    low_hz: float,
+    high_hz: float,
+    *,
+    as_for_m: float | None = None,
 ) -> ImpedanceMap:
     """Map the feed impedance of one wire over frequency.
 
@@ -277,13 +287,16 @@ def map_over_frequency(
     length_m : float
     low_hz, high_hz : float
         Limits of the map in Hz.
+    as_for_m : float, optional
+        Solve at the frequencies a wire of this length would need, so that several wires share
+        them, and the ground's tables with them.
 
     Raises
     ------
     NotConverged
         If a stretch still departs from fresh solves with the most nodes allowed.
     """
-    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
+    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / (as_for_m or length_m)
 
     def solve(frequency_hz: FloatArray) -> ComplexArray:
         solved = wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz)
@@ -292,9 +305,11 @@ def map_over_frequency(
     return _map(solve, low_hz, high_hz, one_wave_hz)[0]
 
 
-def _map(solve: Curve, low: float, high: float, wavelength: float) -> tuple[ImpedanceMap, ...]:
+def _map(
+    solve: Curve, low: float, high: float, wavelength: float, finer: int = 1
+) -> tuple[ImpedanceMap, ...]:
     """One map for each row that ``solve`` gives; ``wavelength`` in the unit of what is mapped."""
-    waves = (high - low) / wavelength
+    waves = finer * (high - low) / wavelength
     count = max(1, int(np.ceil(waves / STRETCH_WAVELENGTHS)))
     nodes = FIRST_NODES + int(np.ceil(NODES_PER_WAVELENGTH * waves / count))
     edges = np.linspace(low, high, count + 1)
@@ -356,10 +371,12 @@ def _chebyshev_points(low: float, high: float, count: int) -> FloatArray:
 def _rational_through(nodes: FloatArray, values: ComplexArray) -> Curve:
     # Scaled to order one, so that the fit's own thresholds mean what they say.
     middle, half = 0.5 * (nodes[0] + nodes[-1]), 0.5 * (nodes[-1] - nodes[0])
+    reflection = (values - _FIT_AGAINST_OHM) / (values + _FIT_AGAINST_OHM)
     # No pole is cleaned away, with a warning: whatever goes astray, the fresh solves tell.
-    fit = AAA((nodes - middle) / half, values, rtol=_FIT_RELATIVE, clean_up=False)
+    fit = AAA((nodes - middle) / half, reflection, rtol=_FIT_WITHIN, clean_up=False)
 
     def curve(at: FloatArray) -> ComplexArray:
-        return np.asarray(fit((at - middle) / half), dtype=np.complex128)
+        fitted = np.asarray(fit((at - middle) / half), dtype=np.complex128)
+        return np.asarray(_FIT_AGAINST_OHM * (1.0 + fitted) / (1.0 - fitted))
 
     return curve
