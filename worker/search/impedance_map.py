@@ -47,8 +47,9 @@ MOST_NODES: Final = 100
 _CHECK_EVERY: Final = 5
 _FEW_CHECKS_MARGIN: Final = 0.5
 #: A band narrower than this part of its frequency is mapped at its edges alone, a wider one
-#: at its centre too.
+#: at its centre too, and one wider still in steps of at most this part.
 _NARROW_BAND: Final = 0.03
+_WIDEST_STEP: Final = 0.08
 #: Agreement asked of a map with fresh solves: the larger of the two.
 TOLERANCE_OHM: Final = 0.1
 TOLERANCE_RELATIVE: Final = 1e-3
@@ -192,7 +193,7 @@ def map_band_together(
     low_hz: float,
     high_hz: float,
     limits_m: tuple[float, float],
-    finer: int = 1,
+    finer: tuple[int, int] = (1, 1),
 ) -> tuple[BandMap, ...]:
     """Map the feed impedances of several wires over a band and a range of lengths.
 
@@ -208,7 +209,7 @@ def map_band_together(
         Edges of the band in Hz.
     limits_m : (float, float)
         Limits of length in m.
-    finer : int
+    finer : (int, int)
         So many times as many nodes as usual, from edge to edge and along the lengths.
 
     Returns
@@ -221,8 +222,9 @@ def map_band_together(
     NotConverged
         If a stretch still departs from fresh solves with the most nodes allowed.
     """
-    steps = finer * (1 if high_hz < (1.0 + _NARROW_BAND) * low_hz else 2)
-    frequencies_hz = _chebyshev_points(low_hz, high_hz, steps + 1)
+    width = high_hz / low_hz - 1.0
+    steps = 1 if width < _NARROW_BAND else max(2, int(np.ceil(width / _WIDEST_STEP)))
+    frequencies_hz = _chebyshev_points(low_hz, high_hz, finer[0] * steps + 1)
     shortest_m_hz = SPEED_OF_LIGHT_M_PER_S * shortest_wavelengths
     # Read at equal electrical length: the low edge is asked for longer wire, the high for shorter.
     least = max(limits_m[0] * low_hz, shortest_m_hz)
@@ -233,7 +235,7 @@ def map_band_together(
             least / float(f),
             most / float(f),
             SPEED_OF_LIGHT_M_PER_S / float(f),
-            finer,
+            finer[1],
         )
         for f in frequencies_hz
     ]

@@ -37,8 +37,8 @@ _PROBE_AT: Final = 0.23
 _GOLDEN: Final = 0.618033988749895
 
 #: Whether wires are solved with care, and how many times as many nodes as usual a band is
-#: mapped on: tried in turn until fresh solves agree.
-_ATTEMPTS: Final = ((False, 1), (True, 1), (True, 2), (True, 4))
+#: mapped on over frequency and over length: tried in turn until fresh solves agree.
+_ATTEMPTS: Final = ((False, (1, 1)), (True, (1, 1)), (True, (2, 1)), (True, (2, 2)), (True, (4, 4)))
 
 #: Lengths scored at a time: what they need then stays in the processor's cache.
 _CHUNK_LENGTHS: Final = 2048

@@ -77,7 +77,7 @@ def test_a_map_states_a_miss_that_grows_with_the_roughness() -> None:
         for noise in (0.0, 1e-5, 1e-4)
     ]
     assert misses[0] < misses[1] < misses[2]
-    assert misses[2] == pytest.approx(1e-4, rel=0.9)
+    assert 2e-5 < misses[2] < 5e-4
 
 
 def test_a_wire_too_short_for_the_model_serves_nothing_rather_than_fails() -> None:
