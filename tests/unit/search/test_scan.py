@@ -2,17 +2,27 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass, replace
+
 import numpy as np
 import pytest
 
 from tests.unit.search.open_line import C_M_PER_S, OpenLine, goal, resonant_m, space_of
+from worker.engine.errors import NotConverged
 from worker.search import scan as scan_module
 from worker.search.feeding import Feeding
 from worker.search.impedance_map import map_band
 from worker.search.ranking import Pick
 from worker.search.scan import Scan, cuts_per_m, scan
 from worker.search.scoring import merit, score
-from worker.search.space import FINEST_STEP, SearchSpace, WireOffer
+from worker.search.space import (
+    FINEST_STEP,
+    ComplexArray,
+    FloatArray,
+    SearchSpace,
+    Solved,
+    WireOffer,
+)
 
 
 def scanned(space: SearchSpace) -> Scan:
@@ -211,3 +221,66 @@ def test_what_the_progress_callback_raises_ends_the_scan() -> None:
     with pytest.raises(Stopped):
         scan(space_of(wires=(WireOffer(line),)), stop)
     assert line.solves < scanned(space_of()).solves
+
+
+# --------------------------------------------------------------------- maps held to solves
+@dataclass
+class RippledLine(OpenLine):
+    """An open line whose impedance swings with frequency, as over ground with height."""
+
+    swings_per_mhz: float = 0.0
+
+    def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
+        plain = OpenLine.solve(self, length_m, frequency_hz).impedance_ohm
+        swing = 0.1 * np.sin(2e-6 * np.pi * self.swings_per_mhz * frequency_hz)
+        return Solved(np.asarray(plain * (1.0 + swing)), np.zeros(length_m.shape))
+
+
+def largest_error(found: Scan) -> float:
+    """Largest departure of any map from its wire, over lengths and frequencies, relative."""
+    lengths_m = np.linspace(found.space.shortest_m, found.space.longest_m, 301)
+    errors: list[float] = []
+    for offer, maps in zip(found.space.wires, found.maps, strict=True):
+        for band, band_map in zip(found.space.bands, maps.maps, strict=True):
+            hertz, metres = np.meshgrid(band.grid_hz(23), lengths_m, indexing="ij")
+            exact = offer.model.solve(metres, hertz).impedance_ohm
+            read = band_map.impedance_ohm(lengths_m, band.grid_hz(23))
+            errors.append(float(np.max(np.abs(read / exact - 1.0))))
+    return max(errors)
+
+
+@pytest.mark.parametrize("swings_per_mhz", [0.0, 0.1, 0.3])
+@pytest.mark.parametrize(("low_mhz", "high_mhz"), [(7.0, 7.1), (28.0, 29.7), (20.0, 30.0)])
+def test_a_band_of_any_width_is_mapped_to_the_tolerance(
+    low_mhz: float, high_mhz: float, swings_per_mhz: float
+) -> None:
+    line = RippledLine(swings_per_mhz=swings_per_mhz)
+    space = space_of(goal("b", low_mhz, high_mhz), wires=(WireOffer(line),))
+    found = scanned(space)
+    assert found.largest_miss <= 1e-3
+    assert largest_error(found) < 5e-3
+
+
+def rough_unless_careful(length_m: FloatArray, frequency_hz: float, careful: bool) -> ComplexArray:
+    line = OpenLine(noise=0.0 if careful else 0.02)
+    return line.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm[None]
+
+
+def test_where_a_survey_is_too_rough_wires_are_solved_with_care() -> None:
+    careful = scanned(replace(space_of(), survey=rough_unless_careful))
+    assert largest_error(careful) < 1e-3
+    assert careful.contenders == scanned(space_of()).contenders
+
+
+def test_a_survey_that_disagrees_with_the_solver_is_found_out() -> None:
+    # Smooth, and so mapped without complaint, but another wire than the one to be planned.
+    def other(length_m: FloatArray, frequency_hz: float, _careful: bool) -> ComplexArray:
+        return 1.01 * rough_unless_careful(length_m, frequency_hz, True)
+
+    with pytest.raises(NotConverged, match="impedance map on 40m"):
+        scanned(replace(space_of(), survey=other))
+
+
+def test_a_wire_that_cannot_be_mapped_is_refused_and_not_planned_on() -> None:
+    with pytest.raises(NotConverged, match="impedance map"):
+        scanned(space_of(wires=(WireOffer(OpenLine(noise=0.02)),)))
