@@ -103,7 +103,7 @@ def steadiness(outcomes: tuple[BandOutcome, ...], request: DesignRequest) -> Ste
             what=what,
             band=each.name,
             served_fraction=round(each.served_fraction / (1.0 + 0.02 * index), 4),
-            swr_worst=round(each.swr_worst * (1.0 + 0.03 * index), 4),
+            swr_worst=round(each.swr_worst * (1.02 + 0.03 * index), 4),
         )
         for index, what in enumerate(whats)
         for each in outcomes
@@ -150,11 +150,11 @@ def _set_of(members: tuple[Candidate, ...]) -> DipoleSet:
     serves: list[tuple[str, int]] = []
     unserved: list[str] = []
     for index, band in enumerate(members[0].bands):
-        best = max(members, key=lambda each: each.bands[index].served_fraction)
-        if best.bands[index].service == "unserved":
+        member = members[index % len(members)]
+        if member.bands[index].service == "unserved":
             unserved.append(band.name)
         else:
-            serves.append((band.name, best.rank))
+            serves.append((band.name, member.rank))
     return DipoleSet(
         ranks=tuple(each.rank for each in members),
         required_served=1,

@@ -85,7 +85,7 @@ FULL: dict[str, Any] = {
         "reference_point": "transmitter",
     },
     "power_w": 400.0,
-    "candidates": 3,
+    "candidates": 2,
     "largest_set": 3,
     "rank_by": "worst-case",
 }

@@ -39,6 +39,25 @@ def test_a_candidate_tells_how_it_hangs_and_what_it_costs(
         assert improvement in words
 
 
+def test_the_list_of_candidates_tells_the_same_of_each(wire: httpx.Client, full: str) -> None:
+    words = read(wire, f"/designs/{full}").words.replace("\u00a0", " ")
+    for each in wire.get(f"/v1/designs/{full}/candidates").json()["candidates"]:
+        told = (
+            f"12.00 m high, fed {0.36 * each['length_m']:.2f} m from one end (36 %), "
+            f"line loss {each['loss_db']:.2f} dB at most, wire for {each['cost']:.2f}"
+        )
+        assert told in words
+
+
+def test_a_candidate_beyond_those_asked_for_is_said_to_be_a_member_of_a_set(
+    wire: httpx.Client, full: str
+) -> None:
+    assert sample_request(**FULL).candidates == 2
+    words = read(wire, f"/designs/{full}").words
+    assert words.count("shown as a member of a set") == 1
+    assert words.index("Invented reason for rank 2.") < words.index("shown as a member of a set")
+
+
 def test_a_plain_candidate_tells_no_cost_or_loss(wire: httpx.Client, stored: Stored) -> None:
     words = read(wire, f"/designs/{stored.done}/candidates/1").words
     assert "Fedat the centre" in words
@@ -54,6 +73,15 @@ def test_trimming_shows_the_figures_of_the_api(wire: httpx.Client, full: str) ->
         band, order, moved = row
         assert (band, order) == (trim["band"], {1: "1st", 3: "3rd"}[trim["order"]])
         same(moved.removeprefix("+"), trim["khz_per_cm"])
+
+
+def test_a_centimetre_is_shared_so_that_the_feed_keeps_its_place(
+    wire: httpx.Client, full: str, stored: Stored
+) -> None:
+    off_centre = read(wire, f"/designs/{full}/candidates/1").words
+    assert "shared between the two sides as they are long" in off_centre
+    at_centre = read(wire, f"/designs/{stored.done}/candidates/1").words
+    assert "half of it at each end" in at_centre
 
 
 def test_steadiness_shows_every_departure_of_the_api(wire: httpx.Client, full: str) -> None:
@@ -153,6 +181,7 @@ def test_sets_show_who_serves_which_band(wire: httpx.Client, full: str) -> None:
     table = table_headed(page, "Band", "2 dipoles1 and 2")
     assert [len(each["ranks"]) for each in result["sets"]] == [2, 3]
     rows = {row[0].removesuffix("wished for"): row[1:] for row in table[1:]}
+    assert {rank for each in result["sets"] for _, rank in each["serves"]} == {1, 2}
     for column, chosen in enumerate(result["sets"]):
         serves = dict(chosen["serves"])
         for index, band in enumerate(result["candidates"][0]["bands"]):
@@ -165,6 +194,8 @@ def test_sets_show_who_serves_which_band(wire: httpx.Client, full: str) -> None:
             name, _, left = cell.partition(", ")
             assert name == f"candidate {rank}"
             assert bool(left) is (outcome["service"] != "served")
+            if left:
+                assert left == f"{int(100.0 * outcome['served_fraction'])}\u00a0%"
         served, total = chosen["required_served"], chosen["required_total"]
         assert rows["Required"][column] == f"{served} of {total} served"
         assert rows["Width"][column] == "88\u00a0% by weight"
