@@ -53,13 +53,16 @@ class WireMaps:
 
     def impedance_ohm(self, length_m: FloatArray) -> ComplexArray:
         """Impedance in Ω over bands, grid frequencies and lengths; shape (b, p, n)."""
-        pairs = zip(self.maps, self.space.bands, strict=True)
-        return np.array([each.impedance_ohm(length_m, band.grid_hz()) for each, band in pairs])
+        pairs = zip(self.maps, self._grids_hz(), strict=True)
+        return np.array([each.impedance_ohm(length_m, grid_hz) for each, grid_hz in pairs])
 
     def over_even_ratios(self, length_m: FloatArray) -> ComplexArray:
         """The same for lengths in an even ratio, at a small part of the cost."""
-        pairs = zip(self.maps, self.space.bands, strict=True)
-        return np.array([each.over_even_ratios(length_m, band.grid_hz()) for each, band in pairs])
+        pairs = zip(self.maps, self._grids_hz(), strict=True)
+        return np.array([each.over_even_ratios(length_m, grid_hz) for each, grid_hz in pairs])
+
+    def _grids_hz(self) -> list[FloatArray]:
+        return [band.grid_hz(self.space.points) for band in self.space.bands]
 
 
 @dataclass(frozen=True, slots=True)

@@ -21,9 +21,13 @@ COMBINATIONS: Final = 1_200_000
 FINEST_STEP: Final = 1e-4
 COARSEST_STEP: Final = 2e-3
 
-#: Frequencies per band at which the scan judges a wire; the widest amateur HF band, 10 m,
-#: is then sampled every 1 %, a third of the width of a wire's resonance at SWR 2.
+#: Frequencies per band at which the scan judges a wire: at least so many, and no further apart
+#: than this part of their frequency, half the width of a wire's resonance at SWR 2.
 POINTS_PER_BAND: Final = 7
+_FURTHEST_APART: Final = 0.02
+
+#: Impedances held at a time while one wire is compared: 64 MB of them.
+_MOST_HELD: Final = 4_000_000
 
 #: The scan starts at this many wavelengths at the highest frequency asked for; see
 #: ``SHORTEST_RESONANCE_WAVELENGTHS`` of the request contract, which refuses shorter spans.
@@ -130,6 +134,12 @@ class SearchSpace:
             self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
         )
 
+    @property
+    def points(self) -> int:
+        """Frequencies per band, an odd number so that the centre is among them."""
+        widest = max(np.log(band.high_hz / band.low_hz) for band in self.bands)
+        return max(POINTS_PER_BAND, 2 * int(np.ceil(0.5 * widest / _FURTHEST_APART)) + 1)
+
     def surveyed(self, length_m: FloatArray, frequency_hz: float, *, careful: bool) -> ComplexArray:
         """Impedances of all wires in Ω at one frequency in Hz; shape (k, n) for n lengths."""
         if self.survey is not None:
@@ -144,6 +154,7 @@ class SearchSpace:
         simple = self.feeding.line is None and not self.feeding.matched
         combinations = COMBINATIONS if simple else COMBINATIONS // 4
         each = combinations / (len(self.wires) * len(self.ratios))
+        each = min(each, _MOST_HELD / (len(self.bands) * self.points))
         step = min(max(span / each, FINEST_STEP), COARSEST_STEP)
         count = max(2, int(np.ceil(span / step)) + 1)
         lengths_m: FloatArray = np.geomspace(self.shortest_m, self.longest_m, count)

@@ -9,9 +9,10 @@ import numpy as np
 
 from worker.search.ranking import Pick
 from worker.search.scoring import FULLY_SERVED, Merit, Score, merit, score
-from worker.search.space import FloatArray, SearchSpace, WireModel
+from worker.search.space import POINTS_PER_BAND, FloatArray, SearchSpace, WireModel
 
-#: Frequencies per band a departure is judged at, by direct solves: edges, centre and between.
+#: Frequencies per band a departure is judged at, by direct solves: edges, centre and between;
+#: on wide bands as many as the scan looks at.
 POINTS: Final = 5
 
 
@@ -73,7 +74,8 @@ def hold(space: SearchSpace, pick: Pick, departures: tuple[Departure, ...]) -> H
     departures : tuple of Departure
         At least one.
     """
-    grids = np.array([band.grid_hz(POINTS) for band in space.bands])
+    points = POINTS if space.points == POINTS_PER_BAND else space.points
+    grids = np.array([band.grid_hz(points) for band in space.bands])
     departed: list[Departed] = []
     for each in departures:
         length_m = np.full(grids.size, pick.length_m * each.length_ratio)
