@@ -29,6 +29,8 @@ from tests.service.servers import (
 )
 
 _NO_SKIPS = "--no-skips"
+_POSTGRES_URL = "SPANWRIGHT_TEST_POSTGRES_URL"
+_REDIS_URL = "SPANWRIGHT_TEST_REDIS_URL"
 
 
 # ------------------------------------------------------------------------- no skips
@@ -73,12 +75,12 @@ class _NoSkips:
 @pytest.fixture(scope="session")
 def postgres() -> Iterator[PostgresServer]:
     """A PostgreSQL server on which databases may be made."""
-    url = os.environ.get("SPANWRIGHT_TEST_POSTGRES_URL")
+    url = os.environ.get(_POSTGRES_URL)
     try:
         with private_postgres() if url is None else PostgresServer.named(url) as server:
             yield server
     except ServerMissing as missing:
-        pytest.skip(str(missing))
+        pytest.skip(f"{missing}, or name a server in {_POSTGRES_URL}")
 
 
 @pytest.fixture
@@ -94,14 +96,14 @@ def own_postgres() -> Iterator[PostgresServer]:
 @pytest.fixture(scope="session")
 def redis_url() -> Iterator[str]:
     """A Redis server that is up throughout."""
-    url = os.environ.get("SPANWRIGHT_TEST_REDIS_URL")
+    url = os.environ.get(_REDIS_URL)
     if url is not None:
         yield url
         return
     try:
         server = private_redis()
     except ServerMissing as missing:
-        pytest.skip(str(missing))
+        pytest.skip(f"{missing}, or name a server in {_REDIS_URL}")
     with server:
         yield server.url
 

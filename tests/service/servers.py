@@ -27,7 +27,7 @@ _STOP_PATIENCE_S: Final = 30.0
 
 
 class ServerMissing(Exception):
-    """Neither a server nor the programs for one; the message says what to install."""
+    """The programs for a server are missing; the message says what to install."""
 
 
 # --------------------------------------------------------------------- PostgreSQL
@@ -152,10 +152,7 @@ def _postgres_programs() -> Path:
     for place in places:
         if (place / "postgres").exists() and (place / "initdb").exists():
             return place
-    raise ServerMissing(
-        "PostgreSQL is missing: install it (Debian: apt-get install postgresql), "
-        "or name a server in SPANWRIGHT_TEST_POSTGRES_URL"
-    )
+    raise ServerMissing("PostgreSQL is missing: install it (Debian: apt-get install postgresql)")
 
 
 def _unprivileged() -> tuple[dict[str, Any], int | None, int]:
@@ -241,10 +238,7 @@ def private_redis() -> RedisServer:
     """A Redis of our own on a free port of the loopback, started."""
     program = shutil.which("redis-server")
     if program is None:
-        raise ServerMissing(
-            "Redis is missing: install it (Debian: apt-get install redis-server), "
-            "or name a server in SPANWRIGHT_TEST_REDIS_URL"
-        )
+        raise ServerMissing("Redis is missing: install it (Debian: apt-get install redis-server)")
     with socket.create_server(("127.0.0.1", 0)) as probe:
         port: int = probe.getsockname()[1]
     server = RedisServer(program, port, Path(tempfile.mkdtemp(prefix="spanwright-redis-")) / "log")

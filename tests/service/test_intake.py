@@ -58,19 +58,24 @@ def test_what_is_refused_does_not_ring(store: Store, monkeypatch: pytest.MonkeyP
     assert bell.rings == 1
 
 
-@pytest.mark.parametrize("trouble", ["closed", "frozen"])
-def test_a_design_is_accepted_at_once_while_the_broker_is_in_trouble(
-    store: Store, own_redis: RedisServer, trouble: str
-) -> None:
-    if trouble == "frozen":
-        own_redis.send(signal.SIGSTOP)
-    url = CLOSED if trouble == "closed" else own_redis.url
-    with closing(Doorbell(Settings(redis_url=url))) as bell:
+def assert_accepted_at_once(store: Store, broker: str) -> None:
+    with closing(Doorbell(Settings(redis_url=broker))) as bell:
         started = time.monotonic()
         sent = [submit(store, bell, sample_request(), None).design_id for _ in range(5)]
         assert time.monotonic() - started < 1.0
     assert {designs.get(store, design_id).state for design_id in sent} == {"queued"}
     assert designs.count(store) == len(sent)
+
+
+def test_a_design_is_accepted_at_once_while_the_broker_is_away(store: Store) -> None:
+    assert_accepted_at_once(store, CLOSED)
+
+
+def test_a_design_is_accepted_at_once_while_the_broker_is_frozen(
+    store: Store, own_redis: RedisServer
+) -> None:
+    own_redis.send(signal.SIGSTOP)
+    assert_accepted_at_once(store, own_redis.url)
 
 
 def test_a_design_is_accepted_where_no_thread_can_be_started_for_the_bell(
