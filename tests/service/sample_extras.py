@@ -150,7 +150,7 @@ def _set_of(members: tuple[Candidate, ...]) -> DipoleSet:
     serves: list[tuple[str, int]] = []
     unserved: list[str] = []
     for index, band in enumerate(members[0].bands):
-        member = members[index % len(members)]
+        member = members[(index - 1) % len(members)]
         if member.bands[index].service == "unserved":
             unserved.append(band.name)
         else:

@@ -181,7 +181,7 @@ def test_sets_show_who_serves_which_band(wire: httpx.Client, full: str) -> None:
     table = table_headed(page, "Band", "2 dipoles1 and 2")
     assert [len(each["ranks"]) for each in result["sets"]] == [2, 3]
     rows = {row[0].removesuffix("wished for"): row[1:] for row in table[1:]}
-    assert {rank for each in result["sets"] for _, rank in each["serves"]} == {1, 2}
+    assert {rank for each in result["sets"] for _, rank in each["serves"]} == {1, 2, 3}
     for column, chosen in enumerate(result["sets"]):
         serves = dict(chosen["serves"])
         for index, band in enumerate(result["candidates"][0]["bands"]):
