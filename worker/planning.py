@@ -22,7 +22,7 @@ from service.contracts.candidate import (
 )
 from service.contracts.request import LARGEST_SET, MOST_CANDIDATES, DesignRequest
 from worker.engine import ENGINE_VERSION
-from worker.search.appraisal import appraise
+from worker.search.appraisal import Appraisal, appraise
 from worker.search.ranking import Contender, Pick, distinct_leaders
 from worker.search.scan import Scan, scan
 from worker.search.sets import ChosenSet, best_sets
@@ -107,10 +107,9 @@ class _Job:
         # The best in the worst case may lead only the second row as planned.
         wanted = min(2 * most, MOST_CANDIDATES) if by_worst_case else most
         picks = [each.pick for each in distinct_leaders(list(self.found.contenders), wanted)]
-        looks = [
-            self._look(pick, index / len(picks), f"looking at candidate {index + 1}")
-            for index, pick in enumerate(picks)
-        ]
+        looks = self._look_at(
+            tuple(self.found.refined(pick) for pick in picks), (_SCAN_PART, _LOOK_PART), "candidate"
+        )
         if by_worst_case:
             looks.sort(key=lambda look: look.held.worst.key() if look.held else (0, 0.0, 0.0))
         return looks[:most]
@@ -131,14 +130,11 @@ class _Job:
 
     def with_members(self, looks: list[Look], chosen: tuple[ChosenSet, ...]) -> list[Look]:
         """The leaders and, after them, the members of sets that are not among them."""
-        looks = list(looks)
         members = dict.fromkeys(member for each in chosen for member in each.members)
-        for index, member in enumerate(members):
-            pick = self.found.refined(self._pool[member].pick)
-            if _rank_of(looks, pick) is None and len(looks) < MOST_CANDIDATES:
-                part = _LOOK_PART + (1.0 - _LOOK_PART) * index / len(members)
-                looks.append(self._look_at(pick, part, "looking at the members of sets"))
-        return looks
+        picks = dict.fromkeys(self.found.refined(self._pool[member].pick) for member in members)
+        missing = [pick for pick in picks if _rank_of(looks, pick) is None]
+        room = MOST_CANDIDATES - len(looks)
+        return looks + self._look_at(tuple(missing[:room]), (_LOOK_PART, 1.0), "member of a set")
 
     def told(self, chosen: ChosenSet, looks: list[Look], candidates: list[Candidate]) -> DipoleSet:
         """A set by the ranks of its members, with what each serves as looked at closely."""
@@ -189,21 +185,27 @@ class _Job:
             rank=_rank_of(looks, self.found.refined(contender.pick)),
         )
 
-    def _look(self, pick: Pick, part: float, step: str) -> Look:
-        share = _SCAN_PART + (_LOOK_PART - _SCAN_PART) * part
-        return self._look_at(self.found.refined(pick), share, step)
+    def _look_at(
+        self, picks: tuple[Pick, ...], parts: tuple[float, float], what: str
+    ) -> list[Look]:
+        """Look closely at wires: what they do, how they hold up, what would gain."""
+        if not picks:
+            return []
+        self._progress(parts[0], f"looking at {len(picks)} wires")
+        maps = tuple(self.found.maps[pick.wire].maps for pick in picks)
+        looks: list[Look] = []
+        for index, appraisal in enumerate(appraise(self.found.space, picks, maps)):
+            part = parts[0] + (parts[1] - parts[0]) * index / len(picks)
+            self._progress(part, f"judging {what} {index + 1} of {len(picks)}")
+            looks.append(self._judged(appraisal))
+        return looks
 
-    def _look_at(self, pick: Pick, part: float, step: str) -> Look:
-        self._progress(part, step)
+    def _judged(self, appraisal: Appraisal) -> Look:
+        pick = appraisal.pick
         way = self._hanging.ways[pick.wire]
-        appraisal = appraise(self.found.space, pick, self.found.maps[pick.wire].maps)
-        self.solves += appraisal.solves
         departures = departures_of(self._hanging, way)
-        held = None
-        if departures:
-            self._progress(part, f"{step}, and how it holds up")
-            held = hold(self.found.space, pick, departures)
-            self.solves += held.solves
+        held = hold(self.found.space, pick, departures) if departures else None
+        self.solves += appraisal.solves + (held.solves if held else 0)
         return Look(way, appraisal, gains_of(self.found, pick), held)
 
 

@@ -181,6 +181,48 @@ class HungWire:
         )
 
 
+def solve_together(
+    wires: Sequence[HungWire], length_m: FloatArray, frequency_hz: float
+) -> tuple[ComplexArray, FloatArray]:
+    """Impedances of several wires, each of its own length, at one frequency.
+
+    Parameters
+    ----------
+    wires : sequence of HungWire
+        k wires; those that share their ground tables and the place of the feed are one batch.
+    length_m : ndarray, shape (k,)
+    frequency_hz : float
+
+    Returns
+    -------
+    impedance_ohm, estimated_error_ohm : ndarray, shape (k,)
+
+    Raises
+    ------
+    OutOfRange
+        As for `HungWire.feed_impedance`.
+    """
+    impedance = np.empty(len(wires), dtype=np.complex128)
+    error = np.empty(len(wires))
+    batches: dict[tuple[int, float], list[int]] = {}
+    for index, wire in enumerate(wires):
+        batches.setdefault((id(wire.grounds), wire.feed_fraction), []).append(index)
+    for members in batches.values():
+        first = wires[members[0]]
+        radii, series = zip(*(wires[i].electrical(frequency_hz) for i in members), strict=True)
+        found = feed_impedance(
+            length_m[members],
+            np.array(radii),
+            frequency_hz,
+            feed_fraction=first.feed_fraction,
+            gap_m=np.array([wires[index].radius_m for index in members]),
+            wire_impedance_ohm_per_m=np.array(series),
+            reflected=None if first.grounds is None else first.grounds.at(frequency_hz),
+        )
+        impedance[members], error[members] = found.impedance_ohm, found.estimated_error_ohm
+    return impedance, error
+
+
 def survey_impedances(
     wires: Sequence[HungWire], length_m: ArrayLike, frequency_hz: float, *, careful: bool = False
 ) -> ComplexArray:

@@ -9,7 +9,7 @@ import numpy as np
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.search.feeding import Fed, Feeding
-from worker.search.impedance_map import BandMap, ImpedanceMap, map_over_frequency
+from worker.search.impedance_map import BandMap, ImpedanceMap, map_over_frequency_together
 from worker.search.ranking import Pick
 from worker.search.resonances import (
     Resonance,
@@ -18,7 +18,7 @@ from worker.search.resonances import (
     resonances_of,
 )
 from worker.search.scoring import served_fraction
-from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace, WireModel
+from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace, Solved
 
 #: Grid of the report within a band: odd, so that the centre is one of its points.
 GRID_POINTS: Final = 41
@@ -90,24 +90,39 @@ def is_near(resonance: Resonance, goal: BandGoal) -> bool:
     return abs(resonance.frequency_hz / goal.centre_hz - 1.0) < NEAR
 
 
-def appraise(space: SearchSpace, pick: Pick, maps: tuple[BandMap, ...]) -> Appraisal:
-    """Look closely at one wire of the space.
+def appraise(
+    space: SearchSpace, picks: tuple[Pick, ...], maps: tuple[tuple[BandMap, ...], ...]
+) -> tuple[Appraisal, ...]:
+    """Look closely at some wires of the space, together, for together they cost less.
 
     Parameters
     ----------
     space : SearchSpace
-    pick : Pick
-        The wire: conductor, height and feed, ratio and length.
-    maps : tuple of BandMap
-        Of the same wire over length, one for each band.
+    picks : tuple of Pick
+        The wires: conductor, height and feed, ratio and length.
+    maps : tuple of tuple of BandMap
+        Of each wire over length, one for each band.
     """
-    wire = space.wires[pick.wire].model
-    over_frequency = _map_whole_range(space, wire, pick.length_m)
+    over_frequency = _map_whole_ranges(space, picks)
+    marks = [_solve_marks(space, picks, goal) for goal in space.bands]
+    return tuple(
+        _appraise_one(space, pick, maps[row], over_frequency[row], [each[row] for each in marks])
+        for row, pick in enumerate(picks)
+    )
+
+
+def _appraise_one(
+    space: SearchSpace,
+    pick: Pick,
+    maps: tuple[BandMap, ...],
+    over_frequency: ImpedanceMap,
+    marks: list[Solved],
+) -> Appraisal:
     resonances = resonances_of(over_frequency, pick.length_m)
     sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
     bands = tuple(
-        _appraise_band(space, pick, goal, band_map, over_frequency, resonances)
-        for goal, band_map in zip(space.bands, maps, strict=True)
+        _appraise_band(space, pick, _Band(goal, band_map, solved), over_frequency, resonances)
+        for goal, band_map, solved in zip(space.bands, maps, marks, strict=True)
     )
     # A network is made for one band and says nothing of the frequencies between.
     unmatched = replace(space.feeding, matched=False)
@@ -117,53 +132,103 @@ def appraise(space: SearchSpace, pick: Pick, maps: tuple[BandMap, ...]) -> Appra
         bands=bands,
         resonances=resonances,
         sweep=_curve(unmatched, pick, sweep_hz, sweep_ohm),
-        solves=over_frequency.solves,
+        solves=over_frequency.solves + 3 * len(marks),
         largest_miss=over_frequency.largest_miss,
     )
 
 
-def _map_whole_range(space: SearchSpace, wire: WireModel, length_m: float) -> ImpedanceMap:
+@dataclass(frozen=True, slots=True)
+class _Band:
+    """What is known of one wire on one band: the goal, its map over length, its marks solved."""
+
+    goal: BandGoal
+    over_length: BandMap
+    marks: Solved
+
+
+def _solve_marks(space: SearchSpace, picks: tuple[Pick, ...], goal: BandGoal) -> list[Solved]:
+    """Direct solutions of every pick at a band's edges and centre."""
+    wires = tuple(pick.wire for pick in picks)
+    length_m = np.array([pick.length_m for pick in picks])
+    solved = [space.solved_together(wires, length_m, at_hz) for at_hz in _marks_hz(goal)]
+    return [
+        Solved(
+            np.array([each.impedance_ohm[row] for each in solved]),
+            np.array([each.error_ohm[row] for each in solved]),
+        )
+        for row in range(len(picks))
+    ]
+
+
+def _marks_hz(goal: BandGoal) -> list[float]:
+    return [goal.low_hz, goal.centre_hz, goal.high_hz]
+
+
+def _map_whole_ranges(space: SearchSpace, picks: tuple[Pick, ...]) -> list[ImpedanceMap]:
+    """Maps of all picks over frequency; those that need the same range are solved together."""
+    by_range: dict[tuple[float, float], list[int]] = {}
+    for row, pick in enumerate(picks):
+        by_range.setdefault(_whole_range_hz(space, pick), []).append(row)
+    maps: dict[int, ImpedanceMap] = {}
+    for (low_hz, high_hz), rows in by_range.items():
+        wires = tuple(picks[row].wire for row in rows)
+        length_m = np.array([picks[row].length_m for row in rows])
+
+        def solve(
+            frequency_hz: FloatArray,
+            wires: tuple[int, ...] = wires,
+            length_m: FloatArray = length_m,
+        ) -> ComplexArray:
+            columns = [
+                space.solved_together(wires, length_m, float(at_hz)).impedance_ohm
+                for at_hz in frequency_hz
+            ]
+            return np.array(columns).T
+
+        found = map_over_frequency_together(solve, float(length_m.max()), low_hz, high_hz)
+        maps.update(zip(rows, found, strict=True))
+    return [maps[row] for row in range(len(picks))]
+
+
+def _whole_range_hz(space: SearchSpace, pick: Pick) -> tuple[float, float]:
     """From below the wire's first resonance, or the lowest band, to above the highest."""
-    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / length_m
+    wire = space.wires[pick.wire].model
+    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / pick.length_m
     lowest_hz = min(goal.low_hz for goal in space.bands)
     if 0.5 * one_wave_hz < lowest_hz:
         lowest_hz = 0.42 * one_wave_hz
     highest_hz = max(goal.high_hz for goal in space.bands)
     low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
-    high_hz = min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
-    as_for_m = max(length_m, space.longest_m)
-    return map_over_frequency(wire, length_m, low_hz, high_hz, as_for_m=as_for_m)
+    return low_hz, min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
 
 
 def _appraise_band(
     space: SearchSpace,
     pick: Pick,
-    goal: BandGoal,
-    band_map: BandMap,
+    band: _Band,
     over_frequency: ImpedanceMap,
     resonances: tuple[Resonance, ...],
 ) -> BandAppraisal:
-    wire, feeding = space.wires[pick.wire].model, space.feeding
+    goal, feeding = band.goal, space.feeding
     grid_hz = goal.grid_hz(GRID_POINTS)
     grid_ohm = over_frequency.impedance_ohm(grid_hz)
     network = None
     if feeding.matched:
         network = int(feeding.best_network(grid_ohm[:, None] / pick.ratio, grid_hz)[0][0])
-    marks_hz = np.array([goal.low_hz, goal.centre_hz, goal.high_hz])
-    solved = wire.solve(np.full(3, pick.length_m), marks_hz)
+    marks_hz = np.array(_marks_hz(goal))
     grid = _curve(feeding, pick, grid_hz, grid_ohm, network)
     part = served_fraction(grid.fed.limited_swr[None, :, None], np.array(goal.swr_limit))[0, 0]
     nearest = nearest_series(resonances, goal.centre_hz)
     own_length_m = hz_per_m = None
     if nearest is not None and is_near(nearest, goal):
         guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
-        own_length_m, slope = lengths_in_resonance(band_map, guess_m, goal)
+        own_length_m, slope = lengths_in_resonance(band.over_length, guess_m, goal)
         # Of one order, resonance goes as a power of length; its exponent is that within the band.
         hz_per_m = None if slope is None else slope * nearest.frequency_hz / pick.length_m
     return BandAppraisal(
         goal=goal,
-        marks=_curve(feeding, pick, marks_hz, solved.impedance_ohm, network),
-        error_ohm=float(solved.error_ohm.max()),
+        marks=_curve(feeding, pick, marks_hz, band.marks.impedance_ohm, network),
+        error_ohm=float(band.marks.error_ohm.max()),
         grid=grid,
         served_fraction=float(part),
         network=network,

@@ -274,37 +274,45 @@ def map_over_length(
 
 
 def map_over_frequency(
-    wire: WireModel,
-    length_m: float,
-    low_hz: float,
-    high_hz: float,
-    *,
-    as_for_m: float | None = None,
+    wire: WireModel, length_m: float, low_hz: float, high_hz: float
 ) -> ImpedanceMap:
     """Map the feed impedance of one wire over frequency.
 
+    As `map_over_frequency_together`, for one wire.
+    """
+
+    def solve(frequency_hz: FloatArray) -> ComplexArray:
+        solved = wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz)
+        return solved.impedance_ohm[None]
+
+    return map_over_frequency_together(solve, length_m, low_hz, high_hz)[0]
+
+
+def map_over_frequency_together(
+    solve: Curve, longest_m: float, low_hz: float, high_hz: float
+) -> tuple[ImpedanceMap, ...]:
+    """Map the feed impedances of several wires over frequency.
+
     Parameters
     ----------
-    wire : WireModel
-    length_m : float
+    solve : callable
+        Impedances in Ω of k wires, shape (k, n), at n frequencies in Hz.
+    longest_m : float
+        Length of the longest of them in m.
     low_hz, high_hz : float
-        Limits of the map in Hz.
-    as_for_m : float, optional
-        Solve at the frequencies a wire of this length would need, so that several wires share
-        them, and the ground's tables with them.
+        Limits of the maps in Hz.
+
+    Returns
+    -------
+    tuple of ImpedanceMap
+        One for each wire.
 
     Raises
     ------
     NotConverged
         If a stretch still departs from fresh solves with the most nodes allowed.
     """
-    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / (as_for_m or length_m)
-
-    def solve(frequency_hz: FloatArray) -> ComplexArray:
-        solved = wire.solve(np.full(frequency_hz.shape, length_m), frequency_hz)
-        return solved.impedance_ohm[None]
-
-    return _map(solve, low_hz, high_hz, one_wave_hz)[0]
+    return _map(solve, low_hz, high_hz, SPEED_OF_LIGHT_M_PER_S / longest_m)
 
 
 def _map(

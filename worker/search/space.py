@@ -108,6 +108,9 @@ class SearchSpace:
         Impedances of all the wires, shape (k, n), for n lengths in m at one frequency in Hz,
         solved together, more carefully where the third argument says so; without it each
         wire's own model is asked in turn.
+    together : callable, optional
+        Direct solutions of some of the wires, each of its own length, at one frequency; without
+        it each is asked in turn.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
@@ -119,6 +122,7 @@ class SearchSpace:
     ratios: tuple[float, ...]
     feeding: Feeding
     survey: Callable[[FloatArray, float, bool], ComplexArray] | None = None
+    together: Callable[[tuple[int, ...], FloatArray, float], Solved] | None = None
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -146,6 +150,22 @@ class SearchSpace:
             return self.survey(length_m, frequency_hz, careful)
         at_hz = np.full(length_m.shape, frequency_hz)
         return np.array([each.model.solve(length_m, at_hz).impedance_ohm for each in self.wires])
+
+    def solved_together(
+        self, wires: tuple[int, ...], length_m: FloatArray, frequency_hz: float
+    ) -> Solved:
+        """Direct solutions of some wires, each of its own length in m, at one frequency in Hz."""
+        if self.together is not None:
+            return self.together(wires, length_m, frequency_hz)
+        at_hz = np.array([frequency_hz])
+        parts = [
+            self.wires[wire].model.solve(length_m[row : row + 1], at_hz)
+            for row, wire in enumerate(wires)
+        ]
+        return Solved(
+            np.concatenate([part.impedance_ohm for part in parts]),
+            np.concatenate([part.error_ohm for part in parts]),
+        )
 
     def lengths_m(self) -> FloatArray:
         """Lengths of the scan in m, evenly spaced in logarithm; shape (n,)."""

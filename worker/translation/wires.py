@@ -11,7 +11,12 @@ from service.contracts.station_site import GroundConstants
 from service.contracts.stock import Conductor
 from service.contracts.sweep import SweepRequest
 from worker.engine.ground import GROUND_CLASSES, Ground
-from worker.engine.hung_wire import GroundTables, HungWire, survey_impedances
+from worker.engine.hung_wire import (
+    GroundTables,
+    HungWire,
+    solve_together,
+    survey_impedances,
+)
 from worker.engine.insulation import Sleeve
 from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.material import MATERIALS
@@ -105,6 +110,9 @@ class Hanging:
             ),
             survey=lambda length_m, frequency_hz, careful: survey_impedances(
                 hung, length_m, frequency_hz, careful=careful
+            ),
+            together=lambda chosen, length_m, frequency_hz: Solved(
+                *solve_together([hung[index] for index in chosen], length_m, frequency_hz)
             ),
         )
 
