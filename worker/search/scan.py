@@ -26,6 +26,11 @@ from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace
 #: Called with the part done (0 to 1) and what is being done, in words.
 ProgressCallback = Callable[[float, str], None]
 
+#: A pick is refined within this part of its length, and over so many times as many steps of
+#: each band as the scan looks at.
+_REACH: Final = 2e-3
+_FINER: Final = 4
+
 #: Mapping takes about this part of the time, comparing the rest.
 _MAP_PART: Final = 0.75
 
@@ -51,18 +56,18 @@ class WireMaps:
     space: SearchSpace
     maps: tuple[BandMap, ...]
 
-    def impedance_ohm(self, length_m: FloatArray) -> ComplexArray:
-        """Impedance in Ω over bands, grid frequencies and lengths; shape (b, p, n)."""
-        pairs = zip(self.maps, self._grids_hz(), strict=True)
+    def impedance_ohm(self, length_m: FloatArray, points: int) -> ComplexArray:
+        """Impedance in Ω over bands, p even frequencies and n lengths; shape (b, p, n)."""
+        pairs = zip(self.maps, self._grids_hz(points), strict=True)
         return np.array([each.impedance_ohm(length_m, grid_hz) for each, grid_hz in pairs])
 
-    def over_even_ratios(self, length_m: FloatArray) -> ComplexArray:
+    def over_even_ratios(self, length_m: FloatArray, points: int) -> ComplexArray:
         """The same for lengths in an even ratio, at a small part of the cost."""
-        pairs = zip(self.maps, self._grids_hz(), strict=True)
+        pairs = zip(self.maps, self._grids_hz(points), strict=True)
         return np.array([each.over_even_ratios(length_m, grid_hz) for each, grid_hz in pairs])
 
-    def _grids_hz(self) -> list[FloatArray]:
-        return [band.grid_hz(self.space.points) for band in self.space.bands]
+    def _grids_hz(self, points: int) -> list[FloatArray]:
+        return [band.grid_hz(points) for band in self.space.bands]
 
 
 @dataclass(frozen=True, slots=True)
@@ -101,17 +106,20 @@ class Scan:
     solves: int
     largest_miss: float
 
-    def score_at(self, pick: Pick, length_m: FloatArray) -> Score:
-        """The score of a pick's wire and ratio at other lengths, from its maps."""
-        impedance = self.maps[pick.wire].impedance_ohm(length_m)
+    def score_at(self, pick: Pick, length_m: FloatArray, finer: int = 1) -> Score:
+        """The score of a pick's wire and ratio at other lengths, from its maps.
+
+        Over so many times as many steps of each band as the scan looks at.
+        """
+        points = finer * (self.space.points - 1) + 1
+        impedance = self.maps[pick.wire].impedance_ohm(length_m, points)
         return score(impedance, self.space.bands, self.space.feeding, pick.ratio)
 
     def refined(self, pick: Pick) -> Pick:
-        """The best length that can be cut, between a pick's neighbours in the scan."""
+        """The best length that can be cut, near a pick of the scan and at least its neighbours."""
         lengths_m = self.space.lengths_m()
-        index = int(np.searchsorted(lengths_m, pick.length_m))
-        low_m = float(lengths_m[max(index - 1, 0)])
-        high_m = float(lengths_m[min(index + 1, len(lengths_m) - 1)])
+        reach = max(_REACH, float(lengths_m[1] / lengths_m[0]) - 1.0)
+        low_m, high_m = pick.length_m * (1.0 - reach), pick.length_m * (1.0 + reach)
         per_m = cuts_per_m(pick.length_m)
         # To either side of the neighbours too: the nearest cut may lie beyond a band's edge.
         cuts = np.arange(np.floor(low_m * per_m), np.ceil(high_m * per_m) + 1.0)
@@ -120,7 +128,8 @@ class Scan:
         if cut_m.size == 0:
             return pick
         cost = cut_m * (self.space.wires[pick.wire].price_per_m or 0.0)
-        keys = rank_keys(merit(self.score_at(pick, cut_m), self.space.bands), cut_m, cost)
+        scored = self.score_at(pick, cut_m, finer=_FINER)
+        keys = rank_keys(merit(scored, self.space.bands), cut_m, cost)
         return Pick(pick.wire, pick.ratio, float(cut_m[best_first(keys)[0]]))
 
 
@@ -149,9 +158,8 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
                 merit(scored, space.bands),
                 lengths_m,
                 space.bands,
-                index,
+                (index, wire),
                 ratio,
-                wire.price_per_m or 0.0,
             )
     return Scan(
         space=space,
@@ -226,15 +234,15 @@ def _map_band(
                 raise
             continue
         tell()
-        probed = [_probe(space, band, index, band_map) for index, band_map in enumerate(maps)]
-        miss = max(*(off for _, off in probed), *(each.largest_miss for each in maps))
-        if all(within for within, _ in probed):
+        within, off = _probe(space, band, maps)
+        miss = max(off, *(each.largest_miss for each in maps))
+        if within:
             return maps, miss
     raise NotConverged(f"impedance map on {band.name}", miss, TOLERANCE_RELATIVE)
 
 
-def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> tuple[bool, float]:
-    """Hold a map to fresh, full solves where it is least sure: between its frequencies.
+def _probe(space: SearchSpace, band: BandGoal, maps: tuple[BandMap, ...]) -> tuple[bool, float]:
+    """Hold maps to fresh, full solves where they are least sure: between their frequencies.
 
     Returns
     -------
@@ -245,14 +253,18 @@ def _probe(space: SearchSpace, band: BandGoal, wire: int, band_map: BandMap) -> 
     """
     at_hz = band.low_hz + _PROBE_AT * (band.high_hz - band.low_hz)
     # Spread evenly in logarithm by the golden section, and differently for each wire.
-    parts = np.modf((1.0 + np.arange(_probes(space)) + 0.5 * wire) * _GOLDEN)[0]
-    lowest_m = max(space.shortest_m, band_map.shortest_m_hz / at_hz)
+    places = 1.0 + np.arange(_probes(space)) + 0.5 * np.arange(len(maps))[:, None]
+    lowest_m = max(space.shortest_m, maps[0].shortest_m_hz / at_hz)
     highest_m = max(space.longest_m, 1.01 * lowest_m)
-    length_m = lowest_m * (highest_m / lowest_m) ** parts
-    fresh = space.wires[wire].model.solve(length_m, np.full(length_m.shape, at_hz)).impedance_ohm
-    off = np.abs(band_map.impedance_ohm(length_m, np.array([at_hz]))[0] - fresh)
-    allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * np.abs(fresh))
-    return bool(np.all(off <= allowed)), float(np.max(off / np.abs(fresh)))
+    length_m = lowest_m * (highest_m / lowest_m) ** np.modf(places * _GOLDEN)[0]
+    wires = tuple(np.repeat(np.arange(len(maps)), length_m.shape[1]).tolist())
+    solved = space.solved_together(wires, length_m.ravel(), at_hz)
+    fresh = solved.impedance_ohm.reshape(length_m.shape)
+    pairs = zip(maps, length_m, strict=True)
+    read = np.array([each.impedance_ohm(row_m, np.array([at_hz]))[0] for each, row_m in pairs])
+    off, size = np.abs(read - fresh), np.abs(fresh)
+    allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * size)
+    return bool(np.all(off <= allowed)), float(np.max(off / size))
 
 
 def _probes(space: SearchSpace) -> int:
@@ -264,7 +276,7 @@ def _scores(
     space: SearchSpace, maps: WireMaps, lengths_m: FloatArray
 ) -> Iterator[tuple[float, Score]]:
     """The score of one wire at every ratio, over all lengths of the scan."""
-    impedance = maps.over_even_ratios(lengths_m)
+    impedance = maps.over_even_ratios(lengths_m, space.points)
     for ratio in space.ratios:
         parts = [
             score(

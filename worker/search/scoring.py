@@ -24,7 +24,7 @@ FULLY_SERVED: Final = 1.0 - 1e-9
 #: of any use it swings by less.
 _CLEARLY: Final = 0.03
 #: A closer look takes so many steps to one of the grid.
-_FINER: Final = 6
+_FINER: Final = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,10 +71,10 @@ def score(
         lowest = reflected[index].min(axis=0)
         close = (most[index] > limit - _CLEARLY) & (lowest <= limit + _CLEARLY)
         if close.any():
-            fine = np.maximum(between @ reflected[index][:, close], 0.0)
-            goal = np.array(bands[index].swr_limit)
-            served[index, close] = served_fraction(_swr_of(fine)[None], goal)[0]
-            most[index, close] = fine.max(axis=0)
+            mismatch = between @ _mismatch(reflected[index][:, close])
+            within = served_fraction(mismatch[None], _mismatch(limit))
+            served[index, close] = within[0]
+            most[index, close] = 1.0 - 1.0 / np.maximum(mismatch.max(axis=0), 1.0)
     if loss_db is None:
         loss_db = np.zeros(most.shape)
     return Score(served, _swr_of(most), loss_db)
@@ -84,19 +84,28 @@ def score(
 def _between(points: int) -> FloatArray:
     """Weights that interpolate from so many even points to ``_FINER`` times as many steps.
 
-    By the cubic through the four points about each place: the reflected power is smooth where
-    the standing wave ratio has a kink, at its lowest.
+    By the cubic through the four points about each place.
     """
     order = min(4, points)
     places = np.linspace(0.0, points - 1.0, _FINER * (points - 1) + 1)
     weights = np.zeros((len(places), points))
     for row, place in enumerate(places):
-        first = min(max(int(place) - 1, 0), points - order)
+        first = min(max(int(place) - order // 2 + 1, 0), points - order)
         nodes = np.arange(first, first + order)
         for node in nodes:
             others = nodes[nodes != node]
             weights[row, node] = np.prod((place - others) / (node - others))
     return weights
+
+
+def _mismatch(reflected: FloatArray) -> FloatArray:
+    """Power available over power taken, 1 / (1 - |Γ|²): what is interpolated over frequency.
+
+    It is ((R + R0)² + X²) / (4 R R0), all but a parabola about a resonance, where the standing
+    wave ratio has a kink.
+    """
+    taken = np.maximum(1.0 - reflected, 2.0 / LARGEST_STANDING_WAVE_RATIO)
+    return np.asarray(1.0 / taken)
 
 
 def _swr_of(reflected: FloatArray) -> FloatArray:
@@ -113,6 +122,7 @@ def served_fraction(swr: FloatArray, limit: FloatArray) -> FloatArray:
     Parameters
     ----------
     swr : ndarray, shape (b, p, n)
+        Or anything else that rises with it, and its limit.
     limit : ndarray
         Broadcasts with ``swr``.
 
