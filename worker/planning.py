@@ -171,11 +171,14 @@ class _Job:
         return tuple(self._on_front(each, looks) for each in front)
 
     def _on_front(self, contender: Contender, looks: list[Look]) -> TradeOff:
-        conductor = self._hanging.ways[contender.pick.wire].conductor
+        way = self._hanging.ways[contender.pick.wire]
+        conductor = way.conductor
         has_line = self._request.feed.feed_line is not None
         return TradeOff(
             length_m=round(contender.pick.length_m, 3),
             conductor=conductor.label,
+            height_m=way.height_m,
+            feed_fraction=way.feed_fraction,
             transformer_ratio=contender.pick.ratio,
             required_served=contender.required_served,
             weighted_served=round(contender.weighted_served, 4),

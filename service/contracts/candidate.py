@@ -95,6 +95,8 @@ class TradeOff(Contract):
 
     length_m: float
     conductor: str
+    height_m: float | None = None
+    feed_fraction: float = 0.5
     transformer_ratio: float
     required_served: int
     weighted_served: float

@@ -104,6 +104,7 @@ class FeedReport(Contract):
     height_m: float | None = None
     feed_fraction: float = 0.5
     reference_ohm: float
+    reference_point: Literal["feed-point", "transmitter"] = "feed-point"
     transformer_ratio: float
     bands: tuple[BandReport, ...]
     resonances: tuple[ResonanceLine, ...]

@@ -20,7 +20,7 @@ _LEVELS: Final = "▁▂▃▄▅▆▇█"
 def candidate_in_full(candidate: Candidate, report: FeedReport | None) -> RenderableType:
     """How the wire hangs, its bands, its reasons, trimming, and how it holds up."""
     strips = {band.name: band for band in report.bands} if report else {}
-    at_transmitter = report is not None and _limits_apply_at_transmitter(candidate, report)
+    at_transmitter = report is not None and report.reference_point == "transmitter"
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0))
     for title in ("band", "service", "order", "MHz", "off kHz", "off %", "low", "mid", "high"):
         left = title in ("band", "service")
@@ -43,15 +43,6 @@ def candidate_in_full(candidate: Candidate, report: FeedReport | None) -> Render
     if candidate.steadiness is not None:
         body += [Text(), *_steadiness(candidate, candidate.steadiness)]
     return Group(Text(), heading, Padding(Group(*body), (0, 0, 0, 4)))
-
-
-def _limits_apply_at_transmitter(candidate: Candidate, report: FeedReport) -> bool:
-    """Whether the figures held to the limits are those of the far end of the feed line."""
-    return any(
-        band.centre.transmitter_swr is not None
-        and outcome.swr_centre == band.centre.transmitter_swr != band.centre.swr
-        for outcome, band in zip(candidate.bands, report.bands, strict=True)
-    )
 
 
 def _hung_in_words(candidate: Candidate, at_transmitter: bool) -> str:

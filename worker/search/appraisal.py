@@ -118,7 +118,9 @@ def _appraise_one(
     over_frequency: ImpedanceMap,
     marks: list[Solved],
 ) -> Appraisal:
-    resonances = resonances_of(over_frequency, pick.length_m)
+    resonances = resonances_of(
+        over_frequency, pick.length_m, centred=space.wires[pick.wire].centred
+    )
     sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
     bands = tuple(
         _appraise_band(space, pick, _Band(goal, band_map, solved), over_frequency, resonances)

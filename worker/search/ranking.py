@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.search.scoring import FULLY_SERVED, Merit, Score
-from worker.search.space import BandGoal, FloatArray
+from worker.search.space import BandGoal, FloatArray, WireOffer
 
 #: Served widths are compared to the thousandth of the whole, SWR to the hundredth: finer
 #: differences are below what can be built, and would hide the next criterion.
@@ -88,6 +88,12 @@ def best_first(keys: FloatArray) -> NDArray[np.intp]:
     return np.lexsort(keys.T[::-1])
 
 
+def nearest_order(length_m: FloatArray, frequency_hz: float) -> NDArray[np.int64]:
+    """The number of half waves nearest to a length, at least 1; for a wire fed off its centre."""
+    half_waves = 2.0 * length_m * frequency_hz / SPEED_OF_LIGHT_M_PER_S
+    return np.maximum(np.round(half_waves), 1).astype(np.int64)
+
+
 def nearest_odd_order(length_m: FloatArray, frequency_hz: float) -> NDArray[np.int64]:
     """The odd number of half waves nearest to a length; 1, 3, 5 and so on."""
     half_waves = 2.0 * length_m * frequency_hz / SPEED_OF_LIGHT_M_PER_S
@@ -124,9 +130,8 @@ def contenders_of(
     merit: Merit,
     length_m: FloatArray,
     bands: tuple[BandGoal, ...],
-    wire: int,
+    offer: tuple[int, WireOffer],
     ratio: float,
-    price_per_m: float = 0.0,
 ) -> list[Contender]:
     """The best local optimum along length of each kind, for one conductor and one ratio.
 
@@ -139,12 +144,12 @@ def contenders_of(
     length_m : ndarray, shape (n,)
         Rising.
     bands : tuple of BandGoal
-    wire : int
-        Index of the conductor.
+    offer : (int, WireOffer)
+        Index of the wire and the wire.
     ratio : float
-    price_per_m : float
-        Of the conductor; 0 where none is known.
     """
+    wire, price_per_m = offer[0], offer[1].price_per_m or 0.0
+    order_of = nearest_odd_order if offer[1].centred else nearest_order
     cost = length_m * price_per_m
     keys = rank_keys(merit, length_m, cost)
     place = np.empty(len(length_m), dtype=np.int64)
@@ -153,7 +158,7 @@ def contenders_of(
     walled = np.concatenate([[len(length_m)], place, [len(length_m)]])
     tops = np.flatnonzero((place < walled[:-2]) & (place < walled[2:]))
     tops = tops[np.argsort(place[tops])]
-    orders = np.array([nearest_odd_order(length_m[tops], band.centre_hz) for band in bands])
+    orders = np.array([order_of(length_m[tops], band.centre_hz) for band in bands])
     fractions = scored.served_fraction[:, tops]
     service = np.where(fractions >= FULLY_SERVED, 2, np.where(fractions > 0.0, 1, 0))
     orders = np.where(service > 0, orders, 0)

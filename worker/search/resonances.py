@@ -28,7 +28,9 @@ _LENGTH_RELATIVE: Final = 1e-5
 class Resonance:
     """A zero of the reactance: ``series`` where it rises through zero, ``parallel`` where it falls.
 
-    ``order`` is the number of half waves it lies near: odd for series, even for parallel.
+    ``order`` is the number of half waves it lies near. On a wire fed at its centre it is odd for
+    series and even for parallel; fed elsewhere a series resonance may be of any order, and a
+    parallel one takes the next above.
     """
 
     order: int
@@ -37,7 +39,9 @@ class Resonance:
     resistance_ohm: float
 
 
-def resonances_of(over_frequency: ImpedanceMap, length_m: float) -> tuple[Resonance, ...]:
+def resonances_of(
+    over_frequency: ImpedanceMap, length_m: float, *, centred: bool = True
+) -> tuple[Resonance, ...]:
     """All resonances of a wire within its map, in rising frequency.
 
     Parameters
@@ -46,6 +50,8 @@ def resonances_of(over_frequency: ImpedanceMap, length_m: float) -> tuple[Resona
         Map of the wire over frequency in Hz.
     length_m : float
         Its length in m.
+    centred : bool
+        Whether it is fed at its centre.
     """
     half_waves = half_waves_in(length_m, over_frequency.high - over_frequency.low)
     zeros = reactance_zeros(
@@ -58,16 +64,22 @@ def resonances_of(over_frequency: ImpedanceMap, length_m: float) -> tuple[Resona
     for frequency_hz, rising, resistance_ohm in zip(
         zeros.position, zeros.rising, zeros.resistance_ohm, strict=True
     ):
-        pair = int(half_waves_in(length_m, float(frequency_hz)) // 2)
+        held = half_waves_in(length_m, float(frequency_hz))
         found.append(
             Resonance(
-                order=2 * pair + 1 if rising else 2 * pair + 2,
+                order=_order(held, rising=bool(rising), centred=centred),
                 kind="series" if rising else "parallel",
                 frequency_hz=float(frequency_hz),
                 resistance_ohm=float(resistance_ohm),
             )
         )
     return tuple(found)
+
+
+def _order(half_waves: float, *, rising: bool, centred: bool) -> int:
+    if centred:
+        return 2 * int(half_waves // 2) + (1 if rising else 2)
+    return max(1, round(half_waves)) if rising else int(half_waves) + 1
 
 
 def nearest_series(resonances: tuple[Resonance, ...], frequency_hz: float) -> Resonance | None:

@@ -17,7 +17,7 @@ ComplexArray = NDArray[np.complex128]
 
 #: The scan compares about so many (wire, ratio, length), in steps of length between these
 #: two ratios: 2 mm to 4 cm on a 20 m wire.
-COMBINATIONS: Final = 1_200_000
+COMBINATIONS: Final = 1_000_000
 FINEST_STEP: Final = 1e-4
 COARSEST_STEP: Final = 2e-3
 
@@ -62,10 +62,11 @@ class WireModel(Protocol):
 
 @dataclass(frozen=True, slots=True)
 class WireOffer:
-    """One way to hang one conductor: its model, and its price per metre where one is known."""
+    """One way to hang one conductor: its model, its price per metre, and whether fed centrally."""
 
     model: WireModel
     price_per_m: float | None = None
+    centred: bool = True
 
 
 @dataclass(frozen=True, slots=True)

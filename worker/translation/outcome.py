@@ -112,6 +112,7 @@ def feed_report_of(request: DesignRequest, look: Look, rank: int) -> FeedReport:
         height_m=look.way.height_m,
         feed_fraction=look.way.feed_fraction,
         reference_ohm=reference_ohm,
+        reference_point=request.feed.reference_point,
         transformer_ratio=ratio,
         bands=tuple(_band_report(band, request, ratio) for band in appraisal.bands),
         resonances=tuple(

@@ -24,6 +24,8 @@ def relaxations(request: DesignRequest, found: Scan, best: Candidate) -> tuple[s
         lowest, pick = found.closest.swr_worst[index], found.closest.picks[index]
         half_wave_m = _HALF_WAVE_WAVELENGTHS * wavelength_m(band.centre_mhz)
         wire = f"{metres(pick.length_m)} m through {ratio(pick.ratio)}"
+        unmatched = request.feed.matching == "none"
+        or_match = ", or a matching network for the band" if unmatched else ""
         if lowest <= band.swr_limit:
             sentences.append(
                 f"{band.name} can be served whole by {wire}, but not by one wire together with "
@@ -34,7 +36,7 @@ def relaxations(request: DesignRequest, found: Scan, best: Candidate) -> tuple[s
             sentences.append(
                 f"{band.name} needs about {metres(half_wave_m)} m of wire for a half wave and "
                 f"{metres(request.site.longest_wire_m)} m fit: a span of {metres(needed_m)} m or "
-                "more would do, or a matching network for the band."
+                f"more would do{or_match}."
             )
         else:
             # Rounded up, so that the limit named is one that holds.
@@ -42,8 +44,8 @@ def relaxations(request: DesignRequest, found: Scan, best: Candidate) -> tuple[s
             sentences.append(
                 f"{band.name} reaches from {mhz(band.low_mhz)} to {mhz(band.high_mhz)} MHz and no "
                 f"wire here keeps its SWR below {swr(lowest)} over all of it ({wire}): an SWR "
-                f"limit of {enough:.1f} can be met, or split the band, permit other transformer "
-                "ratios, or a matching network for the band."
+                f"limit of {enough:.1f} can be met; or split the band, permit other transformer "
+                f"ratios{or_match}."
             )
     return tuple(sentences)
 

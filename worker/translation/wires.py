@@ -96,7 +96,7 @@ class Hanging:
                 for band in self.request.bands
             ),
             wires=tuple(
-                WireOffer(wire, way.conductor.price_per_m)
+                WireOffer(wire, way.conductor.price_per_m, centred=way.feed_fraction == 0.5)
                 for wire, way in zip(wires, self.ways, strict=True)
             ),
             site_longest_m=self.request.site.longest_wire_m,
