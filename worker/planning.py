@@ -23,8 +23,9 @@ from service.contracts.candidate import (
 from service.contracts.request import LARGEST_SET, MOST_CANDIDATES, DesignRequest
 from worker.engine import ENGINE_VERSION
 from worker.search.appraisal import Appraisal, appraise
-from worker.search.ranking import Contender, Pick, distinct_leaders
+from worker.search.ranking import Contender, Pick, distinct_leaders, rank_keys
 from worker.search.scan import Scan, scan
+from worker.search.scoring import Merit
 from worker.search.sets import ChosenSet, best_sets
 from worker.search.steadiness import hold
 from worker.search.trade_off import front_of, gains_of
@@ -107,12 +108,26 @@ class _Job:
         # The best in the worst case may lead only the second row as planned.
         wanted = min(2 * most, MOST_CANDIDATES) if by_worst_case else most
         picks = [each.pick for each in distinct_leaders(list(self.found.contenders), wanted)]
-        looks = self._look_at(
-            tuple(self.found.refined(pick) for pick in picks), (_SCAN_PART, _LOOK_PART), "candidate"
-        )
+        # Neighbours of two kinds may be cut to one length.
+        refined = dict.fromkeys(self.found.refined(pick) for pick in picks)
+        looks = self._look_at(tuple(refined), (_SCAN_PART, _LOOK_PART), "candidate")
+        # Cut, and looked at closely, they may not come in the order of the scan.
+        looks.sort(key=self._key)
         if by_worst_case:
             looks.sort(key=lambda look: look.held.worst.key() if look.held else (0, 0.0, 0.0))
         return looks[:most]
+
+    def _key(self, look: Look) -> tuple[float, ...]:
+        """Sorts wires looked at closely as the scan sorts all."""
+        each = candidate_of(self._request, look, 0)
+        alone = Merit(
+            np.array([each.required_served]),
+            np.array([each.weighted_served]),
+            np.array([each.swr_worst]),
+            np.array([each.loss_db or 0.0]),
+        )
+        keys = rank_keys(alone, np.array([each.length_m]), np.array([each.cost or 0.0]))
+        return tuple(keys[0].tolist())
 
     def sets(self, best: Candidate) -> tuple[ChosenSet, ...]:
         """The best sets of two or more, where asked for or where one wire is not enough."""

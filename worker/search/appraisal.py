@@ -197,8 +197,9 @@ def _whole_range_hz(space: SearchSpace, pick: Pick) -> tuple[float, float]:
     wire = space.wires[pick.wire].model
     one_wave_hz = SPEED_OF_LIGHT_M_PER_S / pick.length_m
     lowest_hz = min(goal.low_hz for goal in space.bands)
-    if 0.5 * one_wave_hz < lowest_hz:
-        lowest_hz = 0.42 * one_wave_hz
+    # Insulation and low height may shorten the first resonance to 0.42 wavelengths.
+    if 0.5 * one_wave_hz < 1.2 * lowest_hz:
+        lowest_hz = min(lowest_hz, 0.42 * one_wave_hz)
     highest_hz = max(goal.high_hz for goal in space.bands)
     low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
     return low_hz, min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
