@@ -148,8 +148,12 @@ class _Job:
         members = dict.fromkeys(member for each in chosen for member in each.members)
         picks = dict.fromkeys(self.found.refined(self._pool[member].pick) for member in members)
         missing = [pick for pick in picks if _rank_of(looks, pick) is None]
-        room = MOST_CANDIDATES - len(looks)
-        return looks + self._look_at(tuple(missing[:room]), (_LOOK_PART, 1.0), "member of a set")
+        # A set is told by the ranks of its members, so they go before the last leaders.
+        spare = [look for look in looks if look.appraisal.pick not in picks]
+        too_many = max(len(looks) + len(missing) - MOST_CANDIDATES, 0)
+        left_out = {id(look) for look in spare[len(spare) - too_many :]}
+        kept = [look for look in looks if id(look) not in left_out]
+        return kept + self._look_at(tuple(missing), (_LOOK_PART, 1.0), "member of a set")
 
     def told(self, chosen: ChosenSet, looks: list[Look], candidates: list[Candidate]) -> DipoleSet:
         """A set by the ranks of its members, with what each serves as looked at closely."""

@@ -19,6 +19,8 @@ MOST_CANDIDATES: Final = 15
 LARGEST_SET: Final = 4
 #: Conductors times heights times places of the feed that one request may search.
 MOST_WAYS: Final = 15
+#: A wire for the highest band must still be long enough for the models on the lowest.
+WIDEST_RANGE_RATIO: Final = 60
 LARGEST_REQUEST_BYTES: Final = 64 * 1024
 
 #: No straight wire resonates below this many wavelengths: even a wire only 10 diameters
@@ -81,7 +83,22 @@ class DesignRequest(Contract):
         self._check_diameters()
         self._check_size()
         self._check_worst_case()
+        self._check_bands_together()
         return self
+
+    def _check_bands_together(self) -> None:
+        lowest = min(self.bands, key=lambda band: band.low_mhz)
+        highest = max(self.bands, key=lambda band: band.high_mhz)
+        if highest.high_mhz > WIDEST_RANGE_RATIO * lowest.low_mhz:
+            raise rule_broken(
+                "bands-too-far-apart",
+                f"{highest.name} is {highest.high_mhz / lowest.low_mhz:.0f} times as high as "
+                f"{lowest.name}; a wire for the one is no antenna on the other.",
+                f"Plan bands within a ratio of {WIDEST_RANGE_RATIO} together, the others by "
+                "themselves.",
+                field="bands",
+                value=f"{lowest.name} and {highest.name}",
+            )
 
     def _check_size(self) -> None:
         counts = {

@@ -103,15 +103,15 @@ def main() -> None:
             "feed_line": {"line": "rg-213", "length_m": 30.0},
             "matching": "per-band",
         },
-        candidates=20,
+        candidates=15,
         largest_set=4,
         rank_by="worst-case",
         tolerances={},
     )
     planned, spent_s, silence_s = timed(largest)
     memory_mib = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024.0
-    print("largest request: eleven bands, five conductors at five heights, twelve ratios, line,")
-    print("networks, worst case, twenty candidates, sets of four")
+    print("largest request: eleven bands, five conductors at three heights, twelve ratios, line,")
+    print("networks, worst case, fifteen candidates, sets of four")
     print(f"  processor time, one core       {spent_s:>12.1f} s")
     print(f"  longest silence                {silence_s:>12.2f} s")
     print(f"  largest memory of this process {memory_mib:>12.0f} MiB")

@@ -237,3 +237,10 @@ def test_a_range_of_diameters_is_sampled_within_its_limits(low: float, high: flo
 def test_control_characters_in_a_text_are_refused(name: str) -> None:
     fault = only_fault(request_json(name=name))
     assert (fault.field, fault.code) == ("name", "control-character")
+
+
+def test_bands_too_far_apart_for_one_wire_are_refused() -> None:
+    far = [band(), band(name="high", low_mhz=430.0, high_mhz=440.0)]
+    fault = only_fault(request_json(bands=far))
+    assert (fault.field, fault.code) == ("bands", "bands-too-far-apart")
+    assert "within a ratio of 60" in fault.remedy

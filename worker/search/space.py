@@ -29,6 +29,9 @@ _FURTHEST_APART: Final = 0.02
 #: Impedances held at a time while one wire is compared: 64 MB of them.
 _MOST_HELD: Final = 4_000_000
 
+#: A wire may turn out longer than planned by this ratio at the most.
+LONGEST_DEPARTURE: Final = 1.05
+
 #: The scan starts at this many wavelengths at the highest frequency asked for; see
 #: ``SHORTEST_RESONANCE_WAVELENGTHS`` of the request contract, which refuses shorter spans.
 SHORTEST_WAVELENGTHS: Final = 0.40
@@ -130,10 +133,11 @@ class SearchSpace:
     def __post_init__(self) -> None:
         """Derive the limits of the search."""
         top_wavelength_m = SPEED_OF_LIGHT_M_PER_S / max(band.high_hz for band in self.bands)
-        # Maps reach beyond the longest wire by the relative width of a band.
+        # Maps reach beyond the longest wire by the relative width of a band, and departures by
+        # what a wire may be cut too long.
         widest = max(band.high_hz / band.low_hz for band in self.bands)
         modelled_m = top_wavelength_m * min(wire.model.longest_wavelengths for wire in self.wires)
-        longest_m = min(self.site_longest_m, modelled_m / widest)
+        longest_m = min(self.site_longest_m, modelled_m / (widest * LONGEST_DEPARTURE))
         object.__setattr__(self, "longest_m", longest_m)
         object.__setattr__(
             self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)

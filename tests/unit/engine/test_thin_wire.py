@@ -212,7 +212,7 @@ def test_estimated_error_bounds_the_change_to_a_much_finer_solution(
 ) -> None:
     rng = np.random.default_rng(20)
     radius = WAVELENGTH_M * 10.0 ** rng.uniform(-7.0, np.log10(5e-3), 60)
-    length = WAVELENGTH_M * 10.0 ** rng.uniform(np.log10(0.06), np.log10(9.9), 60)
+    length = WAVELENGTH_M * 10.0 ** rng.uniform(np.log10(0.006), np.log10(9.9), 60)
     result = feed_impedance(length, radius, FREQUENCY_HZ)
     fine = (Level(8, 12, Grading(0.12, 5.0, 0.9, 1.2, 0.7)),)
     monkeypatch.setattr(wire_module, "LEVELS", fine)
@@ -247,7 +247,7 @@ def test_a_wire_near_perfect_ground_hardly_radiates() -> None:
 @pytest.mark.parametrize(
     ("length", "radius", "quantity"),
     [
-        (0.04, 1e-5, "length in wavelengths"),
+        (0.004, 1e-5, "length in wavelengths"),
         (10.1, 1e-5, "length in wavelengths"),
         (0.5, 0.9e-7, "radius in wavelengths"),
         (0.5, 5.1e-3, "radius in wavelengths"),
@@ -264,7 +264,7 @@ def test_a_refusal_names_value_and_range() -> None:
     with pytest.raises(OutOfRange) as refusal:
         feed_impedance(11.0 * WAVELENGTH_M, RADIUS_M, FREQUENCY_HZ)
     assert refusal.value.value == pytest.approx(11.0)
-    assert (refusal.value.low, refusal.value.high) == (0.05, 10.0)
+    assert (refusal.value.low, refusal.value.high) == (0.005, 10.0)
 
 
 @pytest.mark.parametrize("fraction", [0.0, 1e-4, 1.0, 1.2, np.nan])

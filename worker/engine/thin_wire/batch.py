@@ -17,7 +17,7 @@ from worker.engine.thin_wire.reflection import ReflectedPotentials
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
-LENGTH_RANGE_WAVELENGTHS: Final = (0.05, 10.0)
+LENGTH_RANGE_WAVELENGTHS: Final = (0.005, 10.0)
 RADIUS_RANGE_WAVELENGTHS: Final = (1e-7, 5e-3)
 GAP_RANGE_RADII: Final = (1e-2, inf)
 # A port stays this many radii away from the ends and from other ports, and clear of them by as

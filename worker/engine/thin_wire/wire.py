@@ -136,7 +136,7 @@ def feed_impedance(
     Raises
     ------
     OutOfRange
-        Length outside 0.05 to 10 wavelengths, radius outside 1e-7 to 5e-3 wavelengths, wire
+        Length outside 0.005 to 10 wavelengths, radius outside 1e-7 to 5e-3 wavelengths, wire
         shorter than ten radii, a feed or load within five radii or one gap width of an end or of
         another, a height below two radii, or a frequency that is not the ground's.
 
