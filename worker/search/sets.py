@@ -66,6 +66,7 @@ def best_sets(
     Returns
     -------
     tuple of ChosenSet
+        Empty where no wire serves anything worth telling.
 
     Raises
     ------
@@ -75,6 +76,8 @@ def best_sets(
     chosen: list[ChosenSet] = []
     for size in range(1, min(largest, len(served)) + 1):
         found = _best_of_size(served, required, weight, size)
+        if found is None:
+            break
         before = (chosen[-1].required_served, chosen[-1].weighted_served) if chosen else (-1, -1.0)
         if (found.required_served, found.weighted_served) > (before[0], before[1] + 1e-9):
             chosen.append(found)
@@ -83,10 +86,12 @@ def best_sets(
 
 def _best_of_size(
     served: FloatArray, required: NDArray[np.bool_], weight: FloatArray, size: int
-) -> ChosenSet:
-    """The best of at most ``size`` wires, each the first that does as well."""
+) -> ChosenSet | None:
+    """The best of at most ``size`` wires, each the first that does as well; None where none is."""
     useful = _undominated(served)
     members = useful[_taken(served[useful], required, weight, size)]
+    if not members.size:
+        return None
     return _with_the_preferred(served, required, weight, _as_set(served, required, weight, members))
 
 

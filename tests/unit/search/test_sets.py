@@ -110,6 +110,10 @@ def test_a_band_served_in_part_by_two_is_not_served_whole_by_both() -> None:
     assert found[0].required_served == 1
 
 
+def test_wires_that_serve_nothing_make_no_set() -> None:
+    assert best_sets(np.zeros((3, 2)), np.array([True, False]), np.ones(2), 3) == ()
+
+
 @pytest.mark.parametrize("wires", [8, 150])
 def test_of_wires_alike_the_one_preferred_is_taken(wires: int) -> None:
     # All serve the first band; the last three serve the second as well, all alike.
