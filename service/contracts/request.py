@@ -29,6 +29,10 @@ LARGEST_REQUEST_BYTES: Final = 64 * 1024
 #: and insulation shorten it by a few per cent more, hence the margin.
 SHORTEST_RESONANCE_WAVELENGTHS: Final = 0.40
 
+#: Heights the models of the ground cover, in wavelengths of the lowest and the highest band.
+LOWEST_HEIGHT_WAVELENGTHS: Final = 0.01
+HIGHEST_HEIGHT_WAVELENGTHS: Final = 90.0
+
 #: Above this radius in wavelengths the current is no longer that of a thin wire.
 THICKEST_RADIUS_WAVELENGTHS: Final = 5e-3
 
@@ -80,6 +84,7 @@ class DesignRequest(Contract):
     def _hangs_together(self) -> Self:
         check_names_differ(self.bands)
         self._check_span()
+        self._check_heights()
         self._check_diameters()
         self._check_size()
         self._check_worst_case()
@@ -140,6 +145,35 @@ class DesignRequest(Contract):
                 "or add a higher band.",
                 field="site.span_m",
                 value=self.site.span_m,
+            )
+
+    def _check_heights(self) -> None:
+        heights_m = self.site.heights_m()
+        if not heights_m:
+            return
+        lowest = min(self.bands, key=lambda band: band.low_mhz)
+        highest = max(self.bands, key=lambda band: band.high_mhz)
+        least_m = LOWEST_HEIGHT_WAVELENGTHS * wavelength_m(lowest.low_mhz)
+        most_m = HIGHEST_HEIGHT_WAVELENGTHS * wavelength_m(highest.high_mhz)
+        if min(heights_m) < least_m:
+            raise rule_broken(
+                "height-too-low",
+                f"a wire {min(heights_m):g} m over ground is too low for the model of the ground "
+                f"on {lowest.name}.",
+                f"Hang it at least {math.ceil(100.0 * least_m) / 100.0:.2f} m high, or leave out "
+                "the lowest band.",
+                field="site.height_m",
+                value=min(heights_m),
+            )
+        if max(heights_m) > most_m:
+            raise rule_broken(
+                "height-too-high",
+                f"a wire {max(heights_m):g} m over ground is too high for the model of the ground "
+                f"on {highest.name}.",
+                f"Plan it at {math.floor(100.0 * most_m) / 100.0:.2f} m, where it is as good as "
+                "in free space, or leave out the highest band.",
+                field="site.height_m",
+                value=max(heights_m),
             )
 
     def _check_diameters(self) -> None:

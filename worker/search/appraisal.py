@@ -201,7 +201,7 @@ def _whole_range_hz(space: SearchSpace, pick: Pick) -> tuple[float, float]:
     if 0.5 * one_wave_hz < 1.2 * lowest_hz:
         lowest_hz = min(lowest_hz, 0.42 * one_wave_hz)
     highest_hz = max(goal.high_hz for goal in space.bands)
-    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz)
+    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz, wire.lowest_hz)
     return low_hz, min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
 
 

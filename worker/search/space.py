@@ -58,6 +58,11 @@ class WireModel(Protocol):
         """Length in wavelengths up to which the model holds."""
         ...
 
+    @property
+    def lowest_hz(self) -> float:
+        """Frequency from which the model holds, whatever the length."""
+        ...
+
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
         """Solve every pair of length (m) and frequency (Hz)."""
         ...

@@ -5,7 +5,8 @@ from __future__ import annotations
 from dataclasses import replace
 from math import sqrt
 
-from service.contracts.request import Tolerances
+from service.contracts.quantities import wavelength_m
+from service.contracts.request import LOWEST_HEIGHT_WAVELENGTHS, Tolerances
 from worker.engine.ground import Ground
 from worker.search.steadiness import Departure
 from worker.translation.wires import Hanging, Way, ground_of
@@ -42,8 +43,12 @@ def _higher_and_lower(hanging: Hanging, way: Way, tolerances: Tolerances) -> lis
     by_m = tolerances.height_m
     if way.height_m is None or by_m == 0.0:
         return []
+    bands = hanging.request.bands
+    longest_wave_m = wavelength_m(min(band.low_mhz for band in bands))
+    lowest_m = max(0.5 * way.height_m, LOWEST_HEIGHT_WAVELENGTHS * longest_wave_m)
     heights = [(f"{by_m:g} m higher", way.height_m + by_m)]
-    if by_m < 0.5 * way.height_m:
+    # Lower than that it would be another site, or one that the ground's model does not cover.
+    if way.height_m - by_m >= lowest_m:
         heights.append((f"{by_m:g} m lower", way.height_m - by_m))
     return [
         Departure(what, hanging.wire(replace(way, height_m=height_m))) for what, height_m in heights

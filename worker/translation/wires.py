@@ -10,7 +10,9 @@ from service.contracts.station_site import Ground as SaidGround
 from service.contracts.station_site import GroundConstants
 from service.contracts.stock import Conductor
 from service.contracts.sweep import SweepRequest
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.ground import GROUND_CLASSES, Ground
+from worker.engine.ground.table import LOWEST_HEIGHT_WAVELENGTHS
 from worker.engine.hung_wire import (
     GroundTables,
     HungWire,
@@ -43,6 +45,13 @@ class StockWire:
     def longest_wavelengths(self) -> float:
         """Length in wavelengths up to which the model holds."""
         return LENGTH_RANGE_WAVELENGTHS[1]
+
+    @property
+    def lowest_hz(self) -> float:
+        """Frequency from which the model holds, whatever the length: the ground's, for a height."""
+        if self.hung.grounds is None:
+            return 0.0
+        return LOWEST_HEIGHT_WAVELENGTHS * SPEED_OF_LIGHT_M_PER_S / self.hung.grounds.height_m
 
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
         """Solve every pair of length (m) and frequency (Hz)."""
@@ -121,13 +130,23 @@ class Hanging:
         ground = ground or ground_of(self.request.site.ground)
         grounds = None
         if ground is not None and way.height_m is not None:
-            # Maps are read at equal electrical length: at the low edge of a band for longer wire.
-            widest = max(band.high_mhz / band.low_mhz for band in self.request.bands)
-            reach_m = _TABLE_REACH * widest * self.request.site.longest_wire_m
+            reach_m = _TABLE_REACH * self._longest_read_m()
             key = (ground, way.height_m)
             grounds = self._tables.setdefault(key, GroundTables(ground, way.height_m, reach_m))
         hung = _hung(way.conductor, grounds)
         return StockWire(replace(hung, feed_fraction=way.feed_fraction))
+
+    def _longest_read_m(self) -> float:
+        """The longest wire that maps are read for.
+
+        They are read at equal electrical length, at the low edge of a band for longer wire; and
+        they cover a little more than the shortest wire that the models hold for.
+        """
+        bands = self.request.bands
+        widest = max(band.high_mhz / band.low_mhz for band in bands)
+        longest_wave_m = SPEED_OF_LIGHT_M_PER_S / (1e6 * min(band.low_mhz for band in bands))
+        shortest_m = 2.0 * LENGTH_RANGE_WAVELENGTHS[0] * longest_wave_m
+        return max(widest * self.request.site.longest_wire_m, shortest_m)
 
 
 def swept_wire(request: SweepRequest) -> StockWire:

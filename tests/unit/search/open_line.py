@@ -28,6 +28,7 @@ class OpenLine:
     surge_ohm: float = 1000.0
     shortest_wavelengths: float = 0.05
     longest_wavelengths: float = 6.0
+    lowest_hz: float = 0.0
     solves: int = 0
 
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
