@@ -8,6 +8,7 @@ complete them to sets where one wire is not enough, and put it all in words.
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import partial
 from time import perf_counter
 from typing import Final
 
@@ -213,20 +214,27 @@ class _Job:
         """Look closely at wires: what they do, how they hold up, what would gain."""
         if not picks:
             return []
-        self._progress(parts[0], f"looking at {len(picks)} wires")
+
+        def look() -> None:
+            self._progress(parts[0], f"looking at {len(picks)} wires")
+
         maps = tuple(self.found.maps[pick.wire].maps for pick in picks)
         looks: list[Look] = []
-        for index, appraisal in enumerate(appraise(self.found.space, picks, maps)):
+        for index, appraisal in enumerate(appraise(self.found.space, picks, maps, look)):
             part = parts[0] + (parts[1] - parts[0]) * index / len(picks)
-            self._progress(part, f"judging {what} {index + 1} of {len(picks)}")
-            looks.append(self._judged(appraisal))
+            step = f"judging {what} {index + 1} of {len(picks)}"
+            looks.append(self._judged(appraisal, partial(self._progress, part, step)))
         return looks
 
-    def _judged(self, appraisal: Appraisal) -> Look:
+    def _judged(self, appraisal: Appraisal, tell: Callable[[], None]) -> Look:
+        tell()
         pick = appraisal.pick
         way = self._hanging.ways[pick.wire]
         departures = departures_of(self._hanging, way)
-        held = hold(self.found.space, pick, departures) if departures else None
+        held = None
+        if departures:
+            planned = np.array([band.served_fraction for band in appraisal.bands])
+            held = hold(self.found.space, pick, departures, planned, tell)
         self.solves += appraisal.solves + (held.solves if held else 0)
         return Look(way, appraisal, gains_of(self.found, pick), held)
 

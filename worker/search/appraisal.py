@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import Final
 
@@ -91,7 +92,10 @@ def is_near(resonance: Resonance, goal: BandGoal) -> bool:
 
 
 def appraise(
-    space: SearchSpace, picks: tuple[Pick, ...], maps: tuple[tuple[BandMap, ...], ...]
+    space: SearchSpace,
+    picks: tuple[Pick, ...],
+    maps: tuple[tuple[BandMap, ...], ...],
+    tell: Callable[[], None] = lambda: None,
 ) -> tuple[Appraisal, ...]:
     """Look closely at some wires of the space, together, for together they cost less.
 
@@ -102,9 +106,11 @@ def appraise(
         The wires: conductor, height and feed, ratio and length.
     maps : tuple of tuple of BandMap
         Of each wire over length, one for each band.
+    tell : callable
+        Called before every solution, as a word of progress.
     """
-    over_frequency = _map_whole_ranges(space, picks)
-    marks = [_solve_marks(space, picks, goal) for goal in space.bands]
+    over_frequency = _map_whole_ranges(space, picks, tell)
+    marks = [_solve_marks(space, picks, goal, tell) for goal in space.bands]
     return tuple(
         _appraise_one(space, pick, maps[row], over_frequency[row], [each[row] for each in marks])
         for row, pick in enumerate(picks)
@@ -148,8 +154,11 @@ class _Band:
     marks: Solved
 
 
-def _solve_marks(space: SearchSpace, picks: tuple[Pick, ...], goal: BandGoal) -> list[Solved]:
+def _solve_marks(
+    space: SearchSpace, picks: tuple[Pick, ...], goal: BandGoal, tell: Callable[[], None]
+) -> list[Solved]:
     """Direct solutions of every pick at a band's edges and centre."""
+    tell()
     wires = tuple(pick.wire for pick in picks)
     length_m = np.array([pick.length_m for pick in picks])
     solved = [space.solved_together(wires, length_m, at_hz) for at_hz in _marks_hz(goal)]
@@ -166,7 +175,9 @@ def _marks_hz(goal: BandGoal) -> list[float]:
     return [goal.low_hz, goal.centre_hz, goal.high_hz]
 
 
-def _map_whole_ranges(space: SearchSpace, picks: tuple[Pick, ...]) -> list[ImpedanceMap]:
+def _map_whole_ranges(
+    space: SearchSpace, picks: tuple[Pick, ...], tell: Callable[[], None]
+) -> list[ImpedanceMap]:
     """Maps of all picks over frequency; those that need the same range are solved together."""
     by_range: dict[tuple[float, float], list[int]] = {}
     for row, pick in enumerate(picks):
@@ -181,10 +192,11 @@ def _map_whole_ranges(space: SearchSpace, picks: tuple[Pick, ...]) -> list[Imped
             wires: tuple[int, ...] = wires,
             length_m: FloatArray = length_m,
         ) -> ComplexArray:
-            columns = [
-                space.solved_together(wires, length_m, float(at_hz)).impedance_ohm
-                for at_hz in frequency_hz
-            ]
+            columns: list[ComplexArray] = []
+            for at_hz in frequency_hz:
+                tell()
+                solved = space.solved_together(wires, length_m, float(at_hz))
+                columns.append(solved.impedance_ohm)
             return np.array(columns).T
 
         found = map_over_frequency_together(solve, float(length_m.max()), low_hz, high_hz)

@@ -53,6 +53,7 @@ _WIDEST_STEP: Final = 0.08
 #: Agreement asked of a map with fresh solves: the larger of the two.
 TOLERANCE_OHM: Final = 0.1
 TOLERANCE_RELATIVE: Final = 1e-3
+_LEAST_RESISTANCE_OHM: Final = 1e-3
 #: A wire too short for the model: hardly any resistance, and all the reactance in the world.
 _STUB_OHM: Final = complex(0.01, -1e5)
 #: What is fitted is the reflection against this resistance, about a wire's own as a line: it is
@@ -101,7 +102,7 @@ class ImpedanceMap:
             inside = which == index
             if inside.any():
                 impedance[inside] = stretch.curve(at[inside])
-        return impedance
+        return _passive(impedance)
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,7 +135,7 @@ class BandMap:
             weight = _lagrange_weight(self.frequencies_hz, index, frequency_hz)
             at_m = np.clip(electrical / self.frequencies_hz[index], each.low, each.high)
             impedance += weight[:, None] * each.impedance_ohm(at_m)
-        return np.where(electrical < self.shortest_m_hz, _STUB_OHM, impedance)
+        return np.where(electrical < self.shortest_m_hz, _STUB_OHM, _passive(impedance))
 
     def over_even_ratios(self, length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
         """The same for lengths in an even ratio, at a small part of the cost; shape (p, n).
@@ -159,7 +160,7 @@ class BandMap:
                     (1.0 - part) * here + part * after[: len(length_m)]
                 )
         electrical = frequency_hz[:, None] * length_m
-        return np.where(electrical < self.shortest_m_hz, _STUB_OHM, impedance)
+        return np.where(electrical < self.shortest_m_hz, _STUB_OHM, _passive(impedance))
 
     @property
     def solves(self) -> int:
@@ -369,6 +370,15 @@ def _lagrange_weight(nodes: FloatArray, index: int, at: FloatArray) -> FloatArra
     others = np.delete(nodes, index)
     factors = (at[:, None] - others) / (nodes[index] - others)
     return np.asarray(np.prod(factors, axis=1))
+
+
+def _passive(impedance_ohm: ComplexArray) -> ComplexArray:
+    """The impedance with a resistance above zero, as a wire's is.
+
+    A wire much shorter than a wavelength has less of it than a map misses of its reactance.
+    """
+    impedance_ohm.real = np.maximum(impedance_ohm.real, _LEAST_RESISTANCE_OHM)
+    return impedance_ohm
 
 
 def _chebyshev_points(low: float, high: float, count: int) -> FloatArray:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Final
 
@@ -14,6 +15,9 @@ from worker.search.space import POINTS_PER_BAND, FloatArray, SearchSpace, WireMo
 #: Frequencies per band a departure is judged at, by direct solves: edges, centre and between;
 #: on wide bands as many as the scan looks at.
 POINTS: Final = 5
+
+#: Stands for a band that is not judged: it serves nothing.
+_UNSERVED_OHM: Final = complex(1e-3, -1e5)
 
 
 @dataclass(frozen=True, slots=True)
@@ -64,7 +68,13 @@ class Held:
         return float(max(each.scored.swr_worst[whole, 0].max() for each in self.departed))
 
 
-def hold(space: SearchSpace, pick: Pick, departures: tuple[Departure, ...]) -> Held:
+def hold(
+    space: SearchSpace,
+    pick: Pick,
+    departures: tuple[Departure, ...],
+    planned: FloatArray | None = None,
+    tell: Callable[[], None] = lambda: None,
+) -> Held:
     """Judge a wire under every departure, by direct solves.
 
     Parameters
@@ -73,15 +83,25 @@ def hold(space: SearchSpace, pick: Pick, departures: tuple[Departure, ...]) -> H
     pick : Pick
     departures : tuple of Departure
         At least one.
+    planned : ndarray, shape (b,), optional
+        Part of each band served as planned: one that is not served at all is not solved again,
+        and counts as unserved in every departure. By default all are solved.
+    tell : callable
+        Called before every departure, as a word of progress.
     """
     points = POINTS if space.points == POINTS_PER_BAND else space.points
     grids = np.array([band.grid_hz(points) for band in space.bands])
+    judged = np.full(len(grids), fill_value=True) if planned is None else planned > 0.0
+    at_hz = grids[judged].ravel()
     departed: list[Departed] = []
     for each in departures:
-        length_m = np.full(grids.size, pick.length_m * each.length_ratio)
-        solved = each.model.solve(length_m, grids.ravel()).impedance_ohm
-        impedance = solved.reshape(*grids.shape, 1)
+        tell()
+        impedance = np.full((*grids.shape, 1), _UNSERVED_OHM)
+        if at_hz.size:
+            length_m = np.full(at_hz.size, pick.length_m * each.length_ratio)
+            solved = each.model.solve(length_m, at_hz).impedance_ohm
+            impedance[judged] = solved.reshape(-1, points, 1)
         scored = score(impedance, space.bands, space.feeding, pick.ratio)
         departed.append(Departed(each.what, scored, merit(scored, space.bands)))
     worst = max(departed, key=Departed.key)
-    return Held(tuple(departed), worst, grids.size * len(departures))
+    return Held(tuple(departed), worst, at_hz.size * len(departures))

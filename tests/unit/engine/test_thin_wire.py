@@ -14,6 +14,7 @@ from worker.engine.errors import OutOfRange
 from worker.engine.thin_wire import MODEL, current, feed_impedance
 from worker.engine.thin_wire import refinement as refinement_module
 from worker.engine.thin_wire import wire as wire_module
+from worker.engine.thin_wire.batch import SHORTEST_LENGTH_RADII
 from worker.engine.thin_wire.mesh import Grading
 from worker.engine.thin_wire.refinement import LEVELS, Level
 
@@ -213,6 +214,7 @@ def test_estimated_error_bounds_the_change_to_a_much_finer_solution(
     rng = np.random.default_rng(20)
     radius = WAVELENGTH_M * 10.0 ** rng.uniform(-7.0, np.log10(5e-3), 60)
     length = WAVELENGTH_M * 10.0 ** rng.uniform(np.log10(0.006), np.log10(9.9), 60)
+    length = np.maximum(length, 1.1 * SHORTEST_LENGTH_RADII * radius)
     result = feed_impedance(length, radius, FREQUENCY_HZ)
     fine = (Level(8, 12, Grading(0.12, 5.0, 0.9, 1.2, 0.7)),)
     monkeypatch.setattr(wire_module, "LEVELS", fine)
