@@ -80,6 +80,15 @@ def score(
     return Score(served, _swr_of(most), loss_db)
 
 
+def stacked(parts: list[Score]) -> Score:
+    """Scores of the same wires on different bands as one."""
+    return Score(
+        np.concatenate([part.served_fraction for part in parts], axis=0),
+        np.concatenate([part.swr_worst for part in parts], axis=0),
+        np.concatenate([part.loss_db for part in parts], axis=0),
+    )
+
+
 @cache
 def _between(points: int) -> FloatArray:
     """Weights that interpolate from so many even points to ``_FINER`` times as many steps.

@@ -7,14 +7,16 @@ from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from worker.search.ranking import Pick
-from worker.search.scoring import FULLY_SERVED, Merit, Score, merit, score
-from worker.search.space import POINTS_PER_BAND, FloatArray, SearchSpace, WireModel
+from worker.search.scoring import FULLY_SERVED, Merit, Score, merit, score, stacked
+from worker.search.space import BandGoal, FloatArray, SearchSpace, WireModel
 
-#: Frequencies per band a departure is judged at, by direct solves: edges, centre and between;
-#: on wide bands as many as the scan looks at.
+#: Frequencies per band a departure is judged at, by direct solves: at least edges, centre and
+#: between, and no further apart than this part of their frequency.
 POINTS: Final = 5
+_FURTHEST_APART: Final = 0.04
 
 #: Stands for a band that is not judged: it serves nothing.
 _UNSERVED_OHM: Final = complex(1e-3, -1e5)
@@ -89,19 +91,38 @@ def hold(
     tell : callable
         Called before every departure, as a word of progress.
     """
-    points = POINTS if space.points == POINTS_PER_BAND else space.points
-    grids = np.array([band.grid_hz(points) for band in space.bands])
-    judged = np.full(len(grids), fill_value=True) if planned is None else planned > 0.0
-    at_hz = grids[judged].ravel()
+    judged = np.full(len(space.bands), fill_value=True) if planned is None else planned > 0.0
     departed: list[Departed] = []
     for each in departures:
         tell()
-        impedance = np.full((*grids.shape, 1), _UNSERVED_OHM)
-        if at_hz.size:
-            length_m = np.full(at_hz.size, pick.length_m * each.length_ratio)
-            solved = each.model.solve(length_m, at_hz).impedance_ohm
-            impedance[judged] = solved.reshape(-1, points, 1)
-        scored = score(impedance, space.bands, space.feeding, pick.ratio)
+        scored = _scored(space, pick, each, judged)
         departed.append(Departed(each.what, scored, merit(scored, space.bands)))
     worst = max(departed, key=Departed.key)
-    return Held(tuple(departed), worst, at_hz.size * len(departures))
+    solves = sum(_grid_hz(band).size for band in _those(space.bands, judged))
+    return Held(tuple(departed), worst, solves * len(departures))
+
+
+def _scored(
+    space: SearchSpace, pick: Pick, departure: Departure, judged: NDArray[np.bool_]
+) -> Score:
+    """The score of one wire under one departure, solved on the bands judged."""
+    at_hz = np.concatenate([np.empty(0), *(_grid_hz(each) for each in _those(space.bands, judged))])
+    length_m = np.full(at_hz.size, pick.length_m * departure.length_ratio)
+    solved = list(departure.model.solve(length_m, at_hz).impedance_ohm) if at_hz.size else []
+    parts: list[Score] = []
+    for band, is_judged in zip(space.bands, judged, strict=True):
+        points = _grid_hz(band).size
+        impedance = np.full(points, _UNSERVED_OHM)
+        if is_judged:
+            impedance[:], solved = solved[:points], solved[points:]
+        parts.append(score(impedance[None, :, None], (band,), space.feeding, pick.ratio))
+    return stacked(parts)
+
+
+def _those(bands: tuple[BandGoal, ...], judged: NDArray[np.bool_]) -> list[BandGoal]:
+    return [band for band, is_judged in zip(bands, judged, strict=True) if is_judged]
+
+
+def _grid_hz(band: BandGoal) -> FloatArray:
+    steps = 2 * int(np.ceil(0.5 * np.log(band.high_hz / band.low_hz) / _FURTHEST_APART))
+    return band.grid_hz(max(POINTS, steps + 1))
