@@ -14,6 +14,7 @@ from worker.search.impedance_map import BandMap, ImpedanceMap, map_over_frequenc
 from worker.search.ranking import Pick
 from worker.search.resonances import (
     Resonance,
+    exponent_of,
     lengths_in_resonance,
     nearest_series,
     resonances_of,
@@ -237,9 +238,15 @@ def _appraise_band(
     own_length_m = hz_per_m = None
     if nearest is not None and is_near(nearest, goal):
         guess_m = pick.length_m * nearest.frequency_hz / goal.centre_hz
-        own_length_m, slope = lengths_in_resonance(band.over_length, guess_m, goal)
         # Of one order, resonance goes as a power of length; its exponent is that within the band.
-        hz_per_m = None if slope is None else slope * nearest.frequency_hz / pick.length_m
+        own_length_m, exponent = lengths_in_resonance(band.over_length, guess_m, goal)
+        if exponent is None:
+            model = space.wires[pick.wire].model
+            exponent = exponent_of(model, pick.length_m, nearest.frequency_hz)
+        if own_length_m is None:
+            shorter = (goal.centre_hz / nearest.frequency_hz) ** (1.0 / exponent)
+            own_length_m = pick.length_m * shorter
+        hz_per_m = exponent * nearest.frequency_hz / pick.length_m
     return BandAppraisal(
         goal=goal,
         marks=_curve(feeding, pick, marks_hz, band.marks.impedance_ohm, network),

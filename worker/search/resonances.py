@@ -11,7 +11,7 @@ from scipy.optimize import brentq
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.resonance import reactance_zeros
 from worker.search.impedance_map import BandMap, ImpedanceMap
-from worker.search.space import BandGoal, FloatArray
+from worker.search.space import BandGoal, FloatArray, WireModel
 
 #: The map is first looked at this many times per half wave of wire.
 _SAMPLES_PER_HALF_WAVE: Final = 60
@@ -19,6 +19,9 @@ _SAMPLES_PER_HALF_WAVE: Final = 60
 #: A length in resonance is looked for within this part of the given one.
 _REACH: Final = 0.08
 _LOOKS: Final = 65
+
+#: Length and frequency are moved by this part to see how a resonance follows.
+_NUDGE: Final = 1e-3
 
 #: A wire is moved onto a frequency to this part of its length: 1 mm in 100 m.
 _LENGTH_RELATIVE: Final = 1e-5
@@ -114,6 +117,23 @@ def lengths_in_resonance(
     if low_m is None or high_m is None:
         return centre_m, None
     return centre_m, float(np.log(goal.high_hz / goal.low_hz) / np.log(high_m / low_m))
+
+
+def exponent_of(wire: WireModel, length_m: float, frequency_hz: float) -> float:
+    """The power by which a wire's resonance goes with its length, by direct solves.
+
+    For a wire whose neighbours lie beyond the map. Along X = 0, df/dL = -(dX/dL)/(dX/df).
+
+    Parameters
+    ----------
+    wire : WireModel
+    length_m, frequency_hz : float
+        Where it is in resonance.
+    """
+    lengths_m = length_m * np.array([1.0 + _NUDGE, 1.0 - _NUDGE, 1.0, 1.0])
+    at_hz = frequency_hz * np.array([1.0, 1.0, 1.0 + _NUDGE, 1.0 - _NUDGE])
+    reactance = wire.solve(lengths_m, at_hz).impedance_ohm.imag
+    return float(-(reactance[0] - reactance[1]) / (reactance[2] - reactance[3]))
 
 
 def _rising_zero(band_map: BandMap, near_m: float, frequency_hz: float) -> float | None:
