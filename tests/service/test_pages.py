@@ -243,7 +243,7 @@ def test_the_largest_page_keeps_within_its_weight(
     largest = {
         "bands": [
             {"band_list": "amateur-region-2", "names": names},
-            {"name": "2m", "low_mhz": 144.0, "high_mhz": 148.0},
+            {"name": "4m", "low_mhz": 70.0, "high_mhz": 70.5},
         ],
         "site": {"span_m": 90.0, "height_m": 12.0},
         "candidates": MOST_CANDIDATES,
