@@ -26,6 +26,7 @@ class OpenLine:
 
     noise: float = 0.0
     surge_ohm: float = 1000.0
+    slowing: float = SLOWING
     shortest_wavelengths: float = 0.05
     longest_wavelengths: float = 6.0
     lowest_hz: float = 0.0
@@ -34,7 +35,7 @@ class OpenLine:
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
         self.solves += length_m.size
         k = 2.0 * np.pi * frequency_hz / C_M_PER_S
-        gamma = 0.1 * np.log1p(k * length_m) / length_m + SLOWING * 1j * k
+        gamma = 0.1 * np.log1p(k * length_m) / length_m + self.slowing * 1j * k
         impedance = self.surge_ohm / np.tanh(0.5 * gamma * length_m)
         impedance *= 1.0 + self.noise * np.sin(1e5 * length_m)
         return Solved(impedance.astype(np.complex128), np.zeros(length_m.shape))
