@@ -42,7 +42,7 @@ def describe(app: FastAPI) -> None:
         return app.openapi_schema
 
     # FastAPI documents replacing this method as the way to extend its description.
-    app.openapi = described  # type: ignore[method-assign]
+    app.openapi = described  # type: ignore[method-assign]  # the way FastAPI documents for extending it
 
 
 def _request_schemas() -> dict[str, Any]:
