@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Annotated, Final, Literal, Self, get_args
 
-from pydantic import Field, field_validator, model_validator
+from pydantic import Discriminator, Field, Tag, field_validator, model_validator
 
 from service.contracts.quantities import Contract, ImpedanceOhm, TransformerRatio
 from service.contracts.refusals import rule_broken
@@ -39,6 +39,24 @@ class FeedLine(Contract):
 ANYWHERE: Final = (0.5, 0.42, 0.36, 1.0 / 3.0, 0.28, 0.2)
 
 
+def _positions_form(given: object) -> str:
+    return "~word" if isinstance(given, str) else "~list"
+
+
+# Told apart by form, so that a fault names the one that was meant.
+Positions = Annotated[
+    Annotated[
+        Annotated[
+            tuple[Annotated[float, Field(ge=0.1, le=0.5)], ...],
+            Field(min_length=1, max_length=MOST_POSITIONS),
+        ],
+        Tag("~list"),
+    ]
+    | Annotated[Literal["anywhere"], Tag("~word")],
+    Discriminator(_positions_form),
+]
+
+
 class Feed(Contract):
     """How power reaches the wire.
 
@@ -54,13 +72,7 @@ class Feed(Contract):
         tuple[TransformerRatio, ...], Field(min_length=1, max_length=MOST_RATIOS)
     ] = (1.0,)
     feed_line: FeedLine | None = None
-    positions: (
-        Annotated[
-            tuple[Annotated[float, Field(ge=0.1, le=0.5)], ...],
-            Field(min_length=1, max_length=MOST_POSITIONS),
-        ]
-        | Literal["anywhere"]
-    ) = (0.5,)
+    positions: Positions = (0.5,)
     matching: Literal["none", "per-band"] = "none"
     reference_point: Literal["feed-point", "transmitter"] = "feed-point"
 

@@ -137,7 +137,8 @@ class Site(Contract):
             return ()
         if isinstance(self.height_m, HeightRange):
             return self.height_m.sampled()
-        return self.height_m if isinstance(self.height_m, tuple) else (self.height_m,)
+        given = self.height_m if isinstance(self.height_m, tuple) else (self.height_m,)
+        return tuple(dict.fromkeys(given))
 
     @property
     def longest_wire_m(self) -> float:

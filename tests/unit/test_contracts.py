@@ -9,8 +9,14 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from service.contracts.band_lists import BAND_LISTS
-from service.contracts.feed import LINE_NAMES
-from service.contracts.request import LARGEST_REQUEST_BYTES, DesignRequest, parse_request
+from service.contracts.feed import ANYWHERE, LINE_NAMES
+from service.contracts.request import (
+    LARGEST_REQUEST_BYTES,
+    MOST_CANDIDATES,
+    MOST_WAYS,
+    DesignRequest,
+    parse_request,
+)
 from service.contracts.stock import Conductor, DiameterRange
 from service.errors import Fault, RequestRefused
 from tests.service.samples import request_fields, request_json, sample_request
@@ -112,8 +118,37 @@ def test_insulation_counts_towards_the_diameter() -> None:
             "stock.diameter_range.low_mm",
             "diameters-swapped",
         ),
+        (
+            {"site": {"span_m": 24.0, "height_m": {"low_m": 9.0, "high_m": 9.0}}},
+            "site.height_m.low_m",
+            "heights-swapped",
+        ),
+        ({"site": {"span_m": 24.0, "height_m": []}}, "site.height_m", "too-short"),
+        ({"site": {"span_m": 24.0, "height_m": [5, 6, 7, 8, 9, 10]}}, "site.height_m", "too-long"),
+        ({"site": {"span_m": 24.0, "height_m": [9.0, 0.0]}}, "site.height_m[1]", "greater-than"),
+        ({"site": {"span_m": 24.0, "height_m": [0.4, 9.0]}}, "site.height_m", "height-too-low"),
         ({"feed": {"transformer_ratios": [4, 4]}}, "feed.transformer_ratios", "ratios-repeated"),
-        ({"candidates": 21}, "candidates", "less-than-equal"),
+        ({"feed": {"positions": []}}, "feed.positions", "too-short"),
+        ({"feed": {"positions": [0.36, 0.6]}}, "feed.positions[1]", "less-than-equal"),
+        ({"feed": {"positions": [0.05]}}, "feed.positions[0]", "greater-than-equal"),
+        ({"feed": {"positions": "nowhere"}}, "feed.positions", "literal-error"),
+        ({"feed": {"matching": "always"}}, "feed.matching", "literal-error"),
+        ({"feed": {"reference_point": "shack"}}, "feed.reference_point", "literal-error"),
+        ({"feed": {"reference_point": "transmitter"}}, "feed.feed_line", "feed-line-missing"),
+        ({"largest_set": 5}, "largest_set", "less-than-equal"),
+        ({"rank_by": "price"}, "rank_by", "literal-error"),
+        ({"rank_by": "worst-case", "tolerances": None}, "tolerances", "tolerances-missing"),
+        (
+            {"tolerances": {"cutting_percent": 6.0}},
+            "tolerances.cutting_percent",
+            "less-than-equal",
+        ),
+        (
+            {"tolerances": {"ground_factor": 0.5}},
+            "tolerances.ground_factor",
+            "greater-than-equal",
+        ),
+        ({"candidates": MOST_CANDIDATES + 1}, "candidates", "less-than-equal"),
         ({"power_w": 0}, "power_w", "greater-than"),
     ],
 )
@@ -237,6 +272,101 @@ def test_a_range_of_diameters_is_sampled_within_its_limits(low: float, high: flo
 def test_control_characters_in_a_text_are_refused(name: str) -> None:
     fault = only_fault(request_json(name=name))
     assert (fault.field, fault.code) == ("name", "control-character")
+
+
+# ------------------------------------------------------------ heights, places and ways
+@pytest.mark.parametrize(
+    ("height_m", "searched"),
+    [
+        (9.0, (9.0,)),
+        ([12.0, 6.0, 12.0], (12.0, 6.0)),
+        ({"low_m": 6.0, "high_m": 12.0}, (6.0, 9.0, 12.0)),
+    ],
+)
+def test_a_height_a_list_and_a_range_are_searched_where_they_say(
+    height_m: object, searched: tuple[float, ...]
+) -> None:
+    request = sample_request(site={"span_m": 24.0, "height_m": height_m})
+    assert request.site.heights_m() == searched
+    assert parse_request(request.canonical_json()) == request
+
+
+def test_in_free_space_no_height_is_searched() -> None:
+    site = {"span_m": 24.0, "height_m": [0.1, 250.0], "ground": "free-space"}
+    assert sample_request(site=site).site.heights_m() == ()
+
+
+def test_a_height_too_low_for_the_ground_s_model_is_refused_with_the_lowest() -> None:
+    fault = only_fault(request_json(bands=[band()], site={"span_m": 24.0, "height_m": [0.4, 9.0]}))
+    assert (fault.field, fault.value) == ("site.height_m", "0.4")
+    # A hundredth of a wavelength at 7.0 MHz is 0.428 m.
+    assert "at least 0.43 m" in fault.remedy
+    just = sample_request(bands=[band()], site={"span_m": 24.0, "height_m": 0.43})
+    assert just.site.heights_m() == (0.43,)
+
+
+def test_a_height_too_high_for_the_ground_s_model_is_refused_with_the_highest() -> None:
+    high = {"bands": [band(name="70cm", low_mhz=430.0, high_mhz=440.0)]}
+    fault = only_fault(request_json(**high, site={"span_m": 2.0, "height_m": 80.0}))
+    assert (fault.field, fault.code, fault.value) == ("site.height_m", "height-too-high", "80.0")
+    # Ninety wavelengths at 440 MHz are 61.32 m.
+    assert "61.32 m" in fault.remedy
+
+
+@pytest.mark.parametrize(
+    ("positions", "searched"), [([0.36, 0.5, 0.36], (0.36, 0.5)), ("anywhere", ANYWHERE)]
+)
+def test_the_places_of_the_feed_are_searched_once_each(
+    positions: object, searched: tuple[float, ...]
+) -> None:
+    request = sample_request(feed={"positions": positions})
+    assert request.feed.feed_fractions() == searched
+    assert parse_request(request.canonical_json()) == request
+
+
+def test_without_a_word_the_feed_is_at_the_centre_without_a_network() -> None:
+    feed = sample_request().feed
+    assert (feed.feed_fractions(), feed.matching, feed.reference_point) == (
+        (0.5,),
+        "none",
+        "feed-point",
+    )
+
+
+def test_limits_at_the_transmitter_are_taken_with_their_line() -> None:
+    line = {"line": "rg-213", "length_m": 20.0}
+    feed = sample_request(feed={"reference_point": "transmitter", "feed_line": line}).feed
+    assert feed.reference_point == "transmitter"
+
+
+def test_more_ways_to_hang_the_wire_than_can_be_searched_are_refused_with_their_count() -> None:
+    conductors = [{"diameter_mm": 1.0 + 0.1 * index} for index in range(4)]
+    many = {
+        "stock": {"conductors": conductors},
+        "site": {"span_m": 24.0, "height_m": [8.0, 10.0]},
+        "feed": {"positions": [0.5, 0.36]},
+    }
+    fault = only_fault(request_json(**many))
+    assert (fault.field, fault.code, fault.value) == ("stock", "too-many-ways", "16 ways")
+    assert "4 conductors, 2 heights, 2 places of the feed make 16 ways" in fault.reason
+    assert f"at most {MOST_WAYS} ways" in fault.remedy
+    fewer = many | {"stock": {"conductors": conductors[:3]}}
+    assert len(sample_request(**fewer).stock.choices()) == 3
+
+
+def test_a_height_repeated_or_a_height_in_free_space_makes_no_more_ways() -> None:
+    conductors = [{"diameter_mm": 1.0 + 0.1 * index} for index in range(9)]
+    for site in (
+        {"span_m": 24.0, "height_m": [8.0, 8.0]},
+        {"span_m": 24.0, "height_m": [8.0, 9.0], "ground": "free-space"},
+    ):
+        taken = sample_request(stock={"conductors": conductors}, site=site)
+        assert len(taken.site.heights_m()) <= 1
+
+
+def test_the_worst_case_is_ranked_by_with_tolerances() -> None:
+    assert sample_request(rank_by="worst-case").tolerances is not None
+    assert sample_request(tolerances=None).tolerances is None
 
 
 def test_bands_too_far_apart_for_one_wire_are_refused() -> None:
