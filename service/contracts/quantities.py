@@ -14,6 +14,7 @@ SPEED_OF_LIGHT_M_PER_S: Final = 299_792_458.0
 
 LOWEST_FREQUENCY_MHZ: Final = 0.1
 HIGHEST_FREQUENCY_MHZ: Final = 1000.0
+HIGHEST_SWR_LIMIT: Final = 10.0
 
 Name = Annotated[str, StringConstraints(strip_whitespace=True, min_length=1, max_length=80)]
 FrequencyMHz = Annotated[
@@ -25,7 +26,7 @@ ImpedanceOhm = Annotated[float, Field(ge=5.0, le=2000.0, description="Ω")]
 TransformerRatio = Annotated[
     float, Field(ge=0.1, le=16.0, description="impedance ratio, antenna side to line side")
 ]
-SwrLimit = Annotated[float, Field(ge=1.05, le=10.0, description="standing wave ratio")]
+SwrLimit = Annotated[float, Field(ge=1.05, le=HIGHEST_SWR_LIMIT, description="standing wave ratio")]
 Weight = Annotated[float, Field(ge=0.01, le=100.0)]
 PowerW = Annotated[float, Field(gt=0.0, le=2_000_000.0, description="W")]
 

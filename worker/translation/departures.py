@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from math import sqrt
+from typing import Final
 
 from service.contracts.quantities import wavelength_m
 from service.contracts.request import LOWEST_HEIGHT_WAVELENGTHS, Tolerances
@@ -11,8 +12,9 @@ from worker.engine.ground import Ground
 from worker.search.steadiness import Departure
 from worker.translation.wires import Hanging, Way, ground_of
 
-#: Relative permittivity of ground stays between that of a vacuum and of water.
-_PERMITTIVITIES = (1.0, 88.0)
+#: Relative permittivity of ground stays between that of a vacuum and of cold water.
+_LEAST_PERMITTIVITY: Final = 1.0
+_MOST_PERMITTIVITY: Final = 88.0
 
 
 def departures_of(hanging: Hanging, way: Way) -> tuple[Departure, ...]:
@@ -81,9 +83,10 @@ def _other_insulation(hanging: Hanging, way: Way, tolerances: Tolerances) -> lis
 
 def _moistened(ground: Ground, factor: float) -> Ground:
     """The ground with more or less water: conductivity by a factor, permittivity by its root."""
-    least, most = _PERMITTIVITIES
+    most = max(_MOST_PERMITTIVITY, ground.relative_permittivity)
+    changed = ground.relative_permittivity * sqrt(factor)
     return replace(
         ground,
-        relative_permittivity=min(max(ground.relative_permittivity * sqrt(factor), least), most),
+        relative_permittivity=min(max(changed, _LEAST_PERMITTIVITY), most),
         conductivity_s_per_m=ground.conductivity_s_per_m * factor,
     )
