@@ -9,8 +9,15 @@ from typing import Final
 import numpy as np
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.errors import NotConverged
 from worker.search.feeding import Fed, Feeding
-from worker.search.impedance_map import BandMap, ImpedanceMap, map_over_frequency_together
+from worker.search.impedance_map import (
+    TOLERANCE_RELATIVE,
+    BandMap,
+    ImpedanceMap,
+    departure,
+    map_over_frequency_together,
+)
 from worker.search.ranking import Pick
 from worker.search.resonances import (
     Resonance,
@@ -26,6 +33,8 @@ from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace,
 GRID_POINTS: Final = 41
 #: A resonance within this part of a band's centre is the one the band is worked on.
 NEAR: Final = 0.10
+#: A map over frequency is made on so many times as many nodes as usual until it holds.
+_FINER: Final = (1, 2, 4, 8)
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
 
@@ -110,8 +119,8 @@ def appraise(
     tell : callable
         Called before every solution, as a word of progress.
     """
-    over_frequency = _map_whole_ranges(space, picks, tell)
     marks = [_solve_marks(space, picks, goal, tell) for goal in space.bands]
+    over_frequency = _map_whole_ranges(space, picks, marks, tell)
     return tuple(
         _appraise_one(space, pick, maps[row], over_frequency[row], [each[row] for each in marks])
         for row, pick in enumerate(picks)
@@ -177,9 +186,16 @@ def _marks_hz(goal: BandGoal) -> list[float]:
 
 
 def _map_whole_ranges(
-    space: SearchSpace, picks: tuple[Pick, ...], tell: Callable[[], None]
+    space: SearchSpace,
+    picks: tuple[Pick, ...],
+    marks: list[list[Solved]],
+    tell: Callable[[], None],
 ) -> list[ImpedanceMap]:
-    """Maps of all picks over frequency; those that need the same range are solved together."""
+    """Maps of all picks over frequency; those that need the same range are solved together.
+
+    Each is held to the solutions at the marks, and made again on more nodes where it differs.
+    """
+    marks_hz = np.concatenate([_marks_hz(goal) for goal in space.bands])
     by_range: dict[tuple[float, float], list[int]] = {}
     for row, pick in enumerate(picks):
         by_range.setdefault(_whole_range_hz(space, pick), []).append(row)
@@ -200,8 +216,21 @@ def _map_whole_ranges(
                 columns.append(solved.impedance_ohm)
             return np.array(columns).T
 
-        found = map_over_frequency_together(solve, float(length_m.max()), low_hz, high_hz)
-        maps.update(zip(rows, found, strict=True))
+        marked = [np.concatenate([each[row].impedance_ohm for each in marks]) for row in rows]
+        longest_m = float(length_m.max())
+        for finer in _FINER:
+            found = map_over_frequency_together(solve, longest_m, low_hz, high_hz, finer)
+            held = [
+                departure(each.impedance_ohm(marks_hz), solved)
+                for each, solved in zip(found, marked, strict=True)
+            ]
+            if all(within for within, _ in held):
+                break
+        else:
+            miss = max(off for _, off in held)
+            raise NotConverged("impedance map over frequency", miss, TOLERANCE_RELATIVE)
+        for row, each, (_, miss) in zip(rows, found, held, strict=True):
+            maps[row] = replace(each, largest_miss=max(each.largest_miss, miss))
     return [maps[row] for row in range(len(picks))]
 
 

@@ -290,7 +290,7 @@ def map_over_frequency(
 
 
 def map_over_frequency_together(
-    solve: Curve, longest_m: float, low_hz: float, high_hz: float
+    solve: Curve, longest_m: float, low_hz: float, high_hz: float, finer: int = 1
 ) -> tuple[ImpedanceMap, ...]:
     """Map the feed impedances of several wires over frequency.
 
@@ -302,6 +302,8 @@ def map_over_frequency_together(
         Length of the longest of them in m.
     low_hz, high_hz : float
         Limits of the maps in Hz.
+    finer : int
+        So many times as many nodes as usual.
 
     Returns
     -------
@@ -313,7 +315,7 @@ def map_over_frequency_together(
     NotConverged
         If a stretch still departs from fresh solves with the most nodes allowed.
     """
-    return _map(solve, low_hz, high_hz, SPEED_OF_LIGHT_M_PER_S / longest_m)
+    return _map(solve, low_hz, high_hz, SPEED_OF_LIGHT_M_PER_S / longest_m, finer)
 
 
 def _map(
@@ -364,6 +366,13 @@ def _interpolate(solve: Curve, low: float, high: float, first_nodes: int) -> tup
         order = np.argsort(np.concatenate([nodes, fresh]))
         nodes = np.concatenate([nodes, fresh])[order]
         values = np.concatenate([values, solved], axis=1)[:, order]
+
+
+def departure(read_ohm: ComplexArray, fresh_ohm: ComplexArray) -> tuple[bool, float]:
+    """Whether a map agrees with fresh solves, and the largest departure relative to |Z|."""
+    miss, size = np.abs(read_ohm - fresh_ohm), np.abs(fresh_ohm)
+    allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * size)
+    return bool(np.all(miss <= allowed)), float(np.max(miss / size))
 
 
 def _lagrange_weight(nodes: FloatArray, index: int, at: FloatArray) -> FloatArray:

@@ -14,9 +14,9 @@ import numpy as np
 
 from worker.engine.errors import NotConverged
 from worker.search.impedance_map import (
-    TOLERANCE_OHM,
     TOLERANCE_RELATIVE,
     BandMap,
+    departure,
     map_band_together,
 )
 from worker.search.ranking import Contender, Pick, best_first, contenders_of, rank_keys
@@ -262,9 +262,7 @@ def _probe(space: SearchSpace, band: BandGoal, maps: tuple[BandMap, ...]) -> tup
     fresh = solved.impedance_ohm.reshape(length_m.shape)
     pairs = zip(maps, length_m, strict=True)
     read = np.array([each.impedance_ohm(row_m, np.array([at_hz]))[0] for each, row_m in pairs])
-    off, size = np.abs(read - fresh), np.abs(fresh)
-    allowed = np.maximum(TOLERANCE_OHM, TOLERANCE_RELATIVE * size)
-    return bool(np.all(off <= allowed)), float(np.max(off / size))
+    return departure(read, fresh)
 
 
 def _probes(space: SearchSpace) -> int:

@@ -37,7 +37,7 @@ class OpenLine:
         k = 2.0 * np.pi * frequency_hz / C_M_PER_S
         gamma = 0.1 * np.log1p(k * length_m) / length_m + self.slowing * 1j * k
         impedance = self.surge_ohm / np.tanh(0.5 * gamma * length_m)
-        impedance *= 1.0 + self.noise * np.sin(1e5 * length_m)
+        impedance *= 1.0 + self.noise * np.sin(1e5 * length_m + 4e-3 * (frequency_hz - 14.0e6))
         return Solved(impedance.astype(np.complex128), np.zeros(length_m.shape))
 
 

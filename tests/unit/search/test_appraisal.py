@@ -2,17 +2,20 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass, replace
+
 import numpy as np
 import pytest
 
 from tests.unit.search.open_line import C_M_PER_S, OpenLine, goal, resonant_m, space_of
+from worker.engine.errors import NotConverged
 from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.reflection import standing_wave_ratio
 from worker.search.appraisal import NEAR, Appraisal, appraise
 from worker.search.feeding import Feeding
 from worker.search.ranking import Pick
 from worker.search.scan import scan
-from worker.search.space import FloatArray, SearchSpace, WireOffer
+from worker.search.space import FloatArray, SearchSpace, Solved, WireOffer
 
 HALF_WAVE_M = resonant_m(1, 7.1e6)
 
@@ -152,3 +155,31 @@ def test_the_errors_of_a_look_are_those_of_its_solves_and_its_map() -> None:
     (look,) = appraised(space_of(), Pick(0, 1.0, 20.31))
     assert look.largest_miss < 1e-3
     assert all(band.error_ohm == 0.0 for band in look.bands)
+
+
+@dataclass
+class LowLine(OpenLine):
+    """A line whose impedance swings with frequency faster than its length tells of."""
+
+    def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
+        plain = OpenLine.solve(self, length_m, frequency_hz).impedance_ohm
+        swing = 0.1 * np.sin(2.0 * np.pi * frequency_hz / 2.3e6)
+        return Solved(np.asarray(plain * (1.0 + swing)), np.zeros(length_m.shape))
+
+
+def test_a_map_over_frequency_is_held_to_the_edges_and_centres_of_the_bands() -> None:
+    line = LowLine()
+    (look,) = appraised(space_of(wires=(WireOffer(line),)), Pick(0, 1.0, 8.0))
+    for band in look.bands:
+        hertz = band.grid.frequency_hz
+        exact = line.solve(np.full(hertz.shape, 8.0), hertz).impedance_ohm
+        assert np.max(np.abs(band.grid.impedance_ohm / exact - 1.0)) < 2e-3
+    assert look.largest_miss <= 1e-3
+
+
+def test_a_wire_that_cannot_be_mapped_over_frequency_is_refused() -> None:
+    space = space_of()
+    maps = scan(space, lambda _part, _step: None).maps[0].maps
+    rough = replace(space, wires=(WireOffer(OpenLine(noise=0.02)),))
+    with pytest.raises(NotConverged, match="impedance map"):
+        appraise(rough, (Pick(0, 1.0, 20.31),), (maps,))
