@@ -85,9 +85,10 @@ class Discretisation:
 
     def overlap(self, weights: FloatArray) -> FloatArray:
         """Integrals (B, unknowns, unknowns) of products of basis functions over half a wire."""
-        identity = np.eye(weights.shape[1])
-        sampled = self.test_current(weights[:, None, :] * identity)
-        return self.test_current(np.swapaxes(sampled, 1, 2))
+        # The functions at the nodes, (Q, unknowns), are those of the reference element on any wire.
+        value = self.test_current(np.eye(weights.shape[1]))
+        product: FloatArray = (value.T * weights[:, None, :]) @ value
+        return product
 
     def evaluate(self, coefficients: ComplexArray, position_m: FloatArray) -> ComplexArray:
         """Current of an even coefficient vector (unknowns,) on the first wire.

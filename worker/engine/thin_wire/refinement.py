@@ -32,7 +32,7 @@ class Level:
 
 
 LEVELS: Final = (
-    Level(5, 7, Grading(0.25, 10.0, 1.8, 1.6, 0.8)),
+    Level(5, 7, Grading(0.32, 5.0, 2.0, 1.8, 0.85)),
     Level(6, 8, Grading(0.2, 8.0, 1.4, 1.5, 0.8)),
     Level(8, 11, Grading(0.15, 6.0, 1.0, 1.2, 0.7)),
 )
