@@ -107,10 +107,9 @@ def distinct_leaders(contenders: list[Contender], most: int) -> tuple[Contender,
     band the contender serves, and serves each at least as well: neighbours of one optimum,
     and the same duty with another conductor or a worse ratio, are left out.
     """
-    useful = [each for each in contenders if any(service for _, service in each.kind)]
     leaders: list[Contender] = []
-    # Where no wire serves anything, the nearest miss is still an answer.
-    for contender in sorted(useful or contenders, key=lambda each: each.key):
+    # Where no wire serves anything, the nearest miss is still an answer: the first adds itself.
+    for contender in sorted(contenders, key=lambda each: each.key):
         if not any(_adds_nothing(contender.kind, leader.kind) for leader in leaders):
             leaders.append(contender)
         if len(leaders) == most:
