@@ -124,6 +124,13 @@ def test_of_wires_alike_the_one_preferred_is_taken(wires: int) -> None:
     assert [each.members for each in found] == [(0,), (0, wires - 3)]
 
 
+def test_a_preferred_wire_takes_the_place_of_one_whose_other_bands_are_served_anyway() -> None:
+    # The third serves all the first does and more, but the second serves that more as well.
+    served = np.array([[1.0, 0.0, 0.0], [0.0, 1.0, 1.0], [1.0, 1.0, 0.0]])
+    found = best_sets(served, np.ones(3, dtype=bool), np.ones(3), 2)
+    assert found[-1].members == (0, 1)
+
+
 @pytest.mark.parametrize("seed", range(5))
 def test_the_same_pool_gives_the_same_sets(seed: int) -> None:
     each = pool(seed, wires=30, bands=8)

@@ -40,12 +40,14 @@ def test_a_departure_is_judged_by_direct_solves_of_the_wire_as_it_then_is(
         assert scored.served_fraction[index, 0] == pytest.approx(np.mean(dense <= 2.0), abs=2e-3)
 
 
-def test_a_departure_on_a_wide_band_is_judged_as_closely() -> None:
-    space = space_of(goal("wide", 5.6, 8.2, swr_limit=3.0))
+@pytest.mark.parametrize(("low_mhz", "high_mhz"), [(5.6, 8.2), (20.0, 29.0)])
+def test_a_departure_on_a_wide_band_is_judged_as_closely(low_mhz: float, high_mhz: float) -> None:
+    # The upper band holds the third resonance and the anti-resonance above it.
+    space = space_of(goal("wide", low_mhz, high_mhz, swr_limit=3.0))
     held = hold(space, PICK, (LONGER,))
     dense = swr_of(LINE, 1.02 * PICK.length_m, space.bands[0].grid_hz(4001))
     assert held.departed[0].scored.served_fraction[0, 0] == pytest.approx(
-        np.mean(dense <= 3.0), abs=2e-3
+        np.mean(dense <= 3.0), abs=5e-3
     )
 
 

@@ -56,7 +56,7 @@ def random_contenders(seed: int, count: int) -> tuple[Contender, ...]:
     return tuple(
         contender(
             int(rng.integers(0, 3)),
-            float(rng.choice([0.25, 0.5, 1.0])),
+            float(rng.choice([0.0, 0.25, 0.5, 1.0])),
             float(rng.choice([1.2, 1.5, 2.0])),
             float(rng.choice([0.5, 1.0])),
             float(rng.choice([10.0, 20.0, 30.0])),
@@ -70,7 +70,8 @@ def random_contenders(seed: int, count: int) -> tuple[Contender, ...]:
 @pytest.mark.parametrize("seed", range(20))
 def test_the_front_is_what_no_other_beats_and_each_of_it_once(seed: int) -> None:
     given = random_contenders(seed, 60)
-    kept = [each for each in given if not any(beaten(each, other) for other in given)]
+    serving = [each for each in given if each.weighted_served > 0.0]
+    kept = [each for each in serving if not any(beaten(each, other) for other in serving)]
     # Of equals the first stays.
     once = [
         each
@@ -168,6 +169,16 @@ def test_every_gain_holds_when_the_wire_is_solved_at_that_length(length_m: float
         for place, band in enumerate(space.bands):
             loses = now[place] >= FULLY_SERVED > there[place]
             assert (band in gain.loses) == loses
+
+
+def test_the_step_to_a_shorter_wire_is_the_least_that_will_do() -> None:
+    found = scanned(far_bands())
+    pick = Pick(0, 1.5, 20.5)
+    (gain,) = gains_of(found, pick)
+    assert (gain.serves.name, gain.by_m < 0.0) == ("40m", True)
+    step_m = 2.0 * REACH * 20.5 / 400.0
+    around = found.score_at(pick, 20.5 + gain.by_m + step_m * np.array([0.0, 1.0]))
+    assert around.served_fraction[0, 0] >= FULLY_SERVED > around.served_fraction[0, 1]
 
 
 def test_bands_served_whole_have_nothing_to_gain() -> None:
