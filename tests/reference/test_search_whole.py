@@ -436,3 +436,87 @@ def test_a_callback_that_raises_ends_the_planning_wherever_it_is(at: float) -> N
         plan(parse_request(json.dumps(STATION)), cancel)
     # Not a word after that.
     assert [part for part in told if part >= at] == told[-1:]
+
+
+# --------------------------------------------------------------- requests at the corners
+def corner(**changes: object) -> dict[str, Any]:
+    """One wire for one band over average ground, with fields replaced."""
+    fields: dict[str, Any] = {
+        "bands": [{"name": "40m", "low_mhz": 7.0, "high_mhz": 7.2}],
+        "site": {"span_m": 22.0, "end_allowance_m": 0.0, "height_m": 8.0, "ground": "average"},
+        "stock": {"conductors": [{"diameter_mm": 1.5}]},
+        "candidates": 2,
+        "tolerances": None,
+    }
+    return fields | changes
+
+
+CORNERS: Final[dict[str, dict[str, Any]]] = {
+    "the widest band there may be": corner(
+        bands=[{"name": "wide", "low_mhz": 3.0, "high_mhz": 4.5, "swr_limit": 3.0}],
+        site={"span_m": 60.0, "height_m": 12.0, "ground": "city"},
+    ),
+    "a site far too short for the lowest band": corner(
+        bands=[
+            {"name": "40m", "low_mhz": 7.0, "high_mhz": 7.2},
+            {"name": "2m", "low_mhz": 144.0, "high_mhz": 146.0},
+        ],
+        site={"span_m": 1.5, "end_allowance_m": 0.0, "height_m": 1.2, "ground": "sandy"},
+    ),
+    "limits that nothing serves, and sets asked for": corner(
+        bands=[
+            {"name": "40m", "low_mhz": 7.0, "high_mhz": 7.3, "swr_limit": 1.05},
+            {"name": "30m", "low_mhz": 10.1, "high_mhz": 10.15, "swr_limit": 1.05},
+        ],
+        site={"span_m": 17.0, "height_m": 3.0, "ground": "salt-water"},
+        feed={"transformer_ratios": [9.0]},
+        largest_set=3,
+    ),
+    "as low as the ground's model goes, with tolerances": corner(
+        site={"span_m": 45.0, "height_m": 0.43, "ground": "itu-very-dry-ground"},
+        tolerances={},
+    ),
+    "a long lossy line behind a wire too short to radiate": corner(
+        bands=[
+            {"name": "160m", "low_mhz": 1.81, "high_mhz": 1.85},
+            {"name": "10m", "low_mhz": 28.0, "high_mhz": 28.5},
+        ],
+        site={"span_m": 6.0, "end_allowance_m": 0.0, "height_m": 4.0, "ground": "city"},
+        feed={
+            "feed_line": {"line": "rg-174", "length_m": 150.0},
+            "reference_point": "transmitter",
+        },
+    ),
+    "a wire as long as the model goes": corner(
+        bands=[{"name": "6m", "low_mhz": 50.0, "high_mhz": 50.2}],
+        site={"span_m": 90.0, "height_m": 10.0, "ground": "average"},
+        tolerances={"cutting_percent": 5.0},
+    ),
+    "fed near the end over perfect ground": corner(
+        site={"span_m": 60.0, "height_m": 1.0, "ground": "perfect"},
+        feed={"transformer_ratios": [1.0, 9.0], "positions": [0.1]},
+    ),
+    "insulation as thick as it may be": corner(
+        stock={
+            "conductors": [
+                {
+                    "diameter_mm": 1.5,
+                    "insulation": {"thickness_mm": 20.0, "relative_permittivity": 10.0},
+                }
+            ]
+        },
+        tolerances={"insulation_percent": 50.0},
+    ),
+}
+
+
+@pytest.mark.parametrize("name", CORNERS)
+def test_a_request_at_a_corner_of_the_contract_is_planned(name: str) -> None:
+    design = planned(CORNERS[name])
+    best = design.result.candidates[0]
+    assert 0.0 < best.length_m <= CORNERS[name]["site"]["span_m"]
+    assert best.swr_worst >= 1.0
+    assert design.result.map_error_percent <= 100.0 * 5.0 * TOLERANCE_RELATIVE
+    # What cannot be had is told, and nothing is to be relaxed where all can.
+    missed = [band.name for band in best.bands if band.required and band.service != "served"]
+    assert len(design.result.relax) == len(missed)
