@@ -21,6 +21,7 @@ import pytest
 from service.contracts.candidate import Candidate, PlannedDesign
 from service.contracts.report import BandReport, FeedReport, ReportPoint, ResonanceLine
 from service.contracts.request import parse_request
+from worker import planning
 from worker.engine.feed_line import terminate
 from worker.engine.ground import GROUND_CLASSES
 from worker.engine.hung_wire import GroundTables, HungWire
@@ -167,6 +168,24 @@ def test_a_set_is_told_by_the_ranks_of_wires_that_serve_as_it_says() -> None:
             assert rank in each.ranks
             server = result.candidates[rank - 1]
             assert next(b for b in server.bands if b.name == name).service != "unserved"
+
+
+def test_members_of_sets_are_told_even_where_the_leaders_fill_the_list(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    two = STATION | {"candidates": 2}
+    unlimited = planned(two).result
+    assert len(unlimited.candidates) == 3
+    monkeypatch.setattr(planning, "MOST_CANDIDATES", 2)
+    result = planned(two).result
+    assert len(result.candidates) == 2
+    assert [len(each.ranks) for each in result.sets] == [len(each.ranks) for each in unlimited.sets]
+    for each, other in zip(result.sets, unlimited.sets, strict=True):
+        lengths = [
+            [told.candidates[rank - 1].length_m for rank in one.ranks]
+            for told, one in ((result, each), (unlimited, other))
+        ]
+        assert lengths[0] == lengths[1]
 
 
 def test_the_best_wire_is_on_the_front_of_what_can_be_traded() -> None:
