@@ -26,11 +26,6 @@ from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace
 #: Called with the part done (0 to 1) and what is being done, in words.
 ProgressCallback = Callable[[float, str], None]
 
-#: A pick is refined within this part of its length, and over so many times as many steps of
-#: each band as the scan looks at.
-_REACH: Final = 2e-3
-_FINER: Final = 4
-
 #: Mapping takes about this part of the time, comparing the rest.
 _MAP_PART: Final = 0.75
 
@@ -106,20 +101,16 @@ class Scan:
     solves: int
     largest_miss: float
 
-    def score_at(self, pick: Pick, length_m: FloatArray, finer: int = 1) -> Score:
-        """The score of a pick's wire and ratio at other lengths, from its maps.
-
-        Over so many times as many steps of each band as the scan looks at.
-        """
-        points = finer * (self.space.points - 1) + 1
-        impedance = self.maps[pick.wire].impedance_ohm(length_m, points)
+    def score_at(self, pick: Pick, length_m: FloatArray) -> Score:
+        """The score of a pick's wire and ratio at other lengths, from its maps."""
+        impedance = self.maps[pick.wire].impedance_ohm(length_m, self.space.points)
         return score(impedance, self.space.bands, self.space.feeding, pick.ratio)
 
     def refined(self, pick: Pick) -> Pick:
-        """The best length that can be cut, near a pick of the scan and at least its neighbours."""
+        """The best length that can be cut, between a pick's neighbours in the scan."""
         lengths_m = self.space.lengths_m()
-        reach = max(_REACH, float(lengths_m[1] / lengths_m[0]) - 1.0)
-        low_m, high_m = pick.length_m * (1.0 - reach), pick.length_m * (1.0 + reach)
+        step = float(lengths_m[1] / lengths_m[0])
+        low_m, high_m = pick.length_m / step, pick.length_m * step
         per_m = cuts_per_m(pick.length_m)
         # To either side of the neighbours too: the nearest cut may lie beyond a band's edge.
         cuts = np.arange(np.floor(low_m * per_m), np.ceil(high_m * per_m) + 1.0)
@@ -128,7 +119,7 @@ class Scan:
         if cut_m.size == 0:
             return pick
         cost = cut_m * (self.space.wires[pick.wire].price_per_m or 0.0)
-        scored = self.score_at(pick, cut_m, finer=_FINER)
+        scored = self.score_at(pick, cut_m)
         keys = rank_keys(merit(scored, self.space.bands), cut_m, cost)
         return Pick(pick.wire, pick.ratio, float(cut_m[best_first(keys)[0]]))
 

@@ -27,6 +27,7 @@ class OpenLine:
     noise: float = 0.0
     surge_ohm: float = 1000.0
     slowing: float = SLOWING
+    loss: float = 0.1
     shortest_wavelengths: float = 0.05
     longest_wavelengths: float = 6.0
     lowest_hz: float = 0.0
@@ -35,10 +36,27 @@ class OpenLine:
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
         self.solves += length_m.size
         k = 2.0 * np.pi * frequency_hz / C_M_PER_S
-        gamma = 0.1 * np.log1p(k * length_m) / length_m + self.slowing * 1j * k
+        gamma = self.loss * np.log1p(k * length_m) / length_m + self.slowing * 1j * k
         impedance = self.surge_ohm / np.tanh(0.5 * gamma * length_m)
         impedance *= 1.0 + self.noise * np.sin(1e5 * length_m + 4e-3 * (frequency_hz - 14.0e6))
         return Solved(impedance.astype(np.complex128), np.zeros(length_m.shape))
+
+
+@dataclass
+class OffCentreLine(OpenLine):
+    """Two open-ended lines in series, fed where they meet, a third of the way along.
+
+    Its reactance vanishes wherever the whole is a number of half waves, but for every third,
+    where the feed lies at a node of the current.
+    """
+
+    def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
+        whole = OpenLine(surge_ohm=0.5 * self.surge_ohm, slowing=self.slowing)
+        arms = [
+            whole.solve(2.0 * part * length_m, frequency_hz).impedance_ohm
+            for part in (1.0 / 3.0, 2.0 / 3.0)
+        ]
+        return Solved(arms[0] + arms[1], np.zeros(length_m.shape))
 
 
 def resonant_m(order: int, frequency_hz: float) -> float:

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from tests.unit.search.open_line import OpenLine, goal, resonant_m
+from tests.unit.search.open_line import OffCentreLine, OpenLine, goal, resonant_m
 from worker.engine.errors import NotConverged
 from worker.search.impedance_map import (
     TOLERANCE_OHM,
@@ -101,6 +101,30 @@ def test_a_lines_resonances_lie_where_its_electrical_length_says() -> None:
     quarter_hz = resonant_m(1, 1.0) / 20.5
     for each in found:
         assert each.frequency_hz == pytest.approx(each.order * quarter_hz, rel=1e-6)
+
+
+def test_fed_off_its_centre_a_line_is_in_resonance_on_whole_numbers_of_half_waves() -> None:
+    mapped = map_over_frequency(OffCentreLine(), 20.5, 5.0e6, 40.0e6)
+    found = resonances_of(mapped, 20.5, centred=False)
+    series = [each for each in found if each.kind == "series"]
+    # Of the third the feed is at a node.
+    assert [each.order for each in series] == [1, 2, 4, 5]
+    half_wave_hz = resonant_m(1, 1.0) / 20.5
+    for each in series:
+        assert each.frequency_hz == pytest.approx(each.order * half_wave_hz, rel=0.02)
+
+
+def test_a_resistance_read_from_a_map_is_never_negative() -> None:
+    # Of hardly any loss: the map's own error is larger than the resistance off resonance.
+    line = OpenLine(loss=1e-5)
+    lengths_m = np.linspace(5.0, 80.0, 5003)
+    over_length = map_over_length(line, 14.0e6, 5.0, 80.0).impedance_ohm(lengths_m)
+    assert np.min(over_length.real) > 0.0
+    band = map_band(line, 14.0e6, 14.35e6, 5.0, 80.0)
+    hertz = np.array([14.05e6, 14.2e6])
+    assert np.min(band.impedance_ohm(lengths_m, hertz).real) > 0.0
+    even_m = 5.0 * np.exp(5e-4 * np.arange(5500))
+    assert np.min(band.over_even_ratios(even_m, hertz).real) > 0.0
 
 
 def test_a_length_is_moved_onto_the_centre_of_a_band() -> None:

@@ -1,16 +1,21 @@
 """The order of wires and which of them are shown, on small invented sets."""
 
 import numpy as np
+import pytest
 
+from tests.unit.search.open_line import OpenLine
 from worker.search.ranking import (
     Contender,
     Pick,
     best_first,
+    contenders_of,
     distinct_leaders,
     nearest_odd_order,
+    nearest_order,
     rank_keys,
 )
-from worker.search.scoring import Merit
+from worker.search.scoring import Merit, Score, merit
+from worker.search.space import BandGoal, WireOffer
 
 
 def keys_of(
@@ -24,11 +29,11 @@ def keys_of(
 ) -> list[int]:
     """The order of wires, each longer than the one before unless lengths are given."""
     count = len(required)
-    merit = Merit(
+    alone = Merit(
         np.array(required), np.array(width), np.array(worst), np.array(loss_db or [0.0] * count)
     )
     longer_m = np.array(lengths_m or np.linspace(20.0, 21.0, count))
-    keys = rank_keys(merit, longer_m, np.array(cost or [0.0] * count))
+    keys = rank_keys(alone, longer_m, np.array(cost or [0.0] * count))
     return [int(index) for index in best_first(keys)]
 
 
@@ -80,6 +85,24 @@ def test_orders_are_odd_and_change_at_whole_wavelengths() -> None:
     # One half wave is 10 m at 14.99 MHz.
     lengths_m = np.array([9.7, 19.9, 20.1, 29.6, 49.5])
     assert nearest_odd_order(lengths_m, 14.9896229e6).tolist() == [1, 1, 3, 3, 5]
+
+
+def test_off_the_centre_orders_are_all_whole_numbers() -> None:
+    lengths_m = np.array([9.7, 19.5, 20.1, 29.6, 49.5])
+    assert nearest_order(lengths_m, 14.9896229e6).tolist() == [1, 2, 2, 3, 5]
+
+
+@pytest.mark.parametrize(("centred", "order"), [(True, 1), (False, 2)])
+def test_a_wire_off_the_centre_uses_a_band_on_its_second_order(centred: bool, order: int) -> None:
+    # A full wave long on the band and served whole.
+    lengths_m = np.array([19.4, 19.5, 19.6])
+    swr = np.array([[1.6, 1.5, 1.6]])
+    scored = Score(np.ones((1, 3)), swr, np.zeros((1, 3)))
+    band = BandGoal("20m", 14.9e6, 15.0e6, required=True, weight=1.0, swr_limit=2.0)
+    offer = WireOffer(OpenLine(), centred=centred)
+    (top,) = contenders_of(scored, merit(scored, (band,)), lengths_m, (band,), (0, offer), 4.0)
+    assert top.kind == ((order, 2),)
+    assert top.pick == Pick(0, 4.0, 19.5)
 
 
 def contender(place: float, kind: tuple[tuple[int, int], ...]) -> Contender:

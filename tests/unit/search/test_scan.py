@@ -9,6 +9,7 @@ import pytest
 
 from tests.unit.search.open_line import C_M_PER_S, OpenLine, goal, resonant_m, space_of
 from worker.engine.errors import NotConverged
+from worker.engine.reflection import standing_wave_ratio
 from worker.search import scan as scan_module
 from worker.search.feeding import Feeding
 from worker.search.impedance_map import map_band
@@ -82,6 +83,22 @@ def test_scoring_in_pieces_changes_nothing(chunk: int, monkeypatch: pytest.Monke
     pieces = scanned(space)
     assert pieces.contenders == whole.contenders
     assert pieces.closest == whole.closest
+
+
+@pytest.mark.parametrize(("low_mhz", "high_mhz"), [(7.0, 7.2), (28.0, 29.7), (20.0, 29.0)])
+def test_the_part_of_a_band_served_is_that_of_a_dense_sweep(
+    low_mhz: float, high_mhz: float
+) -> None:
+    # The widest band holds a resonance and the anti-resonances about it.
+    space = space_of(goal("b", low_mhz, high_mhz, swr_limit=2.5), site_longest_m=25.0)
+    found = scanned(space)
+    lengths_m = np.linspace(space.shortest_m, space.longest_m, 61)
+    read = found.score_at(Pick(0, 1.5, 0.0), lengths_m).served_fraction[0]
+    hertz, metres = np.meshgrid(space.bands[0].grid_hz(3001), lengths_m, indexing="ij")
+    impedance = OpenLine().solve(metres, hertz).impedance_ohm
+    dense = np.mean(standing_wave_ratio(impedance / 1.5, 50.0) <= 2.5, axis=0)
+    assert read.max() > 0.1
+    assert read == pytest.approx(dense, abs=3e-3)
 
 
 # ------------------------------------------------------------------------- what is found

@@ -87,3 +87,27 @@ def test_the_loss_counted_is_the_largest_of_the_bands_served_at_all() -> None:
     losses = np.array([[0.5], [0.8], [9.0]])
     gained = merit(Score(fractions, np.ones((3, 1)), losses), (band("a"), band("b"), band("c")))
     assert gained.loss_db[0] == 0.8
+
+
+def test_a_band_served_only_between_the_points_looked_at_is_found_and_measured() -> None:
+    # Of 50 ohm and a straight reactance, in resonance half way between two of seven points. The
+    # mismatch power is a parabola, so that the part within a limit is known in closed form.
+    goal = BandGoal("b", 7.0e6, 7.3e6, required=True, weight=1.0, swr_limit=1.2)
+    hertz = goal.grid_hz(7)
+    centre_hz, slope_ohm_per_hz = 0.5 * (hertz[3] + hertz[4]), 14.0 / 25e3
+    impedance = 50.0 + 1j * slope_ohm_per_hz * (hertz - centre_hz)
+    scored = score(impedance[None, :, None], (goal,), Feeding(50.0), 1.0)
+    # (S + 1)² / 4S = 1 + X² / 4R² at the limit: |X| = R (S - 1) / sqrt(S).
+    reach_hz = 50.0 * 0.2 / np.sqrt(1.2) / slope_ohm_per_hz
+    assert reach_hz < 25e3
+    assert scored.served_fraction[0, 0] == pytest.approx(2.0 * reach_hz / 300e3, rel=1e-2)
+
+
+def test_a_limit_exceeded_only_between_the_points_is_found_too() -> None:
+    # A resistance that swells between the third and the fifth point of seven.
+    goal = BandGoal("b", 7.0e6, 7.3e6, required=True, weight=1.0, swr_limit=1.99)
+    places = np.linspace(-1.0, 1.0, 7)
+    swell = 50.0 * (2.0 - 0.15 * (places - 1.0 / 6.0) ** 2)
+    scored = score(swell[None, :, None].astype(np.complex128), (goal,), Feeding(50.0), 1.0)
+    assert scored.swr_worst[0, 0] == pytest.approx(2.0, rel=1e-4)
+    assert scored.served_fraction[0, 0] < 1.0
