@@ -12,6 +12,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import NDArray
 
+from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.feed_line import FeedLine, terminate
 from worker.engine.reflection import standing_wave_ratio
 
@@ -20,6 +21,9 @@ ComplexArray = NDArray[np.complex128]
 
 #: Solutions of an L-network: shunt part next to the antenna or next to the line, and two signs.
 NETWORKS: Final = ((True, 1.0), (True, -1.0), (False, 1.0), (False, -1.0))
+
+#: A line of an impedance this near to the reference, in parts of it, makes no ripples.
+_OF_THE_REFERENCE: Final = 0.05
 
 #: Stands for the network of a load that has no solution of that form: it matches nothing.
 _NO_MATCH_OHM: Final = 1e9
@@ -69,6 +73,19 @@ class Feeding:
     line_length_m: float = 0.0
     at_transmitter: bool = False
     matched: bool = False
+
+    @property
+    def ripple_hz(self) -> float:
+        """Period over frequency of what a line makes of a mismatch, where the limits apply.
+
+        Infinite where they apply at the feed point, or the line is one of the reference.
+        """
+        if self.line is None or not self.at_transmitter or self.line_length_m == 0.0:
+            return np.inf
+        if abs(self.line.nominal_impedance_ohm / self.reference_ohm - 1.0) < _OF_THE_REFERENCE:
+            return np.inf
+        speed_m_per_s = SPEED_OF_LIGHT_M_PER_S * self.line.velocity_factor
+        return speed_m_per_s / (2.0 * self.line_length_m)
 
     def feed(
         self,

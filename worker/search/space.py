@@ -26,6 +26,10 @@ COARSEST_STEP: Final = 2e-3
 POINTS_PER_BAND: Final = 7
 _FURTHEST_APART: Final = 0.02
 
+#: Steps of frequency to a ripple that a line makes, and how many steps it is followed with.
+_POINTS_PER_RIPPLE: Final = 16
+_MOST_FOR_RIPPLES: Final = 40
+
 #: Impedances held at a time while one wire is compared: 64 MB of them.
 _MOST_HELD: Final = 4_000_000
 
@@ -98,6 +102,27 @@ class BandGoal:
         return np.linspace(self.low_hz, self.high_hz, points)
 
 
+def points_of(
+    band: BandGoal, feeding: Feeding, furthest_apart: float, least: int = POINTS_PER_BAND
+) -> int:
+    """How many frequencies a band is to be judged at: an odd number.
+
+    Parameters
+    ----------
+    band : BandGoal
+    feeding : Feeding
+    furthest_apart : float
+        Largest step, as a part of the frequency.
+    least : int
+        An odd number.
+    """
+    steps = np.log(band.high_hz / band.low_hz) / furthest_apart
+    # A long line makes ripples of a mismatch, over frequency, that are to be followed too.
+    ripples = _POINTS_PER_RIPPLE * (band.high_hz - band.low_hz) / feeding.ripple_hz
+    wanted = 2 * int(np.ceil(0.5 * max(steps, min(ripples, _MOST_FOR_RIPPLES)))) + 1
+    return max(least, wanted)
+
+
 @dataclass(frozen=True, slots=True)
 class SearchSpace:
     """Everything the search may vary, and what it is judged by.
@@ -151,8 +176,7 @@ class SearchSpace:
     @property
     def points(self) -> int:
         """Frequencies per band, an odd number so that the centre is among them."""
-        widest = max(np.log(band.high_hz / band.low_hz) for band in self.bands)
-        return max(POINTS_PER_BAND, 2 * int(np.ceil(0.5 * widest / _FURTHEST_APART)) + 1)
+        return max(points_of(band, self.feeding, _FURTHEST_APART) for band in self.bands)
 
     def surveyed(self, length_m: FloatArray, frequency_hz: float, *, careful: bool) -> ComplexArray:
         """Impedances of all wires in Ω at one frequency in Hz; shape (k, n) for n lengths."""

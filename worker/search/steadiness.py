@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from worker.search.ranking import Pick
 from worker.search.scoring import FULLY_SERVED, Merit, Score, merit, score, stacked
-from worker.search.space import BandGoal, FloatArray, SearchSpace, WireModel
+from worker.search.space import BandGoal, FloatArray, SearchSpace, WireModel, points_of
 
 #: Frequencies per band a departure is judged at, by direct solves: at least edges, centre and
 #: between, and no further apart than this part of their frequency.
@@ -98,7 +98,7 @@ def hold(
         scored = _scored(space, pick, each, judged)
         departed.append(Departed(each.what, scored, merit(scored, space.bands)))
     worst = max(departed, key=Departed.key)
-    solves = sum(_grid_hz(band).size for band in _those(space.bands, judged))
+    solves = sum(_grid_hz(space, band).size for band in _those(space.bands, judged))
     return Held(tuple(departed), worst, solves * len(departures))
 
 
@@ -106,12 +106,14 @@ def _scored(
     space: SearchSpace, pick: Pick, departure: Departure, judged: NDArray[np.bool_]
 ) -> Score:
     """The score of one wire under one departure, solved on the bands judged."""
-    at_hz = np.concatenate([np.empty(0), *(_grid_hz(each) for each in _those(space.bands, judged))])
+    at_hz = np.concatenate(
+        [np.empty(0), *(_grid_hz(space, each) for each in _those(space.bands, judged))]
+    )
     length_m = np.full(at_hz.size, pick.length_m * departure.length_ratio)
     solved = list(departure.model.solve(length_m, at_hz).impedance_ohm) if at_hz.size else []
     parts: list[Score] = []
     for band, is_judged in zip(space.bands, judged, strict=True):
-        points = _grid_hz(band).size
+        points = _grid_hz(space, band).size
         impedance = np.full(points, _UNSERVED_OHM)
         if is_judged:
             impedance[:], solved = solved[:points], solved[points:]
@@ -123,6 +125,5 @@ def _those(bands: tuple[BandGoal, ...], judged: NDArray[np.bool_]) -> list[BandG
     return [band for band, is_judged in zip(bands, judged, strict=True) if is_judged]
 
 
-def _grid_hz(band: BandGoal) -> FloatArray:
-    steps = 2 * int(np.ceil(0.5 * np.log(band.high_hz / band.low_hz) / _FURTHEST_APART))
-    return band.grid_hz(max(POINTS, steps + 1))
+def _grid_hz(space: SearchSpace, band: BandGoal) -> FloatArray:
+    return band.grid_hz(points_of(band, space.feeding, _FURTHEST_APART, POINTS))

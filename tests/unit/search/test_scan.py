@@ -9,6 +9,7 @@ import pytest
 
 from tests.unit.search.open_line import C_M_PER_S, OpenLine, goal, resonant_m, space_of
 from worker.engine.errors import NotConverged
+from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.reflection import standing_wave_ratio
 from worker.search import scan as scan_module
 from worker.search.feeding import Feeding
@@ -99,6 +100,21 @@ def test_the_part_of_a_band_served_is_that_of_a_dense_sweep(
     dense = np.mean(standing_wave_ratio(impedance / 1.5, 50.0) <= 2.5, axis=0)
     assert read.max() > 0.1
     assert read == pytest.approx(dense, abs=3e-3)
+
+
+@pytest.mark.parametrize("length_m", [10.0, 60.0, 150.0])
+def test_the_ripples_of_a_long_line_are_followed_where_the_limits_apply(length_m: float) -> None:
+    line = FEED_LINES["window-line-450"]
+    feeding = Feeding(50.0, line, length_m, at_transmitter=True)
+    space = space_of(goal("10m", 28.0, 29.7, swr_limit=3.0), feeding=feeding, site_longest_m=8.0)
+    found = scanned(space)
+    lengths_m = np.linspace(space.shortest_m, space.longest_m, 41)
+    read = found.score_at(Pick(0, 4.0, 0.0), lengths_m).served_fraction[0]
+    hertz, metres = np.meshgrid(space.bands[0].grid_hz(2001), lengths_m, indexing="ij")
+    fed = feeding.feed(OpenLine().solve(metres, hertz).impedance_ohm, hertz[:, 0], 4.0)
+    dense = np.mean(fed.limited_swr <= 3.0, axis=0)
+    assert read.max() > 0.05
+    assert read == pytest.approx(dense, abs=0.02)
 
 
 # ------------------------------------------------------------------------- what is found
