@@ -156,7 +156,7 @@ class Feeding:
     def best_network(
         self, load_ohm: ComplexArray, frequency_hz: FloatArray
     ) -> tuple[NDArray[np.intp], ComplexArray]:
-        """The L-network that keeps a band's SWR lowest where it is highest.
+        """The L-network that keeps a band's SWR, where the limits apply, lowest at its highest.
 
         Parameters
         ----------
@@ -174,7 +174,11 @@ class Feeding:
         through = np.array(
             [self._through_network(load_ohm, frequency_hz, *network) for network in NETWORKS]
         )
-        worst = np.max(standing_wave_ratio(through, self.reference_ohm), axis=1)
+        judged = through
+        if self.line is not None and self.at_transmitter:
+            hertz = frequency_hz[:, None]
+            judged = terminate(self.line, self.line_length_m, hertz, through).input_impedance_ohm
+        worst = np.max(standing_wave_ratio(judged, self.reference_ohm), axis=1)
         which = np.argmin(worst, axis=0)
         return which, np.take_along_axis(through, which[None, None, :], axis=0)[0]
 

@@ -41,6 +41,7 @@ from worker.translation.wording import (
     compromise,
     improvement,
     is_used,
+    network_in_words,
     why_it_ranks,
 )
 
@@ -62,7 +63,10 @@ def candidate_of(request: DesignRequest, look: Look, rank: int) -> Candidate:
     """One candidate with its outcome on every band and the sentences that explain it."""
     appraisal, conductor = look.appraisal, look.way.conductor
     length_m = appraisal.pick.length_m
-    outcomes = tuple(_band_outcome(band, appraisal) for band in appraisal.bands)
+    ratio = appraisal.pick.ratio
+    outcomes = tuple(
+        _band_outcome(band, appraisal, _matching(band, ratio, request)) for band in appraisal.bands
+    )
     weights = [band.weight for band in request.bands]
     shares = [weight * each.served_fraction for weight, each in zip(weights, outcomes, strict=True)]
     whole = [each.swr_worst for each in outcomes if each.service == "served"]
@@ -161,7 +165,9 @@ def _steadiness(held: Held, appraisal: Appraisal) -> Steadiness:
     )
 
 
-def _band_outcome(band: BandAppraisal, appraisal: Appraisal) -> BandOutcome:
+def _band_outcome(
+    band: BandAppraisal, appraisal: Appraisal, network: Matching | None
+) -> BandOutcome:
     service: Service = "unserved"
     if band.served_fraction >= FULLY_SERVED:
         service = "served"
@@ -188,6 +194,8 @@ def _band_outcome(band: BandAppraisal, appraisal: Appraisal) -> BandOutcome:
         reason="",
     )
     reason = band_reason(band, outcome, appraisal.resonances)
+    if network is not None:
+        reason += network_in_words(network.loss_db)
     return outcome.model_copy(update={"reason": reason})
 
 
@@ -207,14 +215,15 @@ def _band_report(band: BandAppraisal, request: DesignRequest, ratio: float) -> B
             voltage_peak_v=_rounded(math.sqrt(2.0) * abs(at_feed) * current_a, 1),
             current_rms_a=_rounded(current_a, 3),
         ),
-        matching=_matching(band, at_feed / ratio, request),
+        matching=_matching(band, ratio, request),
     )
 
 
-def _matching(band: BandAppraisal, load_ohm: complex, request: DesignRequest) -> Matching | None:
+def _matching(band: BandAppraisal, ratio: float, request: DesignRequest) -> Matching | None:
     """The network of one band with its values and stresses, as chosen by the search."""
     if band.network is None:
         return None
+    load_ohm = complex(band.marks.impedance_ohm[1]) / ratio
     shunt_at_load, sign = NETWORKS[band.network]
     series_ohm, _ = network_values(
         np.array([load_ohm]), request.feed.reference_ohm, shunt_at_load=shunt_at_load, sign=sign

@@ -5,7 +5,17 @@ from __future__ import annotations
 from typing import Final
 
 from service.contracts.candidate import BandOutcome
-from service.contracts.formats import listed, metres, mhz, ohms, ordinal, ratio, share, swr
+from service.contracts.formats import (
+    decibels,
+    listed,
+    metres,
+    mhz,
+    ohms,
+    ordinal,
+    ratio,
+    share,
+    swr,
+)
 from worker.search.appraisal import NEAR, Appraisal, BandAppraisal, is_near
 from worker.search.resonances import Resonance
 from worker.search.scoring import FULLY_SERVED
@@ -31,6 +41,9 @@ CAUTIONS: Final = (
     "Have masts, trees and tension judged by someone qualified; wire under tension can whip.",
     "Local codes and licensed practice come before anything written here.",
 )
+
+#: A fifth of the power: less is lost in any matching (common practice).
+_LOSS_WORTH_A_WORD_DB: Final = 1.0
 
 NOT_MODELLED: Final = (
     "sag, slope and bends of the wire",
@@ -67,6 +80,14 @@ def band_reason(
         f"{distance} {'above' if above else 'below'} the centre."
     )
     return sentence + _antiresonance_near(band, resonances, outcome.service == "unserved")
+
+
+def network_in_words(loss_db: float) -> str:
+    """What the coils of a band's network lose, where that is worth a word."""
+    if loss_db < _LOSS_WORTH_A_WORD_DB:
+        return ""
+    lost = f"{decibels(loss_db)} dB, {round(100.0 * (1.0 - 10.0 ** (-0.1 * loss_db)))} %"
+    return f" Its network loses {lost} of the power, in coils as usually wound."
 
 
 def _antiresonance_near(

@@ -201,6 +201,23 @@ def test_a_lossy_line_lowers_the_swr_by_the_textbook_factor() -> None:
     assert fed.transmitter_swr[:, 0] == pytest.approx(expected, rel=0.02)
 
 
+def test_the_best_network_is_the_one_whose_limits_apply_at_the_transmitter() -> None:
+    # Behind a long line of another impedance the best at the feed point is not the best there.
+    line = FEED_LINES["window-line-450"]
+    differ = 0
+    for load_ohm in LOADS_OHM:
+        feeding = Feeding(50.0, line, 31.0, at_transmitter=True, matched=True)
+        chosen = feeding.feed(over_band(load_ohm), BAND_HZ, 1.0).limited_swr.max()
+        each = [
+            feeding.feed(over_band(load_ohm), BAND_HZ, 1.0, network).limited_swr.max()
+            for network in range(len(NETWORKS))
+        ]
+        assert chosen == pytest.approx(min(each), rel=1e-12)
+        at_feed = Feeding(50.0, matched=True).best_network(over_band(load_ohm), BAND_HZ)[0][0]
+        differ += each[int(at_feed)] > 1.001 * min(each)
+    assert differ > 0
+
+
 # --------------------------------------------------------------- what the scan makes of it
 @pytest.mark.parametrize(
     "feeding",

@@ -14,7 +14,13 @@ from worker.search.resonances import Resonance
 from worker.search.scan import scan
 from worker.search.space import WireOffer
 from worker.search.trade_off import Gain
-from worker.translation.wording import band_reason, compromise, improvement, why_it_ranks
+from worker.translation.wording import (
+    band_reason,
+    compromise,
+    improvement,
+    network_in_words,
+    why_it_ranks,
+)
 
 FORTY = goal("40m", 7.0, 7.2)
 FIFTEEN = goal("15m", 21.0, 21.45)
@@ -133,6 +139,19 @@ def test_a_wire_without_resonances_is_told_so(look: Appraisal) -> None:
     bare = replace(look.bands[0], nearest=None)
     text = band_reason(bare, outcome("40m", "unserved", 0.0, 60.0, None), ())
     assert text.endswith("this wire has no usable resonance in the range looked at.")
+
+
+@pytest.mark.parametrize(
+    ("loss_db", "text"),
+    [
+        (0.4, ""),
+        # 3 dB is half of the power, 10 dB nine tenths of it.
+        (3.0103, " Its network loses 3.01 dB, 50 % of the power, in coils as usually wound."),
+        (10.0, " Its network loses 10.00 dB, 90 % of the power, in coils as usually wound."),
+    ],
+)
+def test_a_network_that_loses_much_is_told_so(loss_db: float, text: str) -> None:
+    assert network_in_words(loss_db) == text
 
 
 # -------------------------------------------------------------------------- the compromise
