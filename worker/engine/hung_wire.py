@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from typing import TypeVar
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -27,8 +26,6 @@ ComplexArray = NDArray[np.complex128]
 _RADII = 3
 #: Series impedances within this part of the median are put in by their first order.
 _ALIKE = 0.6
-
-_Scalar = TypeVar("_Scalar", bound=np.generic)
 
 
 @dataclass(slots=True)
@@ -59,6 +56,10 @@ class GroundTables:
             table = tabulate(self.ground, frequency_hz, self.height_m, reach_m)
             self._tables[frequency_hz] = table
         return table
+
+    def at_each(self, frequency_hz: FloatArray) -> tuple[GroundTable, ...]:
+        """The tables of the distinct frequencies (Hz) of an array, rising."""
+        return tuple(self.at(each_hz) for each_hz in np.unique(frequency_hz).tolist())
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,34 +112,15 @@ class HungWire:
         length, frequency = np.broadcast_arrays(
             np.asarray(length_m, dtype=np.float64), np.asarray(frequency_hz, dtype=np.float64)
         )
-        if self.grounds is None:
-            return self._solve(length, frequency, None)
-        return self._solve_over_ground(length, frequency, self.grounds)
-
-    def _solve_over_ground(
-        self, length_m: FloatArray, frequency_hz: FloatArray, grounds: GroundTables
-    ) -> FeedImpedance:
-        """One batch for each frequency, for a table of the ground holds for one."""
-        parts: list[FeedImpedance] = []
-        places: list[NDArray[np.intp]] = []
-        flat_m, flat_hz = length_m.ravel(), frequency_hz.ravel()
-        for each_hz in np.unique(flat_hz):
-            place = np.flatnonzero(flat_hz == each_hz)
-            parts.append(self._solve(flat_m[place], flat_hz[place], grounds.at(float(each_hz))))
-            places.append(place)
-        back = np.argsort(np.concatenate(places))
-
-        def gathered(values: list[NDArray[_Scalar]]) -> NDArray[_Scalar]:
-            return np.concatenate(values)[back].reshape(length_m.shape)
-
-        return FeedImpedance(
-            impedance_ohm=gathered([each.impedance_ohm for each in parts]),
-            estimated_error_ohm=gathered([each.estimated_error_ohm for each in parts]),
-            wire_impedance_slope_m=gathered([each.wire_impedance_slope_m for each in parts]),
-            unknowns=gathered([each.unknowns for each in parts]),
-            gap_m=gathered([each.gap_m for each in parts]),
-            converged=gathered([each.converged for each in parts]),
-            model=parts[0].model,
+        radius_m, series_ohm_per_m = self.electrical(frequency)
+        return feed_impedance(
+            length,
+            radius_m,
+            frequency,
+            feed_fraction=self.feed_fraction,
+            gap_m=self.radius_m,
+            wire_impedance_ohm_per_m=series_ohm_per_m,
+            reflected=None if self.grounds is None else self.grounds.at_each(frequency),
         )
 
     def electrical(self, frequency_hz: ArrayLike) -> tuple[FloatArray, ComplexArray]:
@@ -166,75 +148,88 @@ class HungWire:
             series_ohm_per_m += coated.series_impedance_ohm_per_m
         return radius_m, series_ohm_per_m
 
-    def _solve(
-        self, length_m: FloatArray, frequency_hz: FloatArray, table: GroundTable | None
-    ) -> FeedImpedance:
-        radius_m, series_ohm_per_m = self.electrical(frequency_hz)
-        return feed_impedance(
-            length_m,
-            radius_m,
-            frequency_hz,
-            feed_fraction=self.feed_fraction,
-            gap_m=self.radius_m,
-            wire_impedance_ohm_per_m=series_ohm_per_m,
-            reflected=table,
-        )
-
 
 def solve_together(
-    wires: Sequence[HungWire], length_m: FloatArray, frequency_hz: float
+    wires: Sequence[HungWire],
+    length_m: ArrayLike,
+    frequency_hz: ArrayLike,
+    *,
+    survey: bool = False,
 ) -> tuple[ComplexArray, FloatArray]:
-    """Impedances of several wires, each of its own length, at one frequency.
+    """Impedances of several wires, each of its own length at its own frequency.
 
     Parameters
     ----------
     wires : sequence of HungWire
-        k wires; those that share their ground tables and the place of the feed are one batch.
-    length_m : ndarray, shape (k,)
-    frequency_hz : float
+        n wires, the same as often as wanted; those that share their ground tables and the place
+        of the feed are one batch.
+    length_m, frequency_hz : array_like, shape (n,)
+        Or one value for all.
+    survey : bool
+        As for `thin_wire.feed_impedance`.
 
     Returns
     -------
-    impedance_ohm, estimated_error_ohm : ndarray, shape (k,)
+    impedance_ohm, estimated_error_ohm : ndarray, shape (n,)
 
     Raises
     ------
     OutOfRange
         As for `HungWire.feed_impedance`.
     """
+    length = np.broadcast_to(np.asarray(length_m, dtype=np.float64), len(wires))
+    frequency = np.broadcast_to(np.asarray(frequency_hz, dtype=np.float64), len(wires))
     impedance = np.empty(len(wires), dtype=np.complex128)
     error = np.empty(len(wires))
+    radius_m, series = _electrical_of_each(wires, frequency)
     batches: dict[tuple[int, float], list[int]] = {}
     for index, wire in enumerate(wires):
         batches.setdefault((id(wire.grounds), wire.feed_fraction), []).append(index)
     for members in batches.values():
         first = wires[members[0]]
-        radii, series = zip(*(wires[i].electrical(frequency_hz) for i in members), strict=True)
         found = feed_impedance(
-            length_m[members],
-            np.array(radii),
-            frequency_hz,
+            length[members],
+            radius_m[members],
+            frequency[members],
             feed_fraction=first.feed_fraction,
             gap_m=np.array([wires[index].radius_m for index in members]),
-            wire_impedance_ohm_per_m=np.array(series),
-            reflected=None if first.grounds is None else first.grounds.at(frequency_hz),
+            wire_impedance_ohm_per_m=series[members],
+            reflected=None if first.grounds is None else first.grounds.at_each(frequency[members]),
+            survey=survey,
         )
         impedance[members], error[members] = found.impedance_ohm, found.estimated_error_ohm
     return impedance, error
 
 
+def _electrical_of_each(
+    wires: Sequence[HungWire], frequency_hz: FloatArray
+) -> tuple[FloatArray, ComplexArray]:
+    """What stands for metal and insulation of each wire at its frequency, (n,) each."""
+    radius_m, series = np.empty(len(wires)), np.empty(len(wires), dtype=np.complex128)
+    places: dict[int, list[int]] = {}
+    for index, wire in enumerate(wires):
+        places.setdefault(id(wire), []).append(index)
+    for place in places.values():
+        radius_m[place], series[place] = wires[place[0]].electrical(frequency_hz[place])
+    return radius_m, series
+
+
 def survey_impedances(
-    wires: Sequence[HungWire], length_m: ArrayLike, frequency_hz: float, *, careful: bool = False
+    wires: Sequence[HungWire],
+    length_m: FloatArray,
+    frequency_hz: FloatArray,
+    *,
+    careful: bool = False,
 ) -> ComplexArray:
-    """Impedances of several wires at one frequency, solved together and no closer than a survey.
+    """Impedances of several wires at a few frequencies, together and no closer than a survey.
 
     Parameters
     ----------
     wires : sequence of HungWire
         k wires; those that share their ground tables and the place of the feed are one batch.
-    length_m : array_like, shape (n,)
-        Lengths in m, the same for all.
-    frequency_hz : float
+    length_m : ndarray, shape (f, n)
+        Lengths in m at each frequency, the same for all wires.
+    frequency_hz : ndarray, shape (f,)
     careful : bool
         Solve every wire by itself and closely; by default bare wires of more than three radii
         are told from three, for impedance is smooth in the logarithm of the radius, and their
@@ -242,7 +237,7 @@ def survey_impedances(
 
     Returns
     -------
-    ndarray, shape (k, n)
+    ndarray, shape (k, f, n)
         In Ω, with the error of `thin_wire.feed_impedance` at ``survey``.
 
     Raises
@@ -250,8 +245,7 @@ def survey_impedances(
     OutOfRange
         As for `HungWire.feed_impedance`.
     """
-    length = np.asarray(length_m, dtype=np.float64)
-    impedance = np.empty((len(wires), length.size), dtype=np.complex128)
+    impedance = np.empty((len(wires), *length_m.shape), dtype=np.complex128)
     batches: dict[tuple[int, float, bool], list[int]] = {}
     for index, wire in enumerate(wires):
         key = (id(wire.grounds), wire.feed_fraction, wire.sleeve is None)
@@ -263,53 +257,56 @@ def survey_impedances(
         rest = [index for index in members if index not in alike]
         if alike:
             chosen = [wires[index] for index in alike]
-            impedance[alike] = _from_few_radii(chosen, length, frequency_hz)
+            impedance[alike] = _from_few_radii(chosen, length_m, frequency_hz)
         if rest:
             chosen = [wires[index] for index in rest]
-            impedance[rest] = _each_by_itself(chosen, length, frequency_hz, survey=not careful)
+            impedance[rest] = _each_by_itself(chosen, length_m, frequency_hz, survey=not careful)
     return impedance
 
 
-def _alike(wires: Sequence[HungWire], members: list[int], frequency_hz: float) -> list[int]:
+def _alike(wires: Sequence[HungWire], members: list[int], frequency_hz: FloatArray) -> list[int]:
     """The members whose metal is near enough to the usual one for its first order to do."""
     series = np.array([wires[index].electrical(frequency_hz)[1] for index in members])
-    usual = np.median(series.real) + 1j * np.median(series.imag)
-    near = np.abs(series - usual) <= _ALIKE * np.abs(usual)
+    usual = np.median(series.real, axis=0) + 1j * np.median(series.imag, axis=0)
+    near = np.all(np.abs(series - usual) <= _ALIKE * np.abs(usual), axis=1)
     return [index for index, is_near in zip(members, near.tolist(), strict=True) if is_near]
 
 
 def _each_by_itself(
-    wires: list[HungWire], length_m: FloatArray, frequency_hz: float, *, survey: bool
+    wires: list[HungWire], length_m: FloatArray, frequency_hz: FloatArray, *, survey: bool
 ) -> ComplexArray:
     """Any wires of one hanging, each with its own radius, gap and series impedance."""
     radii, series = zip(*(wire.electrical(frequency_hz) for wire in wires), strict=True)
-    rows = _Rows(np.array(radii), np.array([wire.radius_m for wire in wires]), np.array(series))
+    gap_m = np.array([wire.radius_m for wire in wires])[:, None]
+    rows = _Rows(np.array(radii), gap_m, np.array(series))
     return _batch(wires[0], length_m, frequency_hz, rows, survey=survey).impedance_ohm
 
 
 def _from_few_radii(
-    wires: list[HungWire], length_m: FloatArray, frequency_hz: float
+    wires: list[HungWire], length_m: FloatArray, frequency_hz: FloatArray
 ) -> ComplexArray:
     """Bare wires from solutions at three radii: smallest, geometric mean, largest."""
-    electrical = [wire.electrical(frequency_hz) for wire in wires]
-    radius_m = np.array([radius for radius, _ in electrical])
-    series_ohm_per_m = np.array([series for _, series in electrical])
+    radius_m = np.array([wire.radius_m for wire in wires])
+    series_ohm_per_m = np.array([wire.electrical(frequency_hz)[1] for wire in wires])
     nodes_m = np.geomspace(radius_m.min(), radius_m.max(), _RADII)
-    typical = np.full(_RADII, series_ohm_per_m.mean())
-    rows = _Rows(nodes_m, nodes_m, typical)
+    typical = series_ohm_per_m.mean(axis=0)
+    rows = _Rows(nodes_m[:, None], nodes_m[:, None], typical[None])
     found = _batch(wires[0], length_m, frequency_hz, rows, survey=True)
     # Where all radii are one, the three nodes are too, and any one of them will do.
     weights = _lagrange_weights(np.log(nodes_m), np.log(radius_m))
-    departure = (series_ohm_per_m - typical[0])[:, None]
-    impedance: ComplexArray = weights @ found.impedance_ohm + departure * (
-        weights @ found.wire_impedance_slope_m
+    departure = (series_ohm_per_m - typical)[:, :, None]
+    impedance: ComplexArray = np.tensordot(weights, found.impedance_ohm, 1) + departure * (
+        np.tensordot(weights, found.wire_impedance_slope_m, 1)
     )
     return impedance
 
 
 @dataclass(frozen=True, slots=True)
 class _Rows:
-    """Radius and gap in m and series impedance in Ω/m of k wires, (k,) each."""
+    """Radius and gap in m and series impedance in Ω/m of k wires at f frequencies.
+
+    Each of a shape that broadcasts to (k, f).
+    """
 
     radius_m: FloatArray
     gap_m: FloatArray
@@ -317,17 +314,22 @@ class _Rows:
 
 
 def _batch(
-    hung: HungWire, length_m: FloatArray, frequency_hz: float, rows: _Rows, *, survey: bool
+    hung: HungWire,
+    length_m: FloatArray,
+    frequency_hz: FloatArray,
+    rows: _Rows,
+    *,
+    survey: bool,
 ) -> FeedImpedance:
-    """Wires of one hanging, (k, n), for n lengths."""
+    """Wires of one hanging, (k, f, n), for lengths (f, n) at frequencies (f,)."""
     return feed_impedance(
-        length_m[None, :],
-        rows.radius_m[:, None],
-        frequency_hz,
+        length_m,
+        rows.radius_m[:, :, None],
+        frequency_hz[:, None],
         feed_fraction=hung.feed_fraction,
-        gap_m=rows.gap_m[:, None],
-        wire_impedance_ohm_per_m=rows.series_ohm_per_m[:, None],
-        reflected=None if hung.grounds is None else hung.grounds.at(frequency_hz),
+        gap_m=rows.gap_m[:, :, None],
+        wire_impedance_ohm_per_m=rows.series_ohm_per_m[:, :, None],
+        reflected=None if hung.grounds is None else hung.grounds.at_each(frequency_hz),
         survey=survey,
     )
 

@@ -35,6 +35,8 @@ GRID_POINTS: Final = 41
 NEAR: Final = 0.10
 #: A map over frequency is made on so many times as many nodes as usual until it holds.
 _FINER: Final = (1, 2, 4, 8)
+#: Wires are solved so many at a time, with a word of progress between.
+_SOLVED_AT_A_TIME: Final = 300
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
 
@@ -119,10 +121,10 @@ def appraise(
     tell : callable
         Called before every solution, as a word of progress.
     """
-    marks = [_solve_marks(space, picks, goal, tell) for goal in space.bands]
+    marks = _solve_marks(space, picks, tell)
     over_frequency = _map_whole_ranges(space, picks, marks, tell)
     return tuple(
-        _appraise_one(space, pick, maps[row], over_frequency[row], [each[row] for each in marks])
+        _appraise_one(space, pick, maps[row], over_frequency[row], marks[row])
         for row, pick in enumerate(picks)
     )
 
@@ -137,7 +139,7 @@ def _appraise_one(
     resonances = resonances_of(
         over_frequency, pick.length_m, centred=space.wires[pick.wire].centred
     )
-    sweep_hz = np.linspace(over_frequency.low, over_frequency.high, SWEEP_POINTS)
+    sweep_hz = np.linspace(*_whole_range_hz(space, pick), SWEEP_POINTS)
     bands = tuple(
         _appraise_band(space, pick, _Band(goal, band_map, solved), over_frequency, resonances)
         for goal, band_map, solved in zip(space.bands, maps, marks, strict=True)
@@ -165,20 +167,43 @@ class _Band:
 
 
 def _solve_marks(
-    space: SearchSpace, picks: tuple[Pick, ...], goal: BandGoal, tell: Callable[[], None]
-) -> list[Solved]:
-    """Direct solutions of every pick at a band's edges and centre."""
-    tell()
-    wires = tuple(pick.wire for pick in picks)
-    length_m = np.array([pick.length_m for pick in picks])
-    solved = [space.solved_together(wires, length_m, at_hz) for at_hz in _marks_hz(goal)]
+    space: SearchSpace, picks: tuple[Pick, ...], tell: Callable[[], None]
+) -> list[list[Solved]]:
+    """Direct solutions of every pick at the edges and the centre of every band."""
+    marks_hz = np.array([_marks_hz(goal) for goal in space.bands])
+    solved = _solve_pairs(space, picks, marks_hz.ravel(), tell)
+    each = (len(picks), *marks_hz.shape)
+    impedance, error = solved.impedance_ohm.reshape(each), solved.error_ohm.reshape(each)
+    bands = range(len(space.bands))
     return [
-        Solved(
-            np.array([each.impedance_ohm[row] for each in solved]),
-            np.array([each.error_ohm[row] for each in solved]),
-        )
+        [Solved(impedance[row, band], error[row, band]) for band in bands]
         for row in range(len(picks))
     ]
+
+
+def _solve_pairs(
+    space: SearchSpace,
+    picks: tuple[Pick, ...],
+    frequency_hz: FloatArray,
+    tell: Callable[[], None],
+    *,
+    survey: bool = False,
+) -> Solved:
+    """Direct solutions of k picks at n frequencies, shape (k, n), some columns at a time."""
+    columns = max(1, _SOLVED_AT_A_TIME // len(picks))
+    parts: list[Solved] = []
+    for start in range(0, len(frequency_hz), columns):
+        tell()
+        some_hz = frequency_hz[start : start + columns]
+        wires = [pick.wire for pick in picks for _ in some_hz]
+        length_m = np.repeat([pick.length_m for pick in picks], len(some_hz))
+        solved = space.solved_together(wires, length_m, np.tile(some_hz, len(picks)), survey=survey)
+        shape = (len(picks), len(some_hz))
+        parts.append(Solved(solved.impedance_ohm.reshape(shape), solved.error_ohm.reshape(shape)))
+    return Solved(
+        np.concatenate([part.impedance_ohm for part in parts], axis=1),
+        np.concatenate([part.error_ohm for part in parts], axis=1),
+    )
 
 
 def _marks_hz(goal: BandGoal) -> list[float]:
@@ -191,33 +216,20 @@ def _map_whole_ranges(
     marks: list[list[Solved]],
     tell: Callable[[], None],
 ) -> list[ImpedanceMap]:
-    """Maps of all picks over frequency; those that need the same range are solved together.
+    """Maps of all picks over frequency; those that can share a range are solved together.
 
     Each is held to the solutions at the marks, and made again on more nodes where it differs.
     """
     marks_hz = np.concatenate([_marks_hz(goal) for goal in space.bands])
-    by_range: dict[tuple[float, float], list[int]] = {}
-    for row, pick in enumerate(picks):
-        by_range.setdefault(_whole_range_hz(space, pick), []).append(row)
     maps: dict[int, ImpedanceMap] = {}
-    for (low_hz, high_hz), rows in by_range.items():
-        wires = tuple(picks[row].wire for row in rows)
-        length_m = np.array([picks[row].length_m for row in rows])
+    for (low_hz, high_hz), rows in _by_range(space, picks).items():
+        chosen = tuple(picks[row] for row in rows)
 
-        def solve(
-            frequency_hz: FloatArray,
-            wires: tuple[int, ...] = wires,
-            length_m: FloatArray = length_m,
-        ) -> ComplexArray:
-            columns: list[ComplexArray] = []
-            for at_hz in frequency_hz:
-                tell()
-                solved = space.solved_together(wires, length_m, float(at_hz))
-                columns.append(solved.impedance_ohm)
-            return np.array(columns).T
+        def solve(frequency_hz: FloatArray, chosen: tuple[Pick, ...] = chosen) -> ComplexArray:
+            return _solve_pairs(space, chosen, frequency_hz, tell, survey=True).impedance_ohm
 
-        marked = [np.concatenate([each[row].impedance_ohm for each in marks]) for row in rows]
-        longest_m = float(length_m.max())
+        marked = [np.concatenate([each.impedance_ohm for each in marks[row]]) for row in rows]
+        longest_m = max(pick.length_m for pick in chosen)
         for finer in _FINER:
             found = map_over_frequency_together(solve, longest_m, low_hz, high_hz, finer)
             held = [
@@ -234,17 +246,36 @@ def _map_whole_ranges(
     return [maps[row] for row in range(len(picks))]
 
 
+def _by_range(space: SearchSpace, picks: tuple[Pick, ...]) -> dict[tuple[float, float], list[int]]:
+    """The picks by the range they are mapped over: that of all, or their own if it is too wide."""
+    own = [_whole_range_hz(space, pick) for pick in picks]
+    common = (min(low for low, _ in own), max(high for _, high in own))
+    ranges: dict[tuple[float, float], list[int]] = {}
+    for row, pick in enumerate(picks):
+        lowest_hz, highest_hz = _modelled_hz(space, pick)
+        fits = lowest_hz <= common[0] and common[1] <= highest_hz
+        ranges.setdefault(common if fits else own[row], []).append(row)
+    return ranges
+
+
 def _whole_range_hz(space: SearchSpace, pick: Pick) -> tuple[float, float]:
     """From below the wire's first resonance, or the lowest band, to above the highest."""
-    wire = space.wires[pick.wire].model
     one_wave_hz = SPEED_OF_LIGHT_M_PER_S / pick.length_m
     lowest_hz = min(goal.low_hz for goal in space.bands)
     # Insulation and low height may shorten the first resonance to 0.42 wavelengths.
     if 0.5 * one_wave_hz < 1.2 * lowest_hz:
         lowest_hz = min(lowest_hz, 0.42 * one_wave_hz)
     highest_hz = max(goal.high_hz for goal in space.bands)
-    low_hz = max(0.95 * lowest_hz, wire.shortest_wavelengths * one_wave_hz, wire.lowest_hz)
-    return low_hz, min(1.05 * highest_hz, wire.longest_wavelengths * one_wave_hz)
+    modelled_hz = _modelled_hz(space, pick)
+    return max(0.95 * lowest_hz, modelled_hz[0]), min(1.05 * highest_hz, modelled_hz[1])
+
+
+def _modelled_hz(space: SearchSpace, pick: Pick) -> tuple[float, float]:
+    """Between which frequencies the model of a wire holds."""
+    wire = space.wires[pick.wire].model
+    one_wave_hz = SPEED_OF_LIGHT_M_PER_S / pick.length_m
+    lowest_hz = max(wire.shortest_wavelengths * one_wave_hz, wire.lowest_hz)
+    return lowest_hz, wire.longest_wavelengths * one_wave_hz
 
 
 def _appraise_band(

@@ -16,7 +16,6 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import partial
 from itertools import pairwise
 from typing import Final
 
@@ -29,8 +28,8 @@ from worker.search.space import ComplexArray, FloatArray, WireModel
 
 #: Impedance in Ω at every length (m) or frequency (Hz).
 Curve = Callable[[FloatArray], ComplexArray]
-#: Impedances in Ω of k wires, shape (k, n), for n lengths (m) at one frequency (Hz).
-Survey = Callable[[FloatArray, float], ComplexArray]
+#: Impedances in Ω of k wires, (k, f, n), for lengths in m, (f, n), at f frequencies in Hz.
+Survey = Callable[[FloatArray, FloatArray], ComplexArray]
 
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
 STRETCH_WAVELENGTHS: Final = 6.0
@@ -75,7 +74,7 @@ class _Stretch:
 
 @dataclass(frozen=True, slots=True)
 class ImpedanceMap:
-    """Feed impedance between two lengths (m), or between two frequencies (Hz).
+    """Feed impedance between two lengths (m), two frequencies (Hz), or two products of them.
 
     Attributes
     ----------
@@ -94,7 +93,7 @@ class ImpedanceMap:
     _stretches: tuple[_Stretch, ...]
 
     def impedance_ohm(self, at: FloatArray) -> ComplexArray:
-        """Impedance in Ω at every length or frequency inside the map; shape of ``at``."""
+        """Impedance in Ω anywhere inside the map; shape of ``at``."""
         impedance = np.empty(at.shape, dtype=np.complex128)
         ends = np.array([stretch.high for stretch in self._stretches[:-1]])
         which = np.searchsorted(ends, at)
@@ -118,6 +117,7 @@ class BandMap:
     ----------
     frequencies_hz : ndarray, shape (k,)
     maps : tuple of ImpedanceMap, length k
+        At each of them, over length times frequency in m Hz.
     shortest_m_hz : float
         Length times frequency below which the model does not hold; there a wire is given the
         impedance of a stub too short to feed, which serves nothing.
@@ -133,8 +133,8 @@ class BandMap:
         impedance = np.zeros(electrical.shape, dtype=np.complex128)
         for index, each in enumerate(self.maps):
             weight = _lagrange_weight(self.frequencies_hz, index, frequency_hz)
-            at_m = np.clip(electrical / self.frequencies_hz[index], each.low, each.high)
-            impedance += weight[:, None] * each.impedance_ohm(at_m)
+            within = np.clip(electrical, each.low, each.high)
+            impedance += weight[:, None] * each.impedance_ohm(within)
         return np.where(electrical < self.shortest_m_hz, _STUB_OHM, _passive(impedance))
 
     def over_even_ratios(self, length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
@@ -149,8 +149,10 @@ class BandMap:
             shift = np.log(frequency_hz / self.frequencies_hz[index]) / step
             first = int(np.floor(shift.min()))
             count = len(length_m) + int(np.floor(shift.max())) - first + 2
-            read_m = length_m[0] * np.exp(step * (first + np.arange(count)))
-            read = each.impedance_ohm(np.clip(read_m, each.low, each.high))
+            at = (
+                self.frequencies_hz[index] * length_m[0] * np.exp(step * (first + np.arange(count)))
+            )
+            read = each.impedance_ohm(np.clip(at, each.low, each.high))
             weight = _lagrange_weight(self.frequencies_hz, index, frequency_hz)
             for row, by in enumerate(shift):
                 start = int(np.floor(by)) - first
@@ -181,8 +183,9 @@ def map_band(
     As `map_band_together`, for one wire.
     """
 
-    def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
-        return wire.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm[None]
+    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
+        return wire.solve(length_m, at_hz).impedance_ohm[None]
 
     limits_m = (low_m, high_m)
     return map_band_together(survey, wire.shortest_wavelengths, low_hz, high_hz, limits_m)[0]
@@ -203,7 +206,8 @@ def map_band_together(
     Parameters
     ----------
     survey : callable
-        Impedances in Ω of k wires, shape (k, n), for n lengths in m at one frequency in Hz.
+        Impedances in Ω of k wires, shape (k, f, n), for lengths in m of shape (f, n) at f
+        frequencies in Hz.
     shortest_wavelengths : float
         Length in wavelengths from which the models hold.
     low_hz, high_hz : float
@@ -227,26 +231,19 @@ def map_band_together(
     steps = 1 if width < _NARROW_BAND else max(2, int(np.ceil(width / _WIDEST_STEP)))
     frequencies_hz = _chebyshev_points(low_hz, high_hz, finer[0] * steps + 1)
     shortest_m_hz = SPEED_OF_LIGHT_M_PER_S * shortest_wavelengths
-    # Read at equal electrical length: the low edge is asked for longer wire, the high for shorter.
     least = max(limits_m[0] * low_hz, shortest_m_hz)
     most = max(limits_m[1] * high_hz, 1.5 * shortest_m_hz)
-    by_frequency = [
-        _map(
-            partial(_at_frequency, survey, float(f)),
-            least / float(f),
-            most / float(f),
-            SPEED_OF_LIGHT_M_PER_S / float(f),
-            finer[1],
-        )
-        for f in frequencies_hz
-    ]
+
+    def solve(length_m_hz: FloatArray) -> ComplexArray:
+        solved = survey(length_m_hz / frequencies_hz[:, None], frequencies_hz)
+        return solved.reshape(-1, len(length_m_hz))
+
+    maps = _map(solve, least, most, SPEED_OF_LIGHT_M_PER_S, finer[1])
+    each = len(frequencies_hz)
     return tuple(
-        BandMap(frequencies_hz, maps, shortest_m_hz) for maps in zip(*by_frequency, strict=True)
+        BandMap(frequencies_hz, maps[first : first + each], shortest_m_hz)
+        for first in range(0, len(maps), each)
     )
-
-
-def _at_frequency(survey: Survey, frequency_hz: float, length_m: FloatArray) -> ComplexArray:
-    return survey(length_m, frequency_hz)
 
 
 def map_over_length(

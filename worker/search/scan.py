@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from functools import partial
 from typing import Final
 
 import numpy as np
@@ -39,6 +40,9 @@ _GOLDEN: Final = 0.618033988749895
 #: Whether wires are solved with care, and how many times as many nodes as usual a band is
 #: mapped on over frequency and over length: tried in turn until fresh solves agree.
 _ATTEMPTS: Final = ((False, (1, 1)), (True, (1, 1)), (True, (2, 1)), (True, (2, 2)), (True, (4, 4)))
+
+#: Wires are solved so many at a time, with a word of progress between.
+_SOLVED_AT_A_TIME: Final = 400
 
 #: Lengths scored at a time: what they need then stays in the processor's cache.
 _CHUNK_LENGTHS: Final = 2048
@@ -189,71 +193,102 @@ class _ClosestSoFar:
 def _map_wires(
     space: SearchSpace, progress: ProgressCallback
 ) -> tuple[tuple[WireMaps, ...], float]:
-    """The maps of all wires, band by band, for wires are solved together; and their miss."""
-    by_band: list[tuple[BandMap, ...]] = []
-    largest_miss = 0.0
-    for index, band in enumerate(space.bands):
+    """The maps of all wires, band by band, for wires are solved together; and their miss.
 
-        def tell(band: BandGoal = band, index: int = index) -> None:
-            progress(_MAP_PART * index / len(space.bands), f"solving wires on {band.name}")
-
-        maps, miss = _map_band(space, band, tell)
-        by_band.append(maps)
-        largest_miss = max(largest_miss, miss)
-    return tuple(WireMaps(space, maps) for maps in zip(*by_band, strict=True)), largest_miss
+    Maps that fresh solves do not bear out are made again, with more and more care.
+    """
+    todo = list(range(len(space.bands)))
+    by_band: dict[int, tuple[BandMap, ...]] = {}
+    misses = [np.inf] * len(space.bands)
+    for careful, finer in _ATTEMPTS:
+        mapped: dict[int, tuple[BandMap, ...]] = {}
+        for done, index in enumerate(todo):
+            band = space.bands[index]
+            part = _MAP_PART * (done + len(by_band)) / (len(todo) + len(by_band))
+            tell = partial(progress, part, f"solving wires on {band.name}")
+            maps = _map_band(space, band, tell, careful=careful, finer=finer)
+            if maps is not None:
+                mapped[index] = maps
+        tell()
+        for index, (within, miss) in _probe(space, mapped).items():
+            misses[index] = max(miss, *(each.largest_miss for each in mapped[index]))
+            if within:
+                by_band[index] = mapped[index]
+        todo = [index for index in todo if index not in by_band]
+        if not todo:
+            in_order = [by_band[index] for index in range(len(space.bands))]
+            wires = tuple(WireMaps(space, maps) for maps in zip(*in_order, strict=True))
+            return wires, max(misses)
+    worst = max(todo, key=lambda index: misses[index])
+    name = space.bands[worst].name
+    raise NotConverged(f"impedance map on {name}", misses[worst], TOLERANCE_RELATIVE)
 
 
 def _map_band(
-    space: SearchSpace, band: BandGoal, tell: Callable[[], None]
-) -> tuple[tuple[BandMap, ...], float]:
-    """The maps of all wires on one band, made again with more care where fresh solves differ."""
+    space: SearchSpace,
+    band: BandGoal,
+    tell: Callable[[], None],
+    *,
+    careful: bool,
+    finer: tuple[int, int],
+) -> tuple[BandMap, ...] | None:
+    """The maps of all wires on one band; None where a survey is too rough to be mapped."""
     shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
-    limits_m = (space.shortest_m, space.longest_m)
-    miss = np.inf
-    for careful, finer in _ATTEMPTS:
 
-        def survey(
-            length_m: FloatArray, frequency_hz: float, careful: bool = careful
-        ) -> ComplexArray:
+    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        columns = max(1, _SOLVED_AT_A_TIME // (len(space.wires) * len(frequency_hz)))
+        parts = []
+        for start in range(0, length_m.shape[1], columns):
             tell()
-            return space.surveyed(length_m, frequency_hz, careful=careful)
+            some_m = length_m[:, start : start + columns]
+            parts.append(space.surveyed(some_m, frequency_hz, careful=careful))
+        return np.concatenate(parts, axis=2)
 
-        try:
-            maps = map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m, finer)
-        except NotConverged:
-            if careful:
-                raise
-            continue
-        tell()
-        within, off = _probe(space, band, maps)
-        miss = max(off, *(each.largest_miss for each in maps))
-        if within:
-            return maps, miss
-    raise NotConverged(f"impedance map on {band.name}", miss, TOLERANCE_RELATIVE)
+    limits_m = (space.shortest_m, space.longest_m)
+    try:
+        return map_band_together(survey, shortest, band.low_hz, band.high_hz, limits_m, finer)
+    except NotConverged:
+        if careful:
+            raise
+        return None
 
 
-def _probe(space: SearchSpace, band: BandGoal, maps: tuple[BandMap, ...]) -> tuple[bool, float]:
+def _probe(
+    space: SearchSpace, by_band: dict[int, tuple[BandMap, ...]]
+) -> dict[int, tuple[bool, float]]:
     """Hold maps to fresh, full solves where they are least sure: between their frequencies.
 
     Returns
     -------
-    within : bool
-        Whether every one is within the tolerance.
-    miss : float
-        The largest, relative to |Z|.
+    dict
+        For each band whether every map is within the tolerance, and the largest miss relative
+        to |Z|.
     """
-    at_hz = band.low_hz + _PROBE_AT * (band.high_hz - band.low_hz)
     # Spread evenly in logarithm by the golden section, and differently for each wire.
-    places = 1.0 + np.arange(_probes(space)) + 0.5 * np.arange(len(maps))[:, None]
-    lowest_m = max(space.shortest_m, maps[0].shortest_m_hz / at_hz)
-    highest_m = max(space.longest_m, 1.01 * lowest_m)
-    length_m = lowest_m * (highest_m / lowest_m) ** np.modf(places * _GOLDEN)[0]
-    wires = tuple(np.repeat(np.arange(len(maps)), length_m.shape[1]).tolist())
-    solved = space.solved_together(wires, length_m.ravel(), at_hz)
-    fresh = solved.impedance_ohm.reshape(length_m.shape)
-    pairs = zip(maps, length_m, strict=True)
-    read = np.array([each.impedance_ohm(row_m, np.array([at_hz]))[0] for each, row_m in pairs])
-    return departure(read, fresh)
+    places = 1.0 + np.arange(_probes(space)) + 0.5 * np.arange(len(space.wires))[:, None]
+    spread = np.modf(places * _GOLDEN)[0]
+    at_hz, length_m = [], []
+    for index, maps in by_band.items():
+        band = space.bands[index]
+        between_hz = band.low_hz + _PROBE_AT * (band.high_hz - band.low_hz)
+        lowest_m = max(space.shortest_m, maps[0].shortest_m_hz / between_hz)
+        highest_m = max(space.longest_m, 1.01 * lowest_m)
+        at_hz.append(between_hz)
+        length_m.append(lowest_m * (highest_m / lowest_m) ** spread)
+    if not at_hz:
+        return {}
+    all_m = np.array(length_m)
+    wires = np.broadcast_to(np.arange(len(space.wires))[:, None], all_m.shape)
+    all_hz = np.broadcast_to(np.array(at_hz)[:, None, None], all_m.shape)
+    solved = space.solved_together(wires.ravel().tolist(), all_m.ravel(), all_hz.ravel())
+    fresh = solved.impedance_ohm.reshape(all_m.shape)
+    found = {}
+    for row, (index, maps) in enumerate(by_band.items()):
+        pairs = zip(maps, all_m[row], strict=True)
+        hertz = np.array([at_hz[row]])
+        read = np.array([each.impedance_ohm(row_m, hertz)[0] for each, row_m in pairs])
+        found[index] = departure(read, fresh[row])
+    return found
 
 
 def _probes(space: SearchSpace) -> int:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import Final, Protocol
 
@@ -139,12 +139,12 @@ class SearchSpace:
     feeding : Feeding
         What lies between the wire and the point where the limits apply.
     survey : callable, optional
-        Impedances of all the wires, shape (k, n), for n lengths in m at one frequency in Hz,
-        solved together, more carefully where the third argument says so; without it each
-        wire's own model is asked in turn.
+        Impedances of all the wires, shape (k, f, n), for lengths in m, shape (f, n), at f
+        frequencies in Hz, solved together, more carefully where the third argument says so;
+        without it each wire's own model is asked in turn.
     together : callable, optional
-        Direct solutions of some of the wires, each of its own length, at one frequency; without
-        it each is asked in turn.
+        Direct solutions of some of the wires, each of its own length at its own frequency, no
+        closer than a survey where the last argument says so; without it each is asked in turn.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
@@ -155,8 +155,8 @@ class SearchSpace:
     site_longest_m: float
     ratios: tuple[float, ...]
     feeding: Feeding
-    survey: Callable[[FloatArray, float, bool], ComplexArray] | None = None
-    together: Callable[[tuple[int, ...], FloatArray, float], Solved] | None = None
+    survey: Callable[[FloatArray, FloatArray, bool], ComplexArray] | None = None
+    together: Callable[[Sequence[int], FloatArray, FloatArray, bool], Solved] | None = None
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -178,22 +178,28 @@ class SearchSpace:
         """Frequencies per band, an odd number so that the centre is among them."""
         return max(points_of(band, self.feeding, _FURTHEST_APART) for band in self.bands)
 
-    def surveyed(self, length_m: FloatArray, frequency_hz: float, *, careful: bool) -> ComplexArray:
-        """Impedances of all wires in Ω at one frequency in Hz; shape (k, n) for n lengths."""
+    def surveyed(
+        self, length_m: FloatArray, frequency_hz: FloatArray, *, careful: bool
+    ) -> ComplexArray:
+        """Impedances in Ω of all k wires, (k, f, n), for lengths (f, n) in m at f frequencies."""
         if self.survey is not None:
             return self.survey(length_m, frequency_hz, careful)
-        at_hz = np.full(length_m.shape, frequency_hz)
+        at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
         return np.array([each.model.solve(length_m, at_hz).impedance_ohm for each in self.wires])
 
     def solved_together(
-        self, wires: tuple[int, ...], length_m: FloatArray, frequency_hz: float
+        self,
+        wires: Sequence[int],
+        length_m: FloatArray,
+        frequency_hz: FloatArray,
+        *,
+        survey: bool = False,
     ) -> Solved:
-        """Direct solutions of some wires, each of its own length in m, at one frequency in Hz."""
+        """Direct solutions of n wires, each of its own length in m at its own frequency in Hz."""
         if self.together is not None:
-            return self.together(wires, length_m, frequency_hz)
-        at_hz = np.array([frequency_hz])
+            return self.together(wires, length_m, frequency_hz, survey)
         parts = [
-            self.wires[wire].model.solve(length_m[row : row + 1], at_hz)
+            self.wires[wire].model.solve(length_m[row : row + 1], frequency_hz[row : row + 1])
             for row, wire in enumerate(wires)
         ]
         return Solved(

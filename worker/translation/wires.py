@@ -120,8 +120,10 @@ class Hanging:
             survey=lambda length_m, frequency_hz, careful: survey_impedances(
                 hung, length_m, frequency_hz, careful=careful
             ),
-            together=lambda chosen, length_m, frequency_hz: Solved(
-                *solve_together([hung[index] for index in chosen], length_m, frequency_hz)
+            together=lambda chosen, length_m, frequency_hz, survey: Solved(
+                *solve_together(
+                    [hung[index] for index in chosen], length_m, frequency_hz, survey=survey
+                )
             ),
         )
 

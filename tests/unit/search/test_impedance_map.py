@@ -143,8 +143,8 @@ def test_no_length_is_claimed_where_the_reactance_has_no_rising_zero() -> None:
 def test_wires_mapped_together_are_mapped_as_each_alone() -> None:
     lines = [OpenLine(surge_ohm=700.0), OpenLine(surge_ohm=1100.0)]
 
-    def survey(length_m: FloatArray, frequency_hz: float) -> ComplexArray:
-        at_hz = np.full(length_m.shape, frequency_hz)
+    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
         return np.array([line.solve(length_m, at_hz).impedance_ohm for line in lines])
 
     together = map_band_together(survey, 0.05, 14.0e6, 14.35e6, (5.0, 40.0))

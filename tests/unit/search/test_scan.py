@@ -294,9 +294,12 @@ def test_a_band_of_any_width_is_mapped_to_the_tolerance(
     assert largest_error(found) < 5e-3
 
 
-def rough_unless_careful(length_m: FloatArray, frequency_hz: float, careful: bool) -> ComplexArray:
+def rough_unless_careful(
+    length_m: FloatArray, frequency_hz: FloatArray, careful: bool
+) -> ComplexArray:
     line = OpenLine(noise=0.0 if careful else 0.02)
-    return line.solve(length_m, np.full(length_m.shape, frequency_hz)).impedance_ohm[None]
+    at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
+    return line.solve(length_m, at_hz).impedance_ohm[None]
 
 
 def test_where_a_survey_is_too_rough_wires_are_solved_with_care() -> None:
@@ -307,10 +310,10 @@ def test_where_a_survey_is_too_rough_wires_are_solved_with_care() -> None:
 
 def test_a_survey_that_disagrees_with_the_solver_is_found_out() -> None:
     # Smooth, and so mapped without complaint, but another wire than the one to be planned.
-    def other(length_m: FloatArray, frequency_hz: float, _careful: bool) -> ComplexArray:
+    def other(length_m: FloatArray, frequency_hz: FloatArray, _careful: bool) -> ComplexArray:
         return 1.01 * rough_unless_careful(length_m, frequency_hz, True)
 
-    with pytest.raises(NotConverged, match="impedance map on 40m"):
+    with pytest.raises(NotConverged, match="impedance map on"):
         scanned(replace(space_of(), survey=other))
 
 

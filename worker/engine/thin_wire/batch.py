@@ -12,7 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.errors import OutOfRange
-from worker.engine.thin_wire.reflection import ReflectedPotentials
+from worker.engine.thin_wire.reflection import GroundBelow, ReflectedPotentials
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -51,8 +51,8 @@ class WireBatch:
         One of each a wire, (B,).
     port_position_m, sigma_m, port_impedance_ohm
         Signed positions from the centre, smooth source widths and series impedances, (B, P).
-    height_m
-        Height above ground, inf in free space.
+    ground
+        Under each wire, or None in free space.
     """
 
     shape: tuple[int, ...]
@@ -64,7 +64,12 @@ class WireBatch:
     port_position_m: FloatArray
     sigma_m: FloatArray
     port_impedance_ohm: ComplexArray
-    height_m: float
+    ground: GroundBelow | None
+
+    @property
+    def height_m(self) -> float:
+        """Height above ground, inf in free space."""
+        return inf if self.ground is None else self.ground.height_m
 
     def __getitem__(self, rows: NDArray[np.intp]) -> WireBatch:
         """Those rows as a batch of their own."""
@@ -78,7 +83,7 @@ class WireBatch:
             port_position_m=self.port_position_m[rows],
             sigma_m=self.sigma_m[rows],
             port_impedance_ohm=self.port_impedance_ohm[rows],
-            height_m=self.height_m,
+            ground=None if self.ground is None else self.ground[rows],
         )
 
 
@@ -91,7 +96,7 @@ def checked_batch(
     gap_m: ArrayLike | None,
     wire_impedance_ohm_per_m: ArrayLike,
     loads: Sequence[tuple[float, ArrayLike]],
-    reflected: ReflectedPotentials | None,
+    reflected: ReflectedPotentials | Sequence[ReflectedPotentials] | None,
 ) -> WireBatch:
     """Broadcast and check the arguments of `wire.feed_impedance`; raises OutOfRange."""
     length, radius, frequency, feed, gap = np.broadcast_arrays(
@@ -122,11 +127,9 @@ def checked_batch(
     _require("gap in radii", gap / radius, *GAP_RANGE_RADII)
     _require("resistance of the wire per metre", series.real, 0.0, _LARGEST_IMPEDANCE, "ohm/m")
     _require("impedance of the wire per metre", np.abs(series), 0.0, _LARGEST_IMPEDANCE, "ohm/m")
-    height = inf
-    if reflected is not None:
-        height = float(reflected.height_m)
-        _require("frequency_hz", frequency, reflected.frequency_hz, reflected.frequency_hz, "Hz")
-        _require("height in radii", height / radius, LOWEST_HEIGHT_RADII, inf)
+    ground = None if reflected is None else _ground_below(reflected, frequency)
+    height = inf if ground is None else ground.height_m
+    _require("height in radii", height / radius, LOWEST_HEIGHT_RADII, inf)
     ports, port_impedance = _ports(length, feed, loads, shape)
     clearance = _clearance(ports, length)
     needed = np.maximum(PORT_CLEARANCE_RADII * radius, gap)
@@ -150,8 +153,30 @@ def checked_batch(
             np.minimum(phase_limit, image_limit)[:, None], _SIGMA_CLEARANCE * clearance
         ),
         port_impedance_ohm=port_impedance,
-        height_m=height,
+        ground=ground,
     )
+
+
+def _ground_below(
+    reflected: ReflectedPotentials | Sequence[ReflectedPotentials], frequency: FloatArray
+) -> GroundBelow:
+    """The potentials that hold for each wire's frequency, of which there must be some."""
+    potentials = reflected if isinstance(reflected, Sequence) else (reflected,)
+    known = np.array([each.frequency_hz for each in potentials])
+    order = np.argsort(known)
+    after = np.minimum(np.searchsorted(known[order], frequency * (1.0 - _SLACK)), len(known) - 1)
+    which = order[after]
+    nearest = known[which]
+    wrong = np.abs(frequency - nearest) > _SLACK * nearest
+    if np.any(wrong):
+        first = int(np.argmax(wrong))
+        held = float(nearest[first])
+        raise OutOfRange("frequency_hz", float(frequency[first]), held, held, "Hz")
+    height = potentials[0].height_m
+    for each in potentials:
+        if each.height_m != height:
+            raise OutOfRange("height_m", each.height_m, height, height, "m")
+    return GroundBelow(potentials, which)
 
 
 def _ports(

@@ -18,7 +18,7 @@ from worker.engine.constants import FREE_SPACE_IMPEDANCE_OHM
 from worker.engine.thin_wire.discretisation import Discretisation
 from worker.engine.thin_wire.gap import smooth_source
 from worker.engine.thin_wire.potential import tube_potentials
-from worker.engine.thin_wire.reflection import ReflectedPotentials, reflected_matrices
+from worker.engine.thin_wire.reflection import GroundBelow, reflected_matrices
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -52,7 +52,7 @@ def solve_ports(
     port_position_m: FloatArray,
     gap_m: FloatArray,
     sigma_m: FloatArray,
-    reflected: ReflectedPotentials | None,
+    ground: GroundBelow | None,
 ) -> PortSolution:
     """Solve for a volt at each port in turn.
 
@@ -66,8 +66,8 @@ def solve_ports(
         Gap widths (B,).
     sigma_m
         Widths of the smooth sources, (B, P).
-    reflected
-        Ground, or None in free space.
+    ground
+        Under each wire, or None in free space.
     """
     nodes, weights = mesh.nodes(), mesh.weights()
     direct, mirrored = tube_potentials(mesh, nodes)
@@ -84,7 +84,7 @@ def solve_ports(
     overlap = half + np.swapaxes(half, 1, 2)
     currents = {parity: np.zeros((count, mesh.unknowns, ports), complex) for parity in (1, -1)}
     for parity in (1, -1) if np.any(port_position_m) else (1,):
-        matrix = _matrix(mesh, nodes, weights, direct, mirrored, parity, reflected)
+        matrix = _matrix(mesh, nodes, weights, direct, mirrored, parity, ground)
         matrix += mesh.wire_impedance_ohm_per_m[:, None, None] * overlap
         source = mesh.test_current((here + parity * there) * weights[:, None, :])
         # An odd current vanishes at the centre, so its first unknown goes.
@@ -117,7 +117,7 @@ def _matrix(
     direct: FloatArray,
     mirrored: FloatArray,
     parity: int,
-    reflected: ReflectedPotentials | None,
+    ground: GroundBelow | None,
 ) -> ComplexArray:
     r"""Galerkin matrices (B, N, N) of currents of one parity, over the whole wire.
 
@@ -138,8 +138,8 @@ def _matrix(
         together, apart = apart, together
     magnetic = _both_sides(lambda kernel: mesh.test_current(kernel * weights[:, None]), together)
     electric = _both_sides(mesh.test_charge, apart)
-    if reflected is not None:
-        extra = reflected_matrices(reflected, mesh, nodes, weights, parity)
+    if ground is not None:
+        extra = reflected_matrices(ground, mesh, nodes, weights, parity)
         magnetic += extra[0]
         electric += extra[1]
     k = mesh.wavenumber_per_m[:, None, None]

@@ -16,7 +16,6 @@ from worker.engine.thin_wire.discretisation import Discretisation
 from worker.engine.thin_wire.galerkin import solve_ports
 from worker.engine.thin_wire.gap import sharp_admittance
 from worker.engine.thin_wire.mesh import Grading, HalfWires, element_breaks, element_counts
-from worker.engine.thin_wire.reflection import ReflectedPotentials
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -24,11 +23,16 @@ ComplexArray = NDArray[np.complex128]
 
 @dataclass(frozen=True, slots=True)
 class Level:
-    """One fineness of solution; the next is tried where the estimated error is too large."""
+    """One fineness of solution; the next is tried where the estimated error is too large.
+
+    With `few_shapes` meshes are rounded up to a few numbers of elements, so that wires of many
+    lengths are solved in few runs: each wire costs more arithmetic, and far less around it.
+    """
 
     degree: int
     points: int
     grading: Grading
+    few_shapes: bool = False
 
 
 LEVELS: Final = (
@@ -38,7 +42,7 @@ LEVELS: Final = (
 )
 
 # A coarser start, for those who solve thousands of wires to choose among them: half the time.
-SURVEY_LEVEL: Final = Level(4, 6, Grading(0.35, 12.0, 2.2, 2.0, 0.9))
+SURVEY_LEVEL: Final = Level(4, 6, Grading(0.35, 12.0, 2.2, 2.0, 0.9), few_shapes=True)
 
 # Errors are judged as errors of the wire's electrical half length, in radians. On a lossless wire
 # of characteristic impedance Zc, Z = -j Zc cot x, so that |dZ/dx| = (Zc^2 + |Z|^2) / Zc.
@@ -48,6 +52,10 @@ SURVEY_TOLERANCE_RAD: Final = 1e-3
 _FLOOR_RAD = 2e-5
 # Share of the change from the degree before that is counted as error.
 _SHARE_OF_CHANGE = 0.5
+# Numbers of elements that meshes are rounded up to where few shapes are wanted: by a fifth at most.
+_RUNGS: Final = np.array(
+    [1, 2, 3, 4, 5, 6, 7, 8, 10, 12, 14, 17, 20, 24, 28, 33, 40, 48, 58, 70, 84, 100]
+)
 # Entries of the largest array of one chunk: holds memory flat and the caches warm.
 _CHUNK_ENTRIES = 200_000
 
@@ -74,25 +82,25 @@ def solve_level(
     batch: WireBatch,
     rows: NDArray[np.intp],
     level: Level,
-    reflected: ReflectedPotentials | None,
     tolerance_rad: float = TOLERANCE_RAD,
 ) -> Iterator[tuple[NDArray[np.intp], Solved]]:
     """Solve some rows of a batch, in runs of one mesh shape that fit the working memory."""
     part = batch[rows]
     counts = element_counts(_half_wires(part), level.grading)
+    if level.few_shapes:
+        counts = _RUNGS[np.searchsorted(_RUNGS, counts)]
     for count in np.unique(counts):
         members = np.nonzero(counts == count)[0]
         size = max(1, _CHUNK_ENTRIES // ((int(count) + 2) * level.points) ** 2)
         for start in range(0, members.size, size):
             some = members[start : start + size]
-            yield rows[some], _solve(part[some], int(count), level, reflected, tolerance_rad)
+            yield rows[some], _solve(part[some], int(count), level, tolerance_rad)
 
 
 def _solve(
     part: WireBatch,
     elements: int,
     level: Level,
-    reflected: ReflectedPotentials | None,
     tolerance_rad: float,
 ) -> Solved:
     mesh = Discretisation(
@@ -102,7 +110,7 @@ def _solve(
         wavenumber_per_m=part.wavenumber_per_m,
         wire_impedance_ohm_per_m=part.wire_impedance_ohm_per_m,
     )
-    ports = solve_ports(mesh, part.port_position_m, part.gap_m, part.sigma_m, reflected)
+    ports = solve_ports(mesh, part.port_position_m, part.gap_m, part.sigma_m, part.ground)
     sharp = _sharp_admittances(part)
     voltage, impedance = _feed(part, ports.admittance + sharp)
     # Stationary in the current: dZ/dz is the integral of I^2 over the square at the feed.

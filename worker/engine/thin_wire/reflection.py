@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from math import ceil, factorial, pi
+from collections.abc import Sequence
+from dataclasses import dataclass
+from math import factorial, pi
 from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
-from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
 from worker.engine.thin_wire.discretisation import Discretisation
 
 FloatArray = NDArray[np.float64]
@@ -57,8 +58,44 @@ class ReflectedPotentials(Protocol):
         """Reflected scalar-potential function g_Phi (1/m) at horizontal distances >= 0."""
 
 
+@dataclass(frozen=True, slots=True)
+class GroundBelow:
+    """The ground under each of B wires that hang at one height: its potentials, and which.
+
+    Attributes
+    ----------
+    potentials
+        One a frequency.
+    which
+        Index into them for each wire, (B,).
+    """
+
+    potentials: Sequence[ReflectedPotentials]
+    which: NDArray[np.intp]
+
+    @property
+    def height_m(self) -> float:
+        """Height of the wires."""
+        return float(self.potentials[0].height_m)
+
+    def __getitem__(self, rows: NDArray[np.intp]) -> GroundBelow:
+        """The ground under some of the wires."""
+        return GroundBelow(self.potentials, self.which[rows])
+
+    def both(self, distance_m: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """Vector and scalar potential functions (1/m) at distances (B, n) along each wire."""
+        vector = np.empty(distance_m.shape, dtype=complex)
+        scalar = np.empty_like(vector)
+        for index in np.unique(self.which):
+            rows = np.nonzero(self.which == index)[0]
+            potentials = self.potentials[int(index)]
+            vector[rows] = potentials.vector_potential(distance_m[rows])
+            scalar[rows] = potentials.scalar_potential(distance_m[rows])
+        return vector, scalar
+
+
 def reflected_matrices(
-    reflected: ReflectedPotentials,
+    ground: GroundBelow,
     mesh: Discretisation,
     nodes: FloatArray,
     weights: FloatArray,
@@ -68,8 +105,8 @@ def reflected_matrices(
 
     Parameters
     ----------
-    reflected
-        The ground.
+    ground
+        Under each wire.
     mesh, nodes, weights
         B half wires with their nodes and weights (B, Q).
     parity
@@ -83,19 +120,20 @@ def reflected_matrices(
     from one row of values.
     """
     half_length = mesh.breaks_m[:, -1]
-    wavelength = SPEED_OF_LIGHT_M_PER_S / reflected.frequency_hz
-    spacing = min(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * reflected.height_m)
-    cells = max(ceil(float(np.max(half_length)) / spacing), 1)
+    wavelength = 2.0 * pi / mesh.wavenumber_per_m
+    spacing = np.minimum(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * ground.height_m)
+    cells = max(int(np.ceil(np.max(half_length / spacing))), 1)
     step = half_length / cells
     gather = np.swapaxes(_interpolation(nodes / step[:, None], cells), 1, 2)
     index = np.arange(1 - _STENCIL // 2, cells + _STENCIL // 2 + 1)
     distance = step[:, None] * np.arange(2 * (cells + _STENCIL // 2) + 1)
+    vector, scalar = ground.both(distance)
     matrices = []
     for moments, potential, sign in (
-        (mesh.test_current(gather * weights[:, None, :]), reflected.vector_potential, parity),
-        (mesh.test_charge(gather), reflected.scalar_potential, -parity),
+        (mesh.test_current(gather * weights[:, None, :]), vector, parity),
+        (mesh.test_charge(gather), scalar, -parity),
     ):
-        values = 4.0 * pi * potential(distance)
+        values = 4.0 * pi * potential
         kernel = values[:, np.abs(index[:, None] - index)]
         kernel = kernel + sign * values[:, np.abs(index[:, None] + index)]
         turned = np.swapaxes(moments, 1, 2)

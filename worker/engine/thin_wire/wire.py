@@ -104,7 +104,7 @@ def feed_impedance(
     gap_m: ArrayLike | None = None,
     wire_impedance_ohm_per_m: ArrayLike = 0.0,
     loads: Sequence[tuple[float, ArrayLike]] = (),
-    reflected: ReflectedPotentials | None = None,
+    reflected: ReflectedPotentials | Sequence[ReflectedPotentials] | None = None,
     survey: bool = False,
 ) -> FeedImpedance:
     r"""Feed impedance of straight wires, many at once.
@@ -123,7 +123,8 @@ def feed_impedance(
         Lumped series loads: pairs of position (fraction of the length) and impedance (ohm,
         complex, broadcasts). A load at the feed is in series with it.
     reflected
-        Ground under the wire; None for free space.
+        Ground under the wire, or one for each frequency of the batch, all at one height; None for
+        free space.
     survey
         Accept an estimated error of 1e-3 of electrical half length and not 1e-4: measured, below
         0.05 ohm or 5e-4 of magnitude, for half the time; for choosing among thousands of wires.
@@ -138,7 +139,7 @@ def feed_impedance(
     OutOfRange
         Length outside 0.005 to 10 wavelengths, radius outside 1e-7 to 5e-3 wavelengths, wire
         shorter than ten radii, a feed or load within five radii or one gap width of an end or of
-        another, a height below two radii, or a frequency that is not the ground's.
+        another, a height below two radii, a frequency that is none of the ground's, or two heights.
 
     Notes
     -----
@@ -180,7 +181,7 @@ def feed_impedance(
         pending = np.nonzero(~converged)[0]
         if not pending.size:
             break
-        for rows, solved in solve_level(batch, pending, level, reflected, tolerance_rad):
+        for rows, solved in solve_level(batch, pending, level, tolerance_rad):
             impedance[rows] = solved.impedance_ohm
             slope[rows] = solved.wire_impedance_slope_m
             error[rows] = solved.estimated_error_ohm
@@ -228,7 +229,7 @@ def current(
         reflected=reflected,
     )
     for level in LEVELS:
-        ((_, solved),) = solve_level(batch, np.arange(1), level, reflected)
+        ((_, solved),) = solve_level(batch, np.arange(1), level)
         if solved.converged[0]:
             break
     position, weight, along = _current_along(batch, solved)
