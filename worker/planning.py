@@ -2,7 +2,8 @@
 
 A pure function of the request, but for the time it takes, which it reports. Its steps: hang
 the wires the request allows, scan them, look closely at those that lead, see how they hold up,
-complete them to sets where one wire is not enough, and put it all in words.
+complete them to sets where one wire is not enough, find what they carry and radiate, and put it
+all in words.
 """
 
 from __future__ import annotations
@@ -32,6 +33,7 @@ from worker.search.steadiness import hold
 from worker.search.trade_off import front_of, gains_of
 from worker.translation.departures import departures_of
 from worker.translation.outcome import Look, candidate_of, feed_report_of
+from worker.translation.pictures import BandPicture, pictures_of
 from worker.translation.provenance import ground_in_words, notes_on
 from worker.translation.relaxing import relaxations, set_in_words
 from worker.translation.wires import Hanging
@@ -42,6 +44,7 @@ ProgressCallback = Callable[[float, str], None]
 #: The scan takes about this part of the time, looking at the leaders and the sets the rest.
 _SCAN_PART: Final = 0.6
 _LOOK_PART: Final = 0.9
+_DRAW_PART: Final = 0.97
 
 #: Sets proposed unasked, where no single wire serves all required bands, are of up to so many.
 _USUAL_SET: Final = 3
@@ -72,7 +75,11 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
     chosen = job.sets(candidates[0])
     looks = job.with_members(looks, chosen)
     candidates = [candidate_of(request, look, rank) for rank, look in enumerate(looks, 1)]
-    reports = tuple(feed_report_of(request, look, rank) for rank, look in enumerate(looks, 1))
+    pictures = job.pictures(looks)
+    reports = tuple(
+        feed_report_of(request, look, rank, drawn)
+        for rank, (look, drawn) in enumerate(zip(looks, pictures, strict=True), 1)
+    )
     result = DesignResult(
         engine_version=ENGINE_VERSION,
         ground=ground_in_words(request),
@@ -154,7 +161,7 @@ class _Job:
         too_many = max(len(looks) + len(missing) - MOST_CANDIDATES, 0)
         left_out = {id(look) for look in spare[len(spare) - too_many :]}
         kept = [look for look in looks if id(look) not in left_out]
-        return kept + self._look_at(tuple(missing), (_LOOK_PART, 1.0), "member of a set")
+        return kept + self._look_at(tuple(missing), (_LOOK_PART, _DRAW_PART), "member of a set")
 
     def told(self, chosen: ChosenSet, looks: list[Look], candidates: list[Candidate]) -> DipoleSet:
         """A set by the ranks of its members, with what each serves as looked at closely."""
@@ -183,6 +190,15 @@ class _Job:
             serves=tuple(serves),
             unserved=tuple(unserved),
             why=set_in_words(serves, unserved),
+        )
+
+    def pictures(self, looks: list[Look]) -> list[list[BandPicture]]:
+        """Current and pattern of every wire looked at, at the centre of each band."""
+        self._progress(_DRAW_PART, "drawing current and pattern")
+        return pictures_of(
+            [self._hanging.wire(look.way).hung for look in looks],
+            [look.appraisal.pick.length_m for look in looks],
+            [1e6 * band.centre_mhz for band in self._request.bands],
         )
 
     def trade_off(self, looks: list[Look]) -> tuple[TradeOff, ...]:

@@ -5,13 +5,14 @@ from __future__ import annotations
 from typing import Literal
 
 from service.contracts.quantities import Contract
+from service.contracts.radiation import CurrentAlong, Radiation
 
 
 class ReportPoint(Contract):
     """Impedance at one frequency, at the feed point and after the transformer.
 
-    ``reflection`` is |Γ| and ``swr`` the standing wave ratio on the line side of the
-    transformer and the matching network, against the reference impedance.
+    ``reflection`` is |Γ|, ``reflection_deg`` its angle and ``swr`` the standing wave ratio on
+    the line side of the transformer and the matching network, against the reference impedance.
     ``transmitter_swr`` and ``line_loss_db`` belong to the other end of the feed line, where
     one is given.
     """
@@ -21,6 +22,7 @@ class ReportPoint(Contract):
     reactance_ohm: float
     reflection: float
     swr: float
+    reflection_deg: float | None = None
     transmitter_swr: float | None = None
     line_loss_db: float | None = None
 
@@ -56,7 +58,11 @@ class FeedStress(Contract):
 
 
 class BandReport(Contract):
-    """One band of the report: its edges and centre, and a grid between the edges."""
+    """One band of the report: its edges and centre, and a grid between the edges.
+
+    ``current`` and ``radiation`` are those at the centre; ``radiation`` is left out where the
+    wire hangs more wavelengths high than a pattern can be drawn for.
+    """
 
     name: str
     low: ReportPoint
@@ -65,6 +71,8 @@ class BandReport(Contract):
     grid: tuple[ReportPoint, ...]
     stress: FeedStress | None = None
     matching: Matching | None = None
+    current: CurrentAlong | None = None
+    radiation: Radiation | None = None
 
 
 class ResonanceLine(Contract):

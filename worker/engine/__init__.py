@@ -3,4 +3,4 @@
 from typing import Final
 
 #: Recorded with every result; raised whenever a change moves a figure a planner could see.
-ENGINE_VERSION: Final = "0.1"
+ENGINE_VERSION: Final = "0.2"

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import cmath
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Final, Literal
 
@@ -33,6 +35,7 @@ from worker.search.feeding import NETWORKS, network_values
 from worker.search.scoring import FULLY_SERVED
 from worker.search.steadiness import Held
 from worker.search.trade_off import Gain
+from worker.translation.pictures import BandPicture
 from worker.translation.provenance import provenance_of
 from worker.translation.wires import Way
 from worker.translation.wording import (
@@ -104,8 +107,10 @@ def candidate_of(request: DesignRequest, look: Look, rank: int) -> Candidate:
     )
 
 
-def feed_report_of(request: DesignRequest, look: Look, rank: int) -> FeedReport:
-    """The feed-impedance report of one candidate."""
+def feed_report_of(
+    request: DesignRequest, look: Look, rank: int, pictures: Sequence[BandPicture]
+) -> FeedReport:
+    """The feed-impedance report of one candidate, with its pictures, one a band."""
     appraisal, conductor = look.appraisal, look.way.conductor
     reference_ohm, ratio = request.feed.reference_ohm, appraisal.pick.ratio
     return FeedReport(
@@ -118,7 +123,10 @@ def feed_report_of(request: DesignRequest, look: Look, rank: int) -> FeedReport:
         reference_ohm=reference_ohm,
         reference_point=request.feed.reference_point,
         transformer_ratio=ratio,
-        bands=tuple(_band_report(band, request, ratio) for band in appraisal.bands),
+        bands=tuple(
+            _band_report(band, request, ratio, picture)
+            for band, picture in zip(appraisal.bands, pictures, strict=True)
+        ),
         resonances=tuple(
             ResonanceLine(
                 order=each.order,
@@ -199,7 +207,9 @@ def _band_outcome(
     return outcome.model_copy(update={"reason": reason})
 
 
-def _band_report(band: BandAppraisal, request: DesignRequest, ratio: float) -> BandReport:
+def _band_report(
+    band: BandAppraisal, request: DesignRequest, ratio: float, picture: BandPicture
+) -> BandReport:
     reference_ohm = request.feed.reference_ohm
     low, centre, high = _points(band.marks, reference_ohm)
     at_feed = complex(band.marks.impedance_ohm[1])
@@ -216,6 +226,8 @@ def _band_report(band: BandAppraisal, request: DesignRequest, ratio: float) -> B
             current_rms_a=_rounded(current_a, 3),
         ),
         matching=_matching(band, ratio, request),
+        current=picture.current,
+        radiation=picture.radiation,
     )
 
 
@@ -269,15 +281,16 @@ def _part(component: Component, place: Literal["series", "shunt"]) -> tuple[Matc
 
 def _points(curve: Curve, reference_ohm: float) -> tuple[ReportPoint, ...]:
     fed = curve.fed
-    reflection = np.abs(reflection_coefficient(fed.behind_ohm, reference_ohm))
+    reflection = reflection_coefficient(fed.behind_ohm, reference_ohm)
     far, loss_db = fed.transmitter_swr, fed.line_loss_db
     return tuple(
         ReportPoint(
             frequency_mhz=_rounded(curve.frequency_hz[index] / 1e6, 6),
             resistance_ohm=_rounded(curve.impedance_ohm[index].real, 3),
             reactance_ohm=_rounded(curve.impedance_ohm[index].imag, 3),
-            reflection=_rounded(reflection[index], 5),
+            reflection=_rounded(abs(reflection[index]), 5),
             swr=_rounded(fed.swr[index], 4),
+            reflection_deg=_rounded(math.degrees(cmath.phase(reflection[index])), 2),
             transmitter_swr=None if far is None else _rounded(far[index], 4),
             line_loss_db=None if loss_db is None else _rounded(loss_db[index], 3),
         )

@@ -17,12 +17,14 @@ from worker.engine.field.intensity import (
     radiation_intensity,
 )
 from worker.engine.field.lobe import Lobe, Pattern, lobes, pattern
+from worker.engine.field.principal import PrincipalPattern, principal_pattern
 
 __all__ = [
     "Cut",
     "Lobe",
     "Pattern",
     "PowerBudget",
+    "PrincipalPattern",
     "RadiatedPower",
     "RadiatingWire",
     "RadiationVector",
@@ -34,6 +36,7 @@ __all__ = [
     "lobes",
     "pattern",
     "power_budget",
+    "principal_pattern",
     "radiated_power",
     "radiation_intensity",
 ]

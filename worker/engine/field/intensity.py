@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 from math import ceil, pi
 from typing import Final
 
@@ -143,10 +144,22 @@ def radiated_power(wire: RadiatingWire) -> RadiatedPower:
     wire and height.
     """
     moment = wire.moment()
-    nodes = 40 + ceil(1.2 * (wire.half_length_rad + 2.0 * wire.height_rad))
+    nodes = _nodes(wire)
     power, directions = _integrated(wire, moment, nodes)
     coarse, _ = _integrated(wire, moment, ceil(0.7 * nodes))
     return RadiatedPower(power, abs(power - coarse), directions)
+
+
+def power_of_moment(wire: RadiatingWire, moment: RadiationVector) -> float:
+    """Power radiated in W, as :func:`radiated_power`, from a known current moment, unchecked.
+
+    On the nodes that there serve to check: within 1e-4 of it.
+    """
+    return _integrated(wire, moment, ceil(0.7 * _nodes(wire)))[0]
+
+
+def _nodes(wire: RadiatingWire) -> int:
+    return 40 + ceil(1.2 * (wire.half_length_rad + 2.0 * wire.height_rad))
 
 
 def towards(
@@ -211,9 +224,14 @@ def fresnel(ground: Ground, frequency_hz: float, rise: Real) -> tuple[Complex, C
     return (root - eps * sine) / (root + eps * sine), (sine - root) / (sine + root)
 
 
+@cache
+def _gauss_rule(nodes: int) -> tuple[Real, Real]:
+    return np.polynomial.legendre.leggauss(nodes)
+
+
 def _integrated(wire: RadiatingWire, moment: RadiationVector, nodes: int) -> tuple[float, int]:
     """Integrate the intensity over the sphere or the sky; return it and the directions used."""
-    x, w = np.polynomial.legendre.leggauss(nodes)
+    x, w = _gauss_rule(nodes)
     polar = 0.5 * pi * (x + 1.0)
     along, across = np.cos(polar), np.sin(polar)
     squared = np.abs(_strength_ohm_per_m(wire) * moment(along)) ** 2

@@ -8,7 +8,7 @@ to be seen only where the feed is at an anti-resonance. `wire.current` has it.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -135,11 +135,10 @@ def _wave(solved: Solved, index: int, places: int) -> StandingWave:
 
 
 def _one_of(mesh: Discretisation, index: int) -> Discretisation:
-    one = slice(index, index + 1)
-    return replace(
-        mesh,
-        breaks_m=mesh.breaks_m[one],
-        radius_m=mesh.radius_m[one],
-        wavenumber_per_m=mesh.wavenumber_per_m[one],
-        wire_impedance_ohm_per_m=mesh.wire_impedance_ohm_per_m[one],
-    )
+    """One wire of a mesh: all of its arrays start with the wire."""
+    rows = {
+        each.name: getattr(mesh, each.name)[index : index + 1]
+        for each in fields(mesh)
+        if isinstance(getattr(mesh, each.name), np.ndarray)
+    }
+    return replace(mesh, **rows)
