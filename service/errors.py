@@ -5,6 +5,7 @@
     SpanwrightError
     ├── RequestRefused        one or more faults in what was sent
     ├── DesignNotFound        no design has that identifier
+    ├── BatchNotFound         no batch of this owner has that identifier
     ├── CandidateNotFound     the design has no candidate of that rank
     ├── ResultNotReady        the design is not done, or ended without a result
     ├── KeyReused             one idempotency key, two different requests
@@ -69,10 +70,13 @@ class RequestRefused(SpanwrightError):
     code = "request-refused"
     title = "The request was refused"
 
-    def __init__(self, faults: Sequence[Fault]) -> None:
-        count = len(faults)
+    def __init__(self, faults: Sequence[Fault], untold: int = 0) -> None:
+        count = len(faults) + untold
         plural = "s" if count > 1 else ""
-        super().__init__(f"{count} fault{plural}: " + "; ".join(map(str, faults)), faults)
+        more = f"; and {untold} more, which are not told one by one" if untold else ""
+        told = "; ".join(map(str, faults))
+        super().__init__(f"{count} fault{plural}: {told}{more}", faults)
+        self.untold = untold
 
 
 class DesignNotFound(SpanwrightError):
@@ -90,6 +94,23 @@ class DesignNotFound(SpanwrightError):
             self.code,
         )
         super().__init__(f"No design has the identifier {design_id[:64]!r}.", (fault,))
+
+
+class BatchNotFound(SpanwrightError):
+    """No stored batch of this owner has that identifier."""
+
+    code = "batch-not-found"
+    title = "No such batch"
+
+    def __init__(self, batch_id: str) -> None:
+        fault = Fault(
+            "batch_id",
+            batch_id[:64],
+            "no batch has this identifier.",
+            "Look it up in the list of batches.",
+            self.code,
+        )
+        super().__init__(f"No batch has the identifier {batch_id[:64]!r}.", (fault,))
 
 
 class CandidateNotFound(SpanwrightError):

@@ -2,17 +2,31 @@
 
 from __future__ import annotations
 
+from typing import Final
+
+from service.contracts.batch import BatchRequest
+from service.contracts.progress import LOCAL_OWNER, Priority
 from service.contracts.request import DesignRequest
 from service.doorbell import Doorbell
-from service.store import designs
+from service.store import batches, designs
 from service.store.designs import Submitted
 from service.store.session import Store
 
-__all__ = ["Submitted", "submit"]
+__all__ = ["Submitted", "submit", "submit_batch"]
+
+#: Rings for one batch: enough to wake the idle, who ring on while work waits.
+_MOST_RINGS: Final = 16
 
 
 def submit(
-    store: Store, doorbell: Doorbell, request: DesignRequest, idempotency_key: str | None
+    store: Store,
+    doorbell: Doorbell,
+    request: DesignRequest,
+    idempotency_key: str | None,
+    *,
+    owner: str = LOCAL_OWNER,
+    priority: Priority = "ordinary",
+    recompute: bool = False,
 ) -> Submitted:
     """Accept a request and tell the workers.
 
@@ -21,11 +35,42 @@ def submit(
     Raises
     ------
     KeyReused
-        If the key belongs to a different request.
+        If the key belongs to a different request of the owner.
     StoreUnavailable
         If the database stays away; with a key it is safe to send again.
     """
-    submitted = designs.submit(store, request, idempotency_key=idempotency_key)
+    submitted = designs.submit(
+        store,
+        request,
+        idempotency_key=idempotency_key,
+        owner=owner,
+        priority=priority,
+        recompute=recompute,
+    )
     if submitted.created:
         doorbell.ring()
+    return submitted
+
+
+def submit_batch(
+    store: Store,
+    doorbell: Doorbell,
+    request: BatchRequest,
+    idempotency_key: str | None,
+    *,
+    owner: str = LOCAL_OWNER,
+) -> batches.Submitted:
+    """Accept a batch whole and tell the workers; what `submit` says holds for all of it.
+
+    Raises
+    ------
+    KeyReused
+        If the key belongs to a different batch of the owner.
+    StoreUnavailable
+        If the database stays away; with a key it is safe to send again.
+    """
+    submitted = batches.submit(store, request, idempotency_key=idempotency_key, owner=owner)
+    if submitted.created:
+        for _ in range(min(len(request.designs), _MOST_RINGS)):
+            doorbell.ring()
     return submitted

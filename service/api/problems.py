@@ -24,6 +24,7 @@ from starlette.types import Scope
 
 from service.contracts.refusals import refusal_of
 from service.errors import (
+    BatchNotFound,
     CandidateNotFound,
     DesignNotFound,
     Fault,
@@ -101,6 +102,7 @@ class Unexpected(SpanwrightError):
 STATUSES: Final[Mapping[type[SpanwrightError], HTTPStatus]] = {
     RequestRefused: HTTPStatus.UNPROCESSABLE_ENTITY,
     DesignNotFound: HTTPStatus.NOT_FOUND,
+    BatchNotFound: HTTPStatus.NOT_FOUND,
     CandidateNotFound: HTTPStatus.NOT_FOUND,
     PathUnknown: HTTPStatus.NOT_FOUND,
     MethodRefused: HTTPStatus.METHOD_NOT_ALLOWED,

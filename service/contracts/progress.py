@@ -1,9 +1,9 @@
-"""Where a design stands: its state, its progress and its times."""
+"""Where a design stands: its state, its place in the order, its progress and its times."""
 
 from __future__ import annotations
 
 from datetime import datetime
-from typing import Annotated, Literal
+from typing import Annotated, Final, Literal
 
 from pydantic import Field
 
@@ -12,6 +12,12 @@ from service.contracts.quantities import Contract
 from service.contracts.request import DesignRequest
 
 State = Literal["queued", "running", "done", "failed", "cancelled"]
+
+#: How soon a design is wanted: urgent before ordinary, and when-idle after all others.
+Priority = Literal["urgent", "ordinary", "when-idle"]
+
+#: Whose work it is where nobody said who he is.
+LOCAL_OWNER: Final = "local"
 
 
 class Progress(Contract):
@@ -22,17 +28,27 @@ class Progress(Contract):
 
 
 class DesignSummary(Contract):
-    """One line in the list of designs."""
+    """One line in the list of designs.
+
+    ``queued_at`` is when it last began to wait. ``batch_line`` is its place in its batch,
+    from 1. ``answered_by`` names the design of the same request whose stored result answers
+    this one too.
+    """
 
     id: str
     name: str
     state: State
+    priority: Priority = "ordinary"
     progress: Progress
     attempts: int
     failure: str | None
     created_at: datetime
+    queued_at: datetime
     started_at: datetime | None
     finished_at: datetime | None
+    batch_id: str | None = None
+    batch_line: int | None = None
+    answered_by: str | None = None
     bands: tuple[str, ...]
 
 

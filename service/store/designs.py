@@ -2,37 +2,30 @@
 
 from __future__ import annotations
 
-import json
-import re
 import uuid
 from dataclasses import dataclass
-from typing import Any, Final
 
-from pydantic import ValidationError
-from sqlalchemy import Row, Select, and_, func, or_, select
+from sqlalchemy import Select, and_, func, or_, select
 from sqlalchemy.exc import IntegrityError
 from sqlalchemy.orm import Session
 
-from service.contracts.candidate import Candidate, DesignResult
-from service.contracts.progress import Design, DesignSummary, Progress
-from service.contracts.refusals import faults_of
+from service.contracts.candidate import Candidate
+from service.contracts.progress import LOCAL_OWNER, Design, DesignSummary, Priority
 from service.contracts.report import FeedReport
 from service.contracts.request import DesignRequest
-from service.errors import (
-    CandidateNotFound,
-    DesignNotFound,
-    KeyReused,
-    ResultNotReady,
-    SchemaMismatch,
-)
+from service.errors import CandidateNotFound, DesignNotFound, KeyReused, ResultNotReady
+from service.store import answers, order, workers
 from service.store.clock import now
+from service.store.order import PRIORITIES
+from service.store.reading import (
+    read_request,
+    read_result,
+    refuse_malformed,
+    summary_fields,
+    summary_of,
+)
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
-
-#: The priority of ordinary work; smaller comes first.
-ORDINARY: Final = 100
-
-_IDENTIFIER: Final = re.compile(r"[0-9a-f]{32}")
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,53 +44,80 @@ class DesignPage:
     next_before: str | None
 
 
-def submit(store: Store, request: DesignRequest, *, idempotency_key: str | None) -> Submitted:
+def submit(
+    store: Store,
+    request: DesignRequest,
+    *,
+    idempotency_key: str | None,
+    owner: str = LOCAL_OWNER,
+    priority: Priority = "ordinary",
+    recompute: bool = False,
+) -> Submitted:
     """Accept a request: the design and its queued job, in one transaction.
+
+    Where the result of an identical request is stored, of the engine that works today, the
+    design is done at once.
 
     Parameters
     ----------
     store : Store
     request : DesignRequest
     idempotency_key : str or None
-        With a key the same request is accepted once however often it is sent.
+        With a key the same request of an owner is accepted once however often it is sent.
+    owner : str
+    priority : Priority
+    recompute : bool
+        Plan anew even where a stored result would answer.
 
     Raises
     ------
     KeyReused
-        If the key belongs to a different request.
+        If the owner used the key for a different request.
     StoreUnavailable
         If the database stays away; with a key it is safe to send again.
     """
     # Drawn outside the transaction: run again after a commit whose answer was lost, it then
     # finds its own row.
     design_id = uuid.uuid4().hex
+    # Written out before the transaction, which holds up every other writer of SQLite.
+    content, content_hash = request.canonical_json(), request.content_hash()
 
     def work(session: Session) -> Submitted:
-        earlier = _earlier(session, design_id, idempotency_key)
+        earlier = _earlier(session, design_id, owner, idempotency_key)
         if earlier is not None:
-            return _same(earlier, request, idempotency_key, design_id)
+            return _same(earlier, content_hash, idempotency_key, design_id)
         moment = now(session)
-        session.add(
-            DesignRow(
-                id=design_id,
-                name=request.name,
-                request=request.canonical_json(),
-                content_hash=request.content_hash(),
-                idempotency_key=idempotency_key,
-                created_at=moment,
-            )
+        design = DesignRow(
+            id=design_id,
+            owner=owner,
+            name=request.name,
+            request=content,
+            content_hash=content_hash,
+            idempotency_key=idempotency_key,
+            recompute=recompute,
+            created_at=moment,
         )
+        session.add(design)
         session.flush()
-        session.add(
-            JobRow(
-                design_id=design_id,
-                state="queued",
-                priority=ORDINARY,
-                position=int(moment.timestamp() * 1e6),
-                cancel_wanted=False,
-            )
+        place = order.place_for(session, owner, PRIORITIES[priority])
+        job = JobRow(
+            design_id=design_id,
+            owner=owner,
+            state="queued",
+            priority=place.priority,
+            position=place.single(),
+            queued_at=moment,
+            fence=0,
+            cancel_wanted=False,
         )
+        session.add(job)
+        version = None if recompute else workers.engine_version(session)
+        stored = version and answers.stored_answer(session, content_hash, version)
+        if stored:
+            answers.answer(job, design, stored, moment)
+            return Submitted(design_id, created=True)
         session.flush()
+        order.enter(session, place, single_at=job.position)
         return Submitted(design_id, created=True)
 
     try:
@@ -121,7 +141,7 @@ def get(store: Store, design_id: str) -> Design:
         found = session.execute(
             select(DesignRow, JobRow, ResultRow.result)
             .join(JobRow, JobRow.design_id == DesignRow.id)
-            .outerjoin(ResultRow, ResultRow.design_id == DesignRow.id)
+            .outerjoin(ResultRow, ResultRow.design_id == answers.SOURCE)
             .where(DesignRow.id == design_id)
         ).one_or_none()
         if found is None:
@@ -130,15 +150,15 @@ def get(store: Store, design_id: str) -> Design:
         # Outer-joined, so None until the design is done.
         result: str | None = stored
         return Design(
-            **_summary_fields(design, job),
-            request=read_request(design),
-            result=None if result is None else _read_result(design_id, result),
+            **summary_fields(design, job),
+            request=read_request(design_id, design.request),
+            result=None if result is None else read_result(design_id, result),
         )
 
     return store.read(work)
 
 
-def page(store: Store, *, limit: int, before: str | None) -> DesignPage:
+def page(store: Store, *, limit: int, before: str | None, owner: str | None = None) -> DesignPage:
     """Designs newest first.
 
     Parameters
@@ -148,6 +168,8 @@ def page(store: Store, *, limit: int, before: str | None) -> DesignPage:
         How many at the most.
     before : str or None
         Identifier of a design: the page starts after it.
+    owner : str, optional
+        Only his; by default everybody's.
 
     Raises
     ------
@@ -164,10 +186,12 @@ def page(store: Store, *, limit: int, before: str | None) -> DesignPage:
             .order_by(DesignRow.created_at.desc(), DesignRow.id.desc())
             .limit(limit + 1)
         )
+        if owner is not None:
+            query = query.where(DesignRow.owner == owner)
         if before is not None:
             query = _older_than(session, query, before)
         rows = session.execute(query).all()
-        designs = tuple(_summary(row) for row in rows[:limit])
+        designs = tuple(summary_of(row) for row in rows[:limit])
         more = len(rows) > limit
         return DesignPage(designs, designs[-1].id if more else None)
 
@@ -200,8 +224,10 @@ def report(store: Store, design_id: str, rank: int) -> FeedReport:
     refuse_malformed(design_id)
 
     def work(session: Session) -> str | None:
-        query = select(ReportRow.report).where(
-            ReportRow.design_id == design_id, ReportRow.rank == rank
+        query = (
+            select(ReportRow.report)
+            .join(DesignRow, ReportRow.design_id == answers.SOURCE)
+            .where(DesignRow.id == design_id, ReportRow.rank == rank)
         )
         return session.scalars(query).one_or_none()
 
@@ -217,53 +243,15 @@ def count(store: Store) -> int:
     return store.read(lambda session: session.scalar(select(func.count(DesignRow.id))) or 0)
 
 
-def refuse_malformed(design_id: str) -> None:
-    """Refuse what cannot be an identifier before any database has to make sense of it.
-
-    Raises
-    ------
-    DesignNotFound
-    """
-    if _IDENTIFIER.fullmatch(design_id) is None:
-        raise DesignNotFound(design_id)
-
-
-def read_request(design: DesignRow) -> DesignRequest:
-    """The request of a stored design.
-
-    Raises
-    ------
-    SchemaMismatch
-        If it was accepted by a release with another contract.
-    """
-    try:
-        return DesignRequest.model_validate_json(design.request)
-    except ValidationError as error:
-        raise SchemaMismatch(
-            f"The request of design {design.id} was accepted by another release and breaks the "
-            f"contract of this one ({faults_of(error)[0]}) Submit it again in today's form."
-        ) from error
-
-
-def _read_result(design_id: str, result: str) -> DesignResult:
-    try:
-        return DesignResult.model_validate_json(result)
-    except ValidationError as error:
-        raise SchemaMismatch(
-            f"The result of design {design_id} was stored by another release and cannot be read "
-            "by this one. Submit the request again."
-        ) from error
-
-
-def _earlier(session: Session, design_id: str, key: str | None) -> DesignRow | None:
+def _earlier(session: Session, design_id: str, owner: str, key: str | None) -> DesignRow | None:
     same = DesignRow.id == design_id
     if key is not None:
-        same = or_(same, DesignRow.idempotency_key == key)
+        same = or_(same, and_(DesignRow.owner == owner, DesignRow.idempotency_key == key))
     return session.scalars(select(DesignRow).where(same)).one_or_none()
 
 
-def _same(earlier: DesignRow, request: DesignRequest, key: str | None, own_id: str) -> Submitted:
-    if earlier.content_hash != request.content_hash():
+def _same(earlier: DesignRow, content_hash: str, key: str | None, own_id: str) -> Submitted:
+    if earlier.content_hash != content_hash:
         raise KeyReused(key or "")
     return Submitted(earlier.id, created=earlier.id == own_id)
 
@@ -280,22 +268,3 @@ def _older_than(
             and_(DesignRow.created_at == moment, DesignRow.id < before),
         )
     )
-
-
-def _summary(row: Row[DesignRow, JobRow]) -> DesignSummary:
-    return DesignSummary(**_summary_fields(row[0], row[1]))
-
-
-def _summary_fields(design: DesignRow, job: JobRow) -> dict[str, Any]:
-    return {
-        "id": design.id,
-        "name": design.name,
-        "state": job.state,
-        "progress": Progress(fraction=job.progress, step=job.step),
-        "attempts": job.attempts,
-        "failure": job.failure,
-        "created_at": design.created_at,
-        "started_at": job.started_at,
-        "finished_at": job.finished_at,
-        "bands": tuple(band["name"] for band in json.loads(design.request)["bands"]),
-    }

@@ -1,6 +1,6 @@
 """The queue of record: who works on what, until when, and what came of it.
 
-Only here do jobs change state::
+Jobs change state only here, in `losses` and in `batches`::
 
     queued ──claim──▶ running ──finish──▶ done
       ▲ │                │ │ └──fail────▶ failed
@@ -13,49 +13,55 @@ heard of. A worker writes under the fence it was given: what arrives late change
 
 from __future__ import annotations
 
-from collections import Counter
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
-from datetime import datetime, timedelta
+from datetime import timedelta
 from enum import Enum
-from typing import Any, Final
+from typing import Final
 
-from sqlalchemy import ColumnElement, Select, func, select, update
-from sqlalchemy.engine import CursorResult
+from sqlalchemy import func, insert, select
 from sqlalchemy.orm import Session
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
-from service.contracts.request import DesignRequest
 from service.errors import DesignNotFound, SchemaMismatch
+from service.store import answers, order, workers
 from service.store.clock import now
-from service.store.designs import read_request, refuse_malformed
+from service.store.endings import (
+    ClaimedJob,
+    cancel_held,
+    cancel_locked,
+    change_held,
+    ended_by,
+    fail_held,
+    give_back,
+    held,
+)
+from service.store.losses import Swept, bury, sweep
+from service.store.reading import read_request, refuse_malformed
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
 
-_LONGEST_FAILURE: Final = 500
+__all__ = [
+    "Beat",
+    "ClaimedJob",
+    "Swept",
+    "any_queued",
+    "bury",
+    "cancel",
+    "claim",
+    "depth",
+    "fail",
+    "finish",
+    "heartbeat",
+    "release",
+    "stop_cancelled",
+    "sweep",
+]
+
 _LONGEST_STEP: Final = 200
-
-#: The next job in order, with its design, locked for the one who asks.
-_NEXT: Final = (
-    select(JobRow, DesignRow)
-    .join(DesignRow, DesignRow.id == JobRow.design_id)
-    .where(JobRow.state == "queued", JobRow.cancel_wanted.is_(False))
-    .order_by(JobRow.priority, JobRow.position, JobRow.design_id)
-    .limit(1)
-    .with_for_update(of=JobRow, skip_locked=True)
-)
-
-
-@dataclass(frozen=True, slots=True)
-class ClaimedJob:
-    """A job a worker has taken, and the fence it must write under."""
-
-    design_id: str
-    request: DesignRequest
-    fence: int
-    attempt: int
-    worker: str
+#: Jobs answered by stored results in one claiming transaction, so that it stays short.
+_MOST_ANSWERED: Final = 100
 
 
 class Beat(Enum):
@@ -67,25 +73,33 @@ class Beat(Enum):
 
 
 @dataclass(frozen=True, slots=True)
-class Swept:
-    """What a sweep put right: jobs given back to the queue, set aside, and cancelled."""
+class _Taken:
+    """What a claiming transaction took, its request not yet read."""
 
-    returned: int
-    set_aside: int
-    cancelled: int
+    design_id: str
+    request: str
+    fence: int
+    attempt: int
+
+
+class _NothingTaken(Enum):
+    NONE_WAITS = "none waits"
+    MORE_TO_LOOK_AT = "more to look at"
 
 
 def any_queued(store: Store) -> bool:
-    """Whether a job waits; a reading, so that an idle worker does not hold up writers."""
-    query = select(JobRow.design_id).where(JobRow.state == "queued").limit(1)
+    """Whether a job could be claimed; a reading, so that the idle do not hold up writers."""
+    query = select(JobRow.design_id).where(order.CLAIMABLE).limit(1)
     return store.read(lambda session: session.scalar(query) is not None)
 
 
-def claim(store: Store, worker: str, lease_s: float) -> ClaimedJob | None:
-    """Take the next job in order, or None if none waits.
+def claim(
+    store: Store, worker: str, lease_s: float, engine_version: str | None = None
+) -> ClaimedJob | None:
+    """Take the next job in order, or None if none is free.
 
     Two workers never take the same: PostgreSQL passes over locked rows, SQLite lets one
-    writer in at a time.
+    writer in at a time. On the way, jobs that a stored result answers are ended by it.
 
     Parameters
     ----------
@@ -94,39 +108,58 @@ def claim(store: Store, worker: str, lease_s: float) -> ClaimedJob | None:
         Name of the worker, for the record.
     lease_s : float
         The worker loses the job if it is not heard of for so long.
+    engine_version : str, optional
+        Version of the worker's engine: only results of the same answer for it. None where it
+        has no engine of its own; nothing is answered then.
     """
 
-    def work(session: Session) -> ClaimedJob | None:
-        while (found := session.execute(_NEXT).one_or_none()) is not None:
-            job, design = found
-            moment = now(session)
-            try:
-                request = read_request(design)
-            except SchemaMismatch as error:
-                # It would be found unreadable by every worker, and hold up the queue for ever.
-                _set_aside(job, moment, error.detail)
-                session.flush()
-                continue
-            job.state = "running"
+    def work(session: Session) -> _Taken | _NothingTaken:
+        moment = now(session)
+        for _ in range(_MOST_ANSWERED):
+            found = order.next_job(session, moment)
+            if found is None:
+                return _NothingTaken.NONE_WAITS
+            job, design = found.job, found.design
+            if engine_version is not None and not design.recompute:
+                stored = answers.stored_answer(session, design.content_hash, engine_version)
+                if stored is not None:
+                    answers.answer(job, design, stored, moment)
+                    session.flush()
+                    answers.share_result(session, design.id, moment, stored)
+                    continue
+            job.state, job.worker = "running", worker
             job.fence += 1
             job.attempts += 1
-            job.worker = worker
             job.lease_until = moment + timedelta(seconds=lease_s)
             job.started_at = job.started_at or moment
             job.progress, job.step = 0.0, "taken up by a worker"
-            return ClaimedJob(job.design_id, request, job.fence, job.attempts, worker)
-        return None
+            session.flush()
+            workers.claimed(session, worker, moment)
+            order.charge(session, found)
+            return _Taken(design.id, design.request, job.fence, job.attempts)
+        return _NothingTaken.MORE_TO_LOOK_AT
 
-    return store.write(work)
+    while (taken := store.write(work)) is not _NothingTaken.NONE_WAITS:
+        if isinstance(taken, _NothingTaken):
+            continue
+        try:
+            request = read_request(taken.design_id, taken.request)
+        except SchemaMismatch as error:
+            # Every worker would find it unreadable, and it would hold up the queue for ever.
+            _fail(store, taken.design_id, taken.fence, error.detail)
+            continue
+        return ClaimedJob(taken.design_id, request, taken.fence, taken.attempt, worker)
+    return None
 
 
 def heartbeat(store: Store, job: ClaimedJob, progress: Progress, lease_s: float) -> Beat:
     """Renew the lease of a job, store its progress, and learn whether to go on."""
 
     def work(session: Session) -> Beat:
-        renewed = _change(
+        renewed = change_held(
             session,
-            job,
+            job.design_id,
+            job.fence,
             {
                 "lease_until": now(session) + timedelta(seconds=lease_s),
                 "progress": progress.fraction,
@@ -136,7 +169,7 @@ def heartbeat(store: Store, job: ClaimedJob, progress: Progress, lease_s: float)
         )
         if renewed:
             return Beat.RENEWED
-        still_mine = session.scalar(select(JobRow.design_id).where(*_held(job)))
+        still_mine = session.scalar(select(JobRow.design_id).where(*held(job.design_id, job.fence)))
         return Beat.LOST if still_mine is None else Beat.CANCELLED
 
     return store.write(work)
@@ -154,34 +187,30 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
     """
     # Written out before the transaction, which holds up every other writer of SQLite.
     result = planned.result.model_dump_json()
-    reports = [(each.rank, each.model_dump_json()) for each in planned.reports]
+    reports = [
+        {"design_id": job.design_id, "rank": each.rank, "report": each.model_dump_json()}
+        for each in planned.reports
+    ]
+    content_hash = select(DesignRow.content_hash).where(DesignRow.id == job.design_id)
 
     def work(session: Session) -> bool:
         moment = now(session)
-        done = _change(
-            session,
-            job,
-            {
-                "state": "done",
-                "finished_at": moment,
-                "lease_until": None,
-                "progress": 1.0,
-                "step": "done",
-            },
-        )
-        if not done:
-            return _ended_by(session, job, "done")
-        session.add(
-            ResultRow(
+        values = {"state": "done", "finished_at": moment, "progress": 1.0, "step": "done"}
+        if not change_held(session, job.design_id, job.fence, values | {"lease_until": None}):
+            return ended_by(session, job.design_id, job.fence, "done")
+        session.execute(
+            insert(ResultRow).values(
                 design_id=job.design_id,
+                content_hash=content_hash.scalar_subquery(),
                 engine_version=planned.result.engine_version,
+                map_error_percent=planned.result.map_error_percent,
                 result=result,
                 created_at=moment,
             )
         )
-        session.add_all(
-            ReportRow(design_id=job.design_id, rank=rank, report=report) for rank, report in reports
-        )
+        if reports:
+            session.execute(insert(ReportRow), reports)
+        answers.share_result(session, job.design_id, moment)
         return True
 
     return store.write(work)
@@ -189,23 +218,24 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
 
 def fail(store: Store, job: ClaimedJob, reason: str) -> bool:
     """End a job that cannot succeed, with its reason in words; False if it was taken away."""
-    return store.write(lambda session: _end(session, job, "failed", reason))
+    return _fail(store, job.design_id, job.fence, reason)
 
 
 def stop_cancelled(store: Store, job: ClaimedJob) -> bool:
     """End a job whose cancelling its worker has seen; False if it was taken away."""
-    return store.write(lambda session: _end(session, job, "cancelled", None))
+    return store.write(lambda session: cancel_held(session, job.design_id, job.fence))
 
 
 def release(store: Store, job: ClaimedJob) -> bool:
     """Give a job back unharmed, as a worker does that is asked to stop; it costs no attempt."""
 
     def work(session: Session) -> bool:
-        held = session.scalars(select(JobRow).where(*_held(job)).with_for_update()).one_or_none()
-        if held is None:
+        mine = select(JobRow).where(*held(job.design_id, job.fence)).with_for_update()
+        row = session.scalars(mine).one_or_none()
+        if row is None:
             return False
-        held.attempts -= 1
-        _give_back(held, now(session), "waiting again: its worker was stopped")
+        row.attempts -= 1
+        give_back(session, row, now(session), "waiting again: its worker was stopped")
         return True
 
     return store.write(work)
@@ -226,31 +256,11 @@ def cancel(store: Store, design_id: str) -> None:
         if job is None:
             raise DesignNotFound(design_id)
         if job.state == "queued":
-            job.state, job.finished_at, job.step = "cancelled", now(session), "cancelled"
+            cancel_locked(session, job, now(session))
         elif job.state == "running":
             job.cancel_wanted = True
 
     store.write(work)
-
-
-def sweep(store: Store, max_attempts: int) -> Swept:
-    """Put right what lost workers left: their jobs wait again, or are set aside.
-
-    Idempotent, so any process may do it at any time and no one need lead.
-    """
-
-    def expired(moment: datetime) -> ColumnElement[bool]:
-        return JobRow.lease_until < moment
-
-    return _take_away(store, expired, max_attempts)
-
-
-def bury(store: Store, worker: str, max_attempts: int) -> Swept:
-    """Take away what a worker held that is known to be dead, without awaiting its lease.
-
-    Only for whoever has seen the process end, and names workers so that none shares a name.
-    """
-    return _take_away(store, lambda _: JobRow.worker == worker, max_attempts)
 
 
 def depth(store: Store) -> Mapping[str, int]:
@@ -263,86 +273,5 @@ def depth(store: Store) -> Mapping[str, int]:
     return store.read(work)
 
 
-def _take_away(
-    store: Store, whose: Callable[[datetime], ColumnElement[bool]], max_attempts: int
-) -> Swept:
-    """Take running jobs away from their workers, who can no longer write: the fence rises."""
-
-    def query(session: Session) -> Select[JobRow]:
-        return select(JobRow).where(JobRow.state == "running", whose(now(session)))
-
-    # A reading first, so that a sweep that finds nothing does not hold up writers.
-    if store.read(lambda session: session.scalar(query(session).limit(1))) is None:
-        return Swept(0, 0, 0)
-
-    def work(session: Session) -> Swept:
-        done: Counter[str] = Counter()
-        for job in session.scalars(query(session).with_for_update(skip_locked=True)).all():
-            if job.attempts >= max_attempts and not job.cancel_wanted:
-                _set_aside(job, now(session), _lost_too_often(job))
-            else:
-                _give_back(job, now(session), "waiting again: its worker was lost")
-            done[job.state] += 1
-        return Swept(done["queued"], done["failed"], done["cancelled"])
-
-    return store.write(work)
-
-
-def _lost_too_often(job: JobRow) -> str:
-    times = "once" if job.attempts == 1 else f"{job.attempts} times"
-    return (
-        f"The worker was lost {times} while planning this design (last: {job.worker}). It was "
-        "set aside; the worker's log tells more. Try a smaller request."
-    )
-
-
-def _give_back(job: JobRow, moment: datetime, step: str) -> None:
-    """Let a job wait again, or end it if it was cancelled meanwhile."""
-    job.fence += 1
-    job.lease_until = None
-    if job.cancel_wanted:
-        job.state, job.finished_at, job.step = "cancelled", moment, "cancelled"
-    else:
-        job.state, job.progress, job.step = "queued", 0.0, step
-
-
-def _set_aside(job: JobRow, moment: datetime, reason: str) -> None:
-    job.fence += 1
-    job.lease_until = None
-    job.state, job.finished_at, job.step = "failed", moment, "set aside"
-    job.failure = reason[:_LONGEST_FAILURE]
-
-
-def _held(job: ClaimedJob) -> tuple[ColumnElement[bool], ...]:
-    return (
-        JobRow.design_id == job.design_id,
-        JobRow.fence == job.fence,
-        JobRow.state == "running",
-    )
-
-
-def _change(
-    session: Session, job: ClaimedJob, values: Mapping[str, Any], *also: ColumnElement[bool]
-) -> bool:
-    """Change a job under its fence; False if it is no longer the worker's."""
-    changed = session.execute(update(JobRow).where(*_held(job), *also).values(**values))
-    return isinstance(changed, CursorResult) and changed.rowcount == 1
-
-
-def _end(session: Session, job: ClaimedJob, state: str, reason: str | None) -> bool:
-    values = {
-        "state": state,
-        "failure": None if reason is None else reason[:_LONGEST_FAILURE],
-        "finished_at": now(session),
-        "lease_until": None,
-        "step": state,
-    }
-    return _change(session, job, values) or _ended_by(session, job, state)
-
-
-def _ended_by(session: Session, job: ClaimedJob, state: str) -> bool:
-    """Whether the job was ended by this very claim: a commit whose answer was lost."""
-    query = select(JobRow.design_id).where(
-        JobRow.design_id == job.design_id, JobRow.fence == job.fence, JobRow.state == state
-    )
-    return session.scalar(query) is not None
+def _fail(store: Store, design_id: str, fence: int, reason: str) -> bool:
+    return store.write(lambda session: fail_held(session, design_id, fence, reason))

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Final
 
@@ -38,22 +40,57 @@ def upgrade(engine: Engine, revision: str = "head") -> None:
         with engine.connect().execution_options(**{WRITES: False}) as connection:
             if revision == "head" and _current(connection) == scripts().get_current_head():
                 return
-        with engine.connect() as connection, connection.begin():
-            _alone(connection)
+        with _migrating(engine) as connection:
             _refuse_unknown(connection)
             command.upgrade(_config(connection), revision)
 
 
 def downgrade(engine: Engine, revision: str) -> None:
     """Take a database back to an earlier revision, or to ``base``, which is empty."""
-    with _one_at_a_time, engine.connect() as connection, connection.begin():
-        _alone(connection)
+    with _one_at_a_time, _migrating(engine) as connection:
         command.downgrade(_config(connection), revision)
 
 
 def scripts() -> ScriptDirectory:
     """The migrations of this release."""
     return ScriptDirectory.from_config(_config(None))
+
+
+@contextmanager
+def _migrating(engine: Engine) -> Iterator[Connection]:
+    """A transaction to migrate in, alone; on SQLite with foreign keys looked at at its end.
+
+    SQLite alters a table by making another in its place, and would take the rows that refer to
+    the old one for orphans.
+    """
+    with engine.connect() as connection:
+        _enforce_foreign_keys(connection, enforced=False)
+        try:
+            with connection.begin():
+                _alone(connection)
+                yield connection
+                _refuse_orphans(connection)
+        finally:
+            _enforce_foreign_keys(connection, enforced=True)
+
+
+def _enforce_foreign_keys(connection: Connection, *, enforced: bool) -> None:
+    if connection.dialect.name == "sqlite" and not connection.invalidated:
+        # Past SQLAlchemy, for inside a transaction it has no effect.
+        cursor = connection.connection.cursor()
+        cursor.execute(f"PRAGMA foreign_keys = {'ON' if enforced else 'OFF'}")
+        cursor.close()
+
+
+def _refuse_orphans(connection: Connection) -> None:
+    if connection.dialect.name != "sqlite":
+        return
+    orphans = connection.exec_driver_sql("PRAGMA foreign_key_check").all()
+    if orphans:
+        raise SchemaMismatch(
+            f"The migration would leave {len(orphans)} rows without what they refer to, the first "
+            f"in the table {orphans[0][0]}. Nothing was changed; restore a backup."
+        )
 
 
 def _alone(connection: Connection) -> None:

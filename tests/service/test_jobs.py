@@ -18,7 +18,7 @@ from sqlalchemy.orm import Session
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
 from service.settings import Settings
-from service.store import designs, jobs
+from service.store import designs, jobs, order
 from service.store.jobs import Beat, ClaimedJob, Swept
 from service.store.session import Store, open_store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
@@ -140,8 +140,9 @@ def test_a_claimer_passes_over_the_job_another_is_just_claiming(
     claiming, claimed_meanwhile = threading.Event(), threading.Event()
 
     def claim_slowly(session: Session) -> bool:
-        job, _ = session.execute(jobs._NEXT).one()
-        assert job.design_id == first
+        found = order.next_job(session, datetime.now(UTC))
+        assert found is not None
+        assert found.job.design_id == first
         claiming.set()
         return claimed_meanwhile.wait(3.0)
 
@@ -155,9 +156,9 @@ def test_a_claimer_passes_over_the_job_another_is_just_claiming(
 
 def test_urgent_jobs_are_claimed_before_those_submitted_earlier(store: Store) -> None:
     submitted(store, "Ordinary")
-    urgent = submitted(store, "Urgent")
-    sooner = update(JobRow).where(JobRow.design_id == urgent).values(priority=designs.ORDINARY - 1)
-    store.write(lambda session: session.execute(sooner))
+    urgent = designs.submit(
+        store, sample_request(name="Urgent"), idempotency_key=None, priority="urgent"
+    ).design_id
     assert claimed(store).design_id == urgent
 
 

@@ -25,6 +25,16 @@ from service.store.tables import Base
 
 CHECKOUT = Path(__file__).parents[2]
 STARTERS = 3
+TABLES = {
+    "batches",
+    "designs",
+    "jobs",
+    "reports",
+    "results",
+    "shares",
+    "tallies",
+    "workers",
+}
 
 
 @pytest.fixture
@@ -77,7 +87,7 @@ def upgrade():
 
 def test_the_first_start_makes_the_tables(engine: Engine, empty_database_url: str) -> None:
     open_store(Settings(database_url=empty_database_url)).close()
-    assert tables(engine) == {"designs", "jobs", "results", "reports"}
+    assert tables(engine) == TABLES
 
 
 def test_the_migrations_make_exactly_the_tables_of_the_code(engine: Engine) -> None:
@@ -162,7 +172,7 @@ def test_a_database_of_a_newer_release_is_refused_and_left_alone(
         connection.execute(text("UPDATE alembic_version SET version_num = '20990101_later'"))
     with pytest.raises(SchemaMismatch, match="20990101_later"):
         open_store(Settings(database_url=empty_database_url))
-    assert tables(engine) == {"designs", "jobs", "results", "reports"}
+    assert tables(engine) == TABLES
 
 
 def test_an_installed_wheel_carries_its_migrations(tmp_path: Path) -> None:

@@ -115,8 +115,10 @@ def test_senders_with_one_key_at_the_same_moment_make_one_design(
 ) -> None:
     gate, look = threading.Barrier(2), designs._earlier
 
-    def look_at_once(session: Session, design_id: str, key: str | None) -> DesignRow | None:
-        found = look(session, design_id, key)
+    def look_at_once(
+        session: Session, design_id: str, owner: str, key: str | None
+    ) -> DesignRow | None:
+        found = look(session, design_id, owner, key)
         # Neither goes on before both have looked; SQLite lets in the second one only later.
         with suppress(threading.BrokenBarrierError):
             gate.wait(0.5)

@@ -1,0 +1,117 @@
+"""What has changed since a moment: the feed that live progress is told from.
+
+Every change of a job carries the moment it was made, by the database's clock. Transactions take
+effect in another order than that of their moments, so a reader looks back a little further than
+to the last it saw, and tells whole states: told twice they do no harm.
+"""
+
+from __future__ import annotations
+
+from datetime import datetime
+from typing import Final
+
+from sqlalchemy import func, select, tuple_
+from sqlalchemy.orm import Session
+
+from service.contracts.progress import Priority, Progress, State
+from service.contracts.quantities import Contract
+from service.store.order import word_of
+from service.store.session import Store
+from service.store.tables import DesignRow, JobRow
+
+#: How far back of the last change seen a reader looks again: longer than transactions take.
+OVERLAP_US: Final = 5_000_000
+
+
+class Change(Contract):
+    """Where a design stood after a change; ``changed_us`` is µs since 1970."""
+
+    changed_us: int
+    id: str
+    name: str
+    state: State
+    priority: Priority
+    progress: Progress
+    attempts: int
+    failure: str | None
+    started_at: datetime | None
+    finished_at: datetime | None
+    batch_id: str | None
+    batch_line: int | None
+    answered_by: str | None
+
+
+def since(
+    store: Store,
+    *,
+    owner: str | None,
+    batch_id: str | None = None,
+    design_id: str | None = None,
+    after_us: int,
+    overlap_us: int = OVERLAP_US,
+    limit: int,
+    after_id: str | None = None,
+) -> list[Change]:
+    """Changes after a moment in their order, each design as it stands now.
+
+    Parameters
+    ----------
+    store : Store
+    owner : str or None
+        Whose designs; None for everybody's.
+    batch_id, design_id : str, optional
+        Only of that batch, or that design.
+    after_us, overlap_us : int
+        Moment in µs since 1970, and how far before it to look again.
+    limit : int
+        How many at the most. If so many come, ask again with the last one's moment and id.
+    after_id : str, optional
+        Go on after this design of the moment `after_us`; nothing is looked at again then.
+    """
+    query = (
+        select(DesignRow, JobRow)
+        .join(JobRow, JobRow.design_id == DesignRow.id)
+        .order_by(JobRow.changed_at, JobRow.design_id)
+        .limit(limit)
+    )
+    if after_id is None:
+        query = query.where(JobRow.changed_at > after_us - overlap_us)
+    else:
+        query = query.where(tuple_(JobRow.changed_at, JobRow.design_id) > (after_us, after_id))
+    if owner is not None:
+        query = query.where(JobRow.owner == owner)
+    if batch_id is not None:
+        query = query.where(JobRow.batch_id == batch_id)
+    if design_id is not None:
+        query = query.where(JobRow.design_id == design_id)
+    return store.read(lambda session: [_change(row[0], row[1]) for row in session.execute(query)])
+
+
+def newest(store: Store, owner: str | None = None) -> int:
+    """Moment of the last change in µs since 1970; 0 where nothing is stored."""
+    query = select(func.max(JobRow.changed_at))
+    if owner is not None:
+        query = query.where(JobRow.owner == owner)
+
+    def work(session: Session) -> int:
+        return session.scalar(query) or 0
+
+    return store.read(work)
+
+
+def _change(design: DesignRow, job: JobRow) -> Change:
+    return Change(
+        changed_us=job.changed_at,
+        id=design.id,
+        name=design.name,
+        state=job.state,  # type: ignore[arg-type]  # the table's own check knows the states
+        priority=word_of(job.priority),
+        progress=Progress(fraction=job.progress, step=job.step),
+        attempts=job.attempts,
+        failure=job.failure,
+        started_at=job.started_at,
+        finished_at=job.finished_at,
+        batch_id=design.batch_id,
+        batch_line=design.batch_line,
+        answered_by=design.answered_by,
+    )

@@ -1,0 +1,126 @@
+"""Figures of the queue for those who watch over it: depth, waits, runs, attempts, losses."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Final
+
+from sqlalchemy import func, select, tuple_
+from sqlalchemy.orm import Session
+
+from service.contracts.progress import Priority, State
+from service.store.clock import now
+from service.store.losses import EXPIRIES
+from service.store.order import CLAIMABLE, word_of
+from service.store.session import Store
+from service.store.tables import JobRow, ResultRow, TallyRow
+
+#: What ended so lately may still be joined by what ended before it and commits later.
+_SETTLED_US: Final = 5_000_000
+
+
+@dataclass(frozen=True, slots=True)
+class Depth:
+    """How much waits and runs.
+
+    ``claimable`` leaves out what waits for an identical design; ``oldest_wait_s`` is that of
+    the claimable job that has waited longest, 0 where none waits.
+    """
+
+    by_state: Mapping[tuple[State, Priority], int]
+    claimable: int
+    oldest_wait_s: float
+
+
+@dataclass(frozen=True, slots=True)
+class Ended:
+    """A job that ended; ``wait_s`` and ``run_s`` are None where no worker took it up."""
+
+    changed_us: int
+    design_id: str
+    state: State
+    priority: Priority
+    attempts: int
+    answered: bool
+    wait_s: float | None
+    run_s: float | None
+    map_error_percent: float | None
+
+
+def depth(store: Store) -> Depth:
+    """How many jobs wait and run, by priority."""
+
+    def work(session: Session) -> Depth:
+        counted = session.execute(
+            select(JobRow.state, JobRow.priority, func.count())
+            .where(JobRow.state.in_(("queued", "running")))
+            .group_by(JobRow.state, JobRow.priority)
+        )
+        by_state: Counter[tuple[State, Priority]] = Counter()
+        for state, priority, number in counted:
+            by_state["queued" if state == "queued" else "running", word_of(priority)] += number
+        claimable, oldest = _claimable(session)
+        wait_s = 0.0 if oldest is None else (now(session) - oldest).total_seconds()
+        return Depth(by_state, claimable, max(0.0, wait_s))
+
+    return store.read(work)
+
+
+def ended_since(
+    store: Store, *, after_us: int, after_id: str = "", limit: int = 1000
+) -> list[Ended]:
+    """Jobs that ended after a moment, each told once to whoever goes on from the last told.
+
+    What ended within the last few seconds is left for the next time, so that what takes effect
+    late is not missed.
+    """
+
+    def work(session: Session) -> list[Ended]:
+        settled = int(now(session).timestamp() * 1e6) - _SETTLED_US
+        rows = session.execute(
+            select(JobRow, ResultRow.map_error_percent)
+            .outerjoin(ResultRow, ResultRow.design_id == JobRow.design_id)
+            .where(
+                JobRow.state.in_(("done", "failed", "cancelled")),
+                tuple_(JobRow.changed_at, JobRow.design_id) > (after_us, after_id),
+                JobRow.changed_at <= settled,
+            )
+            .order_by(JobRow.changed_at, JobRow.design_id)
+            .limit(limit)
+        )
+        return [_ended(row[0], row[1]) for row in rows]
+
+    return store.read(work)
+
+
+def lease_expiries(store: Store) -> int:
+    """How many leases ran out before their worker was heard of, since the database was made."""
+    query = select(TallyRow.count).where(TallyRow.name == EXPIRIES)
+    return store.read(lambda session: session.scalar(query) or 0)
+
+
+def _claimable(session: Session) -> tuple[int, datetime | None]:
+    query = select(func.count(), func.min(JobRow.queued_at)).where(CLAIMABLE)
+    number, oldest = session.execute(query).one()
+    return number, oldest
+
+
+def _ended(job: JobRow, map_error_percent: float | None) -> Ended:
+    return Ended(
+        changed_us=job.changed_at,
+        design_id=job.design_id,
+        state=job.state,  # type: ignore[arg-type]  # the table's own check knows the states
+        priority=word_of(job.priority),
+        attempts=job.attempts,
+        answered=job.state == "done" and map_error_percent is None,
+        wait_s=_seconds(job.queued_at, job.started_at),
+        run_s=_seconds(job.started_at, job.finished_at),
+        map_error_percent=map_error_percent,
+    )
+
+
+def _seconds(start: datetime | None, end: datetime | None) -> float | None:
+    return None if start is None or end is None else max(0.0, (end - start).total_seconds())
