@@ -12,7 +12,7 @@ from service.store import batches, designs
 from service.store.designs import Submitted
 from service.store.session import Store
 
-__all__ = ["Submitted", "submit", "submit_batch"]
+__all__ = ["Submitted", "rerun_batch", "submit", "submit_batch"]
 
 #: Rings for one batch: enough to wake the idle, who ring on while work waits.
 _MOST_RINGS: Final = 16
@@ -71,6 +71,39 @@ def submit_batch(
     """
     submitted = batches.submit(store, request, idempotency_key=idempotency_key, owner=owner)
     if submitted.created:
-        for _ in range(min(len(request.designs), _MOST_RINGS)):
-            doorbell.ring()
+        _ring(doorbell, len(request.designs))
     return submitted
+
+
+def rerun_batch(
+    store: Store,
+    doorbell: Doorbell,
+    batch_id: str,
+    *,
+    everything: bool = False,
+    idempotency_key: str | None = None,
+) -> str:
+    """Run a batch again and tell the workers; returns the identifier of the batch that runs.
+
+    What failed or was cancelled waits again in the batch itself. With ``everything`` all of it
+    is planned anew as a new batch, of which the key makes one however often it is sent.
+
+    Raises
+    ------
+    BatchNotFound
+    KeyReused
+        If the owner used the key for a different batch.
+    StoreUnavailable
+    """
+    if not everything:
+        _ring(doorbell, batches.rerun_failed(store, batch_id))
+        return batch_id
+    submitted = batches.rerun_all(store, batch_id, idempotency_key=idempotency_key)
+    if submitted.created:
+        _ring(doorbell, _MOST_RINGS)
+    return submitted.batch_id
+
+
+def _ring(doorbell: Doorbell, designs_waiting: int) -> None:
+    for _ in range(min(designs_waiting, _MOST_RINGS)):
+        doorbell.ring()

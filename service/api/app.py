@@ -8,7 +8,16 @@ from importlib.metadata import metadata
 
 from fastapi import FastAPI
 
-from service.api import band_lists, candidates, designs, health, openapi, problem_kinds, problems
+from service.api import (
+    band_lists,
+    batches,
+    candidates,
+    designs,
+    health,
+    openapi,
+    problem_kinds,
+    problems,
+)
 from service.api.guard import Guard
 from service.doorbell import Doorbell
 from service.pages import routes as pages
@@ -48,7 +57,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     if store is not None:
         app.state.store = store
     problems.install(app)
-    for each in (designs, candidates, band_lists, health, problem_kinds, pages):
+    for each in (designs, batches, candidates, band_lists, health, problem_kinds, pages):
         app.include_router(each.router)
     app.mount("/static", pages.static_files, name="static")
     app.add_middleware(Guard)

@@ -7,6 +7,7 @@ from typing import Annotated, Final
 from fastapi import Depends, Header, Path, Request
 
 from service.api.problems import MediaTypeRefused
+from service.contracts.progress import LOCAL_OWNER
 from service.contracts.request import (
     LARGEST_REQUEST_BYTES,
     MOST_CANDIDATES,
@@ -45,9 +46,7 @@ async def design_request(request: Request) -> DesignRequest:
     media_type = request.headers.get("content-type", "").partition(";")[0].strip().lower()
     if media_type != _JSON:
         raise MediaTypeRefused("Content-Type", media_type, f"Send the request as {_JSON}.")
-    coding = request.headers.get("content-encoding", "identity")
-    if coding != "identity":
-        raise MediaTypeRefused("Content-Encoding", coding, "Send the request uncompressed.")
+    refuse_coded_body(request)
     body = bytearray()
     async for part in request.stream():
         body += part
@@ -56,10 +55,29 @@ async def design_request(request: Request) -> DesignRequest:
     return parse_request(bytes(body))
 
 
+def refuse_coded_body(request: Request) -> None:
+    """Refuse a body that is compressed.
+
+    Raises
+    ------
+    MediaTypeRefused
+    """
+    coding = request.headers.get("content-encoding", "identity")
+    if coding != "identity":
+        raise MediaTypeRefused("Content-Encoding", coding, "Send the request uncompressed.")
+
+
+def owner_of() -> str:
+    """Whose work it is: this release knows only one owner."""
+    return LOCAL_OWNER
+
+
 StoreHere = Annotated[Store, Depends(store_of)]
 DoorbellHere = Annotated[Doorbell, Depends(doorbell_of)]
+OwnerHere = Annotated[str, Depends(owner_of)]
 RequestedDesign = Annotated[DesignRequest, Depends(design_request)]
 DesignId = Annotated[str, Path(description="Identifier of the design")]
+BatchId = Annotated[str, Path(description="Identifier of the batch")]
 Rank = Annotated[
     int, Path(ge=1, le=MOST_CANDIDATES, description="Rank of the candidate, 1 is the best")
 ]
@@ -69,6 +87,6 @@ IdempotencyKey = Annotated[
         alias="Idempotency-Key",
         min_length=1,
         max_length=LONGEST_KEY,
-        description="A name of the sender's own for this request: sent again, it is one design.",
+        description="A name of the sender's own for what is sent: sent again, it is accepted once.",
     ),
 ]

@@ -12,13 +12,14 @@ from service.api.dependencies import (
     DesignId,
     DoorbellHere,
     IdempotencyKey,
+    OwnerHere,
     RequestedDesign,
     StoreHere,
 )
 from service.api.openapi import REQUEST_BODY
 from service.api.problems import responses
 from service.api.stored import answer_stored
-from service.contracts.progress import Design, DesignSummary
+from service.contracts.progress import Design, DesignSummary, Priority
 from service.contracts.quantities import Contract
 from service.intake import submit
 from service.store import designs, jobs
@@ -53,11 +54,24 @@ class DesignList(Contract):
 def submit_design(
     store: StoreHere,
     doorbell: DoorbellHere,
+    owner: OwnerHere,
     design_request: RequestedDesign,
+    priority: Annotated[Priority, Query(description="How soon it is wanted")] = "ordinary",
+    recompute: Annotated[
+        bool, Query(description="Plan anew where a stored result would answer")
+    ] = False,
     idempotency_key: IdempotencyKey = None,
 ) -> Response:
     """Submit a design request; the answer comes before the search."""
-    submitted = submit(store, doorbell, design_request, idempotency_key)
+    submitted = submit(
+        store,
+        doorbell,
+        design_request,
+        idempotency_key,
+        owner=owner,
+        priority=priority,
+        recompute=recompute,
+    )
     design = designs.get(store, submitted.design_id)
     return Response(
         design.model_dump_json(),

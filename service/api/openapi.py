@@ -10,6 +10,7 @@ from pydantic.json_schema import models_json_schema
 
 from service.api.problems import Problem
 from service.contracts.bands import BandChoice
+from service.contracts.batch import BatchRequest
 from service.contracts.request import DesignRequest
 
 #: A request may leave out what a stored design always has, so it is described apart.
@@ -23,6 +24,20 @@ _BAND_TEXT: Final = {
 REQUEST_BODY: Final[dict[str, Any]] = {
     "required": True,
     "content": {"application/json": {"schema": {"$ref": _REF.format(model="DesignRequest")}}},
+}
+
+BATCH_BODY: Final[dict[str, Any]] = {
+    "required": True,
+    "content": {
+        "application/json": {"schema": {"$ref": _REF.format(model="BatchRequest")}},
+        "application/x-ndjson": {
+            "schema": {
+                "type": "string",
+                "description": "One design request a line; name, priority and recompute of the "
+                "batch go into the query",
+            }
+        },
+    },
 }
 
 
@@ -47,7 +62,12 @@ def describe(app: FastAPI) -> None:
 
 def _request_schemas() -> dict[str, Any]:
     _, found = models_json_schema(
-        [(DesignRequest, "validation"), (BandChoice, "validation")], ref_template=_REF
+        [
+            (DesignRequest, "validation"),
+            (BatchRequest, "validation"),
+            (BandChoice, "validation"),
+        ],
+        ref_template=_REF,
     )
     schemas: dict[str, Any] = {f"Asked{name}": each for name, each in found["$defs"].items()}
     schemas["AskedDesignRequest"]["properties"]["bands"] = {

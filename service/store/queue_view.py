@@ -9,7 +9,7 @@ from sqlalchemy import case, func, select
 from sqlalchemy.orm import Session
 
 from service.contracts.progress import Progress
-from service.contracts.queue import QueueShare, QueueView, QueueWorker, RunningDesign
+from service.contracts.queue_view import QueueShare, QueueView, QueueWorker, RunningDesign
 from service.store import workers
 from service.store.clock import now
 from service.store.order import word_of
