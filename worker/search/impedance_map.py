@@ -28,7 +28,7 @@ from worker.search.space import ComplexArray, FloatArray, WireModel
 
 #: Impedance in Ω at every length (m) or frequency (Hz).
 Curve = Callable[[FloatArray], ComplexArray]
-#: Impedances in Ω of k wires, (k, f, n), for lengths in m, (f, n), at f frequencies in Hz.
+#: Impedances in Ω of k wires, (k, f, n), for n lengths times frequency in m Hz, at f frequencies.
 Survey = Callable[[FloatArray, FloatArray], ComplexArray]
 
 #: A map is one interpolant per stretch of at most this many wavelengths of wire.
@@ -183,7 +183,8 @@ def map_band(
     As `map_band_together`, for one wire.
     """
 
-    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+    def survey(length_m_hz: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        length_m = length_m_hz / frequency_hz[:, None]
         at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
         return wire.solve(length_m, at_hz).impedance_ohm[None]
 
@@ -206,8 +207,8 @@ def map_band_together(
     Parameters
     ----------
     survey : callable
-        Impedances in Ω of k wires, shape (k, f, n), for lengths in m of shape (f, n) at f
-        frequencies in Hz.
+        Impedances in Ω of k wires, shape (k, f, n), for n electrical lengths, as length times
+        frequency in m Hz, at f frequencies in Hz.
     shortest_wavelengths : float
         Length in wavelengths from which the models hold.
     low_hz, high_hz : float
@@ -235,8 +236,7 @@ def map_band_together(
     most = max(limits_m[1] * high_hz, 1.5 * shortest_m_hz)
 
     def solve(length_m_hz: FloatArray) -> ComplexArray:
-        solved = survey(length_m_hz / frequencies_hz[:, None], frequencies_hz)
-        return solved.reshape(-1, len(length_m_hz))
+        return survey(length_m_hz, frequencies_hz).reshape(-1, len(length_m_hz))
 
     maps = _map(solve, least, most, SPEED_OF_LIGHT_M_PER_S, finer[1])
     each = len(frequencies_hz)

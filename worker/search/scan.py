@@ -235,13 +235,13 @@ def _map_band(
     """The maps of all wires on one band; None where a survey is too rough to be mapped."""
     shortest = max(wire.model.shortest_wavelengths for wire in space.wires)
 
-    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+    def survey(length_m_hz: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
         columns = max(1, _SOLVED_AT_A_TIME // (len(space.wires) * len(frequency_hz)))
         parts = []
-        for start in range(0, length_m.shape[1], columns):
+        for start in range(0, len(length_m_hz), columns):
             tell()
-            some_m = length_m[:, start : start + columns]
-            parts.append(space.surveyed(some_m, frequency_hz, careful=careful))
+            some = length_m_hz[start : start + columns]
+            parts.append(space.surveyed(some, frequency_hz, careful=careful))
         return np.concatenate(parts, axis=2)
 
     limits_m = (space.shortest_m, space.longest_m)

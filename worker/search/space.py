@@ -139,9 +139,9 @@ class SearchSpace:
     feeding : Feeding
         What lies between the wire and the point where the limits apply.
     survey : callable, optional
-        Impedances of all the wires, shape (k, f, n), for lengths in m, shape (f, n), at f
-        frequencies in Hz, solved together, more carefully where the third argument says so;
-        without it each wire's own model is asked in turn.
+        Impedances of all the wires, shape (k, f, n), for n electrical lengths, as length times
+        frequency in m Hz, at f frequencies in Hz, solved together, more carefully where the
+        third argument says so; without it each wire's own model is asked in turn.
     together : callable, optional
         Direct solutions of some of the wires, each of its own length at its own frequency, no
         closer than a survey where the last argument says so; without it each is asked in turn.
@@ -179,11 +179,12 @@ class SearchSpace:
         return max(points_of(band, self.feeding, _FURTHEST_APART) for band in self.bands)
 
     def surveyed(
-        self, length_m: FloatArray, frequency_hz: FloatArray, *, careful: bool
+        self, length_m_hz: FloatArray, frequency_hz: FloatArray, *, careful: bool
     ) -> ComplexArray:
-        """Impedances in Ω of all k wires, (k, f, n), for lengths (f, n) in m at f frequencies."""
+        """Impedances in Ω of all k wires, (k, f, n), for n lengths in m Hz at f frequencies."""
         if self.survey is not None:
-            return self.survey(length_m, frequency_hz, careful)
+            return self.survey(length_m_hz, frequency_hz, careful)
+        length_m = length_m_hz / frequency_hz[:, None]
         at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
         return np.array([each.model.solve(length_m, at_hz).impedance_ohm for each in self.wires])
 

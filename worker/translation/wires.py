@@ -17,11 +17,11 @@ from worker.engine.hung_wire import (
     GroundTables,
     HungWire,
     solve_together,
-    survey_impedances,
 )
 from worker.engine.insulation import Sleeve
 from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.material import MATERIALS
+from worker.engine.survey import survey_impedances
 from worker.engine.thin_wire import LENGTH_RANGE_WAVELENGTHS
 from worker.search.feeding import Feeding
 from worker.search.space import BandGoal, FloatArray, SearchSpace, Solved, WireOffer
@@ -117,8 +117,8 @@ class Hanging:
                 at_transmitter=feed.reference_point == "transmitter",
                 matched=feed.matching == "per-band",
             ),
-            survey=lambda length_m, frequency_hz, careful: survey_impedances(
-                hung, length_m, frequency_hz, careful=careful
+            survey=lambda length_m_hz, frequency_hz, careful: survey_impedances(
+                hung, length_m_hz, frequency_hz, careful=careful
             ),
             together=lambda chosen, length_m, frequency_hz, survey: Solved(
                 *solve_together(

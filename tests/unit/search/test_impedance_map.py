@@ -143,7 +143,8 @@ def test_no_length_is_claimed_where_the_reactance_has_no_rising_zero() -> None:
 def test_wires_mapped_together_are_mapped_as_each_alone() -> None:
     lines = [OpenLine(surge_ohm=700.0), OpenLine(surge_ohm=1100.0)]
 
-    def survey(length_m: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+    def survey(length_m_hz: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+        length_m = length_m_hz / frequency_hz[:, None]
         at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
         return np.array([line.solve(length_m, at_hz).impedance_ohm for line in lines])
 

@@ -295,9 +295,10 @@ def test_a_band_of_any_width_is_mapped_to_the_tolerance(
 
 
 def rough_unless_careful(
-    length_m: FloatArray, frequency_hz: FloatArray, careful: bool
+    length_m_hz: FloatArray, frequency_hz: FloatArray, careful: bool
 ) -> ComplexArray:
     line = OpenLine(noise=0.0 if careful else 0.02)
+    length_m = length_m_hz / frequency_hz[:, None]
     at_hz = np.broadcast_to(frequency_hz[:, None], length_m.shape)
     return line.solve(length_m, at_hz).impedance_ohm[None]
 
@@ -310,8 +311,8 @@ def test_where_a_survey_is_too_rough_wires_are_solved_with_care() -> None:
 
 def test_a_survey_that_disagrees_with_the_solver_is_found_out() -> None:
     # Smooth, and so mapped without complaint, but another wire than the one to be planned.
-    def other(length_m: FloatArray, frequency_hz: FloatArray, _careful: bool) -> ComplexArray:
-        return 1.01 * rough_unless_careful(length_m, frequency_hz, True)
+    def other(length_m_hz: FloatArray, frequency_hz: FloatArray, _careful: bool) -> ComplexArray:
+        return 1.01 * rough_unless_careful(length_m_hz, frequency_hz, True)
 
     with pytest.raises(NotConverged, match="impedance map on"):
         scanned(replace(space_of(), survey=other))

@@ -31,7 +31,7 @@ class Discretisation:
         Reference element.
     breaks_m
         Boundaries from the centre to the end, (B, elements + 1).
-    radius_m, wavenumber_per_m, wire_impedance_ohm_per_m
+    radius_m, wavenumber_per_m
         One of each a wire, (B,).
     """
 
@@ -39,7 +39,6 @@ class Discretisation:
     breaks_m: FloatArray
     radius_m: FloatArray
     wavenumber_per_m: FloatArray
-    wire_impedance_ohm_per_m: ComplexArray
 
     @property
     def elements(self) -> int:

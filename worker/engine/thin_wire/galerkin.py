@@ -7,7 +7,7 @@ the other half added or subtracted. A centre-fed wire needs the even one only.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from math import pi
 
@@ -47,14 +47,37 @@ class PortSolution:
     current_products: ComplexArray
 
 
+@dataclass(frozen=True, slots=True)
+class Condition:
+    """What may change about B wires while their shape stays: the ground below, and the metal.
+
+    Attributes
+    ----------
+    ground
+        Under each wire, or None in free space.
+    wire_impedance_ohm_per_m
+        Series impedance of each wire, (B,).
+    """
+
+    ground: GroundBelow | None
+    wire_impedance_ohm_per_m: ComplexArray
+
+    def __getitem__(self, rows: NDArray[np.intp]) -> Condition:
+        """The condition of some of the wires."""
+        ground = None if self.ground is None else self.ground[rows]
+        return Condition(ground, self.wire_impedance_ohm_per_m[rows])
+
+
 def solve_ports(
     mesh: Discretisation,
     port_position_m: FloatArray,
     gap_m: FloatArray,
     sigma_m: FloatArray,
-    ground: GroundBelow | None,
-) -> PortSolution:
-    """Solve for a volt at each port in turn.
+    conditions: Sequence[Condition],
+) -> list[PortSolution]:
+    """Solve for a volt at each port in turn, under each condition.
+
+    What wires do to themselves costs most, and is found once for all conditions.
 
     Parameters
     ----------
@@ -66,8 +89,8 @@ def solve_ports(
         Gap widths (B,).
     sigma_m
         Widths of the smooth sources, (B, P).
-    ground
-        Under each wire, or None in free space.
+    conditions
+        One solution is given for each.
     """
     nodes, weights = mesh.nodes(), mesh.weights()
     direct, mirrored = tube_potentials(mesh, nodes)
@@ -75,29 +98,62 @@ def solve_ports(
     here = smooth_source(nodes[:, None, :] - port_position_m[:, :, None], gap, sigma)
     there = smooth_source(nodes[:, None, :] + port_position_m[:, :, None], gap, sigma)
     low = np.tile(np.arange(mesh.element.degree) < mesh.element.degree - 1, mesh.elements)
-    count, ports = port_position_m.shape
-    admittance = np.zeros((count, ports, ports), dtype=complex)
-    coarse_admittance = np.zeros_like(admittance)
-    products = np.zeros_like(admittance)
     # Over both halves; symmetric, as the rest is made to be.
     half = mesh.overlap(weights)
     overlap = half + np.swapaxes(half, 1, 2)
-    currents = {parity: np.zeros((count, mesh.unknowns, ports), complex) for parity in (1, -1)}
+    grounds = [each.ground for each in conditions if each.ground is not None]
+    answers = [_Answer(mesh, port_position_m.shape) for _ in conditions]
     for parity in (1, -1) if np.any(port_position_m) else (1,):
-        matrix = _matrix(mesh, nodes, weights, direct, mirrored, parity, ground)
-        matrix += mesh.wire_impedance_ohm_per_m[:, None, None] * overlap
+        alone = _matrix_alone(mesh, weights, direct, mirrored, parity)
+        below = iter(reflected_matrices(grounds, mesh, nodes, weights, parity))
         source = mesh.test_current((here + parity * there) * weights[:, None, :])
         # An odd current vanishes at the centre, so its first unknown goes.
         kept = np.ones(mesh.unknowns, dtype=bool)
         kept[0] = parity == 1
-        coarse_admittance += _respond(matrix, source, np.nonzero(kept & low)[0])[0]
+        for condition, answer in zip(conditions, answers, strict=True):
+            magnetic, electric = alone
+            if condition.ground is not None:
+                extra = next(below)
+                magnetic, electric = magnetic + extra[0], electric + extra[1]
+            matrix = _impedance_matrix(mesh, magnetic, electric)
+            matrix += condition.wire_impedance_ohm_per_m[:, None, None] * overlap
+            answer.add(parity, matrix, source, kept, low, overlap)
+    return [answer.solution() for answer in answers]
+
+
+class _Answer:
+    """Gathers what the even and the odd current answer under one condition."""
+
+    def __init__(self, mesh: Discretisation, shape: tuple[int, ...]) -> None:
+        count, ports = shape
+        self._admittance = np.zeros((count, ports, ports), dtype=complex)
+        self._coarse = np.zeros_like(self._admittance)
+        self._products = np.zeros_like(self._admittance)
+        self._currents = {
+            parity: np.zeros((count, mesh.unknowns, ports), dtype=complex) for parity in (1, -1)
+        }
+
+    def add(
+        self,
+        parity: int,
+        matrix: ComplexArray,
+        source: FloatArray,
+        kept: NDArray[np.bool_],
+        low: NDArray[np.bool_],
+        overlap: FloatArray,
+    ) -> None:
+        self._coarse += _respond(matrix, source, np.nonzero(kept & low)[0])[0]
         all_kept = np.nonzero(kept)[0]
         response, solution = _respond(matrix, source, all_kept)
-        admittance += response
-        currents[parity][:, all_kept] = solution
-        along = currents[parity]
-        products += np.swapaxes(along, 1, 2) @ (overlap @ along)
-    return PortSolution(admittance, coarse_admittance, currents[1], currents[-1], products)
+        self._admittance += response
+        along = self._currents[parity]
+        along[:, all_kept] = solution
+        self._products += np.swapaxes(along, 1, 2) @ (overlap @ along)
+
+    def solution(self) -> PortSolution:
+        return PortSolution(
+            self._admittance, self._coarse, self._currents[1], self._currents[-1], self._products
+        )
 
 
 def _respond(
@@ -110,20 +166,18 @@ def _respond(
     return np.swapaxes(part, 1, 2) @ solution, solution
 
 
-def _matrix(
+def _matrix_alone(
     mesh: Discretisation,
-    nodes: FloatArray,
     weights: FloatArray,
     direct: FloatArray,
     mirrored: FloatArray,
     parity: int,
-    ground: GroundBelow | None,
-) -> ComplexArray:
-    r"""Galerkin matrices (B, N, N) of currents of one parity, over the whole wire.
+) -> tuple[ComplexArray, ComplexArray]:
+    r"""Magnetic and electric matrices (B, N, N) of currents of one parity in free space.
 
     Notes
     -----
-    With :math:`f_m` the basis continued to the other half,
+    With :math:`f_m` the basis continued to the other half, they are the double integrals in
 
     .. math::
 
@@ -137,11 +191,13 @@ def _matrix(
     if parity < 0:
         together, apart = apart, together
     magnetic = _both_sides(lambda kernel: mesh.test_current(kernel * weights[:, None]), together)
-    electric = _both_sides(mesh.test_charge, apart)
-    if ground is not None:
-        extra = reflected_matrices(ground, mesh, nodes, weights, parity)
-        magnetic += extra[0]
-        electric += extra[1]
+    return magnetic, _both_sides(mesh.test_charge, apart)
+
+
+def _impedance_matrix(
+    mesh: Discretisation, magnetic: ComplexArray, electric: ComplexArray
+) -> ComplexArray:
+    """Galerkin matrices (B, N, N), made as symmetric as they should be."""
     k = mesh.wavenumber_per_m[:, None, None]
     matrix = (0.5j * FREE_SPACE_IMPEDANCE_OHM / pi) * (k * magnetic - electric / k)
     symmetric: ComplexArray = 0.5 * (matrix + np.swapaxes(matrix, 1, 2))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from math import pi
 from typing import Final
@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from worker.engine.thin_wire.basis import reference_element
 from worker.engine.thin_wire.batch import WireBatch
 from worker.engine.thin_wire.discretisation import Discretisation
-from worker.engine.thin_wire.galerkin import solve_ports
+from worker.engine.thin_wire.galerkin import Condition, PortSolution, solve_ports
 from worker.engine.thin_wire.gap import sharp_admittance
 from worker.engine.thin_wire.mesh import Grading, HalfWires, element_breaks, element_counts
 
@@ -85,6 +85,19 @@ def solve_level(
     tolerance_rad: float = TOLERANCE_RAD,
 ) -> Iterator[tuple[NDArray[np.intp], Solved]]:
     """Solve some rows of a batch, in runs of one mesh shape that fit the working memory."""
+    condition = Condition(batch.ground, batch.wire_impedance_ohm_per_m)
+    for some, (solved,) in solve_level_under(batch, (condition,), rows, level, tolerance_rad):
+        yield some, solved
+
+
+def solve_level_under(
+    batch: WireBatch,
+    conditions: Sequence[Condition],
+    rows: NDArray[np.intp],
+    level: Level,
+    tolerance_rad: float = TOLERANCE_RAD,
+) -> Iterator[tuple[NDArray[np.intp], list[Solved]]]:
+    """The same under each of some conditions; the batch itself hangs at the lowest height."""
     part = batch[rows]
     counts = element_counts(_half_wires(part), level.grading)
     if level.few_shapes:
@@ -94,24 +107,38 @@ def solve_level(
         size = max(1, _CHUNK_ENTRIES // ((int(count) + 2) * level.points) ** 2)
         for start in range(0, members.size, size):
             some = members[start : start + size]
-            yield rows[some], _solve(part[some], int(count), level, tolerance_rad)
+            under = [condition[rows[some]] for condition in conditions]
+            yield rows[some], _solve(part[some], under, int(count), level, tolerance_rad)
 
 
 def _solve(
     part: WireBatch,
+    conditions: Sequence[Condition],
     elements: int,
     level: Level,
     tolerance_rad: float,
-) -> Solved:
+) -> list[Solved]:
     mesh = Discretisation(
         element=reference_element(level.degree, level.points),
         breaks_m=element_breaks(_half_wires(part), level.grading, elements),
         radius_m=part.radius_m,
         wavenumber_per_m=part.wavenumber_per_m,
-        wire_impedance_ohm_per_m=part.wire_impedance_ohm_per_m,
     )
-    ports = solve_ports(mesh, part.port_position_m, part.gap_m, part.sigma_m, part.ground)
-    sharp = _sharp_admittances(part)
+    ports = solve_ports(mesh, part.port_position_m, part.gap_m, part.sigma_m, conditions)
+    return [
+        _solved(part, mesh, each, condition.wire_impedance_ohm_per_m, tolerance_rad)
+        for each, condition in zip(ports, conditions, strict=True)
+    ]
+
+
+def _solved(
+    part: WireBatch,
+    mesh: Discretisation,
+    ports: PortSolution,
+    wire_impedance_ohm_per_m: ComplexArray,
+    tolerance_rad: float,
+) -> Solved:
+    sharp = _sharp_admittances(part, wire_impedance_ohm_per_m)
     voltage, impedance = _feed(part, ports.admittance + sharp)
     # Stationary in the current: dZ/dz is the integral of I^2 over the square at the feed.
     products = np.einsum("bp,bpq,bq->b", voltage, ports.current_products, voltage)
@@ -142,7 +169,7 @@ def _half_wires(batch: WireBatch) -> HalfWires:
     )
 
 
-def _sharp_admittances(part: WireBatch) -> ComplexArray:
+def _sharp_admittances(part: WireBatch, wire_impedance_ohm_per_m: ComplexArray) -> ComplexArray:
     """Diagonal matrices (B, P, P) of what the sharp parts of the sources add."""
     ports = part.sigma_m.shape[1]
     total = np.zeros((len(part.sigma_m), ports, ports), dtype=complex)
@@ -152,7 +179,7 @@ def _sharp_admittances(part: WireBatch) -> ComplexArray:
             part.radius_m,
             part.gap_m,
             part.sigma_m[:, port],
-            part.wire_impedance_ohm_per_m,
+            wire_impedance_ohm_per_m,
         )
     return total
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from math import factorial, pi
 from typing import Protocol
@@ -94,19 +94,55 @@ class GroundBelow:
         return vector, scalar
 
 
+@dataclass(frozen=True, slots=True)
+class Rescaled:
+    """Potentials as seen by a wire measured in other metres, at another frequency.
+
+    A wire and its ground look the same where every length goes as the wavelength.
+
+    Attributes
+    ----------
+    potentials
+        As they are.
+    scale
+        Metres of theirs to one metre of the wire's.
+    """
+
+    potentials: ReflectedPotentials
+    scale: float
+
+    @property
+    def frequency_hz(self) -> float:
+        """Frequency at which the wire's metres are as many wavelengths as theirs."""
+        return self.potentials.frequency_hz * self.scale
+
+    @property
+    def height_m(self) -> float:
+        """Height in the wire's metres."""
+        return self.potentials.height_m / self.scale
+
+    def vector_potential(self, distance_m: FloatArray) -> ComplexArray:
+        """g_A per metre of the wire's."""
+        return self.scale * self.potentials.vector_potential(self.scale * distance_m)
+
+    def scalar_potential(self, distance_m: FloatArray) -> ComplexArray:
+        """g_Phi per metre of the wire's."""
+        return self.scale * self.potentials.scalar_potential(self.scale * distance_m)
+
+
 def reflected_matrices(
-    ground: GroundBelow,
+    grounds: Sequence[GroundBelow],
     mesh: Discretisation,
     nodes: FloatArray,
     weights: FloatArray,
     parity: int,
-) -> tuple[ComplexArray, ComplexArray]:
+) -> Iterator[tuple[ComplexArray, ComplexArray]]:
     """Galerkin matrices of 4 pi g_A between currents and 4 pi g_Phi between charges.
 
     Parameters
     ----------
-    ground
-        Under each wire.
+    grounds
+        Some that may be under the wires; a pair of matrices is given for each.
     mesh, nodes, weights
         B half wires with their nodes and weights (B, Q).
     parity
@@ -119,26 +155,29 @@ def reflected_matrices(
     a wire is a Toeplitz matrix and the kernel to the other half a Hankel matrix, and both come
     from one row of values.
     """
+    if not grounds:
+        return
     half_length = mesh.breaks_m[:, -1]
     wavelength = 2.0 * pi / mesh.wavenumber_per_m
-    spacing = np.minimum(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * ground.height_m)
+    height = min(ground.height_m for ground in grounds)
+    spacing = np.minimum(_SPACING_WAVELENGTHS * wavelength, _SPACING_HEIGHTS * height)
     cells = max(int(np.ceil(np.max(half_length / spacing))), 1)
     step = half_length / cells
     gather = np.swapaxes(_interpolation(nodes / step[:, None], cells), 1, 2)
     index = np.arange(1 - _STENCIL // 2, cells + _STENCIL // 2 + 1)
+    apart, across = np.abs(index[:, None] - index), np.abs(index[:, None] + index)
     distance = step[:, None] * np.arange(2 * (cells + _STENCIL // 2) + 1)
-    vector, scalar = ground.both(distance)
-    matrices = []
-    for moments, potential, sign in (
-        (mesh.test_current(gather * weights[:, None, :]), vector, parity),
-        (mesh.test_charge(gather), scalar, -parity),
-    ):
-        values = 4.0 * pi * potential
-        kernel = values[:, np.abs(index[:, None] - index)]
-        kernel = kernel + sign * values[:, np.abs(index[:, None] + index)]
-        turned = np.swapaxes(moments, 1, 2)
-        matrices.append(turned @ kernel.real @ moments + 1j * (turned @ kernel.imag @ moments))
-    return matrices[0], matrices[1]
+    moments = (mesh.test_current(gather * weights[:, None, :]), mesh.test_charge(gather))
+    for ground in grounds:
+        pair = []
+        for moment, potential, sign in zip(
+            moments, ground.both(distance), (parity, -parity), strict=True
+        ):
+            values = 4.0 * pi * potential
+            kernel = values[:, apart] + sign * values[:, across]
+            turned = np.swapaxes(moment, 1, 2)
+            pair.append(turned @ kernel.real @ moment + 1j * (turned @ kernel.imag @ moment))
+        yield pair[0], pair[1]
 
 
 def _interpolation(position: FloatArray, cells: int) -> FloatArray:

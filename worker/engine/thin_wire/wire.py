@@ -11,6 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from worker.engine.thin_wire.batch import WireBatch, checked_batch
 from worker.engine.thin_wire.discretisation import Discretisation
+from worker.engine.thin_wire.galerkin import Condition
 from worker.engine.thin_wire.gap import sharp_current
 from worker.engine.thin_wire.refinement import (
     LEVELS,
@@ -19,6 +20,7 @@ from worker.engine.thin_wire.refinement import (
     TOLERANCE_RAD,
     Solved,
     solve_level,
+    solve_level_under,
 )
 from worker.engine.thin_wire.reflection import ReflectedPotentials
 
@@ -170,31 +172,92 @@ def feed_impedance(
         loads=loads,
         reflected=reflected,
     )
-    count = batch.length_m.size
-    impedance = np.zeros(count, dtype=complex)
-    slope = np.zeros(count, dtype=complex)
-    error = np.zeros(count)
-    unknowns = np.zeros(count, dtype=np.intp)
-    converged = np.zeros(count, dtype=bool)
+    condition = Condition(batch.ground, batch.wire_impedance_ohm_per_m)
+    return _solve_under(batch, (condition,), survey=survey)[0]
+
+
+def feed_impedance_under(
+    length_m: ArrayLike,
+    radius_m: ArrayLike,
+    frequency_hz: float,
+    *,
+    conditions: Sequence[tuple[ReflectedPotentials | None, ArrayLike]],
+    feed_fraction: ArrayLike = 0.5,
+    gap_m: ArrayLike | None = None,
+    survey: bool = False,
+) -> tuple[FeedImpedance, ...]:
+    """Feed impedance of the same wires under several conditions, for little more than under one.
+
+    Parameters
+    ----------
+    length_m, radius_m, frequency_hz, feed_fraction, gap_m, survey
+        As for `feed_impedance`, but for one frequency.
+    conditions
+        Pairs of the ground under the wires, or None for free space, and their series impedance
+        per unit length. Grounds may differ in height, and by `reflection.Rescaled` in frequency.
+
+    Returns
+    -------
+    tuple of FeedImpedance
+        One for each condition.
+
+    Raises
+    ------
+    OutOfRange
+        As for `feed_impedance`.
+    """
+    # The lowest decides on the mesh, which then does for those above it.
+    lowest = min(conditions, key=lambda each: np.inf if each[0] is None else each[0].height_m)[0]
+    batches = [
+        checked_batch(
+            length_m,
+            radius_m,
+            frequency_hz,
+            feed_fraction=feed_fraction,
+            gap_m=gap_m,
+            wire_impedance_ohm_per_m=series,
+            loads=(),
+            reflected=ground,
+        )
+        for ground, series in (*conditions, (lowest, 0.0))
+    ]
+    under = [Condition(each.ground, each.wire_impedance_ohm_per_m) for each in batches[:-1]]
+    return _solve_under(batches[-1], under, survey=survey)
+
+
+def _solve_under(
+    batch: WireBatch, conditions: Sequence[Condition], *, survey: bool
+) -> tuple[FeedImpedance, ...]:
+    """Solve a batch under each condition, level by level until all of a wire's answers hold."""
+    shape = (len(conditions), batch.length_m.size)
+    impedance = np.zeros(shape, dtype=complex)
+    slope = np.zeros(shape, dtype=complex)
+    error = np.zeros(shape)
+    converged = np.zeros(shape, dtype=bool)
+    unknowns = np.zeros(shape[1], dtype=np.intp)
     tolerance_rad = SURVEY_TOLERANCE_RAD if survey else TOLERANCE_RAD
     for level in (SURVEY_LEVEL, *LEVELS) if survey else LEVELS:
-        pending = np.nonzero(~converged)[0]
+        pending = np.nonzero(~np.all(converged, axis=0))[0]
         if not pending.size:
             break
-        for rows, solved in solve_level(batch, pending, level, tolerance_rad):
-            impedance[rows] = solved.impedance_ohm
-            slope[rows] = solved.wire_impedance_slope_m
-            error[rows] = solved.estimated_error_ohm
-            unknowns[rows] = solved.mesh.unknowns
-            converged[rows] = solved.converged
-    return FeedImpedance(
-        impedance_ohm=impedance.reshape(batch.shape),
-        estimated_error_ohm=error.reshape(batch.shape),
-        wire_impedance_slope_m=slope.reshape(batch.shape),
-        unknowns=unknowns.reshape(batch.shape),
-        gap_m=batch.gap_m.reshape(batch.shape),
-        converged=converged.reshape(batch.shape),
-        model=MODEL,
+        for rows, answers in solve_level_under(batch, conditions, pending, level, tolerance_rad):
+            for index, solved in enumerate(answers):
+                impedance[index, rows] = solved.impedance_ohm
+                slope[index, rows] = solved.wire_impedance_slope_m
+                error[index, rows] = solved.estimated_error_ohm
+                converged[index, rows] = solved.converged
+                unknowns[rows] = solved.mesh.unknowns
+    return tuple(
+        FeedImpedance(
+            impedance_ohm=impedance[index].reshape(batch.shape),
+            estimated_error_ohm=error[index].reshape(batch.shape),
+            wire_impedance_slope_m=slope[index].reshape(batch.shape),
+            unknowns=unknowns.reshape(batch.shape),
+            gap_m=batch.gap_m.reshape(batch.shape),
+            converged=converged[index].reshape(batch.shape),
+            model=MODEL,
+        )
+        for index in range(len(conditions))
     )
 
 
