@@ -37,24 +37,37 @@ RESULT_COLUMNS: Final = (
     "bands",
     "why",
 )
+#: A part of a stream is about so long.
+_PART_CHARACTERS: Final = 64 * 1024
 _OF_DESIGN: Final = RESULT_COLUMNS.index("rank")
 _NO_CANDIDATE: Final = ("",) * (len(RESULT_COLUMNS) - _OF_DESIGN)
 
 
 def result_lines(results: Iterable[ItemResult]) -> Iterator[str]:
-    """Results as NDJSON: one design a line with its state and, once done, its result."""
-    for each in results:
-        # The stored text as it is: 5,000 results need not be read only to be written again.
-        fields = each.item.model_dump_json().removesuffix("}")
-        yield f'{fields},"result":{each.result_json or "null"}}}\n'
+    """Results as NDJSON: one design a line with its state and, once done, its result.
+
+    Yields many lines at a time.
+    """
+    return _in_parts(_lines(results))
 
 
 def result_table(results: Iterable[ItemResult]) -> Iterator[str]:
     """Results as comma-separated values (RFC 4180): one candidate a row, best first.
 
     A design without a candidate has one row that tells its state and the reason of a failure,
-    so that every line of the batch is there.
+    so that every line of the batch is there. Yields many rows at a time.
     """
+    return _in_parts(_rows(results))
+
+
+def _lines(results: Iterable[ItemResult]) -> Iterator[str]:
+    for each in results:
+        # The stored text as it is: 5,000 results need not be read only to be written again.
+        fields = each.item.model_dump_json().removesuffix("}")
+        yield f'{fields},"result":{each.result_json or "null"}}}\n'
+
+
+def _rows(results: Iterable[ItemResult]) -> Iterator[str]:
     yield _row(RESULT_COLUMNS)
     for each in results:
         result = each.read()
@@ -96,6 +109,19 @@ def _candidate_cells(each: Candidate) -> tuple[str, ...]:
 def _band(outcome: BandOutcome) -> str:
     part = f" {share(outcome.served_fraction)}" if outcome.service == "partly served" else ""
     return f"{outcome.name} {outcome.service}{part}"
+
+
+def _in_parts(texts: Iterable[str]) -> Iterator[str]:
+    """Texts joined to parts: each part sent costs about as much however long it is."""
+    part, length = [], 0
+    for text in texts:
+        part.append(text)
+        length += len(text)
+        if length >= _PART_CHARACTERS:
+            yield "".join(part)
+            part, length = [], 0
+    if part:
+        yield "".join(part)
 
 
 def _row(cells: Sequence[str]) -> str:
