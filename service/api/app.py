@@ -12,6 +12,7 @@ from service.api import (
     band_lists,
     batches,
     candidates,
+    check,
     designs,
     health,
     openapi,
@@ -57,7 +58,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     if store is not None:
         app.state.store = store
     problems.install(app)
-    for each in (designs, batches, candidates, band_lists, health, problem_kinds, pages):
+    for each in (designs, batches, candidates, check, band_lists, health, problem_kinds, pages):
         app.include_router(each.router)
     app.mount("/static", pages.static_files, name="static")
     app.add_middleware(Guard)

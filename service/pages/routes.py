@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Annotated, Final
 
-from fastapi import APIRouter, Depends, Query, Request
+from fastapi import APIRouter, Query, Request
 from fastapi.responses import HTMLResponse
 from starlette.staticfiles import StaticFiles
 
@@ -12,6 +12,8 @@ from service.contracts.candidate import Candidate
 from service.contracts.progress import Design, DesignSummary
 from service.contracts.report import FeedReport
 from service.pages.arrangement import has_line, sets_table, steadiness_table
+from service.pages.form import routes as form
+from service.pages.stored import StoreHere
 from service.pages.templating import STATIC, render
 from service.store import designs
 from service.store.session import Store
@@ -23,16 +25,8 @@ REFRESH_S: Final = 3
 SWEEP_STRIDE: Final = 6
 
 router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
+router.include_router(form.router)
 static_files = StaticFiles(directory=STATIC)
-
-
-def store_of(request: Request) -> Store:
-    """The store that the application opened."""
-    store: Store = request.app.state.store
-    return store
-
-
-StoreHere = Annotated[Store, Depends(store_of)]
 
 
 @router.get("/")

@@ -47,11 +47,10 @@ def feed_in_words(request: DesignRequest) -> str:
     feed = request.feed
     ratios = formats.listed([formats.ratio(each) for each in feed.transformer_ratios], "or")
     network = ", an L-network for each band" if feed.matching == "per-band" else ""
-    line = (
-        ""
-        if feed.feed_line is None
-        else f", {formats.metres(feed.feed_line.length_m)} m of {_line(feed.feed_line.line)}"
-    )
+    line = ""
+    if feed.feed_line is not None:
+        length = formats.metres(feed.feed_line.length_m)
+        line = f", {length} m of {line_in_words(feed.feed_line.line)}"
     return (
         f"{_places(feed)}, transformer {ratios}{network}{line}, "
         f"{formats.ohms(feed.reference_ohm)} Ω reference, {formats.watts(request.power_w)}. "
@@ -118,9 +117,14 @@ def _ground(site: Site) -> str:
             f"ground of relative permittivity {site.ground.relative_permittivity:g} and "
             f"{site.ground.conductivity_s_per_m:g} S/m"
         )
-    if site.ground.startswith(_ITU):
-        return f"{_kind(site.ground.removeprefix(_ITU))} (ITU-R P.527)"
-    return _kind(site.ground)
+    return ground_class_in_words(site.ground)
+
+
+def ground_class_in_words(name: str) -> str:
+    """A class of ground as the trade calls it."""
+    if name.startswith(_ITU):
+        return f"{_kind(name.removeprefix(_ITU))} (ITU-R P.527)"
+    return "none: free space" if name == "free-space" else _kind(name)
 
 
 def _kind(name: str) -> str:
@@ -143,7 +147,7 @@ def _conductor(conductor: Conductor) -> str:
     return label
 
 
-def _line(name: str) -> str:
+def line_in_words(name: str) -> str:
     """A feed line by its designation, or by its construction and impedance."""
     if name.startswith("rg-"):
         return name.upper()

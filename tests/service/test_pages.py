@@ -24,6 +24,7 @@ LARGEST_PAGE_BYTES = 150_000
 def addresses(stored: Stored) -> list[str]:
     return [
         "/",
+        "/new",
         f"/designs/{stored.done}",
         f"/designs/{stored.running}",
         f"/designs/{stored.cancelled}",
@@ -74,6 +75,7 @@ def test_only_the_page_of_a_design_that_is_not_done_asks_again(
     page = read(wire, f"/designs/{getattr(stored, state)}")
     refreshes = [a for tag, a in page.tags if tag == "meta" and a.get("http-equiv") == "refresh"]
     assert bool(refreshes) is asks_again
+    assert bool(list(page.attributes("data-events"))) is asks_again
 
 
 def test_the_page_of_a_running_design_shows_its_progress(
@@ -160,7 +162,7 @@ def test_behind_each_plot_is_a_table_of_the_points_drawn(
     for row, point in zip(sweep[1:], given["sweep"][::6], strict=True):
         point_matches(row, point)
     figures = [row for row in bands if len(row) == 5 and row[0] != "MHz"]
-    grid = [point for band in given["bands"] for point in band["grid"]]
+    grid = [point for band in given["bands"] for point in band["grid"][::2]]
     for row, point in zip(figures, grid, strict=True):
         point_matches(row, point)
 
@@ -169,7 +171,7 @@ def test_plots_come_before_tables(wire: httpx.Client, stored: Stored) -> None:
     tags = [tag for tag, _ in read(wire, f"/designs/{stored.done}/candidates/1").tags]
     page = wire.get(f"/designs/{stored.done}/candidates/1").text
     assert page.index('class="plot rx wide"') < page.index("<table")
-    assert tags.count("details") == 2
+    assert tags.count("details") == 2 + 3  # impedance, SWR; reflection, current, pattern
     assert page.rindex('class="plot swr"') < page.index("bands-table")
 
 
@@ -180,7 +182,8 @@ def test_every_plot_is_named_and_described_for_those_who_listen(
     ids = list(page.attributes("id"))
     assert len(ids) == len(set(ids))
     plots = [a for tag, a in page.tags if tag == "svg" and a.get("role") == "img"]
-    assert len(plots) == 2 + 3 + 1  # impedance on either paper, SWR on three bands, steadiness
+    # Wire and impedance on either paper, SWR on three bands, steadiness.
+    assert len(plots) == 2 + 2 + 3 + 1
     for attributes in plots:
         title, description = (attributes["aria-labelledby"] or "").split()
         assert {title, description} <= set(ids)
@@ -195,15 +198,18 @@ def test_every_section_is_named_by_its_heading(wire: httpx.Client, stored: Store
                 assert attributes["aria-labelledby"] in ids, address
 
 
-def test_pages_ask_nothing_of_another_host_and_carry_no_script_or_style(
+def test_pages_ask_nothing_of_another_host_and_carry_no_script_or_style_in_themselves(
     wire: httpx.Client, stored: Stored
 ) -> None:
     for address in addresses(stored):
         page = read(wire, address)
         for name in ("href", "src", "action"):
             assert all(value.startswith(("/", "#")) for value in page.attributes(name)), address
-        assert not {"script", "style", "iframe", "object"} & {tag for tag, _ in page.tags}, address
-        for _, attributes in page.tags:
+        assert not {"style", "iframe", "object"} & {tag for tag, _ in page.tags}, address
+        for tag, attributes in page.tags:
+            if tag == "script":
+                assert attributes["type"] == "module", address
+                assert (attributes["src"] or "").startswith("/static/"), address
             assert not [name for name in attributes if name == "style" or name.startswith("on")]
 
 
@@ -233,7 +239,7 @@ def test_a_name_is_shown_as_it_is_and_never_runs(
     for address in ("/", f"/designs/{design_id}"):
         page = read(wire, address)
         assert "<script>alert(1)</script>" in page.words
-        assert "script" not in {tag for tag, _ in page.tags}
+        assert all(attributes.get("src") for tag, attributes in page.tags if tag == "script")
 
 
 def test_the_largest_page_keeps_within_its_weight(
