@@ -1,5 +1,9 @@
 """Batches, owners, fair shares, workers, and results that answer identical requests."""
 
+import zlib
+from collections.abc import Callable
+from typing import Any
+
 import sqlalchemy as sa
 from alembic import op
 
@@ -25,6 +29,9 @@ _SHARES = """
 INSERT INTO shares (owner, priority, served, at, singles_at)
 SELECT 'local', priority, 0, 0, MAX(position) FROM jobs GROUP BY priority
 """
+
+#: What is packed from here on: tables, each with the key of its rows.
+_PACKED = {"results": ("design_id",), "reports": ("design_id", "rank")}
 
 # Backwards: what another design's result answers gets a copy of it, and of one key that two
 # owners use only the first design keeps it.
@@ -56,17 +63,21 @@ def upgrade() -> None:
     _widen_designs()
     _widen_jobs()
     _widen_results()
+    for name, keys in _PACKED.items():
+        _convert(name, keys, sa.LargeBinary(), lambda text: zlib.compress(text.encode(), 1))
 
 
 def downgrade() -> None:
     """Take them away; designs stay, without their batches."""
+    for name, keys in _PACKED.items():
+        _convert(name, keys, sa.Text(), lambda packed: zlib.decompress(packed).decode())
     for statement in (_COPY_RESULTS, _COPY_REPORTS, _FORGET_KEYS):
         op.execute(statement)
     with op.batch_alter_table("results") as table:
         table.drop_index("ix_results_content_hash_engine_version_created_at")
         table.drop_column("map_error_percent")
         table.drop_column("content_hash")
-    for name in ("claimable", "longest_waiting", "waits_for"):
+    for name in ("claimable", "longest_waiting", "waits_for", "leases"):
         op.drop_index(f"ix_jobs_{name}", "jobs")
     with op.batch_alter_table("jobs") as table:
         for name in ("batch_id_state", "changed_at", "owner_changed_at"):
@@ -74,6 +85,7 @@ def downgrade() -> None:
         for name in ("changed_at", "queued_at", "waits_for", "batch_id", "owner"):
             table.drop_column(name)
         table.create_index("ix_jobs_state_priority_position", ["state", "priority", "position"])
+        table.create_index("ix_jobs_state_lease_until", ["state", "lease_until"])
     with op.batch_alter_table("designs") as table:
         table.drop_index("ix_designs_owner_created_at_id")
         table.drop_index("ix_designs_batch_id_batch_line")
@@ -159,6 +171,7 @@ def _widen_designs() -> None:
 def _widen_jobs() -> None:
     with op.batch_alter_table("jobs") as table:
         table.drop_index("ix_jobs_state_priority_position")
+        table.drop_index("ix_jobs_state_lease_until")
         table.add_column(sa.Column("owner", sa.String(60), nullable=False, server_default="local"))
         table.add_column(sa.Column("batch_id", sa.String(32), nullable=True))
         table.add_column(sa.Column("waits_for", sa.String(32), nullable=True))
@@ -181,6 +194,7 @@ def _widen_jobs() -> None:
     _partial("ix_jobs_claimable", ["owner", "priority", "position", "design_id"], _CLAIMABLE)
     _partial("ix_jobs_longest_waiting", ["queued_at", "position", "design_id"], _CLAIMABLE)
     _partial("ix_jobs_waits_for", ["waits_for"], "waits_for IS NOT NULL")
+    _partial("ix_jobs_leases", ["lease_until"], "state = 'running'")
 
 
 def _widen_results() -> None:
@@ -206,3 +220,25 @@ def _partial(name: str, columns: list[str], where: str) -> None:
     op.create_index(
         name, "jobs", columns, sqlite_where=sa.text(where), postgresql_where=sa.text(where)
     )
+
+
+def _convert(
+    name: str, keys: tuple[str, ...], kind: sa.types.TypeEngine[Any], convert: Callable[[Any], Any]
+) -> None:
+    """Give the column of a table that is called like one of its rows another kind."""
+    column = name.removesuffix("s")
+    with op.batch_alter_table(name) as table:
+        table.alter_column(column, new_column_name="earlier")
+    with op.batch_alter_table(name) as table:
+        table.add_column(sa.Column(column, kind, nullable=True))
+    connection = op.get_bind()
+    rows = sa.table(name, sa.column(column, kind), sa.column("earlier"), *map(sa.column, keys))
+    columns = [rows.c[key] for key in keys]
+    # Row by row, for a database of results does not fit into memory.
+    for key in connection.execute(sa.select(*columns)).all():
+        mine = [each == value for each, value in zip(columns, key, strict=True)]
+        earlier = connection.scalar(sa.select(rows.c.earlier).where(*mine))
+        connection.execute(sa.update(rows).where(*mine).values({column: convert(earlier)}))
+    with op.batch_alter_table(name) as table:
+        table.drop_column("earlier")
+        table.alter_column(column, existing_type=kind, nullable=False)

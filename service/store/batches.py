@@ -18,6 +18,7 @@ from service.store import answers
 from service.store.batch_entry import Submitted, rerun_all, rerun_failed, submit
 from service.store.clock import now
 from service.store.order import word_of
+from service.store.packing import unpack
 from service.store.reading import is_identifier, read_result, summary_fields
 from service.store.session import Store
 from service.store.tables import BatchRow, DesignRow, JobRow, ResultRow
@@ -59,10 +60,15 @@ class ItemPage:
 
 @dataclass(frozen=True, slots=True)
 class ItemResult:
-    """One design of a batch with its stored result: JSON as it was written, None if not done."""
+    """One design of a batch with its stored result, packed; None if it is not done."""
 
     item: BatchItem
-    result_json: str | None
+    packed: bytes | None
+
+    @property
+    def result_json(self) -> str | None:
+        """The result in JSON as it was written, not read again."""
+        return None if self.packed is None else unpack(self.packed)
 
     def read(self) -> DesignResult | None:
         """The result as a contract.
@@ -72,9 +78,7 @@ class ItemResult:
         SchemaMismatch
             If it was stored by a release with another contract.
         """
-        if self.result_json is None:
-            return None
-        return read_result(self.item.id, self.result_json)
+        return None if self.packed is None else read_result(self.item.id, self.packed)
 
 
 def get(store: Store, batch_id: str, owner: str) -> Batch:

@@ -16,6 +16,8 @@ from sqlalchemy.pool import ConnectionPoolEntry
 
 #: Name of the execution option that says whether a transaction is going to write.
 WRITES: Final = "spanwright_writes"
+#: Name of the execution option that says whether a commit waits until the disk has it.
+SYNCED: Final = "spanwright_synced"
 
 SQLITE_BUSY_MS: Final = 10_000
 
@@ -59,5 +61,10 @@ def _prepare_sqlite(connection: DBAPIConnection, _entry: ConnectionPoolEntry) ->
 
 
 def _begin_sqlite(connection: Connection) -> None:
-    writes = connection.get_execution_options().get(WRITES, True)
+    options = connection.get_execution_options()
+    writes, synced = options.get(WRITES, True), options.get(SYNCED, True)
+    # Past SQLAlchemy, which would first begin a transaction, and inside one it has no effect.
+    cursor = connection.connection.cursor()
+    cursor.execute(f"PRAGMA synchronous = {'FULL' if synced else 'NORMAL'}")
+    cursor.close()
     connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")

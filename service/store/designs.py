@@ -17,6 +17,7 @@ from service.errors import CandidateNotFound, DesignNotFound, KeyReused, ResultN
 from service.store import answers, order, workers
 from service.store.clock import now
 from service.store.order import PRIORITIES
+from service.store.packing import unpack
 from service.store.reading import (
     read_request,
     read_result,
@@ -148,7 +149,7 @@ def get(store: Store, design_id: str) -> Design:
             raise DesignNotFound(design_id)
         design, job, stored = found
         # Outer-joined, so None until the design is done.
-        result: str | None = stored
+        result: bytes | None = stored
         return Design(
             **summary_fields(design, job),
             request=read_request(design_id, design.request),
@@ -223,7 +224,7 @@ def report(store: Store, design_id: str, rank: int) -> FeedReport:
     """
     refuse_malformed(design_id)
 
-    def work(session: Session) -> str | None:
+    def work(session: Session) -> bytes | None:
         query = (
             select(ReportRow.report)
             .join(DesignRow, ReportRow.design_id == answers.SOURCE)
@@ -235,7 +236,7 @@ def report(store: Store, design_id: str, rank: int) -> FeedReport:
     if stored is None:
         candidate(store, design_id, rank)  # says which of the three it is
         raise CandidateNotFound(design_id, rank, 0)
-    return FeedReport.model_validate_json(stored)
+    return FeedReport.model_validate_json(unpack(stored))
 
 
 def count(store: Store) -> int:

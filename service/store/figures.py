@@ -8,13 +8,13 @@ from dataclasses import dataclass
 from datetime import datetime
 from typing import Final
 
-from sqlalchemy import func, select, tuple_
+from sqlalchemy import ColumnElement, TextClause, func, select, tuple_
 from sqlalchemy.orm import Session
 
 from service.contracts.progress import Priority, State
 from service.store.clock import now
 from service.store.losses import EXPIRIES
-from service.store.order import CLAIMABLE, word_of
+from service.store.order import CLAIMABLE, RUNNING, word_of
 from service.store.session import Store
 from service.store.tables import JobRow, ResultRow, TallyRow
 
@@ -54,15 +54,12 @@ def depth(store: Store) -> Depth:
     """How many jobs wait and run, by priority."""
 
     def work(session: Session) -> Depth:
-        counted = session.execute(
-            select(JobRow.state, JobRow.priority, func.count())
-            .where(JobRow.state.in_(("queued", "running")))
-            .group_by(JobRow.state, JobRow.priority)
-        )
         by_state: Counter[tuple[State, Priority]] = Counter()
-        for state, priority, number in counted:
-            by_state["queued" if state == "queued" else "running", word_of(priority)] += number
-        claimable, oldest = _claimable(session)
+        _add(session, by_state, "queued", CLAIMABLE)
+        claimable = by_state.total()
+        _add(session, by_state, "queued", JobRow.waits_for.is_not(None), JobRow.state == "queued")
+        _add(session, by_state, "running", RUNNING)
+        oldest = session.scalar(select(func.min(JobRow.queued_at)).where(CLAIMABLE))
         wait_s = 0.0 if oldest is None else (now(session) - oldest).total_seconds()
         return Depth(by_state, claimable, max(0.0, wait_s))
 
@@ -102,10 +99,15 @@ def lease_expiries(store: Store) -> int:
     return store.read(lambda session: session.scalar(query) or 0)
 
 
-def _claimable(session: Session) -> tuple[int, datetime | None]:
-    query = select(func.count(), func.min(JobRow.queued_at)).where(CLAIMABLE)
-    number, oldest = session.execute(query).one()
-    return number, oldest
+def _add(
+    session: Session,
+    counts: Counter[tuple[State, Priority]],
+    state: State,
+    *which: ColumnElement[bool] | TextClause,
+) -> None:
+    query = select(JobRow.priority, func.count()).where(*which).group_by(JobRow.priority)
+    for priority, number in session.execute(query):
+        counts[state, word_of(priority)] += number
 
 
 def _ended(job: JobRow, map_error_percent: float | None) -> Ended:

@@ -38,6 +38,7 @@ from service.store.endings import (
     held,
 )
 from service.store.losses import Swept, bury, sweep
+from service.store.packing import pack
 from service.store.reading import read_request, refuse_malformed
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
@@ -139,7 +140,7 @@ def claim(
             return _Taken(design.id, design.request, job.fence, job.attempts)
         return _NothingTaken.MORE_TO_LOOK_AT
 
-    while (taken := store.write(work)) is not _NothingTaken.NONE_WAITS:
+    while (taken := store.write(work, outlives_machine=False)) is not _NothingTaken.NONE_WAITS:
         if isinstance(taken, _NothingTaken):
             continue
         try:
@@ -172,7 +173,7 @@ def heartbeat(store: Store, job: ClaimedJob, progress: Progress, lease_s: float)
         still_mine = session.scalar(select(JobRow.design_id).where(*held(job.design_id, job.fence)))
         return Beat.LOST if still_mine is None else Beat.CANCELLED
 
-    return store.write(work)
+    return store.write(work, outlives_machine=False)
 
 
 def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
@@ -185,10 +186,10 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
     bool
         False if the job was taken away in the meantime.
     """
-    # Written out before the transaction, which holds up every other writer of SQLite.
-    result = planned.result.model_dump_json()
+    # Written out and packed before the transaction, which holds up every other writer of SQLite.
+    result = pack(planned.result.model_dump_json())
     reports = [
-        {"design_id": job.design_id, "rank": each.rank, "report": each.model_dump_json()}
+        {"design_id": job.design_id, "rank": each.rank, "report": pack(each.model_dump_json())}
         for each in planned.reports
     ]
     content_hash = select(DesignRow.content_hash).where(DesignRow.id == job.design_id)

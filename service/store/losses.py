@@ -15,6 +15,7 @@ from sqlalchemy.orm import Session
 from service.store import answers
 from service.store.clock import now
 from service.store.endings import give_back, set_aside
+from service.store.order import RUNNING
 from service.store.session import Store
 from service.store.tables import JobRow, TallyRow
 
@@ -69,7 +70,7 @@ def _take_away(
     """Take running jobs away from their workers, who can no longer write: the fence rises."""
 
     def query(session: Session) -> Select[JobRow]:
-        return select(JobRow).where(JobRow.state == "running", whose(now(session)))
+        return select(JobRow).where(RUNNING, whose(now(session)))
 
     # A reading first, so that a sweep that finds nothing does not hold up writers.
     if store.read(lambda session: session.scalar(query(session).limit(1))) is None:

@@ -16,13 +16,11 @@ from datetime import datetime, timedelta
 from typing import Any, Final
 
 from sqlalchemy import (
-    Boolean,
     ColumnElement,
     Executable,
     bindparam,
     case,
     func,
-    literal_column,
     select,
     text,
     tuple_,
@@ -34,7 +32,7 @@ from sqlalchemy.exc import OperationalError
 from sqlalchemy.orm import InstrumentedAttribute, Session
 
 from service.contracts.progress import Priority
-from service.store.tables import CLAIMABLE_SQL, DesignRow, JobRow, ShareRow
+from service.store.tables import CLAIMABLE_SQL, RUNNING_SQL, DesignRow, JobRow, ShareRow
 
 PRIORITIES: Final[Mapping[Priority, int]] = {"urgent": 0, "ordinary": 100, "when-idle": 200}
 ORDINARY: Final = PRIORITIES["ordinary"]
@@ -49,8 +47,10 @@ ONE_IN: Final = 8
 _SHARE_PATIENCE_MS: Final = 250
 _LOCK_NOT_AVAILABLE: Final = "55P03"
 
-#: That a job may be claimed; no parameter in it, so that planners see the partial indexes.
-CLAIMABLE: Final[ColumnElement[bool]] = literal_column(CLAIMABLE_SQL, Boolean())
+#: That a job may be claimed, and that one is claimed; no parameter in either, so that planners
+#: see the partial indexes.
+CLAIMABLE: Final = text(CLAIMABLE_SQL)
+RUNNING: Final = text(RUNNING_SQL)
 
 _JOB: Final = (
     select(JobRow, DesignRow)

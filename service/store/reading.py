@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import re
 from typing import Any, Final
+from zlib import error as ZlibError  # noqa: N812  # the module names its error in small letters
 
 from pydantic import ValidationError
 from sqlalchemy import Row
@@ -15,6 +16,7 @@ from service.contracts.refusals import faults_of
 from service.contracts.request import DesignRequest
 from service.errors import DesignNotFound, SchemaMismatch
 from service.store.order import word_of
+from service.store.packing import unpack
 from service.store.tables import DesignRow, JobRow
 
 _IDENTIFIER: Final = re.compile(r"[0-9a-f]{32}")
@@ -53,7 +55,7 @@ def read_request(design_id: str, request: str) -> DesignRequest:
         ) from error
 
 
-def read_result(design_id: str, result: str) -> DesignResult:
+def read_result(design_id: str, packed: bytes) -> DesignResult:
     """The result of a stored design.
 
     Raises
@@ -62,8 +64,8 @@ def read_result(design_id: str, result: str) -> DesignResult:
         If it was stored by a release with another contract.
     """
     try:
-        return DesignResult.model_validate_json(result)
-    except ValidationError as error:
+        return DesignResult.model_validate_json(unpack(packed))
+    except (ValidationError, ZlibError) as error:
         raise SchemaMismatch(
             f"The result of design {design_id} was stored by another release and cannot be read "
             "by this one. Submit the request again."

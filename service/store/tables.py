@@ -13,6 +13,7 @@ from sqlalchemy import (
     ForeignKey,
     Index,
     Integer,
+    LargeBinary,
     MetaData,
     String,
     Text,
@@ -31,6 +32,7 @@ OWNER_LENGTH = 60
 
 #: What may be claimed. Written out, for a parameter would hide a partial index from a planner.
 CLAIMABLE_SQL = "state = 'queued' AND waits_for IS NULL"
+RUNNING_SQL = "state = 'running'"
 
 _STATES = ("queued", "running", "done", "failed", "cancelled")
 
@@ -133,7 +135,7 @@ class JobRow(Base):
         _partial("ix_jobs_claimable", CLAIMABLE_SQL, "owner", "priority", "position", "design_id"),
         _partial("ix_jobs_longest_waiting", CLAIMABLE_SQL, "queued_at", "position", "design_id"),
         _partial("ix_jobs_waits_for", "waits_for IS NOT NULL", "waits_for"),
-        Index(None, "state", "lease_until"),
+        _partial("ix_jobs_leases", RUNNING_SQL, "lease_until"),
         Index(None, "batch_id", "state"),
         Index(None, "changed_at"),
         Index(None, "owner", "changed_at"),
@@ -219,7 +221,8 @@ class ResultRow(Base):
     engine_version: Mapped[str] = mapped_column(String(40))
     #: The largest miss of the search's maps, repeated from the result.
     map_error_percent: Mapped[float] = mapped_column(Float)
-    result: Mapped[str] = mapped_column(Text)
+    #: Packed, as in `packing`.
+    result: Mapped[bytes] = mapped_column(LargeBinary)
     created_at: Mapped[datetime] = mapped_column(Moment)
 
 
@@ -230,4 +233,4 @@ class ReportRow(Base):
 
     design_id: Mapped[str] = mapped_column(ForeignKey("designs.id"), primary_key=True)
     rank: Mapped[int] = mapped_column(Integer, primary_key=True)
-    report: Mapped[str] = mapped_column(Text)
+    report: Mapped[bytes] = mapped_column(LargeBinary)

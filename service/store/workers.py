@@ -10,6 +10,7 @@ from sqlalchemy import ColumnElement, delete, or_, select, update
 from sqlalchemy.orm import Session
 
 from service.store.clock import now
+from service.store.order import RUNNING
 from service.store.session import Store
 from service.store.tables import JobRow, WorkerRow
 
@@ -64,7 +65,10 @@ def announce(
 
 def touch(store: Store, name: str) -> None:
     """Tell that a worker is still there; one that was taken for gone is there again."""
-    store.write(lambda session: _set(session, name, seen_at=now(session), ended_at=None))
+    store.write(
+        lambda session: _set(session, name, seen_at=now(session), ended_at=None),
+        outlives_machine=False,
+    )
 
 
 def goodbye(store: Store, name: str) -> None:
@@ -117,9 +121,7 @@ def engine_version(session: Session) -> str | None:
 def _lives(moment: datetime, within_s: float) -> ColumnElement[bool]:
     holds = (
         select(JobRow.design_id)
-        .where(
-            JobRow.state == "running", JobRow.lease_until > moment, JobRow.worker == WorkerRow.name
-        )
+        .where(RUNNING, JobRow.lease_until > moment, JobRow.worker == WorkerRow.name)
         .exists()
     )
     return or_(WorkerRow.seen_at > moment - timedelta(seconds=within_s), holds)

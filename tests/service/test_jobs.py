@@ -82,8 +82,8 @@ def state(store: Store, job: ClaimedJob) -> str:
 def lose_the_answer_to_one_commit(store: Store, monkeypatch: pytest.MonkeyPatch) -> None:
     once, left = store._once, [True]
 
-    def unheard(work: Callable[[Session], T], *, writes: bool) -> T:
-        result = once(work, writes=writes)
+    def unheard(work: Callable[[Session], T], *, writes: bool, synced: bool = True) -> T:
+        result = once(work, writes=writes, synced=synced)
         if writes and left:
             left.clear()
             raise OperationalError("COMMIT", None, sqlite3.InterfaceError("connection lost"))

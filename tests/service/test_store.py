@@ -29,6 +29,7 @@ from service.errors import (
 )
 from service.settings import Settings
 from service.store import designs, jobs
+from service.store.packing import pack
 from service.store.session import Store, open_store
 from service.store.tables import DesignRow, JobRow, ResultRow
 from tests.service.samples import sample_planned, sample_request
@@ -55,8 +56,8 @@ class CommitsUnheard:
     def __init__(self, store: Store, monkeypatch: pytest.MonkeyPatch, times: int = 1) -> None:
         self.left, once = times, store._once
 
-        def unheard(work: Callable[[Session], T], *, writes: bool) -> T:
-            result = once(work, writes=writes)
+        def unheard(work: Callable[[Session], T], *, writes: bool, synced: bool = True) -> T:
+            result = once(work, writes=writes, synced=synced)
             if writes and self.left:
                 self.left -= 1
                 raise OperationalError("COMMIT", None, sqlite3.InterfaceError("connection lost"))
@@ -209,7 +210,7 @@ def test_a_design_that_is_not_done_has_no_result_yet(store: Store) -> None:
 
 def test_what_another_release_stored_is_refused_as_such_and_still_listed(store: Store) -> None:
     design_id = finished(store)
-    store.write(lambda session: session.execute(update(ResultRow).values(result="{}")))
+    store.write(lambda session: session.execute(update(ResultRow).values(result=pack("{}"))))
     with pytest.raises(SchemaMismatch, match=design_id):
         designs.get(store, design_id)
     store.write(lambda session: session.execute(update(DesignRow).values(request='{"bands": []}')))
