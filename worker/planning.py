@@ -9,7 +9,7 @@ all in words.
 from __future__ import annotations
 
 from collections.abc import Callable
-from functools import partial
+from functools import cached_property, partial
 from time import perf_counter
 from typing import Final
 
@@ -108,6 +108,7 @@ class _Job:
         )
         self.solves = self.found.solves
         self._pool = _best_of_each_kind(self.found.contenders)
+        self._appraised: dict[Pick, Appraisal] = {}
 
     def leaders(self) -> list[Look]:
         """The distinct leaders, looked at closely, in the order the request asks for."""
@@ -118,6 +119,10 @@ class _Job:
         picks = [each.pick for each in distinct_leaders(list(self.found.contenders), wanted)]
         # Neighbours of two kinds may be cut to one length.
         refined = dict.fromkeys(self.found.refined(pick) for pick in picks)
+        best = self.found.contenders[0]
+        likely = self._sets_are_wanted(best.required_served)
+        # Looked at together they cost less than the members of sets by themselves later.
+        self._appraise((*refined, *(self._members(self._best_sets) if likely else ())))
         looks = self._look_at(tuple(refined), (_SCAN_PART, _LOOK_PART), "candidate")
         # Cut, and looked at closely, they may not come in the order of the scan.
         looks.sort(key=self._key)
@@ -139,22 +144,32 @@ class _Job:
 
     def sets(self, best: Candidate) -> tuple[ChosenSet, ...]:
         """The best sets of two or more, where asked for or where one wire is not enough."""
-        asked = self._request.largest_set
-        if asked is None and best.required_served == best.required_total:
-            return ()
+        return self._best_sets if self._sets_are_wanted(best.required_served) else ()
+
+    def _sets_are_wanted(self, required_served: int) -> bool:
+        required = sum(band.required for band in self._request.bands)
+        return self._request.largest_set is not None or required_served < required
+
+    @cached_property
+    def _best_sets(self) -> tuple[ChosenSet, ...]:
         bands = self._request.bands
         chosen = best_sets(
             np.array([each.served for each in self._pool]),
             np.array([band.required for band in bands]),
             np.array([band.weight for band in bands]),
-            min(asked or _USUAL_SET, LARGEST_SET),
+            min(self._request.largest_set or _USUAL_SET, LARGEST_SET),
         )
         return tuple(each for each in chosen if len(each.members) > 1)
 
+    def _members(self, chosen: tuple[ChosenSet, ...]) -> tuple[Pick, ...]:
+        """The members of some sets, cut to length."""
+        members = dict.fromkeys(member for each in chosen for member in each.members)
+        picks = (self.found.refined(self._pool[member].pick) for member in members)
+        return tuple(dict.fromkeys(picks))
+
     def with_members(self, looks: list[Look], chosen: tuple[ChosenSet, ...]) -> list[Look]:
         """The leaders and, after them, the members of sets that are not among them."""
-        members = dict.fromkeys(member for each in chosen for member in each.members)
-        picks = dict.fromkeys(self.found.refined(self._pool[member].pick) for member in members)
+        picks = self._members(chosen)
         missing = [pick for pick in picks if _rank_of(looks, pick) is None]
         # A set is told by the ranks of its members, so they go before the last leaders.
         spare = [look for look in looks if look.appraisal.pick not in picks]
@@ -224,22 +239,28 @@ class _Job:
             rank=_rank_of(looks, self.found.refined(contender.pick)),
         )
 
+    def _appraise(self, picks: tuple[Pick, ...]) -> None:
+        """Appraise wires that have not been yet, together."""
+        picks = tuple(pick for pick in dict.fromkeys(picks) if pick not in self._appraised)
+        if not picks:
+            return
+        tell = partial(self._progress, _SCAN_PART, f"looking at {len(picks)} wires")
+        maps = tuple(self.found.maps[pick.wire].maps for pick in picks)
+        appraisals = appraise(self.found.space, picks, maps, tell)
+        self._appraised.update(zip(picks, appraisals, strict=True))
+        self.solves += sum(each.solves for each in appraisals)
+
     def _look_at(
         self, picks: tuple[Pick, ...], parts: tuple[float, float], what: str
     ) -> list[Look]:
         """Look closely at wires: what they do, how they hold up, what would gain."""
-        if not picks:
-            return []
-
-        def look() -> None:
-            self._progress(parts[0], f"looking at {len(picks)} wires")
-
-        maps = tuple(self.found.maps[pick.wire].maps for pick in picks)
+        self._appraise(picks)
         looks: list[Look] = []
-        for index, appraisal in enumerate(appraise(self.found.space, picks, maps, look)):
+        for index, pick in enumerate(picks):
             part = parts[0] + (parts[1] - parts[0]) * index / len(picks)
             step = f"judging {what} {index + 1} of {len(picks)}"
-            looks.append(self._judged(appraisal, partial(self._progress, part, step)))
+            tell = partial(self._progress, part, step)
+            looks.append(self._judged(self._appraised[pick], tell))
         return looks
 
     def _judged(self, appraisal: Appraisal, tell: Callable[[], None]) -> Look:
@@ -251,7 +272,7 @@ class _Job:
         if departures:
             planned = np.array([band.served_fraction for band in appraisal.bands])
             held = hold(self.found.space, pick, departures, planned, tell)
-        self.solves += appraisal.solves + (held.solves if held else 0)
+        self.solves += held.solves if held else 0
         return Look(way, appraisal, gains_of(self.found, pick), held)
 
 

@@ -161,19 +161,20 @@ def contenders_of(
     fractions = scored.served_fraction[:, tops]
     service = np.where(fractions >= FULLY_SERVED, 2, np.where(fractions > 0.0, 1, 0))
     orders = np.where(service > 0, orders, 0)
-    best_of_kind: dict[Kind, Contender] = {}
-    for column, top in enumerate(tops.tolist()):
-        kind = tuple(zip(orders[:, column].tolist(), service[:, column].tolist(), strict=True))
-        if kind not in best_of_kind:
-            best_of_kind[kind] = Contender(
-                key=(*keys[top].tolist(), float(wire), ratio),
-                kind=kind,
-                pick=Pick(wire, ratio, float(length_m[top])),
-                served=tuple(fractions[:, column].tolist()),
-                required_served=int(merit.required_served[top]),
-                weighted_served=float(merit.weighted_served[top]),
-                swr_worst=float(merit.swr_worst[top]),
-                loss_db=float(merit.loss_db[top]),
-                cost=float(cost[top]),
-            )
-    return list(best_of_kind.values())
+    # The first of each kind is the best of it, for they come in order.
+    kinds = (3 * orders + service).T
+    firsts = np.sort(np.unique(kinds, axis=0, return_index=True)[1])
+    return [
+        Contender(
+            key=(*keys[tops[column]].tolist(), float(wire), ratio),
+            kind=tuple(zip(orders[:, column].tolist(), service[:, column].tolist(), strict=True)),
+            pick=Pick(wire, ratio, float(length_m[tops[column]])),
+            served=tuple(fractions[:, column].tolist()),
+            required_served=int(merit.required_served[tops[column]]),
+            weighted_served=float(merit.weighted_served[tops[column]]),
+            swr_worst=float(merit.swr_worst[tops[column]]),
+            loss_db=float(merit.loss_db[tops[column]]),
+            cost=float(cost[tops[column]]),
+        )
+        for column in firsts.tolist()
+    ]
