@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+import logging
 import os
-from typing import Annotated, Final
+from collections.abc import Mapping
+from typing import Annotated, Final, Literal
 
-from pydantic import Field, field_validator
+from pydantic import Field, ValidationError, field_validator
 from pydantic_settings import BaseSettings, SettingsConfigDict
 
+from service.errors import Fault, RequestRefused
+
+_PREFIX: Final = "SPANWRIGHT_"
 _SQLITE: Final = "sqlite:///"
 _POSTGRESQL: Final = "postgresql+psycopg://"
 
@@ -41,10 +46,20 @@ class Settings(BaseSettings):
         A job that runs longer is ended.
     cancel_grace_s : float
         How long a cancelled or overdue job may take to stop by itself before its process ends.
+    deaf_s : float
+        A Celery worker that hears no ring for so long, while work waits and the broker answers,
+        has stopped listening and ends itself, to be started again by its supervisor.
+    most_streams : int
+        Streams of events that one API process keeps open at a time.
+    log_format : str
+        ``plain`` for people, ``json`` for machines, one object a line.
+    log_level : str or None
+        The least that is logged; by default warnings in the plain form, all that happens to a
+        job or a request in JSON.
     """
 
     model_config = SettingsConfigDict(
-        env_prefix="SPANWRIGHT_", frozen=True, extra="ignore", hide_input_in_errors=True
+        env_prefix=_PREFIX, frozen=True, extra="ignore", hide_input_in_errors=True
     )
 
     database_url: str = "sqlite:///spanwright.db"
@@ -58,6 +73,10 @@ class Settings(BaseSettings):
     progress_s: Annotated[float, Field(gt=0.0)] = 1.0
     job_deadline_s: Annotated[float, Field(gt=0.0)] = 600.0
     cancel_grace_s: Annotated[float, Field(gt=0.0)] = 2.0
+    deaf_s: Annotated[float, Field(gt=0.0)] = 60.0
+    most_streams: Annotated[int, Field(ge=0, le=10_000)] = 200
+    log_format: Literal["plain", "json"] = "plain"
+    log_level: Literal["debug", "info", "warning", "error"] | None = None
 
     @field_validator("database_url")
     @classmethod
@@ -70,6 +89,52 @@ class Settings(BaseSettings):
         return url
 
     @property
+    def least_level(self) -> int:
+        """The level of `logging` from which on a process tells what happens."""
+        by_format = "info" if self.log_format == "json" else "warning"
+        return logging.getLevelNamesMapping()[(self.log_level or by_format).upper()]
+
+    @property
     def heartbeat_s(self) -> float:
         """How often a worker renews its lease: at least five times within it."""
         return min(self.progress_s, self.lease_s / 5.0)
+
+
+def settings_here() -> Settings:
+    """The settings of this process, from its environment.
+
+    Raises
+    ------
+    SettingRefused
+        With one fault for each setting refused.
+    """
+    try:
+        return Settings()
+    except ValidationError as error:
+        found = error.errors(include_url=False, include_input=False, include_context=False)
+        refused = {str(each["loc"][0]): each["msg"] for each in found}
+    raise SettingRefused(refused)
+
+
+class SettingRefused(RequestRefused):
+    """A setting cannot be used; what was given is not repeated, for it may hold a password.
+
+    Parameters
+    ----------
+    reasons : mapping
+        For each setting by the name of its field, what is wrong with it.
+    """
+
+    code = "setting-refused"
+    title = "A setting cannot be used"
+
+    def __init__(self, reasons: Mapping[str, str]) -> None:
+        super().__init__([_fault(field, reason) for field, reason in reasons.items()])
+
+
+def _fault(field: str, reason: str) -> Fault:
+    variable = _PREFIX + field.upper()
+    reason = reason.removeprefix("Value error, ").rstrip(".") + "."
+    reason = reason[:1].lower() + reason[1:]
+    remedy = "Set it anew, or unset it for the default."
+    return Fault(variable, "", reason, remedy, SettingRefused.code)
