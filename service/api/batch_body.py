@@ -3,26 +3,21 @@
 from __future__ import annotations
 
 import io
-from functools import partial
-from typing import Annotated, Any, Final, get_args
+from typing import Annotated, Final, TypedDict, get_args
 
 from anyio import CapacityLimiter, to_thread
 from anyio.lowlevel import RunVar
 from fastapi import Depends, Query, Request
-from pydantic import ValidationError
 
 from service.api.dependencies import refuse_coded_body
 from service.api.problems import MediaTypeRefused
 from service.contracts.batch import (
     LARGEST_BATCH_BYTES,
-    BatchHeading,
     BatchRequest,
     parse_batch_json,
     parse_batch_lines,
 )
 from service.contracts.progress import Priority
-from service.contracts.refusals import faults_of
-from service.errors import Fault, RequestRefused
 
 JSON: Final = "application/json"
 LINES: Final = "application/x-ndjson"
@@ -45,6 +40,12 @@ Recompute = Annotated[
 ]
 
 
+class _Said(TypedDict):
+    name: str | None
+    priority: str | None
+    recompute: bool | None
+
+
 async def batch_request(
     request: Request, name: Name = None, priority: Urgency = None, recompute: Recompute = None
 ) -> BatchRequest:
@@ -63,11 +64,15 @@ async def batch_request(
         raise MediaTypeRefused("Content-Type", media_type, remedy)
     refuse_coded_body(request)
     body = await _read(request)
-    said: dict[str, Any] = {"name": name, "priority": priority, "recompute": recompute}
-    said = {field: value for field, value in said.items() if value is not None}
-    parse = _parse_lines if media_type == LINES else _parse_json
+
+    def parse() -> BatchRequest:
+        said: _Said = {"name": name, "priority": priority, "recompute": recompute}
+        if media_type == LINES:
+            return parse_batch_lines(io.BytesIO(body), **said)
+        return parse_batch_json(body, **said)
+
     # In a thread: parsing thousands of requests takes longer than others should wait.
-    return await to_thread.run_sync(partial(parse, body, said), limiter=_limiter())
+    return await to_thread.run_sync(parse, limiter=_limiter())
 
 
 async def _read(request: Request) -> bytes:
@@ -82,28 +87,6 @@ async def _read(request: Request) -> bytes:
         elif size_bytes > 2 * LARGEST_BATCH_BYTES:
             break
     return b"".join(parts)
-
-
-def _parse_lines(body: bytes, said: dict[str, Any]) -> BatchRequest:
-    return parse_batch_lines(io.BytesIO(body), **said)
-
-
-def _parse_json(body: bytes, said: dict[str, Any]) -> BatchRequest:
-    faults: list[Fault] = []
-    untold = 0
-    heading = BatchHeading()
-    try:
-        heading = BatchHeading.model_validate(said)
-    except ValidationError as error:
-        faults.extend(faults_of(error))
-    try:
-        batch = parse_batch_json(body)
-    except RequestRefused as refused:
-        faults.extend(refused.faults)
-        untold = refused.untold
-    if faults:
-        raise RequestRefused(faults, untold)
-    return batch.model_copy(update={field: getattr(heading, field) for field in said})
 
 
 def _limiter() -> CapacityLimiter:

@@ -90,8 +90,20 @@ def batch_hash(heading: BatchRequest | BatchHeading, designs: Iterable[str]) -> 
     return digest.hexdigest()
 
 
-def parse_batch_json(body: bytes) -> BatchRequest:
+def parse_batch_json(
+    body: bytes,
+    *,
+    name: str | None = None,
+    priority: str | None = None,
+    recompute: bool | None = None,
+) -> BatchRequest:
     """Read a batch from one JSON document.
+
+    Parameters
+    ----------
+    body : bytes
+    name, priority, recompute
+        What is said beside the document goes over what stands in it.
 
     Raises
     ------
@@ -101,11 +113,15 @@ def parse_batch_json(body: bytes) -> BatchRequest:
     """
     if len(body) > LARGEST_BATCH_BYTES:
         raise RequestRefused([_too_large(len(body))])
+    heading, faults = _heading(name, priority, recompute)
     try:
-        return BatchRequest.model_validate_json(body)
+        batch = BatchRequest.model_validate_json(body)
     except ValidationError as error:
-        faults = faults_of(error)
-        raise RequestRefused(faults[:MOST_FAULTS], untold=len(faults[MOST_FAULTS:])) from error
+        faults.extend(faults_of(error))
+    if faults:
+        raise RequestRefused(faults[:MOST_FAULTS], untold=len(faults[MOST_FAULTS:]))
+    said = {field: getattr(heading, field) for field in heading.model_fields_set}
+    return batch.model_copy(update=said)
 
 
 def parse_batch_lines(
@@ -113,7 +129,7 @@ def parse_batch_lines(
     *,
     name: str | None = None,
     priority: str | None = None,
-    recompute: bool = False,
+    recompute: bool | None = None,
 ) -> BatchRequest:
     """Read a batch from lines of JSON, one design request a line.
 
@@ -131,13 +147,7 @@ def parse_batch_lines(
         With every fault, named as ``line 17: bands[0].low_mhz``; of more than `MOST_FAULTS`
         only the number.
     """
-    faults: list[Fault] = []
-    given = {"name": name, "priority": priority, "recompute": recompute}
-    try:
-        heading = BatchHeading.model_validate({k: v for k, v in given.items() if v is not None})
-    except ValidationError as error:
-        faults.extend(faults_of(error))
-        heading = BatchHeading()
+    heading, faults = _heading(name, priority, recompute)
     designs: list[DesignRequest] = []
     for found in _designs_of(lines):
         if isinstance(found, DesignRequest):
@@ -155,6 +165,17 @@ def parse_batch_lines(
         recompute=heading.recompute,
         designs=tuple(designs),
     )
+
+
+def _heading(
+    name: str | None, priority: str | None, recompute: bool | None
+) -> tuple[BatchHeading, list[Fault]]:
+    """What is said of a batch beside its designs, and what is wrong with that."""
+    given = {"name": name, "priority": priority, "recompute": recompute}
+    try:
+        return BatchHeading.model_validate({k: v for k, v in given.items() if v is not None}), []
+    except ValidationError as error:
+        return BatchHeading(), list(faults_of(error))
 
 
 def _designs_of(lines: Iterable[bytes]) -> Iterator[DesignRequest | Fault]:

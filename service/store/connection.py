@@ -12,7 +12,10 @@ from typing import Final
 
 from sqlalchemy import Connection, Engine, create_engine, event
 from sqlalchemy.engine.interfaces import DBAPIConnection
+from sqlalchemy.exc import ArgumentError
 from sqlalchemy.pool import ConnectionPoolEntry
+
+from service.settings import SettingRefused
 
 #: Name of the execution option that says whether a transaction is going to write.
 WRITES: Final = "spanwright_writes"
@@ -37,13 +40,30 @@ _POSTGRESQL: Final = {
 
 
 def make_engine(database_url: str) -> Engine:
-    """An engine for a database of either kind."""
+    """An engine for a database of either kind.
+
+    Raises
+    ------
+    SettingRefused
+        If the URL cannot be read, or its driver is not installed.
+    """
     if not database_url.startswith("sqlite"):
-        return create_engine(database_url, pool_pre_ping=True, connect_args=_POSTGRESQL)
+        return _postgresql_engine(database_url)
     engine = create_engine(database_url)
     event.listen(engine, "connect", _prepare_sqlite)
     event.listen(engine, "begin", _begin_sqlite)
     return engine
+
+
+def _postgresql_engine(database_url: str) -> Engine:
+    # Whatever is wrong is told without the URL and without its cause, for it holds a password.
+    try:
+        return create_engine(database_url, pool_pre_ping=True, connect_args=_POSTGRESQL)
+    except ModuleNotFoundError:
+        reason = "the driver of PostgreSQL is not installed; it comes with spanwright[postgres]"
+    except (ArgumentError, ValueError):
+        reason = "it cannot be read; signs such as / @ : in a password are written as %2F %40 %3A"
+    raise SettingRefused({"database_url": reason})
 
 
 def _prepare_sqlite(connection: DBAPIConnection, _entry: ConnectionPoolEntry) -> None:
