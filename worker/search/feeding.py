@@ -53,6 +53,36 @@ class Fed:
 
 
 @dataclass(frozen=True, slots=True)
+class Load:
+    """Impedances at feed points, with what every ratio asks of them; arrays of one shape.
+
+    Attributes
+    ----------
+    impedance_ohm, resistance_ohm : ndarray
+    squared : ndarray
+        |Z|².
+    """
+
+    impedance_ohm: ComplexArray
+    resistance_ohm: FloatArray
+    squared: FloatArray
+
+    @classmethod
+    def of(cls, impedance_ohm: ComplexArray) -> Load:
+        """The load of some impedances."""
+        resistance = np.ascontiguousarray(impedance_ohm.real)
+        return cls(impedance_ohm, resistance, resistance**2 + impedance_ohm.imag**2)
+
+    def some(self, wires: slice) -> Load:
+        """Some of the wires, along the last axis."""
+        return Load(
+            self.impedance_ohm[..., wires],
+            self.resistance_ohm[..., wires],
+            self.squared[..., wires],
+        )
+
+
+@dataclass(frozen=True, slots=True)
 class Feeding:
     """How the wires of a search are fed, but for the transformer's ratio, which varies.
 
@@ -121,14 +151,14 @@ class Feeding:
         return Fed(behind, swr, limited, far, np.asarray(state.total_loss_db))
 
     def reflected_power(
-        self, impedance_ohm: ComplexArray, frequency_hz: FloatArray, ratio: float
+        self, load: Load, frequency_hz: FloatArray, ratio: float
     ) -> tuple[FloatArray, FloatArray | None]:
         """What the scan needs, and no more: |Γ|² where the limits apply, and the line's loss.
 
         Parameters
         ----------
-        impedance_ohm : ndarray, shape (b, p, n)
-            At the feed points of n wires, at p frequencies of b bands.
+        load : Load
+            At the feed points of n wires, at p frequencies of b bands; arrays (b, p, n).
         frequency_hz : ndarray, shape (b, p)
         ratio : float
 
@@ -139,11 +169,15 @@ class Feeding:
             At the middle frequency of each band; None without a line.
         """
         if self.line is None and not self.matched:
+            # 1 - |Γ|² = 4 R R0 / ((R + R0)² + X²), with R0 seen through the transformer.
             match_ohm = ratio * self.reference_ohm
-            squared = impedance_ohm.imag**2
-            against = (impedance_ohm.real - match_ohm) ** 2 + squared
-            along = (impedance_ohm.real + match_ohm) ** 2 + squared
-            return np.divide(against, along, out=against), None
+            taken = (4.0 * match_ohm) * load.resistance_ohm
+            against = 0.5 * taken
+            against += load.squared
+            against += match_ohm**2
+            np.divide(taken, against, out=taken)
+            return np.maximum(np.subtract(1.0, taken, out=taken), 0.0, out=taken), None
+        impedance_ohm = load.impedance_ohm
         reflected = np.empty(impedance_ohm.shape)
         loss_db = None if self.line is None else np.empty(impedance_ohm[:, 0].shape)
         for index in range(len(impedance_ohm)):

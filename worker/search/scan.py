@@ -6,7 +6,7 @@ ties are broken by length, then by the order of wires and ratios.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import partial
 from typing import Final
@@ -21,7 +21,7 @@ from worker.search.impedance_map import (
     map_band_together,
 )
 from worker.search.ranking import Contender, Pick, best_first, contenders_of, rank_keys
-from worker.search.scoring import Score, merit, score
+from worker.search.scoring import Score, merit, score, scores
 from worker.search.space import BandGoal, ComplexArray, FloatArray, SearchSpace
 
 #: Called with the part done (0 to 1) and what is being done, in words.
@@ -43,9 +43,6 @@ _ATTEMPTS: Final = ((False, (1, 1)), (True, (1, 1)), (True, (2, 1)), (True, (2, 
 
 #: Wires are solved so many at a time, with a word of progress between.
 _SOLVED_AT_A_TIME: Final = 400
-
-#: Lengths scored at a time: what they need then stays in the processor's cache.
-_CHUNK_LENGTHS: Final = 2048
 
 
 @dataclass(frozen=True, slots=True)
@@ -145,7 +142,9 @@ def scan(space: SearchSpace, progress: ProgressCallback) -> Scan:
         part = _MAP_PART + (1.0 - _MAP_PART) * index / len(space.wires)
         step = f"comparing {len(lengths_m)} lengths of wire {index + 1} of {len(space.wires)}"
         progress(part, step)
-        for ratio, scored in _scores(space, maps[index], lengths_m):
+        impedance = maps[index].over_even_ratios(lengths_m, space.points)
+        by_ratio = scores(impedance, space.bands, space.feeding, space.ratios)
+        for ratio, scored in zip(space.ratios, by_ratio, strict=True):
             progress(part, step)
             closest.see(scored, index, ratio, lengths_m)
             contenders += contenders_of(
@@ -294,27 +293,3 @@ def _probe(
 def _probes(space: SearchSpace) -> int:
     """How many fresh solves each map of a space is held to."""
     return max(_LEAST_PROBES, _PROBES // len(space.wires))
-
-
-def _scores(
-    space: SearchSpace, maps: WireMaps, lengths_m: FloatArray
-) -> Iterator[tuple[float, Score]]:
-    """The score of one wire at every ratio, over all lengths of the scan."""
-    impedance = maps.over_even_ratios(lengths_m, space.points)
-    for ratio in space.ratios:
-        parts = [
-            score(
-                impedance[:, :, start : start + _CHUNK_LENGTHS], space.bands, space.feeding, ratio
-            )
-            for start in range(0, len(lengths_m), _CHUNK_LENGTHS)
-        ]
-        yield ratio, joined(parts)
-
-
-def joined(parts: list[Score]) -> Score:
-    """Scores of neighbouring runs of lengths as one."""
-    return Score(
-        np.concatenate([part.served_fraction for part in parts], axis=1),
-        np.concatenate([part.swr_worst for part in parts], axis=1),
-        np.concatenate([part.loss_db for part in parts], axis=1),
-    )

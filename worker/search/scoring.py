@@ -6,6 +6,7 @@ A band is *served* where the standing wave ratio stays within its limit from edg
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cache
 from typing import Final
@@ -14,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from worker.engine.reflection import LARGEST_STANDING_WAVE_RATIO
-from worker.search.feeding import Feeding, reflected_of
+from worker.search.feeding import Feeding, Load, reflected_of
 from worker.search.space import BandGoal, ComplexArray, FloatArray
 
 #: A band counts as served from this part of its width on: rounding at an edge is no fault.
@@ -23,6 +24,8 @@ FULLY_SERVED: Final = 1.0 - 1e-9
 #: Reflected power as far as this from a limit at every point is as far between them: on wire
 #: of any use it swings by less.
 _CLEARLY: Final = 0.03
+#: Wires scored at a time: what they need then stays in the processor's cache.
+_CHUNK_WIRES: Final = 1024
 #: A closer look takes so many steps to one of the grid.
 _FINER: Final = 12
 
@@ -60,24 +63,48 @@ def score(
     ratio : float
         Impedance ratio of the transformer.
     """
+    return next(scores(impedance_ohm, bands, feeding, (ratio,)))
+
+
+def scores(
+    impedance_ohm: ComplexArray,
+    bands: tuple[BandGoal, ...],
+    feeding: Feeding,
+    ratios: tuple[float, ...],
+) -> Iterator[Score]:
+    """The same at several ratios, one after the other."""
     grids = np.array([band.grid_hz(impedance_ohm.shape[1]) for band in bands])
-    reflected, loss_db = feeding.reflected_power(impedance_ohm, grids, ratio)
     limits = np.array([reflected_of(np.asarray(band.swr_limit)) for band in bands])
-    most = reflected.max(axis=1)
-    served = (most <= limits[:, None]).astype(np.float64)
-    between = _between(impedance_ohm.shape[1])
-    # Most wires serve a band whole or not at all, clearly; the rest are looked at closely.
-    for index, limit in enumerate(limits):
-        lowest = reflected[index].min(axis=0)
-        close = (most[index] > limit - _CLEARLY) & (lowest <= limit + _CLEARLY)
-        if close.any():
-            mismatch = between @ _mismatch(reflected[index][:, close])
-            within = served_fraction(mismatch[None], _mismatch(limit))
-            served[index, close] = within[0]
-            most[index, close] = 1.0 - 1.0 / np.maximum(mismatch.max(axis=0), 1.0)
-    if loss_db is None:
-        loss_db = np.zeros(most.shape)
-    return Score(served, _swr_of(most), loss_db)
+    load = Load.of(impedance_ohm)
+    shape = (len(bands), impedance_ohm.shape[2])
+    for ratio in ratios:
+        reflected = np.empty(impedance_ohm.shape)
+        most, least, loss_db = np.empty(shape), np.empty(shape), np.zeros(shape)
+        for start in range(0, shape[1], _CHUNK_WIRES):
+            some = slice(start, start + _CHUNK_WIRES)
+            part, lost_db = feeding.reflected_power(load.some(some), grids, ratio)
+            reflected[..., some] = part
+            most[:, some], least[:, some] = part.max(axis=1), part.min(axis=1)
+            if lost_db is not None:
+                loss_db[:, some] = lost_db
+        served = (most <= limits[:, None]).astype(np.float64)
+        # Most wires serve a band whole or not at all, clearly; the rest are looked at closely.
+        for band, limit in enumerate(limits):
+            close = np.flatnonzero(
+                (most[band] > limit - _CLEARLY) & (least[band] <= limit + _CLEARLY)
+            )
+            for start in range(0, len(close), _CHUNK_WIRES):
+                some_close = close[start : start + _CHUNK_WIRES]
+                within, worst = _looked_at(reflected[band][:, some_close], limit)
+                served[band, some_close], most[band, some_close] = within, worst
+        yield Score(served, _swr_of(most), loss_db)
+
+
+def _looked_at(reflected: FloatArray, limit: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Part of a band within a limit, and the most reflected, between (p, n) grid points too."""
+    mismatch = _between(len(reflected)) @ _mismatch(reflected)
+    within = served_fraction(mismatch[None], _mismatch(limit))[0]
+    return within, 1.0 - 1.0 / np.maximum(mismatch.max(axis=0), 1.0)
 
 
 def stacked(parts: list[Score]) -> Score:

@@ -11,7 +11,7 @@ from tests.unit.search.open_line import C_M_PER_S, OpenLine, goal, resonant_m, s
 from worker.engine.errors import NotConverged
 from worker.engine.line_catalogue import FEED_LINES
 from worker.engine.reflection import standing_wave_ratio
-from worker.search import scan as scan_module
+from worker.search import scoring as scoring_module
 from worker.search.feeding import Feeding
 from worker.search.impedance_map import map_band
 from worker.search.ranking import Pick
@@ -80,7 +80,7 @@ def test_scoring_in_pieces_changes_nothing(chunk: int, monkeypatch: pytest.Monke
     if chunk == 1:
         # A piece a length would take minutes; the last piece alone is one here.
         chunk = len(space.lengths_m()) - 1
-    monkeypatch.setattr(scan_module, "_CHUNK_LENGTHS", chunk)
+    monkeypatch.setattr(scoring_module, "_CHUNK_WIRES", chunk)
     pieces = scanned(space)
     assert pieces.contenders == whole.contenders
     assert pieces.closest == whole.closest
