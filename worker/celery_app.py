@@ -16,6 +16,7 @@ import random
 import socket
 import threading
 import uuid
+from contextlib import suppress
 from typing import Final
 
 from celery import Celery
@@ -30,9 +31,9 @@ from celery.signals import (
 from service.doorbell import TASK, TRANSPORT, Doorbell
 from service.errors import StoreUnavailable
 from service.settings import Settings
-from service.store import jobs
+from service.store import jobs, workers
 from service.store.session import Store, open_store
-from worker.running import PlanFunction, drain
+from worker.running import PlanFunction, announce, drain, sweep
 
 _log = logging.getLogger(__name__)
 
@@ -131,13 +132,17 @@ class _PoolProcess:
         self._sweeper.join(settings.sweep_s)
         self._doorbell.close()
         if self._store is not None:
+            with suppress(StoreUnavailable):
+                workers.goodbye(self._store, self._name)
             self._store.close()
 
     def _open(self) -> Store:
         # Not at the start of the process: the database may be away just then.
         with self._opening:
             if self._store is None:
-                self._store = open_store(settings)
+                store = open_store(settings)
+                announce(store, self._name, "celery")
+                self._store = store
             return self._store
 
     def _sweep(self) -> None:
@@ -145,7 +150,7 @@ class _PoolProcess:
         while not self._closing.wait(settings.sweep_s * random.uniform(0.7, 1.3)):  # noqa: S311  # no secret
             try:
                 store = self._open()
-                jobs.sweep(store, settings.max_attempts)
+                sweep(store, settings, self._name)
                 # A process that drains looks for more by itself, and rings when it stops.
                 idle = not self._draining.is_set() and not _stopping.is_set()
                 if idle and jobs.any_queued(store):

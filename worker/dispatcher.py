@@ -19,7 +19,7 @@ import socket
 import threading
 import time
 import uuid
-from contextlib import closing, suppress
+from contextlib import ExitStack, closing, suppress
 from dataclasses import dataclass
 from multiprocessing.connection import Connection
 from multiprocessing.context import SpawnContext, SpawnProcess
@@ -27,9 +27,9 @@ from typing import Final
 
 from service.errors import SpanwrightError, StoreUnavailable
 from service.settings import Settings
-from service.store import jobs
+from service.store import jobs, workers
 from service.store.session import Store, open_store
-from worker.running import PlanFunction, drain
+from worker.running import PlanFunction, announced, drain, sweep
 
 _log = logging.getLogger(__name__)
 
@@ -219,6 +219,7 @@ def _give_back(settings: Settings, worker: str) -> None:
     try:
         with closing(open_store(settings, patience_s=_BURIAL_PATIENCE_S)) as store:
             jobs.bury(store, worker, settings.max_attempts)
+            workers.goodbye(store, worker)
     except SpanwrightError as error:
         _log.warning("what worker %s held waits for its lease: %s", worker, error)
     except Exception:  # noqa: BLE001  # without its supervisor no worker would be started again
@@ -233,12 +234,13 @@ def _work(settings: Settings, plan: PlanFunction | None, name: str, lifeline: Co
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     signal.signal(signal.SIGTERM, lambda _number, _frame: stopping.set())
     threading.Thread(target=_watch, args=(lifeline, stopping), daemon=True).start()
-    try:
-        store = open_store(settings)
-    except SpanwrightError as error:
-        _log.error("worker %s cannot begin: %s", name, error)
-        raise SystemExit(1) from error
-    with closing(store):
+    with ExitStack() as at_the_end:
+        try:
+            store = at_the_end.enter_context(closing(open_store(settings)))
+            at_the_end.enter_context(announced(store, name, "embedded"))
+        except SpanwrightError as error:
+            _log.error("worker %s cannot begin: %s", name, error)
+            raise SystemExit(1) from error
         _poll(store, settings, plan or _real_plan(), name, stopping)
 
 
@@ -264,7 +266,7 @@ def _poll(
         now_ran = 0
         try:
             if time.monotonic() >= sweep_at:
-                jobs.sweep(store, settings.max_attempts)
+                sweep(store, settings, worker)
                 # Jittered, so that workers do not sweep in step.
                 sweep_at = time.monotonic() + settings.sweep_s * random.uniform(0.7, 1.3)  # noqa: S311  # no secret
             now_ran = drain(

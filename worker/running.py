@@ -5,9 +5,11 @@ from __future__ import annotations
 import logging
 import math
 import os
+import socket
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager, suppress
 from enum import Enum
 from typing import Final, Protocol
 
@@ -16,9 +18,11 @@ from service.contracts.progress import Progress
 from service.contracts.request import DesignRequest
 from service.errors import SpanwrightError, StoreUnavailable
 from service.settings import Settings
-from service.store import jobs
+from service.store import jobs, workers
 from service.store.jobs import Beat, ClaimedJob
 from service.store.session import Store
+from service.store.workers import Carrier
+from worker.engine import ENGINE_VERSION
 from worker.engine.errors import EngineError
 
 ProgressCallback = Callable[[float, str], None]
@@ -55,6 +59,41 @@ class _StopPlanning(BaseException):
     """Raised inside planning by its progress callback; no ``except Exception`` may eat it."""
 
 
+@contextmanager
+def announced(store: Store, worker: str, carrier: Carrier) -> Iterator[None]:
+    """Tell the store of this worker while it works, and that it went when it goes.
+
+    Raises
+    ------
+    StoreUnavailable
+        If the store stayed away before the worker began; it may go in silence.
+    """
+    announce(store, worker, carrier)
+    try:
+        yield
+    finally:
+        with suppress(StoreUnavailable):
+            workers.goodbye(store, worker)
+
+
+def announce(store: Store, worker: str, carrier: Carrier) -> None:
+    """Tell the store of this worker: where it runs, and with which engine."""
+    workers.announce(
+        store,
+        worker,
+        host=socket.gethostname(),
+        pid=os.getpid(),
+        carrier=carrier,
+        engine_version=ENGINE_VERSION,
+    )
+
+
+def sweep(store: Store, settings: Settings, worker: str) -> None:
+    """Put right what lost workers left, and tell that this one is still there."""
+    workers.touch(store, worker)
+    jobs.sweep(store, settings.max_attempts)
+
+
 def drain(
     store: Store,
     settings: Settings,
@@ -81,6 +120,9 @@ def drain(
         No job is begun after so many, or after so long.
     """
     ran, until_s = 0, time.monotonic() + longest_s
+    # A look first, which does not hold up writers; where one job was another is likely.
+    if not jobs.any_queued(store):
+        return 0
     while ran < most_jobs and time.monotonic() < until_s and not stopping.is_set():
         if run_next(store, settings, plan, worker, stopping) is None:
             break
@@ -100,9 +142,7 @@ def run_next(
     StoreUnavailable
         If the store stayed away before a job was claimed.
     """
-    if not jobs.any_queued(store):
-        return None
-    job = jobs.claim(store, worker, settings.lease_s)
+    job = jobs.claim(store, worker, settings.lease_s, ENGINE_VERSION)
     if job is None:
         return None
     _log.info("design %s: attempt %d begins", job.design_id, job.attempt)
