@@ -16,6 +16,7 @@ from service.api import (
     designs,
     health,
     openapi,
+    plots,
     problem_kinds,
     problems,
 )
@@ -58,7 +59,17 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     if store is not None:
         app.state.store = store
     problems.install(app)
-    for each in (designs, batches, candidates, check, band_lists, health, problem_kinds, pages):
+    for each in (
+        designs,
+        batches,
+        candidates,
+        check,
+        band_lists,
+        health,
+        problem_kinds,
+        plots,
+        pages,
+    ):
         app.include_router(each.router)
     app.mount("/static", pages.static_files, name="static")
     app.add_middleware(Guard)

@@ -59,6 +59,16 @@ def decibels(value: float) -> str:
     return f"{value:.2f}"
 
 
+def degrees(value: float) -> str:
+    """An angle in degrees to a tenth, whole where it is so: ``39.8``, ``90``."""
+    return f"{value:.1f}".removesuffix(".0")
+
+
+def part_of_one(value: float) -> str:
+    """A part of the largest, ``0.963``."""
+    return f"{value:.3f}"
+
+
 def volts(value: float) -> str:
     """A voltage in V to three figures, whole from a hundred on: ``59.3``, ``1999``."""
     return _three_figures(value)

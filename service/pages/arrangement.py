@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Final
 
 from service.contracts.candidate import (
     BandOutcome,
@@ -12,7 +13,11 @@ from service.contracts.candidate import (
     DipoleSet,
     Steadiness,
 )
+from service.contracts.radiation import Radiation
 from service.contracts.report import FeedReport, Matching, MatchingPart
+
+#: Every this many places of the current make a line in the table behind its plot.
+PLACE_STRIDE: Final = 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,6 +34,50 @@ class SetsTable:
 
     sets: tuple[DipoleSet, ...]
     rows: tuple[tuple[BandOutcome, tuple[tuple[int, BandOutcome] | None, ...]], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Pictures:
+    """Which pictures a report tells enough for, and where along the wire a table tells its current.
+
+    ``places_m`` pairs the index of a place with its distance from the end in m.
+    """
+
+    smith: bool
+    current: bool
+    radiation: bool
+    places_m: tuple[tuple[int, float], ...]
+
+
+def pictures_of(report: FeedReport) -> Pictures:
+    """What of a report can be drawn; one stored by an earlier release tells less."""
+    currents = [band.current for band in report.bands]
+    steps = 0 if currents[0] is None else len(currents[0].size) - 1
+    return Pictures(
+        smith=all(band.centre.reflection_deg is not None for band in report.bands),
+        current=None not in currents,
+        radiation=any(band.radiation for band in report.bands),
+        places_m=tuple(
+            (index, report.length_m * index / steps) for index in range(0, steps + 1, PLACE_STRIDE)
+        )
+        if steps
+        else (),
+    )
+
+
+def pattern_rows(found: Radiation) -> list[tuple[int, float, float, float]]:
+    """Angle in degrees, gain across, along and around the wire in dBi, every ten degrees."""
+    stride = round(10.0 / found.step_deg)
+    quarter = len(found.broadside_dbi) - 1
+    return [
+        (
+            round(index * found.step_deg),
+            found.broadside_dbi[min(index, 2 * quarter - index)],
+            found.end_on_dbi[index],
+            found.around_dbi[index],
+        )
+        for index in range(0, 2 * quarter + 1, stride)
+    ]
 
 
 def steadiness_table(candidate: Candidate, held: Steadiness) -> SteadinessTable:

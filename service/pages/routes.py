@@ -11,7 +11,7 @@ from starlette.staticfiles import StaticFiles
 from service.contracts.candidate import Candidate
 from service.contracts.progress import Design, DesignSummary
 from service.contracts.report import FeedReport
-from service.pages.arrangement import has_line, sets_table, steadiness_table
+from service.pages.arrangement import has_line, pictures_of, sets_table, steadiness_table
 from service.pages.form import routes as form
 from service.pages.stored import StoreHere
 from service.pages.templating import STATIC, render
@@ -23,6 +23,10 @@ PER_PAGE: Final = 20
 REFRESH_S: Final = 3
 #: Every this many points of the sweep make a line in the table behind its plot.
 SWEEP_STRIDE: Final = 6
+#: Every this many points of a band make a line in the table behind its SWR.
+GRID_STRIDE: Final = 2
+#: Every this many points of a band make a line in the table behind the Smith chart.
+REFLECTION_STRIDE: Final = 5
 
 router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
 router.include_router(form.router)
@@ -123,5 +127,8 @@ def _sheet(
         "bands": tuple(zip(candidate.bands, design.request.bands, report.bands, strict=True)),
         "sweep": report.sweep[::SWEEP_STRIDE],
         "sweep_stride": SWEEP_STRIDE,
+        "pictures": pictures_of(report),
+        "grid_stride": GRID_STRIDE,
+        "reflection_stride": REFLECTION_STRIDE,
         "target_ohm": report.reference_ohm * report.transformer_ratio,
     }

@@ -11,8 +11,15 @@ from typing import Final
 from jinja2 import Environment, FileSystemLoader, StrictUndefined, select_autoescape
 
 from service.pages import formats, wording
-from service.pages.arrangement import matching_parts
-from service.plots import impedance_plot, steadiness_plot, swr_plot, trade_off_plot
+from service.pages.arrangement import matching_parts, pattern_rows
+from service.plots import (
+    impedance_plot,
+    steadiness_plot,
+    swr_plot,
+    trade_off_plot,
+    wire_plot,
+)
+from service.plots.looks import band_look
 
 _HERE: Final = Path(__file__).parent
 STATIC: Final = _HERE / "static"
@@ -38,12 +45,15 @@ def _environment() -> Environment:
         environment.filters[name] = getattr(formats, name)
     environment.globals |= {
         "asset": asset,
+        "band_look": band_look,
         "product_version": version("spanwright"),
         "impedance_plot": impedance_plot,
         "matching_parts": matching_parts,
+        "pattern_rows": pattern_rows,
         "steadiness_plot": steadiness_plot,
         "swr_plot": swr_plot,
         "trade_off_plot": trade_off_plot,
+        "wire_plot": wire_plot,
         "wording": wording,
     }
     return environment

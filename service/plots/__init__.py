@@ -1,9 +1,22 @@
-"""Plots as inline SVG, drawn from stored figures: nothing computed but where ink goes."""
+"""Plots as SVG, in the page or beside it, from stored figures: only where ink goes is computed."""
 
+from service.plots.hung_wire import current_plot, wire_plot
 from service.plots.impedance import impedance_plot
+from service.plots.pattern import pattern_plot
+from service.plots.smith_chart import smith_plot
 from service.plots.standing_wave import swr_plot
 from service.plots.steadiness import steadiness_plot
 from service.plots.sweep import sweep_plot
 from service.plots.trade_off import trade_off_plot
 
-__all__ = ["impedance_plot", "steadiness_plot", "sweep_plot", "swr_plot", "trade_off_plot"]
+__all__ = [
+    "current_plot",
+    "impedance_plot",
+    "pattern_plot",
+    "smith_plot",
+    "steadiness_plot",
+    "sweep_plot",
+    "swr_plot",
+    "trade_off_plot",
+    "wire_plot",
+]

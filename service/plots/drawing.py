@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
+import re
+from collections.abc import Iterable, Mapping, Sequence
 from typing import Final, Literal
 
 from markupsafe import Markup, escape
@@ -33,6 +34,19 @@ class Drawing:
         self._size = (width, height)
         self._class = css_class
         self._shapes: list[Markup] = []
+        self._data: dict[str, str] = {}
+
+    def tell(self, **data: str) -> None:
+        """Note for scripts how places on paper become values, as ``data-`` attributes."""
+        self._data |= data
+
+    def tip(self, words: str) -> None:
+        """Have the shape drawn last tell these words where a pointer rests on it."""
+        opening, mark, _ = self._shapes[-1].rpartition("/>")
+        if not mark:
+            raise ValueError("only a bare shape takes a tip")
+        tag = opening[1:].partition(" ")[0]
+        self._shapes[-1] = Markup("{}><title>{}</title></{}>").format(Markup(opening), words, tag)  # noqa: S704  # made here, escaped there
 
     def line(self, start: Point, end: Point, css_class: str) -> None:
         """Draw a straight line."""
@@ -75,6 +89,21 @@ class Drawing:
         points = " ".join(f"{_px(a)},{_px(b)}" for a, b in corners)
         self._shapes.append(Markup('<polygon class="{}" points="{}"/>').format(css_class, points))
 
+    def arc(self, start: Point, end: Point, radius: float, css_class: str, *, left: bool) -> None:
+        """Draw the shorter arc of a circle between two points, bending left or right on the way."""
+        self._shapes.append(
+            Markup('<path class="{}" d="M{} {}A{} {} 0 0 {} {} {}"/>').format(
+                css_class,
+                _px(start[0]),
+                _px(start[1]),
+                _px(radius),
+                _px(radius),
+                int(not left),
+                _px(end[0]),
+                _px(end[1]),
+            )
+        )
+
     def text(self, place: Point, words: str, css_class: str, anchor: Anchor = "middle") -> None:
         """Write a few words."""
         self._shapes.append(
@@ -89,6 +118,31 @@ class Drawing:
         opening, rest = inline.split(">", 1)
         size = f' width="{_px(self._size[0])}" height="{_px(self._size[1])}"'
         return f'{opening} xmlns="{_SVG_NAMESPACE}"{size}><style>{style}</style>{rest}\n'
+
+    def image(self, title: str, description: str, looks: Mapping[str, str]) -> str:
+        """The finished drawing as a file whose shapes carry their looks as attributes.
+
+        A page may hold it as an image or take it in, under a policy that allows no style of
+        its own; there a stylesheet goes before the attributes.
+
+        Parameters
+        ----------
+        title, description : str
+        looks : mapping
+            Presentation attributes by class; of several classes the last word counts.
+        """
+
+        def dressed(found: re.Match[str]) -> str:
+            worn: dict[str, str] = {}
+            for name in found[1].split():
+                worn |= dict(re.findall(r'([a-z-]+)="([^"]*)"', looks.get(name, "")))
+            added = "".join(f' {name}="{value}"' for name, value in worn.items())
+            return f'class="{found[1]}"{added}'
+
+        opening, rest = str(self.markup(title, description)).split(">", 1)
+        size = f' width="{_px(self._size[0])}" height="{_px(self._size[1])}"'
+        shapes = re.sub(r'class="([^"]*)"', dressed, rest)
+        return f'{opening} xmlns="{_SVG_NAMESPACE}"{size} {looks["svg"]}>{shapes}\n'
 
     def markup(self, title: str, description: str) -> Markup:
         """The finished drawing, with its title and description."""
@@ -107,6 +161,12 @@ class Drawing:
             self._name,
             escape(description),
         )
+        if self._data:
+            noted = Markup("").join(
+                Markup(' data-{}="{}"').format(name.replace("_", "-"), value)
+                for name, value in self._data.items()
+            )
+            head = Markup("<svg") + noted + head[len("<svg") :]
         return head + Markup("").join(self._shapes) + Markup("</svg>")
 
 

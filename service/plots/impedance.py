@@ -76,6 +76,7 @@ def impedance_plot(report: FeedReport, paper: Paper = "wide") -> Markup:
     frame = _Frame(left, right, top, top + height, frequency, impedance)
 
     drawing = Drawing(f"rx-{report.rank}-{paper}", width, top + height + 36.0, f"rx {paper}")
+    drawing.tell(read="rx", x=frequency.noted())
     _draw_bands(drawing, frame, report.bands, labels)
     _draw_axes(drawing, frame, most_ticks)
     if not any(band.matching for band in report.bands):

@@ -35,6 +35,10 @@ class LinearScale:
     start: float
     end: float
 
+    def noted(self) -> str:
+        """The scale in a few words, for a script that reads places back."""
+        return f"linear {self.low:.9g} {self.high:.9g} {self.start:g} {self.end:g}"
+
     def __call__(self, value: float) -> float:
         """The coordinate of a value."""
         return _between(self.start, self.end, (value - self.low) / (self.high - self.low))
@@ -48,6 +52,10 @@ class LogScale:
     high: float
     start: float
     end: float
+
+    def noted(self) -> str:
+        """The scale in a few words, for a script that reads places back."""
+        return f"log {self.low:.9g} {self.high:.9g} {self.start:g} {self.end:g}"
 
     def __call__(self, value: float) -> float:
         """The coordinate of a value."""

@@ -47,7 +47,12 @@ class _Frame:
 
 
 def swr_plot(
-    name: str, band: BandReport, outcome: BandOutcome, *, at_transmitter: bool = False
+    name: str,
+    band: BandReport,
+    outcome: BandOutcome,
+    *,
+    at_transmitter: bool = False,
+    index: int | None = None,
 ) -> Markup:
     """Draw the SWR over one band: where its limit applies, and at the line's other end.
 
@@ -60,6 +65,8 @@ def swr_plot(
         The same band's outcome: its limit and how it is served.
     at_transmitter : bool
         Whether the limit applies at the transmitter, else at the feed point.
+    index : int, optional
+        Which of the report's bands it is, for a script that tells the value under the pointer.
     """
     points, other = _swr_along(band.grid, at_transmitter)
     top = _top_of_axis(points, outcome.swr_limit)
@@ -68,6 +75,8 @@ def swr_plot(
         (LinearScale if top <= _LINEAR_UP_TO else LogScale)(1.0, top, _BOTTOM, _TOP),
     )
     drawing = Drawing(name, _WIDTH, _HEIGHT, "swr")
+    if index is not None:
+        drawing.tell(read="swr", band=str(index), x=frame.frequency.noted())
     _draw_axes(drawing, frame)
     _draw_limit(drawing, frame, points, outcome.swr_limit)
     beside = clipped_runs(other, 1.0, top)

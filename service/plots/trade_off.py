@@ -11,6 +11,7 @@ from markupsafe import Markup
 from service.contracts import formats
 from service.contracts.candidate import TradeOff
 from service.plots.drawing import Drawing
+from service.plots.labels import place_labels
 from service.plots.scales import LinearScale, LogScale, Point, linear_ticks, log_ticks
 
 Against = Literal["length", "swr", "cost", "loss"]
@@ -37,11 +38,6 @@ _LINEAR_UP_TO: Final = 6.0
 _SHOWN_PX: Final = 4.5
 _OTHER_PX: Final = 3.5
 _FEWER_PX: Final = 2.0
-_LETTER_PX: Final = 7.5
-_LETTER_HEIGHT_PX: Final = 11.0
-#: Places of a rank beside its mark, the nearest first: to which side, and how far.
-_SIDES: Final = ((1, 0), (-1, 0), (0, -1), (0, 1), (1, -1), (1, 1), (-1, -1), (-1, 1))
-_DISTANCES_PX: Final = (11.0, 22.0, 33.0, 44.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -146,37 +142,9 @@ def _draw_marks(
 
 def _labels(marks: dict[int, Point]) -> dict[int, tuple[Point, bool]]:
     """For each mark the middle of its rank, clear of the others, and whether it is far off."""
-    placed: dict[int, tuple[Point, bool]] = {}
-    for rank, mark in sorted(marks.items()):
-        half = 0.5 * _LETTER_PX * len(str(rank))
-        spots = [
-            ((mark[0] + dx * (distance + half - 4.0), mark[1] + dy * distance), distance)
-            for distance in _DISTANCES_PX
-            for dx, dy in _SIDES
-        ]
-        taken = [(middle, len(str(other))) for other, (middle, _) in placed.items()]
-        free = [each for each in spots if _is_clear(each[0], half, marks, taken)]
-        spot, distance = (free or spots)[0]
-        placed[rank] = (spot, distance > _DISTANCES_PX[0])
-    return placed
-
-
-def _is_clear(
-    spot: Point, half: float, marks: dict[int, Point], taken: list[tuple[Point, int]]
-) -> bool:
-    """Whether a rank written at a spot keeps within the frame and off marks and ranks."""
-    x, y = spot
-    if not (_LEFT + half < x < _RIGHT - half and _TOP + 6.0 < y < _BOTTOM - 6.0):
-        return False
-    off_marks = all(
-        abs(x - mark[0]) > half + _SHOWN_PX or abs(y - mark[1]) > 5.0 + _SHOWN_PX
-        for mark in marks.values()
-    )
-    return off_marks and all(
-        abs(x - other[0]) > half + 0.5 * _LETTER_PX * letters
-        or abs(y - other[1]) > _LETTER_HEIGHT_PX
-        for other, letters in taken
-    )
+    named = {str(rank): place for rank, place in sorted(marks.items())}
+    placed = place_labels(named, (_LEFT, _TOP), (_RIGHT, _BOTTOM), radius=_SHOWN_PX)
+    return {int(rank): each for rank, each in placed.items()}
 
 
 def _in_words(front: Sequence[TradeOff], drawn: Sequence[TradeOff]) -> str:

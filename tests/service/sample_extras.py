@@ -16,6 +16,7 @@ from service.contracts.candidate import (
     TradeOff,
     Trim,
 )
+from service.contracts.radiation import CurrentAlong, Radiation
 from service.contracts.report import FeedStress, Matching, MatchingPart, ReportPoint
 from service.contracts.request import DesignRequest
 
@@ -78,6 +79,48 @@ def matching(index: int, request: DesignRequest) -> Matching | None:
         shunt_at="antenna" if index % 2 else "line",
         parts=(coil,) if index == 2 else (coil, capacitor),
         loss_db=0.106 - 0.01 * index,
+    )
+
+
+def current(index: int, request: DesignRequest) -> CurrentAlong:
+    """A sinusoid of one half wave more on each band, turning over between."""
+    turns = index + 1
+    waves = [math.sin(math.pi * turns * place / 40.0) for place in range(41)]
+    feed = request.feed.feed_fractions()[-1]
+    return CurrentAlong(
+        size=tuple(round(abs(each), 3) for each in waves),
+        phase_deg=tuple(-179.5 if each < -1e-9 else 0.0 for each in waves),
+        at_feed=round(abs(math.sin(math.pi * turns * feed)), 4),
+    )
+
+
+def radiation(index: int) -> Radiation | None:
+    """A pattern with one lobe on the first band and more on others; none on the fourth."""
+    if index == 3:
+        return None
+    step_deg = (2.5, 1.0, 0.5)[index % 3]
+    steps = round(90.0 / step_deg)
+    around = [math.radians(step_deg * place) for place in range(2 * steps + 1)]
+
+    def gains(lobes: int, below: float) -> tuple[float, ...]:
+        return tuple(
+            round(
+                max(6.25 - below + 20.0 * math.log10(max(abs(math.sin(lobes * a)), 1e-6)), -60), 2
+            )
+            for a in around
+        )
+
+    return Radiation(
+        gain_dbi=6.25,
+        take_off_deg=37.3 - 2.5 * index,
+        azimuth_deg=90.0 if index == 0 else 45.5,
+        radiated_fraction=0.7725,
+        wire_loss_fraction=0.0163,
+        ground_loss_fraction=0.2112,
+        step_deg=step_deg,
+        broadside_dbi=gains(index + 1, 0.0)[: steps + 1],
+        end_on_dbi=gains(index + 2, 4.5),
+        around_dbi=gains(index + 1, 0.0),
     )
 
 

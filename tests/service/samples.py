@@ -134,13 +134,15 @@ def _point(
     angle = complex(LOSS_NEPER * math.sqrt(turns), 0.5 * math.pi * (turns + 0.03 * (1.0 - turns)))
     impedance = SURGE_OHM / cmath.tanh(angle)
     seen = impedance / ratio
-    gamma = min(abs((seen - reference_ohm) / (seen + reference_ohm)), 0.999999)
+    turned = (seen - reference_ohm) / (seen + reference_ohm)
+    gamma = min(abs(turned), 0.999999)
     return ReportPoint(
         frequency_mhz=round(frequency_mhz, 6),
         resistance_ohm=round(impedance.real, 3),
         reactance_ohm=round(impedance.imag, 3),
         reflection=round(gamma, 5),
         swr=round((1.0 + gamma) / (1.0 - gamma), 4),
+        reflection_deg=round(math.degrees(cmath.phase(turned)), 2),
     )
 
 
@@ -165,6 +167,8 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
             grid=spread(band.low_mhz, band.high_mhz, GRID_POINTS),
             stress=sample_extras.stress(at(band.centre_mhz), request.power_w),
             matching=sample_extras.matching(index, request),
+            current=sample_extras.current(index, request),
+            radiation=sample_extras.radiation(index),
         )
         for index, band in enumerate(request.bands)
     )

@@ -16,8 +16,8 @@ from worker.engine.field.current import RadiatingWire, RadiationVector, Real
 from worker.engine.field.gain import checked_power, decibels
 from worker.engine.field.intensity import intensity_of, power_of_moment, towards
 
-#: Steps a cut may be sampled in, in degrees: each divides a right angle.
-STEPS_DEG: Final = (5.0, 3.0, 2.0, 1.0, 0.5)
+#: Steps a cut may be sampled in, in degrees: each divides ten.
+STEPS_DEG: Final = (2.5, 1.0, 0.5)
 #: Points of a cut from one null to the next.
 _POINTS_PER_LOBE: Final = 8
 #: Steps of the coarse look from one null to the next, and least angle looked at between.
