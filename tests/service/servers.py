@@ -112,7 +112,7 @@ def private_postgres() -> Iterator[PostgresServer]:
             "postgresql+psycopg", "spanwright", database="postgres", query={"host": str(folder)}
         )
         server = PostgresServer(
-            url, _with_us(command), {**account, "cwd": "/"}, folder / "server.log"
+            url, ended_with_us(command), {**account, "cwd": "/"}, folder / "server.log"
         )
         server.start()
         try:
@@ -189,7 +189,7 @@ class RedisServer:
         command = [self.program, "--port", str(self.port), "--bind", "127.0.0.1", "--save", ""]
         with self.log.open("ab") as log:
             self.process = subprocess.Popen(
-                _with_us([*command, "--appendonly", "no"]),
+                ended_with_us([*command, "--appendonly", "no"]),
                 stdout=log,
                 stderr=log,
                 cwd=self.log.parent,
@@ -247,7 +247,7 @@ def private_redis() -> RedisServer:
 
 
 # --------------------------------------------------------------------------- both
-def _with_us(command: list[str]) -> list[str]:
+def ended_with_us(command: list[str]) -> list[str]:
     """The command, ended with us even if we are killed, where the machine can do that."""
     setpriv = shutil.which("setpriv")
     return command if setpriv is None else [setpriv, "--pdeathsig", "KILL", "--", *command]

@@ -1,0 +1,84 @@
+"""Work for the chaos test: designs and batches that keep coming, whatever is down."""
+
+from __future__ import annotations
+
+import random
+import threading
+from collections.abc import Iterator
+from typing import Final
+
+from service.contracts.batch import BatchRequest
+from service.contracts.progress import Priority
+from service.contracts.request import DesignRequest
+from service.doorbell import Doorbell
+from service.errors import StoreUnavailable
+from service.intake import submit, submit_batch
+from service.store.session import Store
+from tests.chaos.record import Record
+from tests.service.samples import sample_request
+
+#: So many designs are under way at the most, so that submitting goes on through all faults.
+_MOST_WAITING: Final = 80
+_LARGEST_BATCH: Final = 20
+_LOOK_S: Final = 0.02
+
+
+class Submitter(threading.Thread):
+    """Submits so many designs, by themselves and in batches, each under a key of its own.
+
+    What the store was away for is sent again under the same key, as a client does.
+    """
+
+    def __init__(
+        self, store: Store, doorbell: Doorbell, record: Record, number: int, seed: int
+    ) -> None:
+        super().__init__(name="submitter", daemon=True)
+        self._store, self._doorbell, self._record = store, doorbell, record
+        self._number, self._chance = number, random.Random(seed)  # noqa: S311  # no secret
+        #: Accepted so far: designs and batches by their keys.
+        self.designs: dict[str, str] = {}
+        self.batches: dict[str, str] = {}
+        self.accepted = 0
+        #: How often it met a store that was away.
+        self.refusals = 0
+        self.broke: Exception | None = None
+
+    def run(self) -> None:
+        """Submit all."""
+        try:
+            for requests in self._portions():
+                while self.accepted - self._record.told_stored() > _MOST_WAITING:
+                    threading.Event().wait(_LOOK_S)
+                self._send(requests)
+        except Exception as error:  # noqa: BLE001  # told by whoever waits for this thread
+            self.broke = error
+
+    def _portions(self) -> Iterator[list[DesignRequest]]:
+        sent = 0
+        while sent < self._number:
+            size = self._chance.choice((1, 1, 1, _LARGEST_BATCH))
+            size = min(size, self._number - sent)
+            yield [self._request(sent + index) for index in range(size)]
+            sent += size
+
+    def _request(self, index: int) -> DesignRequest:
+        return sample_request(name=f"work {self._chance.uniform(0.1, 0.3):.3f} #{index}")
+
+    def _send(self, requests: list[DesignRequest]) -> None:
+        key = f"chaos {requests[0].name}"
+        priority: Priority = self._chance.choice(("urgent", "ordinary", "ordinary", "when-idle"))
+        while True:
+            try:
+                if len(requests) == 1:
+                    sent = submit(self._store, self._doorbell, requests[0], key, priority=priority)
+                    self.designs[key] = sent.design_id
+                else:
+                    batch = BatchRequest(name=key, priority=priority, designs=tuple(requests))
+                    self.batches[key] = submit_batch(
+                        self._store, self._doorbell, batch, key
+                    ).batch_id
+            except StoreUnavailable:
+                self.refusals += 1
+            else:
+                self.accepted += len(requests)
+                return
