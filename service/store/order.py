@@ -128,7 +128,8 @@ def next_job(session: Session, moment: datetime) -> Next | None:
         # None where other claimers hold all that this share has waiting.
         if first is not None:
             return Next(first[0], first[1], in_turn=True)
-    return None
+    # Nothing should be left; whatever is must not wait for ever.
+    return _longest_waiting(session, moment)
 
 
 def charge(session: Session, taken: Next) -> None:
