@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from typing import Final
+from urllib.parse import urlsplit
 
 from starlette.datastructures import MutableHeaders
 from starlette.requests import Request
 from starlette.types import ASGIApp, Message, Receive, Scope, Send
 
-from service.api.problems import answer_unexpected
+from service.api.problems import OriginRefused, answer_problem, answer_unexpected
 
 #: Own files only: no script or style in the page itself, no frame, no other host.
 _CONTENT_SECURITY_POLICY: Final = "; ".join(
@@ -29,7 +30,8 @@ _ALWAYS: Final = {
     "Content-Security-Policy": _CONTENT_SECURITY_POLICY,
     "X-Content-Type-Options": "nosniff",
     "X-Frame-Options": "DENY",
-    "Referrer-Policy": "no-referrer",
+    # Nothing is told to other hosts; our own forms must say where they come from.
+    "Referrer-Policy": "same-origin",
     "Cross-Origin-Opener-Policy": "same-origin",
     "Cross-Origin-Resource-Policy": "same-origin",
     "Permissions-Policy": "camera=(), geolocation=(), microphone=()",
@@ -40,8 +42,14 @@ _KEEP: Final = "public, max-age=31536000, immutable"
 _ASK_AGAIN: Final = "no-cache"
 
 
+_CHANGES_NOTHING: Final = frozenset({"GET", "HEAD", "OPTIONS"})
+
+
 class Guard:
     """Adds headers to every answer, answers HEAD as GET, and never leaks a trace.
+
+    Refuses what a page of another site has a browser send, so that nobody's browser submits or
+    cancels anything unasked.
 
     Parameters
     ----------
@@ -69,12 +77,28 @@ class Guard:
             await send(message)
 
         try:
+            if _comes_from_elsewhere(Request(scope)):
+                refused = OriginRefused(Request(scope).headers.get("origin", ""))
+                await answer_problem(refused, Request(scope))(inner, receive, guarded_send)
+                return
             await self._app(inner, receive, guarded_send)
         except Exception as error:
             if started:
                 raise
             answer = answer_unexpected(error, Request(inner))
             await answer(inner, receive, guarded_send)
+
+
+def _comes_from_elsewhere(request: Request) -> bool:
+    """Whether a browser says that a page of another origin sent what may change something."""
+    if request.method in _CHANGES_NOTHING:
+        return False
+    site = request.headers.get("sec-fetch-site")
+    if site is not None:
+        return site not in {"same-origin", "none"}
+    # Browsers tell the site only over trusted connections, programs neither.
+    origin = request.headers.get("origin")
+    return origin is not None and urlsplit(origin).netloc != request.headers.get("host")
 
 
 def _add_headers(message: Message, scope: Scope) -> None:

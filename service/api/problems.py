@@ -88,6 +88,23 @@ class MethodRefused(SpanwrightError):
         super().__init__(f"This address does not take {method[:20]}. {remedy}", (fault,))
 
 
+class OriginRefused(SpanwrightError):
+    """A page of another site had the browser send this; only pages of this service may."""
+
+    code = "origin-refused"
+    title = "Pages of other sites may change nothing here"
+
+    def __init__(self, origin: str) -> None:
+        fault = Fault(
+            "Origin",
+            origin[:80],
+            "what changes anything here is taken from this service's own pages only.",
+            "Use the form at /new, or send the request by a program, without an Origin.",
+            self.code,
+        )
+        super().__init__("A page of another site had the browser send this.", (fault,))
+
+
 class Unexpected(SpanwrightError):
     """The service met a fault of its own; the log has it under the reference given."""
 
@@ -108,6 +125,7 @@ STATUSES: Final[Mapping[type[SpanwrightError], HTTPStatus]] = {
     MethodRefused: HTTPStatus.METHOD_NOT_ALLOWED,
     ResultNotReady: HTTPStatus.CONFLICT,
     MediaTypeRefused: HTTPStatus.UNSUPPORTED_MEDIA_TYPE,
+    OriginRefused: HTTPStatus.FORBIDDEN,
     KeyReused: HTTPStatus.UNPROCESSABLE_ENTITY,
     StoreUnavailable: HTTPStatus.SERVICE_UNAVAILABLE,
     SchemaMismatch: HTTPStatus.SERVICE_UNAVAILABLE,

@@ -2,23 +2,22 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Final
+from typing import Final
 
-from fastapi import APIRouter, Query, Request
+from fastapi import APIRouter
 from fastapi.responses import HTMLResponse
 from starlette.staticfiles import StaticFiles
 
 from service.contracts.candidate import Candidate
-from service.contracts.progress import Design, DesignSummary
+from service.contracts.progress import Design
 from service.contracts.report import FeedReport
+from service.pages import batches, listing
 from service.pages.arrangement import has_line, pictures_of, sets_table, steadiness_table
 from service.pages.form import routes as form
 from service.pages.stored import StoreHere
 from service.pages.templating import STATIC, render
-from service.store import designs
-from service.store.session import Store
+from service.store import designs, filing
 
-PER_PAGE: Final = 20
 #: Seconds after which a page of a design that is not done asks again, without scripts.
 REFRESH_S: Final = 3
 #: Every this many points of the sweep make a line in the table behind its plot.
@@ -29,28 +28,9 @@ GRID_STRIDE: Final = 2
 REFLECTION_STRIDE: Final = 5
 
 router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
-router.include_router(form.router)
+for _each in (listing, batches, form):
+    router.include_router(_each.router)
 static_files = StaticFiles(directory=STATIC)
-
-
-@router.get("/")
-def list_page(
-    request: Request, store: StoreHere, before: Annotated[str | None, Query()] = None
-) -> HTMLResponse:
-    """Show the stored designs, newest first, with the best candidate of each."""
-    page = designs.page(store, limit=PER_PAGE, before=before)
-    lines = [(each, _best_of(store, each)) for each in page.designs]
-    address = str(request.base_url).rstrip("/")
-    return HTMLResponse(
-        render(
-            "designs.html",
-            lines=lines,
-            next_before=page.next_before,
-            is_first=before is None,
-            address=address,
-            refresh_s=None,
-        )
-    )
 
 
 @router.get("/designs/{design_id}")
@@ -66,6 +46,7 @@ def design_page(store: StoreHere, design_id: str) -> HTMLResponse:
             design=design,
             refresh_s=REFRESH_S if waiting else None,
             own_page=False,
+            filed=filing.filed(store, design_id),
             **_beyond(design),
             **_sheet(design, best, report),
         )
@@ -87,11 +68,6 @@ def candidate_page(store: StoreHere, design_id: str, rank: int) -> HTMLResponse:
             **_sheet(design, candidate, report),
         )
     )
-
-
-def _best_of(store: Store, summary: DesignSummary) -> Candidate | None:
-    """The first candidate of a design that is done and found any."""
-    return designs.candidate(store, summary.id, 1) if summary.state == "done" else None
 
 
 def _beyond(design: Design) -> dict[str, object]:

@@ -27,6 +27,7 @@ from service.store.clock import microseconds
 
 #: Longest idempotency key.
 KEY_LENGTH = 200
+LABEL_LENGTH = 40
 #: Longest name of an owner.
 OWNER_LENGTH = 60
 
@@ -234,3 +235,21 @@ class ReportRow(Base):
     design_id: Mapped[str] = mapped_column(ForeignKey("designs.id"), primary_key=True)
     rank: Mapped[int] = mapped_column(Integer, primary_key=True)
     report: Mapped[bytes] = mapped_column(LargeBinary)
+
+
+class LabelRow(Base):
+    """A label a planner has put on a design."""
+
+    __tablename__ = "labels"
+
+    design_id: Mapped[str] = mapped_column(ForeignKey("designs.id"), primary_key=True)
+    label: Mapped[str] = mapped_column(String(LABEL_LENGTH), primary_key=True, index=True)
+
+
+class ArchivedRow(Base):
+    """A design put away: kept whole, but no longer in the list."""
+
+    __tablename__ = "archived"
+
+    design_id: Mapped[str] = mapped_column(ForeignKey("designs.id"), primary_key=True)
+    archived_at: Mapped[datetime] = mapped_column(Moment)

@@ -172,7 +172,7 @@ def test_every_answer_carries_the_headers_of_safety(wire: httpx.Client, path: st
     assert "http" not in policy  # no other host
     assert headers["x-content-type-options"] == "nosniff"
     assert headers["x-frame-options"] == "DENY"
-    assert headers["referrer-policy"] == "no-referrer"
+    assert headers["referrer-policy"] == "same-origin"
 
 
 def references(part: object) -> list[str]:
@@ -214,7 +214,11 @@ def test_every_operation_is_described_with_its_problems(wire: httpx.Client) -> N
 
 def test_every_described_path_without_parameters_is_served(wire: httpx.Client) -> None:
     document = wire.get("/openapi.json").json()
-    plain = [path for path in document["paths"] if not re.search(r"[{]", path)]
+    plain = [
+        path
+        for path, operations in document["paths"].items()
+        if "get" in operations and not re.search(r"[{]", path)
+    ]
     assert plain
     for path in plain:
         assert wire.get(path).status_code == 200, path

@@ -26,9 +26,11 @@ from service.store.tables import Base
 CHECKOUT = Path(__file__).parents[2]
 STARTERS = 3
 TABLES = {
+    "archived",
     "batches",
     "designs",
     "jobs",
+    "labels",
     "reports",
     "results",
     "shares",

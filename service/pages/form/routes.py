@@ -10,47 +10,23 @@ from fastapi import APIRouter, Depends, Query, Request, Response
 from fastapi.responses import HTMLResponse, JSONResponse, RedirectResponse
 
 from service.contracts.band_lists import BAND_LISTS
-from service.contracts.request import LARGEST_REQUEST_BYTES
 from service.doorbell import Doorbell
-from service.errors import Fault, RequestRefused
 from service.intake import submit
 from service.pages.form import view
-from service.pages.form.entries import read_entries, with_another_row, written
+from service.pages.form.entries import with_another_row, written
 from service.pages.form.filling import BLANK, filled, with_list_shown
 from service.pages.form.judging import Judged, judge
 from service.pages.form.view import FormView
+from service.pages.posted import Posted
 from service.pages.stored import StoreHere
 from service.pages.templating import render
 from service.store import designs
 
-_FORM: Final = "application/x-www-form-urlencoded"
 _KEY_BYTES: Final = 16
 #: Buttons that only add an empty row, and to what.
 _ROW_ADDED: Final = {"add-band": "own", "add-conductor": "wire"}
 
 router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
-
-
-async def posted(request: Request) -> dict[str, str]:
-    """The entries of the form in the body.
-
-    Raises
-    ------
-    RequestRefused
-        If the body is no form, or too large.
-    """
-    media_type = request.headers.get("content-type", "").partition(";")[0].strip().lower()
-    body = bytearray()
-    async for part in request.stream():
-        body += part
-        if len(body) > LARGEST_REQUEST_BYTES:
-            break  # what has come so far is refused already
-    if media_type != _FORM:
-        raise _unreadable(f"forms are sent as {_FORM}")
-    try:
-        return read_entries(bytes(body))
-    except ValueError as error:
-        raise _unreadable(str(error)) from error
 
 
 def doorbell_of(request: Request) -> Doorbell:
@@ -59,7 +35,6 @@ def doorbell_of(request: Request) -> Doorbell:
     return doorbell
 
 
-Posted = Annotated[dict[str, str], Depends(posted)]
 DoorbellHere = Annotated[Doorbell, Depends(doorbell_of)]
 
 
@@ -97,17 +72,6 @@ def checked_form(entries: Posted) -> dict[str, Any]:
     form = FormView.of(_as_shown(entries), judge(_as_shown(entries)))
     faults = [{"field": field, "said": form.said(fault)} for field, fault in form.faults]
     return {"faults": faults, "shown": form.shown, "standing": _standing(form.judged)}
-
-
-def _unreadable(why: str) -> RequestRefused:
-    fault = Fault(
-        "form",
-        "",
-        f"what was sent cannot be read as this page's form: {why}.",
-        "Open /new and fill in the form there, or send the request as JSON to /v1/designs.",
-        "form-unreadable",
-    )
-    return RequestRefused([fault])
 
 
 def _as_shown(entries: dict[str, str]) -> dict[str, str]:
