@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 from datetime import datetime
 
-from sqlalchemy import case, func, select
+from sqlalchemy import func, select
 from sqlalchemy.orm import Session
 
 from service.contracts.progress import Progress
 from service.contracts.queue_view import QueueShare, QueueView, QueueWorker, RunningDesign
 from service.store import workers
 from service.store.clock import now
-from service.store.order import word_of
+from service.store.order import CLAIMABLE, RUNNING, word_of
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow
 
@@ -44,46 +45,36 @@ def view(store: Store) -> QueueView:
 
 def _jobs(session: Session) -> _Jobs:
     moment = now(session)
-    queued, running = JobRow.state == "queued", JobRow.state == "running"
-    shares = session.execute(
-        select(
-            JobRow.owner,
-            JobRow.priority,
-            func.sum(case((queued, 1), else_=0)),
-            func.sum(case((running, 1), else_=0)),
-            func.min(case((queued, JobRow.queued_at))),
-        )
-        .where(JobRow.state.in_(("queued", "running")))
-        .group_by(JobRow.owner, JobRow.priority)
-        .order_by(JobRow.priority, JobRow.owner)
-    ).all()
     at_work = session.execute(
         select(JobRow, DesignRow.name, DesignRow.batch_line)
         .join(DesignRow, DesignRow.id == JobRow.design_id)
-        .where(running)
+        .where(RUNNING)
         .order_by(JobRow.started_at, JobRow.design_id)
     ).all()
+    running = Counter((row[0].priority, row[0].owner) for row in at_work)
+    waiting: Counter[tuple[int, str]] = Counter()
+    oldest: dict[tuple[int, str], datetime] = {}
+    # One by one, for each of the two conditions has an index and both together have none.
+    for waits in ((CLAIMABLE,), (JobRow.waits_for.is_not(None), JobRow.state == "queued")):
+        query = select(JobRow.priority, JobRow.owner, func.count(), func.min(JobRow.queued_at))
+        query = query.where(*waits).group_by(JobRow.priority, JobRow.owner)
+        for priority, owner, number, since in session.execute(query):
+            share = (priority, owner)
+            waiting[share] += number
+            oldest[share] = min(oldest.get(share, since), since)
     return _Jobs(
         moment,
-        tuple(_share(moment, *row) for row in shares),
+        tuple(
+            QueueShare(
+                owner=share[1],
+                priority=word_of(share[0]),
+                waiting=waiting[share],
+                running=running[share],
+                oldest_wait_s=_since(oldest[share], moment) if share in oldest else None,
+            )
+            for share in sorted(waiting | running)
+        ),
         tuple(_running(moment, *row) for row in at_work),
-    )
-
-
-def _share(
-    moment: datetime,
-    owner: str,
-    priority: int,
-    waiting: int,
-    running: int,
-    oldest: datetime | None,
-) -> QueueShare:
-    return QueueShare(
-        owner=owner,
-        priority=word_of(priority),
-        waiting=waiting,
-        running=running,
-        oldest_wait_s=None if oldest is None else _since(oldest, moment),
     )
 
 

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from http import HTTPStatus
 from types import TracebackType
 from typing import Any, Final, Self
@@ -13,10 +14,12 @@ import httpx
 from service.contracts.progress import Design, DesignSummary, Progress
 from service.contracts.report import FeedReport
 from service.contracts.request import DesignRequest
-from service.errors import Fault, SpanwrightError
+from service.errors import Fault, RequestRefused, SpanwrightError
 
 _POLL_S: Final = 0.3
 _TIMEOUT_S: Final = 15.0
+#: Where a service on this machine answers.
+HERE: Final = "http://127.0.0.1:8757"
 ENDED: Final = ("done", "failed", "cancelled")
 
 
@@ -53,13 +56,24 @@ class ServiceClient:
         """Close the connection."""
         self._http.close()
 
-    def submit(self, request: DesignRequest, key: str | None) -> Design:
+    def submit(
+        self,
+        request: DesignRequest,
+        key: str | None,
+        *,
+        priority: str = "ordinary",
+        recompute: bool = False,
+    ) -> Design:
         """Submit a request; with a key, sending it again gives the same design."""
         headers = {"Content-Type": "application/json"}
         if key is not None:
             headers["Idempotency-Key"] = key
         answer = self._call(
-            "POST", "/v1/designs", content=request.canonical_json(), headers=headers
+            "POST",
+            "/v1/designs",
+            params={"priority": priority, "recompute": recompute},
+            content=request.canonical_json(),
+            headers=headers,
         )
         return self.design(answer["id"])
 
@@ -96,25 +110,32 @@ class ServiceClient:
             time.sleep(_POLL_S)
 
     def _call(self, method: str, path: str, **how: Any) -> Any:  # noqa: ANN401  # JSON is whatever the service sent; the contracts check it
-        try:
+        with self._reaching():
             answer = self._http.request(method, path, **how)
+        if answer.status_code >= HTTPStatus.BAD_REQUEST:
+            raise problem_of(answer)
+        return answer.json()
+
+    @contextmanager
+    def _reaching(self) -> Iterator[None]:
+        try:
+            yield
         except httpx.TransportError as error:
             raise ServiceUnreachable(
                 f"Nothing answers at {self._address}: {error}. Start it with 'spanwright serve', "
                 "or name its address with --service."
             ) from error
-        if answer.status_code >= HTTPStatus.BAD_REQUEST:
-            raise _problem(answer)
-        return answer.json()
 
 
-def _problem(answer: httpx.Response) -> SpanwrightError:
-    """The error a problem document (RFC 9457) tells of."""
+def problem_of(answer: httpx.Response) -> SpanwrightError:
+    """The error a problem document (RFC 9457) tells of: a refusal where the sender is at fault."""
     try:
         problem = answer.json()
     except ValueError:
         problem = {}
     faults = [Fault(**fault) for fault in problem.get("faults", ())]
-    error = SpanwrightError(problem.get("detail", f"HTTP status {answer.status_code}"), faults)
+    refused = answer.status_code < HTTPStatus.INTERNAL_SERVER_ERROR
+    error = RequestRefused(faults) if refused else SpanwrightError("", faults)
+    error.detail = problem.get("detail", f"HTTP status {answer.status_code}")
     error.title = problem.get("title", error.title)
     return error

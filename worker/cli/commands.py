@@ -1,30 +1,30 @@
 """The commands a planner types.
 
 Exit statuses: 0 done; 1 an unexpected fault; 2 the request or the command was refused;
-3 the design failed or was cancelled; 4 the service does not answer; 5 it took too long.
+3 the design failed or was cancelled; 4 the service or the database does not answer; 5 it took
+too long; 6 it was stopped before its end.
 """
 
 from __future__ import annotations
 
 import sys
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
 from pathlib import Path
 from typing import Annotated, Final
 
 import typer
 from rich.console import Console
-from rich.progress import BarColumn, Progress, TaskID, TextColumn, TimeElapsedColumn
 
 from service.contracts.band_lists import BAND_LISTS
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Design, DesignSummary
 from service.contracts.report import FeedReport
 from service.contracts.request import DesignRequest, parse_request
-from service.errors import Fault, RequestRefused, SpanwrightError
-from worker.cli import tables, wire_commands
-from worker.cli.client import ServiceClient, ServiceUnreachable
+from service.errors import Fault, RequestRefused, SpanwrightError, StoreUnavailable
+from service.settings import SettingRefused
+from worker.cli import batch_commands, queue_commands, tables, wire_commands
+from worker.cli.client import HERE, ServiceClient, ServiceUnreachable
 from worker.cli.exit_status import ExitStatus
+from worker.cli.progress_bar import progress_bar
 from worker.cli.standing import demo_request, serve_until_stopped, standing_service
 from worker.engine.errors import EngineError
 from worker.planning import plan as plan_request
@@ -33,8 +33,8 @@ app = typer.Typer(
     name="spanwright",
     help="Plan multiband and harmonic wire dipoles.",
     epilog=(
-        "Exit status: 0 done, 2 refused, 3 the design failed, 4 the service does not answer, "
-        "5 it took too long."
+        "Exit status: 0 done, 2 refused, 3 a design failed, 4 the service or the database does "
+        "not answer, 5 it took too long, 6 stopped before its end."
     ),
     no_args_is_help=True,
     pretty_exceptions_enable=False,
@@ -58,14 +58,12 @@ Rank = Annotated[
 ]
 Patience = Annotated[float, typer.Option("--patience", metavar="S", help="Wait at most so long.")]
 
-_HERE: Final = "http://127.0.0.1:8757"
-
 
 @app.command()
 def plan(file: RequestFile, report: Rank = None, as_json: AsJson = False) -> None:
     """Plan a request here and now, without a service, and print the candidates."""
     request = _read_request(file)
-    with _progress_bar() as show:
+    with progress_bar(err, "planning") as show:
         planned = plan_request(request, show)
     if as_json:
         _print_json(planned)
@@ -82,13 +80,19 @@ def submit(
         str | None,
         typer.Option(help="Idempotency key: sending it again gives the same design."),
     ] = None,
-    service: Address = _HERE,
+    priority: Annotated[
+        str, typer.Option(help="How soon it is wanted: urgent, ordinary or when-idle.")
+    ] = "ordinary",
+    recompute: Annotated[
+        bool, typer.Option("--recompute", help="Plan anew where a stored result would answer.")
+    ] = False,
+    service: Address = HERE,
     as_json: AsJson = False,
 ) -> None:
     """Submit a request to a running service and print the design's identifier."""
     request = _read_request(file)
     with ServiceClient(service) as client:
-        design = client.submit(request, key)
+        design = client.submit(request, key, priority=priority, recompute=recompute)
     if as_json:
         out.print_json(design.model_dump_json(include={"id", "name", "state"}))
     else:
@@ -98,7 +102,7 @@ def submit(
 @app.command()
 def wait(
     design: DesignId,
-    service: Address = _HERE,
+    service: Address = HERE,
     patience_s: Patience = 600.0,
     as_json: AsJson = False,
 ) -> None:
@@ -110,7 +114,7 @@ def wait(
 
 @app.command()
 def show(
-    design: DesignId, report: Rank = None, service: Address = _HERE, as_json: AsJson = False
+    design: DesignId, report: Rank = None, service: Address = HERE, as_json: AsJson = False
 ) -> None:
     """Show a stored design: its candidates, or one candidate's feed-impedance report."""
     with ServiceClient(service) as client:
@@ -120,7 +124,7 @@ def show(
 @app.command("list")
 def list_designs(
     most: Annotated[int, typer.Option(min=1, max=100, help="How many.")] = 20,
-    service: Address = _HERE,
+    service: Address = HERE,
     as_json: AsJson = False,
 ) -> None:
     """List stored designs, newest first."""
@@ -178,6 +182,8 @@ def demo() -> None:
     )
 
 
+batch_commands.add_to(app)
+queue_commands.add_to(app)
 wire_commands.add_to(app)
 
 
@@ -185,7 +191,11 @@ def main() -> None:
     """Run the command; refusals are printed with their remedies, not as tracebacks."""
     try:
         app()
-    except ServiceUnreachable as error:
+    except SettingRefused as error:
+        for fault in error.faults:
+            err.print(str(fault), markup=False, highlight=False, soft_wrap=True)
+        sys.exit(ExitStatus.REFUSED)
+    except (ServiceUnreachable, StoreUnavailable) as error:
         _end(error, ExitStatus.UNREACHABLE)
     except RequestRefused as error:
         _end(error, ExitStatus.REFUSED)
@@ -220,8 +230,12 @@ def _read_request(file: str) -> DesignRequest:
 
 
 def _waited(client: ServiceClient, design_id: str, patience_s: float) -> Design:
-    with _progress_bar() as show:
-        return client.wait(design_id, lambda now: show(now.fraction, now.step), patience_s)
+    with progress_bar(err, "planning") as show:
+        return client.wait(
+            design_id,
+            lambda now: show(now.fraction, now.step or "waiting for a worker"),
+            patience_s,
+        )
 
 
 def _show_ended(
@@ -262,16 +276,3 @@ def _of_rank(reports: tuple[FeedReport, ...], rank: int) -> FeedReport:
 def _print_json(value: PlannedDesign | Design | FeedReport) -> None:
     # Plain, not through the console: a script must get every digit and no line breaks.
     sys.stdout.write(value.model_dump_json(indent=2) + "\n")
-
-
-@contextmanager
-def _progress_bar() -> Iterator[Callable[[float, str], None]]:
-    """A progress bar on standard error, so that standard output stays clean."""
-    columns = (TextColumn("{task.description}"), BarColumn(), TimeElapsedColumn())
-    with Progress(*columns, console=err, transient=True) as bar:
-        task: TaskID = bar.add_task("planning", total=1.0)
-
-        def show(fraction: float, step: str) -> None:
-            bar.update(task, completed=fraction, description=step or "waiting for a worker")
-
-        yield show

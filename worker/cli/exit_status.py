@@ -13,3 +13,4 @@ class ExitStatus(IntEnum):
     FAILED = 3
     UNREACHABLE = 4
     TOO_LONG = 5
+    STOPPED = 6

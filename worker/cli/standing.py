@@ -15,7 +15,7 @@ import uvicorn
 from service.api.app import create_app
 from service.contracts.request import DesignRequest, parse_request
 from service.errors import SpanwrightError
-from service.settings import Settings
+from service.settings import Settings, settings_here
 from worker import dispatcher
 
 _START_PATIENCE_S: Final = 30.0
@@ -32,7 +32,7 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
     workers : bool
         False where workers run elsewhere, as in the scaled form.
     """
-    settings = Settings()
+    settings = settings_here()
     server = _server(settings, settings.port)
     with _workers(settings) if workers else _no_workers():
         announce(f"http://{settings.host}:{settings.port}/")
@@ -42,7 +42,7 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
 @contextmanager
 def standing_service() -> Iterator[str]:
     """A service with workers on a free loopback port, for as long as the context lasts."""
-    settings = Settings()
+    settings = settings_here()
     port = _free_port()
     server = _server(settings, port)
     thread = threading.Thread(target=server.run, name="api", daemon=True)

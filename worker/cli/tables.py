@@ -16,7 +16,7 @@ from service.contracts.candidate import DesignResult, TradeOff
 from service.contracts.progress import DesignSummary
 from service.contracts.report import FeedReport, MatchingPart, ReportPoint
 from service.contracts.sweep import Sweep, SweepPoint
-from service.errors import SpanwrightError
+from service.errors import RequestRefused, SpanwrightError
 from worker.cli.candidate_lines import candidate_in_full
 
 #: Lines of the trade-off that are printed; --json has all of them.
@@ -61,7 +61,7 @@ def show_result(console: Console, result: DesignResult, reports: Iterable[FeedRe
 
 def show_report(console: Console, report: FeedReport) -> None:
     """Print a feed-impedance report: edges and centre of each band, then resonances."""
-    table = _table("Feed-impedance report, candidate " + str(report.rank))
+    table = plain_table("Feed-impedance report, candidate " + str(report.rank))
     with_line = any(band.centre.transmitter_swr is not None for band in report.bands)
     far_end = ("SWR at tx", "loss dB") if with_line else ()
     for title in ("band", "at", "MHz", "R Ω", "X Ω", "|Γ|", "SWR", *far_end):
@@ -72,7 +72,7 @@ def show_report(console: Console, report: FeedReport) -> None:
         table.add_section()
     console.print(table)
     console.print(_stress(report))
-    lines = _table("Resonances of the wire")
+    lines = plain_table("Resonances of the wire")
     for title in ("order", "kind", "MHz", "R Ω"):
         lines.add_column(title, justify="left" if title == "kind" else "right")
     for each in report.resonances:
@@ -100,7 +100,7 @@ def show_report(console: Console, report: FeedReport) -> None:
 
 def show_designs(console: Console, designs: Iterable[DesignSummary]) -> None:
     """Print the list of stored designs, newest first."""
-    table = _table("Stored designs")
+    table = plain_table("Stored designs")
     for title in ("id", "name", "bands", "state", "submitted (UTC)"):
         table.add_column(title, overflow="fold")
     for design in designs:
@@ -116,7 +116,7 @@ def show_sweep(console: Console, found: Sweep) -> None:
     """Print a sweep: a line a point, then its resonances and what it rests on."""
     along_frequency = found.request.along == "frequency"
     with_line = found.request.feed_line is not None
-    table = _table("")
+    table = plain_table("")
     for title in ("MHz" if along_frequency else "length m", "R Ω", "X Ω", "|Γ|", "SWR"):
         table.add_column(title, justify="right")
     for title in ("SWR at transmitter", "line loss dB") if with_line else ():
@@ -145,7 +145,7 @@ def show_sweep(console: Console, found: Sweep) -> None:
 def show_band_lists(console: Console, lists: Iterable[BandList]) -> None:
     """Print ready-made band lists with their edges and sources."""
     for each in lists:
-        table = _table(f"{each.name}: {each.title}")
+        table = plain_table(f"{each.name}: {each.title}")
         for title in ("band", "low MHz", "high MHz", "edges from"):
             table.add_column(title, justify="left" if title in ("band", "edges from") else "right")
         for band in each.bands:
@@ -166,10 +166,12 @@ def show_error(console: Console, error: SpanwrightError) -> None:
         given = f" (given: {fault.value})" if fault.value else ""
         console.print(Text(f"  {fault.field}: {fault.reason}{given}"))
         console.print(Text(f"    {fault.remedy}"))
+    if isinstance(error, RequestRefused) and error.untold:
+        console.print(Text(f"  And {error.untold:,} faults more."))
 
 
 def _ranking(result: DesignResult) -> Table:
-    table = _table("Candidates, best first")
+    table = plain_table("Candidates, best first")
     for title in ("rank", "length m", "conductor", "ratio", "required", "width", "worst SWR"):
         table.add_column(title, justify="left" if title == "conductor" else "right")
     for each in result.candidates:
@@ -192,7 +194,7 @@ def _ranking(result: DesignResult) -> Table:
 
 
 def _trade_off(front: Sequence[TradeOff]) -> Table:
-    table = _table("What the best wires trade")
+    table = plain_table("What the best wires trade")
     table.padding = (0, 1, 0, 0)
     with_loss = any(each.loss_db is not None for each in front)
     with_cost = any(each.cost is not None for each in front)
@@ -225,7 +227,7 @@ def _stress(report: FeedReport) -> Table:
     matched = any(band.matching for band in report.bands)
     powers = [band.stress.power_w for band in report.bands if band.stress]
     at_power = f" at {powers[0]:g} W" if powers else ""
-    table = _table(f"Voltage (peak) and current (rms){at_power}, band centres")
+    table = plain_table(f"Voltage (peak) and current (rms){at_power}, band centres")
     table.add_column("band")
     table.add_column("feed point", justify="right")
     for title in ("series part", "shunt part", "loss dB") if matched else ():
@@ -271,7 +273,8 @@ def _electrical_cells(point: ReportPoint | SweepPoint) -> tuple[str, ...]:
     )
 
 
-def _table(title: str) -> Table:
+def plain_table(title: str) -> Table:
+    """A table as every command draws it: a rule below its head and nothing else."""
     return Table(
         title=title,
         title_justify="left",
