@@ -18,6 +18,7 @@ from worker.engine.reflection import standing_wave_ratio
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+SingleArray = NDArray[np.float32]
 
 #: Solutions of an L-network: shunt part next to the antenna or next to the line, and two signs.
 NETWORKS: Final = ((True, 1.0), (True, -1.0), (False, 1.0), (False, -1.0))
@@ -56,22 +57,25 @@ class Fed:
 class Load:
     """Impedances at feed points, with what every ratio asks of them; arrays of one shape.
 
+    Single precision is far finer than what wires are told apart by, at half the time.
+
     Attributes
     ----------
-    impedance_ohm, resistance_ohm : ndarray
-    squared : ndarray
-        |Z|².
+    impedance_ohm : ndarray
+    resistance_ohm, squared : ndarray of single precision
+        The real part, and |Z|².
     """
 
     impedance_ohm: ComplexArray
-    resistance_ohm: FloatArray
-    squared: FloatArray
+    resistance_ohm: SingleArray
+    squared: SingleArray
 
     @classmethod
     def of(cls, impedance_ohm: ComplexArray) -> Load:
         """The load of some impedances."""
-        resistance = np.ascontiguousarray(impedance_ohm.real)
-        return cls(impedance_ohm, resistance, resistance**2 + impedance_ohm.imag**2)
+        squared = impedance_ohm.real**2 + impedance_ohm.imag**2
+        resistance = impedance_ohm.real.astype(np.float32)
+        return cls(impedance_ohm, resistance, squared.astype(np.float32))
 
     def some(self, wires: slice) -> Load:
         """Some of the wires, along the last axis."""
@@ -152,7 +156,7 @@ class Feeding:
 
     def reflected_power(
         self, load: Load, frequency_hz: FloatArray, ratio: float
-    ) -> tuple[FloatArray, FloatArray | None]:
+    ) -> tuple[FloatArray | SingleArray, FloatArray | None]:
         """What the scan needs, and no more: |Γ|² where the limits apply, and the line's loss.
 
         Parameters
@@ -176,7 +180,9 @@ class Feeding:
             against += load.squared
             against += match_ohm**2
             np.divide(taken, against, out=taken)
-            return np.maximum(np.subtract(1.0, taken, out=taken), 0.0, out=taken), None
+            return np.maximum(
+                np.subtract(np.float32(1.0), taken, out=taken), np.float32(0.0), out=taken
+            ), None
         impedance_ohm = load.impedance_ohm
         reflected = np.empty(impedance_ohm.shape)
         loss_db = None if self.line is None else np.empty(impedance_ohm[:, 0].shape)

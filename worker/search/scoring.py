@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from worker.engine.reflection import LARGEST_STANDING_WAVE_RATIO
-from worker.search.feeding import Feeding, Load, reflected_of
+from worker.search.feeding import Feeding, Load, SingleArray, reflected_of
 from worker.search.space import BandGoal, ComplexArray, FloatArray
 
 #: A band counts as served from this part of its width on: rounding at an edge is no fault.
@@ -78,7 +78,7 @@ def scores(
     load = Load.of(impedance_ohm)
     shape = (len(bands), impedance_ohm.shape[2])
     for ratio in ratios:
-        reflected = np.empty(impedance_ohm.shape)
+        reflected = np.empty(impedance_ohm.shape, dtype=np.float32)
         most, least, loss_db = np.empty(shape), np.empty(shape), np.zeros(shape)
         for start in range(0, shape[1], _CHUNK_WIRES):
             some = slice(start, start + _CHUNK_WIRES)
@@ -100,7 +100,7 @@ def scores(
         yield Score(served, _swr_of(most), loss_db)
 
 
-def _looked_at(reflected: FloatArray, limit: FloatArray) -> tuple[FloatArray, FloatArray]:
+def _looked_at(reflected: SingleArray, limit: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Part of a band within a limit, and the most reflected, between (p, n) grid points too."""
     mismatch = _between(len(reflected)) @ _mismatch(reflected)
     within = served_fraction(mismatch[None], _mismatch(limit))[0]
@@ -134,7 +134,7 @@ def _between(points: int) -> FloatArray:
     return weights
 
 
-def _mismatch(reflected: FloatArray) -> FloatArray:
+def _mismatch(reflected: FloatArray | SingleArray) -> FloatArray:
     """Power available over power taken, 1 / (1 - |Γ|²): what is interpolated over frequency.
 
     It is ((R + R0)² + X²) / (4 R R0), all but a parabola about a resonance, where the standing
