@@ -22,12 +22,14 @@ from typing import Final
 from celery import Celery
 from celery.signals import (
     celeryd_init,
+    setup_logging,
     worker_init,
     worker_process_init,
     worker_process_shutdown,
     worker_shutting_down,
 )
 
+from service import journal
 from service.doorbell import TASK, TRANSPORT, Doorbell
 from service.errors import StoreUnavailable
 from service.settings import Settings
@@ -171,6 +173,12 @@ def _refuse_without_broker(**_: object) -> None:
             "SPANWRIGHT_REDIS_URL is not set: name the broker, redis://host:6379/0, "
             "or run workers without one by python -m worker.dispatcher."
         )
+
+
+@setup_logging.connect
+def _log_as_the_others(**_: object) -> None:
+    # A receiver of this signal keeps Celery from setting up logging of its own.
+    journal.set_up(settings)
 
 
 @worker_init.connect

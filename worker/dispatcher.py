@@ -25,6 +25,7 @@ from multiprocessing.connection import Connection
 from multiprocessing.context import SpawnContext, SpawnProcess
 from typing import Final
 
+from service import journal
 from service.errors import SpanwrightError, StoreUnavailable
 from service.settings import Settings
 from service.store import jobs, workers
@@ -84,13 +85,12 @@ def serve(
 
 def main(plan: PlanFunction | None = None) -> None:
     """Run workers alone, until SIGTERM or SIGINT; `plan` is that of `serve`."""
-    logging.basicConfig(level=logging.INFO, format="%(asctime)s %(processName)s %(message)s")
-    # It tells at every look at the schema of which kind the database is.
-    logging.getLogger("alembic").setLevel(logging.WARNING)
+    settings = Settings()
+    journal.set_up(settings)
     asked, stop = StopFlag(), threading.Event()
     for number in (signal.SIGTERM, signal.SIGINT):
         signal.signal(number, lambda _number, _frame: asked.set())
-    supervisor = threading.Thread(target=serve, args=(Settings(), plan), kwargs={"stop": stop})
+    supervisor = threading.Thread(target=serve, args=(settings, plan), kwargs={"stop": stop})
     supervisor.start()
     while supervisor.is_alive() and not asked.is_set():
         time.sleep(_SUPERVISE_S)
@@ -228,7 +228,7 @@ def _give_back(settings: Settings, worker: str) -> None:
 
 def _work(settings: Settings, plan: PlanFunction | None, name: str, lifeline: Connection) -> None:
     """A worker process: poll, run, sweep, until asked to stop or the supervisor is gone."""
-    logging.basicConfig(level=logging.WARNING, format="%(asctime)s %(processName)s %(message)s")
+    journal.set_up(settings)
     stopping = StopFlag()
     # A Ctrl-C reaches the whole process group; only the supervisor decides what it means.
     signal.signal(signal.SIGINT, signal.SIG_IGN)

@@ -10,13 +10,16 @@ import threading
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager, suppress
+from contextvars import copy_context
 from enum import Enum
+from functools import partial
 from typing import Final, Protocol
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
 from service.contracts.request import DesignRequest
 from service.errors import SpanwrightError, StoreUnavailable
+from service.journal import bound
 from service.settings import Settings
 from service.store import jobs, workers
 from service.store.jobs import Beat, ClaimedJob
@@ -145,7 +148,15 @@ def run_next(
     job = jobs.claim(store, worker, settings.lease_s, ENGINE_VERSION)
     if job is None:
         return None
+    with bound(design=job.design_id, batch=job.batch_id, worker=worker, attempt=job.attempt):
+        return _run_watched(store, settings, job, plan, stopping)
+
+
+def _run_watched(
+    store: Store, settings: Settings, job: ClaimedJob, plan: PlanFunction, stopping: Flag
+) -> Outcome:
     _log.info("design %s: attempt %d begins", job.design_id, job.attempt)
+    began_s = time.monotonic()
     heart = _Heart(store, settings, job, stopping)
     heart.start()
     try:
@@ -156,7 +167,8 @@ def run_next(
         outcome = Outcome.LOST
     finally:
         heart.stop()
-    _log.info("design %s: %s", job.design_id, outcome.value)
+    ran_s = round(time.monotonic() - began_s, 3)
+    _log.info("design %s: %s", job.design_id, outcome.value, extra={"run_s": ran_s})
     return outcome
 
 
@@ -230,7 +242,9 @@ class _Heart:
         self._verdict: Outcome | None = None
         self._ended = threading.Event()
         self._overdue_at = time.monotonic() + settings.job_deadline_s
-        self._thread = threading.Thread(target=self._beat, name="heartbeat", daemon=True)
+        # In a copy of the context, so that what it logs names the job too.
+        beat = partial(copy_context().run, self._beat)
+        self._thread = threading.Thread(target=beat, name="heartbeat", daemon=True)
 
     def start(self) -> None:
         """Begin to beat."""

@@ -10,7 +10,7 @@ from __future__ import annotations
 from datetime import datetime
 from typing import Final
 
-from sqlalchemy import func, select, tuple_
+from sqlalchemy import Select, func, select, tuple_
 from sqlalchemy.orm import Session
 
 from service.contracts.progress import Priority, Progress, State
@@ -28,6 +28,7 @@ class Change(Contract):
 
     changed_us: int
     id: str
+    owner: str
     name: str
     state: State
     priority: Priority
@@ -68,23 +69,38 @@ def since(
     after_id : str, optional
         Go on after this design of the moment `after_us`; nothing is looked at again then.
     """
-    query = (
-        select(DesignRow, JobRow)
-        .join(JobRow, JobRow.design_id == DesignRow.id)
-        .order_by(JobRow.changed_at, JobRow.design_id)
-        .limit(limit)
-    )
+    query = _of(owner, batch_id, design_id).order_by(JobRow.changed_at, JobRow.design_id)
     if after_id is None:
         query = query.where(JobRow.changed_at > after_us - overlap_us)
     else:
         query = query.where(tuple_(JobRow.changed_at, JobRow.design_id) > (after_us, after_id))
-    if owner is not None:
-        query = query.where(JobRow.owner == owner)
-    if batch_id is not None:
-        query = query.where(JobRow.batch_id == batch_id)
-    if design_id is not None:
-        query = query.where(JobRow.design_id == design_id)
-    return store.read(lambda session: [_change(row[0], row[1]) for row in session.execute(query)])
+    return _read(store, query.limit(limit))
+
+
+def latest(
+    store: Store,
+    *,
+    owner: str,
+    batch_id: str | None = None,
+    design_id: str | None = None,
+    limit: int,
+) -> list[Change]:
+    """The designs that changed last, in the order of their changes.
+
+    Parameters
+    ----------
+    store : Store
+    owner : str
+        Whose designs.
+    batch_id, design_id : str, optional
+        Only of that batch, or that design.
+    limit : int
+        How many at the most.
+    """
+    query = _of(owner, batch_id, design_id).order_by(
+        JobRow.changed_at.desc(), JobRow.design_id.desc()
+    )
+    return _read(store, query.limit(limit))[::-1]
 
 
 def newest(store: Store, owner: str | None = None) -> int:
@@ -99,11 +115,32 @@ def newest(store: Store, owner: str | None = None) -> int:
     return store.read(work)
 
 
-def _change(design: DesignRow, job: JobRow) -> Change:
+def _of(
+    owner: str | None, batch_id: str | None, design_id: str | None
+) -> Select[JobRow, str, int | None, str | None]:
+    # Not the whole design: its request is large, and is not told.
+    query = select(JobRow, DesignRow.name, DesignRow.batch_line, DesignRow.answered_by).join(
+        DesignRow, DesignRow.id == JobRow.design_id
+    )
+    if owner is not None:
+        query = query.where(JobRow.owner == owner)
+    if batch_id is not None:
+        query = query.where(JobRow.batch_id == batch_id)
+    if design_id is not None:
+        query = query.where(JobRow.design_id == design_id)
+    return query
+
+
+def _read(store: Store, query: Select[JobRow, str, int | None, str | None]) -> list[Change]:
+    return store.read(lambda session: [_change(*row) for row in session.execute(query)])
+
+
+def _change(job: JobRow, name: str, batch_line: int | None, answered_by: str | None) -> Change:
     return Change(
         changed_us=job.changed_at,
-        id=design.id,
-        name=design.name,
+        id=job.design_id,
+        owner=job.owner,
+        name=name,
         state=job.state,  # type: ignore[arg-type]  # the table's own check knows the states
         priority=word_of(job.priority),
         progress=Progress(fraction=job.progress, step=job.step),
@@ -111,7 +148,7 @@ def _change(design: DesignRow, job: JobRow) -> Change:
         failure=job.failure,
         started_at=job.started_at,
         finished_at=job.finished_at,
-        batch_id=design.batch_id,
-        batch_line=design.batch_line,
-        answered_by=design.answered_by,
+        batch_id=job.batch_id,
+        batch_line=batch_line,
+        answered_by=answered_by,
     )

@@ -28,6 +28,7 @@ class ClaimedJob:
     fence: int
     attempt: int
     worker: str
+    batch_id: str | None = None
 
 
 def held(design_id: str, fence: int) -> tuple[ColumnElement[bool], ...]:

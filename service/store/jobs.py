@@ -81,6 +81,7 @@ class _Taken:
     request: str
     fence: int
     attempt: int
+    batch_id: str | None
 
 
 class _NothingTaken(Enum):
@@ -137,7 +138,7 @@ def claim(
             session.flush()
             workers.claimed(session, worker, moment)
             order.charge(session, found)
-            return _Taken(design.id, design.request, job.fence, job.attempts)
+            return _Taken(design.id, design.request, job.fence, job.attempts, job.batch_id)
         return _NothingTaken.MORE_TO_LOOK_AT
 
     while (taken := store.write(work, outlives_machine=False)) is not _NothingTaken.NONE_WAITS:
@@ -149,7 +150,9 @@ def claim(
             # Every worker would find it unreadable, and it would hold up the queue for ever.
             _fail(store, taken.design_id, taken.fence, error.detail)
             continue
-        return ClaimedJob(taken.design_id, request, taken.fence, taken.attempt, worker)
+        return ClaimedJob(
+            taken.design_id, request, taken.fence, taken.attempt, worker, taken.batch_id
+        )
     return None
 
 
