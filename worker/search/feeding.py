@@ -180,9 +180,8 @@ class Feeding:
             against += load.squared
             against += match_ohm**2
             np.divide(taken, against, out=taken)
-            return np.maximum(
-                np.subtract(np.float32(1.0), taken, out=taken), np.float32(0.0), out=taken
-            ), None
+            np.subtract(1.0, taken, out=taken)
+            return np.maximum(taken, 0.0, out=taken), None
         impedance_ohm = load.impedance_ohm
         reflected = np.empty(impedance_ohm.shape)
         loss_db = None if self.line is None else np.empty(impedance_ohm[:, 0].shape)
