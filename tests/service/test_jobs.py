@@ -11,7 +11,7 @@ from datetime import UTC, datetime, timedelta
 from typing import TypeVar
 
 import pytest
-from sqlalchemy import func, select, update
+from sqlalchemy import func, select, text, update
 from sqlalchemy.exc import IntegrityError, OperationalError
 from sqlalchemy.orm import Session
 
@@ -22,6 +22,7 @@ from service.store import designs, jobs, order
 from service.store.jobs import Beat, ClaimedJob, Swept
 from service.store.session import Store, open_store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
+from tests.service.queueing import changed_at, forget_changes
 from tests.service.samples import sample_planned, sample_request
 
 T = TypeVar("T")
@@ -395,6 +396,76 @@ def test_what_a_dead_worker_held_is_given_back_before_its_lease_is_over(store: S
     assert state(store, job) == "queued"
     assert jobs.heartbeat(store, other, SOME, LEASE_S) is Beat.RENEWED
     assert not jobs.finish(store, job, planned(job))
+
+
+# --------------------------------------------------------------- moments of changes
+def cancel_running(store: Store, job: ClaimedJob) -> None:
+    jobs.cancel(store, job.design_id)
+    jobs.stop_cancelled(store, job)
+
+
+def lose_lease(store: Store, _: ClaimedJob) -> None:
+    let_leases_run_out(store)
+    forget_changes(store)
+    jobs.sweep(store, MOST)
+
+
+@pytest.mark.parametrize(
+    "change",
+    [
+        lambda store, job: jobs.heartbeat(store, job, SOME, LEASE_S),
+        lambda store, job: jobs.finish(store, job, planned(job)),
+        lambda store, job: jobs.fail(store, job, "in words"),
+        jobs.release,
+        lambda store, job: jobs.bury(store, job.worker, MOST),
+        lambda store, job: jobs.bury(store, job.worker, 1),
+        cancel_running,
+        lose_lease,
+    ],
+    ids=["beat", "finish", "fail", "release", "bury", "set aside", "cancel", "sweep"],
+)
+def test_every_change_of_a_job_carries_the_moment_it_was_made(
+    store: Store, change: Callable[[Store, ClaimedJob], object]
+) -> None:
+    job = submitted_and_claimed(store)
+    before_us = changed_at(store, job.design_id)
+    assert abs(before_us / 1e6 - time.time()) < 30.0
+    forget_changes(store)
+    change(store, job)
+    # SQLite's clock tells milliseconds.
+    assert changed_at(store, job.design_id) >= before_us - 1000
+
+
+def test_claiming_and_cancelling_what_waits_carry_their_moments_too(store: Store) -> None:
+    first, second = submitted(store), submitted(store, "Second")
+    forget_changes(store)
+    claimed(store)
+    jobs.cancel(store, second)
+    assert changed_at(store, first) > 1
+    assert changed_at(store, second) > 1
+
+
+@pytest.mark.parametrize("database_url", ["sqlite"], indirect=True)
+def test_only_what_is_worth_nothing_without_its_machine_does_not_wait_for_the_disk(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    waits: list[bool] = []
+    once = store._once
+
+    def watched(work: Callable[[Session], T], *, writes: bool, synced: bool = True) -> T:
+        def asked(session: Session) -> T:
+            if writes:
+                full = 2  # as SQLite numbers it
+                waits.append(session.scalar(text("PRAGMA synchronous")) == full)
+            return work(session)
+
+        return once(asked, writes=writes, synced=synced)
+
+    monkeypatch.setattr(store, "_once", watched)
+    job = submitted_and_claimed(store)
+    jobs.heartbeat(store, job, SOME, LEASE_S)
+    jobs.finish(store, job, planned(job))
+    assert waits == [True, False, False, True]
 
 
 # --------------------------------------------------------------------------- counts

@@ -356,6 +356,44 @@ def test_every_connection_is_set_up_for_what_may_befall_it(store: Store) -> None
     assert found == asked
 
 
+# ------------------------------------------------------------------------- asking
+def test_a_database_that_answers_is_pinged(store: Store) -> None:
+    store.ping()
+    store.ping()
+
+
+def test_a_ping_gives_up_sooner_than_work_does(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def away(*_: object, **__: object) -> None:
+        raise OperationalError("SELECT", None, ConnectionResetError())
+
+    monkeypatch.setattr(store, "_once", away)
+    started = time.monotonic()
+    with pytest.raises(StoreUnavailable):
+        store.ping(0.1)
+    assert time.monotonic() - started < 1.0
+
+
+def test_a_ping_of_a_database_that_hangs_comes_back_and_leaves_one_waiting(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    thaw, asked, once = threading.Event(), [0], store._once
+
+    def frozen(work: Callable[[Session], T], *, writes: bool, synced: bool = True) -> T:
+        asked[0] += 1
+        thaw.wait(10.0)
+        return once(work, writes=writes, synced=synced)
+
+    monkeypatch.setattr(store, "_once", frozen)
+    for _ in range(3):
+        with pytest.raises(StoreUnavailable):
+            store.ping(0.05)
+    assert asked == [1]
+    thaw.set()
+    store.ping(5.0)
+
+
 # ------------------------------------------------------------------------- opening
 def test_a_database_that_does_not_answer_is_unavailable(tmp_path: Path) -> None:
     for url in (
