@@ -12,7 +12,7 @@ from typing import Final
 
 from service.doorbell import Doorbell
 from service.settings import Settings
-from service.store import designs, jobs
+from service.store import jobs
 from service.store.session import Store, open_store
 from tests.chaos.faults import (
     FAULTS_OF_ALL,
@@ -20,7 +20,6 @@ from tests.chaos.faults import (
     Fault,
     Scene,
     Struck,
-    claimed_again,
 )
 from tests.chaos.record import Record, Step
 from tests.chaos.submitting import Submitter
@@ -61,15 +60,15 @@ class Course:
 
 @dataclass(frozen=True, slots=True)
 class Told:
-    """A fault and what followed: seconds to the next stored result, and to the last new claim.
+    """A fault and what followed: seconds to the next stored result, and until its jobs were free.
 
-    ``claimed_again_s`` is of what the fault took from its workers; None where it took nothing.
+    ``freed_s`` is of the jobs whose workers could do nothing for them any more, if there were any.
     """
 
     what: str
     at_job: int
     stored_s: float
-    claimed_again_s: float | None
+    freed_s: float | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,7 +88,7 @@ class Report:
         late = [
             f"{each.what}: moved again after {longest_s:.1f} s, and not within {bound_s:.1f} s"
             for each in self.told
-            if (longest_s := max(each.stored_s, each.claimed_again_s or 0.0)) > bound_s
+            if (longest_s := max(each.stored_s, each.freed_s or 0.0)) > bound_s
         ]
         return (*late, *self.verdict.violations)
 
@@ -115,8 +114,10 @@ def run(course: Course, folder: Path) -> Report:
                 started_s = time.monotonic()
                 submitter.start()
                 chance = random.Random(course.seed)  # noqa: S311  # no secret
-                scene = Scene(workers, record, chance, course.longest_outage_s, postgres, redis)
-                told = tuple(_strike(scene, store, course))
+                scene = Scene(
+                    workers, store, record, chance, course.longest_outage_s, postgres, redis
+                )
+                told = tuple(_strike(scene, course))
                 _await_the_end(submitter, record, store)
                 took_s = time.monotonic() - started_s
             # After the workers have ended, so that nothing comes later still.
@@ -151,11 +152,11 @@ def _servers(
         )
 
 
-def _strike(scene: Scene, store: Store, course: Course) -> Iterator[Told]:
+def _strike(scene: Scene, course: Course) -> Iterator[Told]:
     """Do every fault at its time, and tell what followed."""
     for at_job, fault in _schedule(scene.chance, course):
         _await_stored(scene.record, at_job)
-        yield _follow(scene.record, store, at_job, fault(scene))
+        yield _follow(scene.record, at_job, fault(scene))
 
 
 def _schedule(chance: random.Random, course: Course) -> list[tuple[int, Fault]]:
@@ -170,13 +171,10 @@ def _schedule(chance: random.Random, course: Course) -> list[tuple[int, Fault]]:
     return [(int(part * course.jobs), fault) for part, fault in zip(parts, faults, strict=True)]
 
 
-def _follow(record: Record, store: Store, at_job: int, struck: Struck) -> Told:
-    stored = _next_stored(record, struck.over_at_s)
-    again = [_again(record, store, claim) for claim in struck.robbed]
-    times_s = [each.at_s - struck.over_at_s for each in again if each is not None]
-    return Told(
-        struck.what, at_job, stored.at_s - struck.over_at_s, max(times_s) if times_s else None
-    )
+def _follow(record: Record, at_job: int, struck: Struck) -> Told:
+    stored_s = _next_stored(record, struck.over_at_s).at_s - struck.over_at_s
+    freed_s = None if struck.freed_at_s is None else struck.freed_at_s - struck.over_at_s
+    return Told(struck.what, at_job, stored_s, freed_s)
 
 
 def _next_stored(record: Record, after_s: float) -> Step:
@@ -187,19 +185,6 @@ def _next_stored(record: Record, after_s: float) -> Step:
                 return step
         time.sleep(_LOOK_S)
     raise TimeoutError(f"nothing was stored for {_STANDSTILL_S:.0f} s after a fault")
-
-
-def _again(record: Record, store: Store, claim: Step) -> Step | None:
-    """The claim after the one that a fault made worthless; None if it had just been stored."""
-    until_s = time.monotonic() + _STANDSTILL_S
-    while time.monotonic() < until_s:
-        again = claimed_again(record, claim)
-        if again is not None:
-            return again
-        if designs.get(store, claim.design_id).state == "done":
-            return claimed_again(record, claim)
-        time.sleep(_LOOK_S)
-    raise TimeoutError(f"{claim.design_id} was not claimed again within {_STANDSTILL_S:.0f} s")
 
 
 def _await_stored(record: Record, number: int) -> None:

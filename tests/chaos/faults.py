@@ -13,8 +13,10 @@ from dataclasses import dataclass
 from typing import Final
 
 import psycopg
-from sqlalchemy import make_url
+from sqlalchemy import make_url, select
 
+from service.store.session import Store
+from service.store.tables import JobRow
 from tests.chaos.record import Record, Step
 from tests.chaos.workers import Workers, runs
 from tests.service.servers import PostgresServer, RedisServer
@@ -28,13 +30,13 @@ _PATIENCE_S: Final = 60.0
 class Struck:
     """A fault that was done.
 
-    ``over_at_s`` is the moment from which work must go on, by the clock of the record;
-    ``robbed`` are the claims whose workers can do nothing for them any more.
+    Both moments are by the clock of the record. From the first work must go on; by the second
+    the jobs were free again whose workers could do nothing for them any more, if there were any.
     """
 
     what: str
     over_at_s: float
-    robbed: tuple[Step, ...] = ()
+    freed_at_s: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,6 +44,7 @@ class Scene:
     """What faults are done to."""
 
     workers: Workers
+    store: Store
     record: Record
     chance: random.Random
     longest_outage_s: float
@@ -61,6 +64,20 @@ class Scene:
         below = set(self.workers.below(index))
         return {pid: step for pid, step in self.record.under_way().items() if pid in below}
 
+    def freed(self, claims: tuple[Step, ...]) -> float:
+        """Wait until jobs are with the claims no longer that a fault made worthless."""
+        fences = {claim.design_id: claim.fence for claim in claims}
+        query = select(JobRow.design_id, JobRow.fence, JobRow.state).where(
+            JobRow.design_id.in_(fences)
+        )
+
+        def all_free() -> bool:
+            rows = self.store.read(lambda session: session.execute(query).all())
+            return all(row[1] > fences[row[0]] or row[2] == "done" for row in rows)
+
+        until(all_free, _PATIENCE_S)
+        return time.monotonic()
+
 
 Fault = Callable[[Scene], Struck]
 
@@ -69,7 +86,8 @@ def kill_a_process(scene: Scene) -> Struck:
     """Kill one process that is in the middle of a job."""
     pid, claim = _busy_process(scene)
     os.kill(pid, signal.SIGKILL)
-    return Struck("process killed", time.monotonic(), (claim,))
+    over_at_s = time.monotonic()
+    return Struck("process killed", over_at_s, scene.freed((claim,)))
 
 
 def kill_a_worker(scene: Scene) -> Struck:
@@ -78,7 +96,7 @@ def kill_a_worker(scene: Scene) -> Struck:
     scene.workers.kill(index)
     over_at_s = time.monotonic()
     scene.workers.start(index)
-    return Struck("worker killed", over_at_s, claims)
+    return Struck("worker killed", over_at_s, scene.freed(claims))
 
 
 def kill_a_main_process(scene: Scene) -> Struck:
@@ -93,19 +111,16 @@ def kill_a_main_process(scene: Scene) -> Struck:
 
 
 def freeze_a_worker(scene: Scene) -> Struck:
-    """Freeze a whole worker in the middle of jobs until others have them, then wake it."""
+    """Freeze a whole worker in the middle of jobs until they are free again, then wake it."""
     index, claims = _frozen_worker(scene)
     frozen_at_s = time.monotonic()
     try:
-        until(
-            lambda: all(claimed_again(scene.record, claim) is not None for claim in claims),
-            _PATIENCE_S,
-        )
+        freed_at_s = scene.freed(claims)
     finally:
         scene.workers.send(index, signal.SIGCONT)
     # It hands in what it has, under a fence that is past.
     until(lambda: all(_came_late(scene.record, claim) for claim in claims), _PATIENCE_S)
-    return Struck("worker frozen", frozen_at_s, claims)
+    return Struck("worker frozen", frozen_at_s, freed_at_s)
 
 
 def lose_the_broker(scene: Scene) -> Struck:
@@ -130,16 +145,6 @@ def crash_the_database(scene: Scene) -> Struck:
 
 FAULTS_OF_ALL: Final = (kill_a_process, kill_a_worker, kill_a_main_process, freeze_a_worker)
 FAULTS_OF_SERVERS: Final = (lose_the_broker, crash_the_database)
-
-
-def claimed_again(record: Record, claim: Step) -> Step | None:
-    """The first claim of a job after another one of it."""
-    later = (
-        step
-        for step in record.look()
-        if step.design_id == claim.design_id and step.what == "claimed" and step.fence > claim.fence
-    )
-    return next(later, None)
 
 
 def _came_late(record: Record, claim: Step) -> bool:

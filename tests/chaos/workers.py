@@ -19,7 +19,7 @@ from tests.service.servers import ended_with_us
 
 Form = Literal["embedded", "celery"]
 
-_CHECKOUT: Final = Path(__file__).parents[2]
+CHECKOUT: Final = Path(__file__).parents[2]
 _EMBEDDED: Final = "-m tests.chaos.embedded"
 _CELERY: Final = (
     "-m celery --app tests.chaos.celery_app worker --pool prefork --concurrency {children} "
@@ -49,7 +49,7 @@ class Workers:
         with self.log.open("ab") as log:
             main = subprocess.Popen(
                 ended_with_us([sys.executable, *command.split()]),
-                cwd=_CHECKOUT,
+                cwd=CHECKOUT,
                 env=os.environ | self._variables(),
                 stdout=log,
                 stderr=log,
