@@ -10,7 +10,7 @@ from pydantic import Field, StringConstraints, ValidationError, field_validator,
 
 from service.contracts.bands import MOST_BANDS, Band, check_names_differ, expand_bands
 from service.contracts.feed import Feed
-from service.contracts.quantities import Contract, PowerW, wavelength_m
+from service.contracts.quantities import Contract, LengthM, PowerW, wavelength_m
 from service.contracts.refusals import refusal_of, rule_broken
 from service.contracts.station_site import Site
 from service.contracts.stock import Stock
@@ -52,6 +52,25 @@ class Tolerances(Contract):
     insulation_percent: Annotated[float, Field(ge=0.0, le=50.0)] = 10.0
 
 
+class LengthBounds(Contract):
+    """Lengths of wire to search: between two limits, or one alone where they are equal."""
+
+    low_m: LengthM
+    high_m: LengthM
+
+    @model_validator(mode="after")
+    def _limits_are_in_order(self) -> Self:
+        if self.low_m > self.high_m:
+            raise rule_broken(
+                "lengths-swapped",
+                f"the low length {self.low_m:g} m is above the high one {self.high_m:g} m.",
+                "Swap the lengths.",
+                field="low_m",
+                value=self.low_m,
+            )
+        return self
+
+
 class DesignRequest(Contract):
     """What a planner wants designed.
 
@@ -59,7 +78,8 @@ class DesignRequest(Contract):
     such as ``amateur-region-2: 40m, 15m``; they are stored as bands with edges.
     ``largest_set`` asks for sets of up to so many dipoles; without it sets are proposed only
     where no single wire serves all required bands. ``rank_by`` of ``worst-case`` ranks by how
-    wires hold up under the ``tolerances``.
+    wires hold up under the ``tolerances``. ``lengths`` bounds the lengths searched, within what
+    the site can take.
     """
 
     name: Annotated[str, StringConstraints(strip_whitespace=True, max_length=120)] = (
@@ -74,6 +94,7 @@ class DesignRequest(Contract):
     largest_set: Annotated[int, Field(ge=1, le=LARGEST_SET)] | None = None
     rank_by: Literal["nominal", "worst-case"] = "nominal"
     tolerances: Tolerances | None = Tolerances()
+    lengths: LengthBounds | None = None
 
     @field_validator("bands", mode="before")
     @classmethod
@@ -84,6 +105,7 @@ class DesignRequest(Contract):
     def _hangs_together(self) -> Self:
         check_names_differ(self.bands)
         self._check_span()
+        self._check_lengths()
         self._check_heights()
         self._check_diameters()
         self._check_size()
@@ -145,6 +167,31 @@ class DesignRequest(Contract):
                 "or add a higher band.",
                 field="site.span_m",
                 value=self.site.span_m,
+            )
+
+    def _check_lengths(self) -> None:
+        if self.lengths is None:
+            return
+        if self.lengths.low_m > self.site.longest_wire_m:
+            raise rule_broken(
+                "lengths-beyond-span",
+                f"a wire of {self.lengths.low_m:g} m does not fit: the span takes at most "
+                f"{self.site.longest_wire_m:.2f} m.",
+                "Give a longer site.span_m or shorter lengths.",
+                field="lengths.low_m",
+                value=self.lengths.low_m,
+            )
+        highest = max(self.bands, key=lambda band: band.high_mhz)
+        needed_m = SHORTEST_RESONANCE_WAVELENGTHS * wavelength_m(highest.high_mhz)
+        if self.lengths.high_m < needed_m:
+            raise rule_broken(
+                "lengths-too-short",
+                f"even {highest.name} at {highest.high_mhz:g} MHz has no resonance below "
+                f"{needed_m:.2f} m of wire.",
+                f"Let lengths reach to at least {math.ceil(100.0 * needed_m) / 100.0:.2f} m, or "
+                "add a higher band.",
+                field="lengths.high_m",
+                value=self.lengths.high_m,
             )
 
     def _check_heights(self) -> None:
@@ -212,19 +259,30 @@ def parse_request(text: str | bytes) -> DesignRequest:
     RequestRefused
         With one fault for each thing wrong: field, value, reason and remedy.
     """
-    if len(text) > LARGEST_REQUEST_BYTES:
-        error = rule_broken(
-            "request-too-large",
-            f"the request is longer than {LARGEST_REQUEST_BYTES // 1024} KiB.",
-            "Split it into several requests.",
-            value=f"{len(text)} bytes",
-        )
-        raise refusal_of(
-            ValidationError.from_exception_data(
-                "DesignRequest", [{"type": error, "loc": (), "input": f"{len(text)} bytes"}]
-            )
-        )
+    refuse_too_long(text)
     try:
         return DesignRequest.model_validate_json(text)
     except ValidationError as error:
         raise refusal_of(error) from error
+
+
+def refuse_too_long(text: str | bytes) -> None:
+    """Refuse a text that is longer than any request may be, before it is read.
+
+    Raises
+    ------
+    RequestRefused
+    """
+    if len(text) <= LARGEST_REQUEST_BYTES:
+        return
+    error = rule_broken(
+        "request-too-large",
+        f"the request is longer than {LARGEST_REQUEST_BYTES // 1024} KiB.",
+        "Split it into several requests.",
+        value=f"{len(text)} bytes",
+    )
+    raise refusal_of(
+        ValidationError.from_exception_data(
+            "DesignRequest", [{"type": error, "loc": (), "input": f"{len(text)} bytes"}]
+        )
+    )

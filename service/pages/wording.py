@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Final
 
 from service.contracts.feed import Feed
-from service.contracts.request import DesignRequest, Tolerances
+from service.contracts.request import DesignRequest, LengthBounds, Tolerances
 from service.contracts.station_site import GroundConstants, HeightRange, Site
 from service.contracts.stock import Conductor, Insulation, Stock, material_in_words
 from service.pages import formats
@@ -30,6 +30,12 @@ def site_in_words(site: Site) -> str:
     if site.ground == "free-space":
         return f"{span}, in free space."
     return f"{span}, {_heights(site)} over {_ground(site)}."
+
+
+def lengths_in_words(lengths: LengthBounds) -> str:
+    """Which lengths of wire are searched."""
+    low, high = formats.metres(lengths.low_m), formats.metres(lengths.high_m)
+    return f"{low} m and no other" if low == high else f"{low} to {high} m"
 
 
 def stock_in_words(stock: Stock) -> list[str]:

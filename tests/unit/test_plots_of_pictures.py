@@ -158,7 +158,8 @@ def test_the_current_is_drawn_where_it_is_stored() -> None:
     current = REPORT.bands[1].current
     assert current is not None
     _, low, high, start, end = (root.get("data-x") or "").split()
-    assert (float(low), float(high)) == (0.0, pytest.approx(REPORT.length_m))
+    assert float(low) == 0.0
+    assert float(high) == pytest.approx(REPORT.length_m)
     (curve,) = of_class(root, "standing")
     top, bottom = (
         float(next(line for line in of_class(root, "grid") if line.get("y1") == y).get("y1") or 0)

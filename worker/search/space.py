@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.errors import OutOfRange
 from worker.search.feeding import Feeding
 
 FloatArray = NDArray[np.float64]
@@ -39,6 +40,9 @@ LONGEST_DEPARTURE: Final = 1.05
 #: The scan starts at this many wavelengths at the highest frequency asked for; see
 #: ``SHORTEST_RESONANCE_WAVELENGTHS`` of the request contract, which refuses shorter spans.
 SHORTEST_WAVELENGTHS: Final = 0.40
+
+#: Part of a length that one length alone is searched around.
+_ONE_LENGTH: Final = 1e-6
 
 
 @dataclass(frozen=True, slots=True)
@@ -145,6 +149,8 @@ class SearchSpace:
     together : callable, optional
         Direct solutions of some of the wires, each of its own length at its own frequency, no
         closer than a survey where the last argument says so; without it each is asked in turn.
+    asked_m : (float, float), optional
+        Limits of length in m that are asked for; equal ones leave one length.
     shortest_m, longest_m : float
         Limits of the search in m: from below the first resonance on the highest band to the
         longest wire that fits the site and, on the highest band, the models.
@@ -157,6 +163,7 @@ class SearchSpace:
     feeding: Feeding
     survey: Callable[[FloatArray, FloatArray, bool], ComplexArray] | None = None
     together: Callable[[Sequence[int], FloatArray, FloatArray, bool], Solved] | None = None
+    asked_m: tuple[float, float] | None = None
     shortest_m: float = field(init=False)
     longest_m: float = field(init=False)
 
@@ -168,10 +175,15 @@ class SearchSpace:
         widest = max(band.high_hz / band.low_hz for band in self.bands)
         modelled_m = top_wavelength_m * min(wire.model.longest_wavelengths for wire in self.wires)
         longest_m = min(self.site_longest_m, modelled_m / (widest * LONGEST_DEPARTURE))
+        shortest_m = min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
+        if self.asked_m is not None:
+            # Even one length alone is searched as two, closer together than any wire is cut.
+            low_m, high_m = self.asked_m[0] * (1.0 - _ONE_LENGTH), self.asked_m[1]
+            if low_m > longest_m or high_m < shortest_m:
+                raise OutOfRange("length_m", self.asked_m[0], shortest_m, longest_m, "m")
+            shortest_m, longest_m = max(shortest_m, low_m), min(longest_m, high_m)
         object.__setattr__(self, "longest_m", longest_m)
-        object.__setattr__(
-            self, "shortest_m", min(SHORTEST_WAVELENGTHS * top_wavelength_m, longest_m)
-        )
+        object.__setattr__(self, "shortest_m", shortest_m)
 
     @property
     def points(self) -> int:

@@ -31,8 +31,9 @@ from service.contracts.request import DesignRequest
 from worker.engine.matching import Component, Form, Kind, l_networks
 from worker.engine.reflection import reflection_coefficient
 from worker.search.appraisal import Appraisal, BandAppraisal, Curve
-from worker.search.feeding import NETWORKS, network_values
+from worker.search.feeding import NETWORKS, Fed, network_values
 from worker.search.scoring import FULLY_SERVED
+from worker.search.space import ComplexArray, FloatArray
 from worker.search.steadiness import Held
 from worker.search.trade_off import Gain
 from worker.translation.pictures import BandPicture
@@ -280,21 +281,27 @@ def _part(component: Component, place: Literal["series", "shunt"]) -> tuple[Matc
 
 
 def _points(curve: Curve, reference_ohm: float) -> tuple[ReportPoint, ...]:
-    fed = curve.fed
+    return report_points(curve.frequency_hz, curve.impedance_ohm, curve.fed, reference_ohm)
+
+
+def report_points(
+    frequency_hz: FloatArray, impedance_ohm: ComplexArray, fed: Fed, reference_ohm: float
+) -> tuple[ReportPoint, ...]:
+    """Points of one wire's curve, rounded for storage; arrays of shape (n,)."""
     reflection = reflection_coefficient(fed.behind_ohm, reference_ohm)
     far, loss_db = fed.transmitter_swr, fed.line_loss_db
     return tuple(
         ReportPoint(
-            frequency_mhz=_rounded(curve.frequency_hz[index] / 1e6, 6),
-            resistance_ohm=_rounded(curve.impedance_ohm[index].real, 3),
-            reactance_ohm=_rounded(curve.impedance_ohm[index].imag, 3),
+            frequency_mhz=_rounded(frequency_hz[index] / 1e6, 6),
+            resistance_ohm=_rounded(impedance_ohm[index].real, 3),
+            reactance_ohm=_rounded(impedance_ohm[index].imag, 3),
             reflection=_rounded(abs(reflection[index]), 5),
             swr=_rounded(fed.swr[index], 4),
             reflection_deg=_rounded(math.degrees(cmath.phase(reflection[index])), 2),
             transmitter_swr=None if far is None else _rounded(far[index], 4),
             line_loss_db=None if loss_db is None else _rounded(loss_db[index], 3),
         )
-        for index in range(len(curve.frequency_hz))
+        for index in range(len(frequency_hz))
     )
 
 

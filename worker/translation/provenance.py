@@ -58,12 +58,18 @@ def ground_and_height_in_words(said: SaidGround, height_m: float | None) -> str:
 def notes_on(request: DesignRequest, space: SearchSpace) -> tuple[str, ...]:
     """What a planner should know of the search as a whole."""
     notes: list[str] = []
-    if space.longest_m < space.site_longest_m:
+    lengths = request.lengths
+    wanted_m = space.site_longest_m if lengths is None else lengths.high_m
+    if space.longest_m < min(wanted_m, space.site_longest_m):
         top = max(request.bands, key=lambda band: band.high_mhz)
         notes.append(
             f"Wires longer than {metres(space.longest_m)} m were not searched: on {top.name} they "
             "are longer than the model covers. Leave that band out to search them."
         )
+    if lengths is not None:
+        low, high = metres(lengths.low_m), metres(lengths.high_m)
+        between = f"of {low} m" if low == high else f"from {low} to {high} m"
+        notes.append(f"Only wires {between} were searched, as asked.")
     if request.feed.matching == "per-band":
         notes.append(
             "Each band has an L-network of its own at the feed point, matched at the band's "

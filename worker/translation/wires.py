@@ -89,7 +89,7 @@ class Hanging:
     def space(self) -> SearchSpace:
         """What the request allows to vary, and what it wants served."""
         feed = self.request.feed
-        line = feed.feed_line
+        line, lengths = feed.feed_line, self.request.lengths
         wires = [self.wire(way) for way in self.ways]
         hung = [wire.hung for wire in wires]
         return SearchSpace(
@@ -109,6 +109,7 @@ class Hanging:
                 for wire, way in zip(wires, self.ways, strict=True)
             ),
             site_longest_m=self.request.site.longest_wire_m,
+            asked_m=None if lengths is None else (lengths.low_m, lengths.high_m),
             ratios=feed.transformer_ratios,
             feeding=Feeding(
                 reference_ohm=feed.reference_ohm,
@@ -170,6 +171,11 @@ def ground_of(said: SaidGround) -> Ground | None:
     if said == "free-space":
         return None
     return GROUND_CLASSES[said]
+
+
+def hung_wire(conductor: Conductor, grounds: GroundTables | None, feed_fraction: float) -> HungWire:
+    """The engine's wire for a conductor, its ground and the place of its feed."""
+    return replace(_hung(conductor, grounds), feed_fraction=feed_fraction)
 
 
 def _hung(conductor: Conductor, grounds: GroundTables | None) -> HungWire:
