@@ -125,6 +125,8 @@ def _path(location: tuple[int | str, ...]) -> str:
 
 
 def _shown(value: object) -> str:
+    if isinstance(value, bytes):  # text that is no JSON, and may be very long
+        value = value[: 4 * _LONGEST_VALUE].decode(errors="replace")
     text = value if isinstance(value, str) else repr(value)
     return text if len(text) <= _LONGEST_VALUE else text[: _LONGEST_VALUE - 1] + "…"
 

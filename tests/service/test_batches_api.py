@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import asyncio
 import csv
 import io
 import json
@@ -13,6 +14,7 @@ from typing import Any
 
 import httpx
 import pytest
+from starlette.requests import Request
 
 from service.api import batch_body
 from service.contracts.batch import (
@@ -169,8 +171,8 @@ def test_of_very_many_faults_the_first_are_named_and_the_others_counted(
 
 def test_a_line_that_is_no_json_is_named(wire: httpx.Client) -> None:
     found = problem(posted(wire, lines("good") + b'{"bands":\n'), 400)["faults"]
-    assert [(fault["field"], fault["code"]) for fault in found] == [
-        ("line 2: request", "json-invalid")
+    assert [(fault["field"], fault["value"], fault["code"]) for fault in found] == [
+        ("line 2: request", '{"bands":', "json-invalid")
     ]
 
 
@@ -193,6 +195,24 @@ def test_a_batch_larger_than_the_limit_is_answered_413(
 
     answer = wire.post("/v1/batches", content=parts(), headers=headers, timeout=60.0)
     assert problem(answer, 413)["faults"][0]["code"] == "request-too-large"
+
+
+@pytest.mark.parametrize(
+    ("sent", "limit_bytes", "kept_bytes", "heard"), [(8, 1000, 800, 8), (1000, 100, 200, 3)]
+)
+def test_of_a_body_without_end_little_is_kept_and_no_more_than_twice_the_limit_is_heard(
+    monkeypatch: pytest.MonkeyPatch, sent: int, limit_bytes: int, kept_bytes: int, heard: int
+) -> None:
+    monkeypatch.setattr(batch_body, "LARGEST_BATCH_BYTES", limit_bytes)
+    told = 0
+
+    async def receive() -> dict[str, object]:
+        nonlocal told
+        told += 1
+        return {"type": "http.request", "body": b"x" * 100, "more_body": told < sent}
+
+    kept = asyncio.run(batch_body._read(Request({"type": "http"}, receive)))
+    assert (told, len(kept)) == (heard, kept_bytes)
 
 
 @pytest.mark.parametrize(
@@ -361,6 +381,19 @@ def test_a_missing_batch_is_answered_404_on_every_path(wire: httpx.Client, odd: 
     for path in ("/cancel", "/rerun", "/rerun?part=all"):
         assert problem_at(wire.post(f"/v1/batches/{odd}{path}"))["title"] == "No such batch", path
     assert wire.get("/problems/batch-not-found").status_code == 200
+
+
+def test_the_batch_of_another_owner_is_not_there(wire: httpx.Client, wire_store: Store) -> None:
+    designs_of_anna = (sample_request(name=fresh("of anna")[0]),)
+    request = BatchRequest(name="Hers", designs=designs_of_anna)
+    hers = batches.submit(wire_store, request, idempotency_key=None, owner="anna").batch_id
+    for path in ("", "/designs", "/results", "/results.csv"):
+        problem_at(wire.get(f"/v1/batches/{hers}{path}"))
+    for path in ("/cancel", "/rerun", "/rerun?part=all"):
+        problem_at(wire.post(f"/v1/batches/{hers}{path}"))
+    assert hers not in [each["id"] for each in wire.get("/v1/batches?limit=100").json()["batches"]]
+    assert batches.get(wire_store, hers, "anna").counts.queued == 1
+    batches.cancel(wire_store, hers)
 
 
 def problem_at(answer: httpx.Response) -> dict[str, Any]:
