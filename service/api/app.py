@@ -14,12 +14,14 @@ from service.api import (
     candidates,
     check,
     designs,
+    events,
     health,
     openapi,
     plots,
     problem_kinds,
     problems,
 )
+from service.api.change_feed import ChangeFeed
 from service.api.guard import Guard
 from service.doorbell import Doorbell
 from service.pages import routes as pages
@@ -44,6 +46,8 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
             if store is None:
                 app.state.store = opened.enter_context(closing(open_store(settings)))
             app.state.doorbell = opened.enter_context(closing(Doorbell(settings)))
+            feed = ChangeFeed(app.state.store, settings.most_streams)
+            app.state.change_feed = opened.enter_context(closing(feed))
             yield
 
     package = metadata("spanwright")
@@ -62,6 +66,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     for each in (
         designs,
         batches,
+        events,
         candidates,
         check,
         band_lists,

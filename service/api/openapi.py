@@ -10,8 +10,10 @@ from pydantic.json_schema import models_json_schema
 
 from service.api.problems import Problem
 from service.contracts.bands import BandChoice
-from service.contracts.batch import BatchRequest
+from service.contracts.batch import Batch, BatchRequest
+from service.contracts.events import Snapshot
 from service.contracts.request import DesignRequest
+from service.store.changes import Change
 
 #: A request may leave out what a stored design always has, so it is described apart.
 _REF: Final = "#/components/schemas/Asked{model}"
@@ -52,7 +54,9 @@ def describe(app: FastAPI) -> None:
                 description=app.description,
                 routes=app.routes,
             )
-            document["components"]["schemas"] |= _request_schemas() | _problem_schemas()
+            document["components"]["schemas"] |= (
+                _request_schemas() | _problem_schemas() | _event_schemas()
+            )
             app.openapi_schema = document
         return app.openapi_schema
 
@@ -88,6 +92,16 @@ def _request_schemas() -> dict[str, Any]:
             },
         ],
     }
+    return schemas
+
+
+def _event_schemas() -> dict[str, Any]:
+    """What server-sent events carry, which OpenAPI 3.1 cannot tie to the stream itself."""
+    _, found = models_json_schema(
+        [(Batch, "serialization"), (Change, "serialization"), (Snapshot, "serialization")],
+        ref_template="#/components/schemas/{model}",
+    )
+    schemas: dict[str, Any] = found["$defs"]
     return schemas
 
 

@@ -105,6 +105,23 @@ class OriginRefused(SpanwrightError):
         super().__init__("A page of another site had the browser send this.", (fault,))
 
 
+class TooManyStreams(SpanwrightError):
+    """As many streams of events are open as this process may serve."""
+
+    code = "too-many-streams"
+    title = "Too many streams are open"
+
+    def __init__(self, most: int) -> None:
+        fault = Fault(
+            "streams",
+            str(most),
+            "as many streams of events are open here as may be.",
+            "Close one that is not needed, or come back later.",
+            self.code,
+        )
+        super().__init__(f"No more than {most} streams of events may be open here.", (fault,))
+
+
 class Unexpected(SpanwrightError):
     """The service met a fault of its own; the log has it under the reference given."""
 
@@ -129,6 +146,7 @@ STATUSES: Final[Mapping[type[SpanwrightError], HTTPStatus]] = {
     KeyReused: HTTPStatus.UNPROCESSABLE_ENTITY,
     StoreUnavailable: HTTPStatus.SERVICE_UNAVAILABLE,
     SchemaMismatch: HTTPStatus.SERVICE_UNAVAILABLE,
+    TooManyStreams: HTTPStatus.SERVICE_UNAVAILABLE,
     Unexpected: HTTPStatus.INTERNAL_SERVER_ERROR,
 }
 
