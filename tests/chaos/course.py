@@ -21,7 +21,7 @@ from tests.chaos.faults import (
     Scene,
     Struck,
 )
-from tests.chaos.record import Record, Step
+from tests.chaos.record import VARIABLE, Record, Step
 from tests.chaos.submitting import Submitter
 from tests.chaos.verdict import Verdict, judge
 from tests.chaos.workers import Form, Workers
@@ -104,7 +104,11 @@ def run(course: Course, folder: Path) -> Report:
     with _servers(course, folder) as (settings, postgres, redis):
         record = Record(folder / "record")
         workers = Workers(
-            course.form, settings, course.workers, folder / "workers.log", folder / "record"
+            course.form,
+            settings,
+            course.workers,
+            folder / "workers.log",
+            {VARIABLE: str(folder / "record")},
         )
         with ExitStack() as stack:
             store = stack.enter_context(closing(open_store(settings)))

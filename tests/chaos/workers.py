@@ -6,24 +6,22 @@ import os
 import signal
 import subprocess
 import sys
-from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import TracebackType
 from typing import Final, Literal, Self
 
 from service.settings import Settings
-from tests.chaos import record
 from tests.service.databases import environment
 from tests.service.servers import ended_with_us
 
 Form = Literal["embedded", "celery"]
 
 CHECKOUT: Final = Path(__file__).parents[2]
-_EMBEDDED: Final = "-m tests.chaos.embedded"
+_EMBEDDED: Final = "-m {package}.embedded"
 _CELERY: Final = (
-    "-m celery --app tests.chaos.celery_app worker --pool prefork --concurrency {children} "
-    "--hostname chaos-{index}@%h --without-gossip --without-mingle --loglevel warning"
+    "-m celery --app {package}.celery_app worker --pool prefork --concurrency {children} "
+    "--hostname worker-{index}@%h --without-gossip --without-mingle --loglevel warning"
 )
 _STOP_PATIENCE_S: Final = 40.0
 
@@ -32,25 +30,28 @@ _STOP_PATIENCE_S: Final = 40.0
 class Workers:
     """Main processes of one form, each with as many processes below it as the settings say.
 
-    A main process leads a process group of its own, with all that is below it.
+    A main process leads a process group of its own, with all that is below it. The package
+    holds what they start with, ``embedded`` and ``celery_app``, which know the planning; it
+    finds what it must know in the variables.
     """
 
     form: Form
     settings: Settings
     number: int
     log: Path
-    record: Path
+    variables: dict[str, str]
+    package: str = "tests.chaos"
     mains: list[subprocess.Popen[bytes]] = field(default_factory=list)
 
     def start(self, index: int) -> None:
         """Start a worker in the place of one that has ended, or a new one."""
         template = _EMBEDDED if self.form == "embedded" else _CELERY
-        command = template.format(index=index, children=self.settings.workers)
+        command = template.format(package=self.package, index=index, children=self.settings.workers)
         with self.log.open("ab") as log:
             main = subprocess.Popen(
                 ended_with_us([sys.executable, *command.split()]),
                 cwd=CHECKOUT,
-                env=os.environ | self._variables(),
+                env=os.environ | self._environment(),
                 stdout=log,
                 stderr=log,
                 start_new_session=True,
@@ -98,12 +99,9 @@ class Workers:
                 main.wait()
                 raise
 
-    def _variables(self) -> Mapping[str, str]:
-        # Celery warns of root, as whom a container of a test may run.
-        return environment(self.settings) | {
-            record.VARIABLE: str(self.record),
-            "C_FORCE_ROOT": "1",
-        }
+    def _environment(self) -> dict[str, str]:
+        # Celery refuses to be root, as whom a container of a test may run, unless told.
+        return environment(self.settings) | self.variables | {"C_FORCE_ROOT": "1"}
 
 
 def runs(pid: int) -> bool:

@@ -1,0 +1,1 @@
+"""The queue: what it costs beside bare computation, and how soon it takes up what is urgent."""
