@@ -85,7 +85,9 @@ class HungWire:
     temperature_c: float = REFERENCE_TEMPERATURE_C
     feed_fraction: float = 0.5
 
-    def feed_impedance(self, length_m: ArrayLike, frequency_hz: ArrayLike) -> FeedImpedance:
+    def feed_impedance(
+        self, length_m: ArrayLike, frequency_hz: ArrayLike, *, survey: bool = False
+    ) -> FeedImpedance:
         """Impedance at the feed point for every pair of length and frequency.
 
         Parameters
@@ -94,6 +96,8 @@ class HungWire:
             Lengths in m.
         frequency_hz : array_like
             Frequencies in Hz; broadcast with the lengths.
+        survey : bool
+            As for `thin_wire.feed_impedance`.
 
         Returns
         -------
@@ -117,6 +121,7 @@ class HungWire:
             gap_m=self.radius_m,
             wire_impedance_ohm_per_m=series_ohm_per_m,
             reflected=None if self.grounds is None else self.grounds.at_each(frequency),
+            survey=survey,
         )
 
     def electrical(self, frequency_hz: ArrayLike) -> tuple[FloatArray, ComplexArray]:

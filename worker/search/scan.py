@@ -38,8 +38,15 @@ _PROBE_AT: Final = 0.23
 _GOLDEN: Final = 0.618033988749895
 
 #: Whether wires are solved with care, and how many times as many nodes as usual a band is
-#: mapped on over frequency and over length: tried in turn until fresh solves agree.
-_ATTEMPTS: Final = ((False, (1, 1)), (True, (1, 1)), (True, (2, 1)), (True, (2, 2)), (True, (4, 4)))
+#: mapped on over frequency and over length: tried in turn until fresh solves agree. Further
+#: frequencies cost little, and are what high wires over wide bands want.
+_ATTEMPTS: Final = (
+    (False, (1, 1)),
+    (False, (2, 1)),
+    (True, (2, 1)),
+    (True, (2, 2)),
+    (True, (4, 4)),
+)
 
 #: Wires are solved so many at a time, with a word of progress between.
 _SOLVED_AT_A_TIME: Final = 400
@@ -197,18 +204,24 @@ def _map_wires(
     Maps that fresh solves do not bear out are made again, with more and more care.
     """
     todo = list(range(len(space.bands)))
+    rough: set[int] = set()
     by_band: dict[int, tuple[BandMap, ...]] = {}
     misses = [np.inf] * len(space.bands)
     for careful, finer in _ATTEMPTS:
         mapped: dict[int, tuple[BandMap, ...]] = {}
         for done, index in enumerate(todo):
+            # What a survey is too rough for, more frequencies do not mend.
+            if index in rough and not careful:
+                continue
             band = space.bands[index]
             part = _MAP_PART * (done + len(by_band)) / (len(todo) + len(by_band))
             tell = partial(progress, part, f"solving wires on {band.name}")
             maps = _map_band(space, band, tell, careful=careful, finer=finer)
-            if maps is not None:
+            if maps is None:
+                rough.add(index)
+            else:
                 mapped[index] = maps
-        tell()
+            tell()
         for index, (within, miss) in _probe(space, mapped).items():
             misses[index] = max(miss, *(each.largest_miss for each in mapped[index]))
             if within:

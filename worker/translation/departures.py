@@ -10,7 +10,7 @@ from service.contracts.quantities import wavelength_m
 from service.contracts.request import LOWEST_HEIGHT_WAVELENGTHS, Tolerances
 from worker.engine.ground import Ground
 from worker.search.steadiness import Departure
-from worker.translation.wires import Hanging, Way, ground_of
+from worker.translation.wires import Hanging, StockWire, Way, ground_of
 
 #: Relative permittivity of ground stays between that of a vacuum and of cold water.
 _LEAST_PERMITTIVITY: Final = 1.0
@@ -30,11 +30,16 @@ def departures_of(hanging: Hanging, way: Way) -> tuple[Departure, ...]:
     )
 
 
+def _surveyed(wire: StockWire) -> StockWire:
+    """The wire solved no closer than a survey: what departs by a hundredth need be no closer."""
+    return replace(wire, survey=True)
+
+
 def _cut(hanging: Hanging, way: Way, tolerances: Tolerances) -> list[Departure]:
     percent = tolerances.cutting_percent
     if percent == 0.0:
         return []
-    wire = hanging.wire(way)
+    wire = _surveyed(hanging.wire(way))
     return [
         Departure(f"{percent:g} % longer", wire, 1.0 + percent / 100.0),
         Departure(f"{percent:g} % shorter", wire, 1.0 - percent / 100.0),
@@ -53,7 +58,8 @@ def _higher_and_lower(hanging: Hanging, way: Way, tolerances: Tolerances) -> lis
     if way.height_m - by_m >= lowest_m:
         heights.append((f"{by_m:g} m lower", way.height_m - by_m))
     return [
-        Departure(what, hanging.wire(replace(way, height_m=height_m))) for what, height_m in heights
+        Departure(what, _surveyed(hanging.wire(replace(way, height_m=height_m))))
+        for what, height_m in heights
     ]
 
 
@@ -62,7 +68,7 @@ def _wetter_and_drier(hanging: Hanging, way: Way, tolerances: Tolerances) -> lis
     if ground is None or ground.is_perfect or factor == 1.0:
         return []
     return [
-        Departure(f"{name} ground", hanging.wire(way, _moistened(ground, by)))
+        Departure(f"{name} ground", _surveyed(hanging.wire(way, _moistened(ground, by))))
         for name, by in (("wetter", factor), ("drier", 1.0 / factor))
     ]
 
@@ -76,7 +82,7 @@ def _other_insulation(hanging: Hanging, way: Way, tolerances: Tolerances) -> lis
         permittivity = max(1.0, insulation.relative_permittivity * by)
         other = insulation.model_copy(update={"relative_permittivity": permittivity})
         conductor = way.conductor.model_copy(update={"insulation": other})
-        wire = hanging.wire(replace(way, conductor=conductor))
+        wire = _surveyed(hanging.wire(replace(way, conductor=conductor)))
         departures.append(Departure(f"{name} insulation", wire))
     return departures
 

@@ -35,6 +35,7 @@ class StockWire:
     """A conductor of the stock as the search sees it: the wire model of the engine."""
 
     hung: HungWire
+    survey: bool = False
 
     @property
     def shortest_wavelengths(self) -> float:
@@ -55,7 +56,7 @@ class StockWire:
 
     def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
         """Solve every pair of length (m) and frequency (Hz)."""
-        found = self.hung.feed_impedance(length_m, frequency_hz)
+        found = self.hung.feed_impedance(length_m, frequency_hz, survey=self.survey)
         return Solved(found.impedance_ohm, found.estimated_error_ohm)
 
 
