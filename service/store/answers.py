@@ -10,10 +10,9 @@ from __future__ import annotations
 from collections.abc import Collection, Mapping
 from datetime import datetime
 from itertools import islice
-from typing import Any, Final
+from typing import Final
 
-from sqlalchemy import func, select, update
-from sqlalchemy.engine import CursorResult
+from sqlalchemy import bindparam, func, select, update
 from sqlalchemy.orm import Session, aliased
 
 from service.store.tables import DesignRow, JobRow, ResultRow
@@ -26,6 +25,21 @@ ANSWERED_STEP: Final = "done: answered by the stored result of the same request"
 
 #: The design that has the result of a design: another one's, or its own.
 SOURCE: Final = func.coalesce(DesignRow.answered_by, DesignRow.id)
+
+_NEWEST_RESULT: Final = (
+    select(ResultRow.design_id)
+    .where(
+        ResultRow.content_hash == bindparam("hash"),
+        ResultRow.engine_version == bindparam("version"),
+    )
+    .order_by(ResultRow.created_at.desc())
+    .limit(1)
+)
+_SHARE: Final = (
+    update(JobRow)
+    .where(JobRow.waits_for == bindparam("leader"), JobRow.state == "queued")
+    .values(state="done", progress=1.0, step=ANSWERED_STEP, finished_at=bindparam("moment"))
+)
 
 _leader: Final = aliased(JobRow)
 #: Jobs that wait for one that has ended.
@@ -42,13 +56,8 @@ STRANDED: Final = (
 
 def stored_answer(session: Session, content_hash: str, engine_version: str) -> str | None:
     """The design whose stored result answers a request, the newest if there are several."""
-    query = (
-        select(ResultRow.design_id)
-        .where(ResultRow.content_hash == content_hash, ResultRow.engine_version == engine_version)
-        .order_by(ResultRow.created_at.desc())
-        .limit(1)
-    )
-    return session.scalar(query)
+    asked = {"hash": content_hash, "version": engine_version}
+    return session.connection().scalar(_NEWEST_RESULT, asked)
 
 
 def stored_answers(
@@ -67,20 +76,35 @@ def stored_answers(
     return found
 
 
-def answer(job: JobRow, design: DesignRow, answered_by: str, moment: datetime) -> None:
-    """End a waiting job by the stored result of another design."""
-    design.answered_by = answered_by
-    job.state, job.finished_at = "done", moment
-    job.progress, job.step = 1.0, ANSWERED_STEP
-    job.fence += 1
+def answer(session: Session, design_id: str, answered_by: str, moment: datetime) -> None:
+    """End a waiting job, and those that wait for it, by the stored result of another design."""
+    session.execute(
+        update(JobRow)
+        .where(JobRow.design_id == design_id)
+        .values(
+            state="done",
+            finished_at=moment,
+            progress=1.0,
+            step=ANSWERED_STEP,
+            fence=JobRow.fence + 1,
+        )
+        .execution_options(synchronize_session=False)
+    )
+    session.execute(
+        update(DesignRow)
+        .where(DesignRow.id == design_id)
+        .values(answered_by=answered_by)
+        .execution_options(synchronize_session=False)
+    )
+    share_result(session, design_id, moment, answered_by)
 
 
 def share_result(
     session: Session, design_id: str, moment: datetime, answered_by: str | None = None
 ) -> None:
     """Answer the designs that waited for one that is done, by its result or by its answer's."""
-    values = {"state": "done", "progress": 1.0, "step": ANSWERED_STEP, "finished_at": moment}
-    if _end_those_waiting(session, design_id, values):
+    ended = session.connection().execute(_SHARE, {"leader": design_id, "moment": moment})
+    if ended.rowcount:
         waited = select(JobRow.design_id).where(
             JobRow.waits_for == design_id, JobRow.state == "done"
         )
@@ -94,8 +118,12 @@ def share_result(
 
 def share_failure(session: Session, design_id: str, reason: str, moment: datetime) -> None:
     """Fail the designs that waited for one that failed: the same request would fail again."""
-    values = {"state": "failed", "failure": reason, "step": "failed", "finished_at": moment}
-    _end_those_waiting(session, design_id, values)
+    session.execute(
+        update(JobRow)
+        .where(JobRow.waits_for == design_id, JobRow.state == "queued")
+        .values(state="failed", failure=reason, step="failed", finished_at=moment)
+        .execution_options(synchronize_session=False)
+    )
 
 
 def hand_on(session: Session, design_id: str) -> None:
@@ -123,13 +151,3 @@ def release_stranded(session: Session) -> None:
         .values(waits_for=None)
         .execution_options(synchronize_session=False)
     )
-
-
-def _end_those_waiting(session: Session, design_id: str, values: Mapping[str, Any]) -> bool:
-    ended = session.execute(
-        update(JobRow)
-        .where(JobRow.waits_for == design_id, JobRow.state == "queued")
-        .values(**values)
-        .execution_options(synchronize_session=False)
-    )
-    return isinstance(ended, CursorResult) and ended.rowcount > 0

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, datetime
+from typing import Final
 
 from sqlalchemy import BigInteger, func, select
 from sqlalchemy.ext.compiler import compiles
@@ -10,11 +11,13 @@ from sqlalchemy.orm import Session
 from sqlalchemy.sql.compiler import SQLCompiler
 from sqlalchemy.sql.functions import FunctionElement
 
+_CLOCK: Final = select(func.clock_timestamp())
+
 
 def now(session: Session) -> datetime:
     """The present moment in UTC, by PostgreSQL's clock, or by this machine's for SQLite."""
     if session.get_bind().dialect.name == "postgresql":
-        moment = session.scalar(select(func.clock_timestamp()))
+        moment = session.connection().scalar(_CLOCK)
         if isinstance(moment, datetime):
             return moment.astimezone(UTC)
     return datetime.now(UTC)

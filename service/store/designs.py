@@ -115,7 +115,8 @@ def submit(
         version = None if recompute else workers.engine_version(session)
         stored = version and answers.stored_answer(session, content_hash, version)
         if stored:
-            answers.answer(job, design, stored, moment)
+            session.flush()
+            answers.answer(session, design_id, stored, moment)
             return Submitted(design_id, created=True)
         session.flush()
         order.enter(session, place, single_at=job.position)

@@ -5,10 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import datetime
-from typing import Any, Final
+from typing import Final
 
-from sqlalchemy import ColumnElement, select, update
-from sqlalchemy.engine import CursorResult
+from sqlalchemy import ColumnElement, Update, bindparam, select, update
 from sqlalchemy.orm import Session
 
 from service.contracts.request import DesignRequest
@@ -17,6 +16,22 @@ from service.store.clock import now
 from service.store.tables import JobRow
 
 _LONGEST_FAILURE: Final = 500
+#: The step of a job that no worker survived.
+ASIDE_STEP: Final = "set aside"
+
+#: A change of a job that its worker still has.
+HELD: Final = update(JobRow).where(
+    JobRow.design_id == bindparam("key"),
+    JobRow.fence == bindparam("under"),
+    JobRow.state == "running",
+)
+_END: Final = HELD.values(
+    state=bindparam("end"),
+    step=bindparam("end_step"),
+    finished_at=bindparam("moment"),
+    failure=bindparam("reason"),
+    lease_until=None,
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,20 +52,30 @@ def held(design_id: str, fence: int) -> tuple[ColumnElement[bool], ...]:
 
 
 def change_held(
-    session: Session,
-    design_id: str,
-    fence: int,
-    values: Mapping[str, Any],
-    *also: ColumnElement[bool],
+    session: Session, change: Update, design_id: str, fence: int, values: Mapping[str, object]
 ) -> bool:
-    """Change a job under its fence; False if it is no longer the worker's."""
-    changed = session.execute(
-        update(JobRow)
-        .where(*held(design_id, fence), *also)
-        .values(**values)
-        .execution_options(synchronize_session=False)
-    )
-    return isinstance(changed, CursorResult) and changed.rowcount == 1
+    """Change a job under its fence, by a change of `HELD`; False if it is no longer the worker's.
+
+    Parameters
+    ----------
+    session : Session
+    change : Update
+        Made once and not at every use, for making a statement takes longer than running it.
+    design_id : str
+    fence : int
+    values : mapping
+        What the statement leaves open.
+    """
+    given = {"key": design_id, "under": fence, **values}
+    return session.connection().execute(change, given).rowcount == 1
+
+
+def end_held(
+    session: Session, design_id: str, fence: int, state: str, moment: datetime, reason: str | None
+) -> bool:
+    """End a claimed job; False if it was taken away, or its end stored already."""
+    values = {"end": state, "end_step": state, "moment": moment, "reason": reason}
+    return change_held(session, _END, design_id, fence, values)
 
 
 def ended_by(session: Session, design_id: str, fence: int, state: str) -> bool:
@@ -64,8 +89,7 @@ def ended_by(session: Session, design_id: str, fence: int, state: str) -> bool:
 def fail_held(session: Session, design_id: str, fence: int, reason: str) -> bool:
     """End a claimed job without a result; False if it was taken away."""
     moment, reason = now(session), reason[:_LONGEST_FAILURE]
-    values = {"state": "failed", "failure": reason, "finished_at": moment, "step": "failed"}
-    if not change_held(session, design_id, fence, values | {"lease_until": None}):
+    if not end_held(session, design_id, fence, "failed", moment, reason):
         return ended_by(session, design_id, fence, "failed")
     answers.share_failure(session, design_id, reason, moment)
     return True
@@ -73,8 +97,7 @@ def fail_held(session: Session, design_id: str, fence: int, reason: str) -> bool
 
 def cancel_held(session: Session, design_id: str, fence: int) -> bool:
     """End a claimed job whose cancelling was seen; False if it was taken away."""
-    values = {"state": "cancelled", "finished_at": now(session), "step": "cancelled"}
-    if not change_held(session, design_id, fence, values | {"lease_until": None}):
+    if not end_held(session, design_id, fence, "cancelled", now(session), None):
         return ended_by(session, design_id, fence, "cancelled")
     answers.hand_on(session, design_id)
     return True
@@ -103,7 +126,7 @@ def set_aside(session: Session, job: JobRow, moment: datetime, reason: str) -> N
     """End a job that no worker survives, and those that would kill theirs in the same way."""
     job.fence += 1
     job.lease_until = None
-    job.state, job.finished_at, job.step = "failed", moment, "set aside"
+    job.state, job.finished_at, job.step = "failed", moment, ASIDE_STEP
     job.failure = reason[:_LONGEST_FAILURE]
     session.flush()
     answers.share_failure(session, job.design_id, job.failure, moment)

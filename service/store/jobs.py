@@ -14,20 +14,21 @@ heard of. A worker writes under the fence it was given: what arrives late change
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from datetime import timedelta
 from enum import Enum
 from typing import Final
 
-from sqlalchemy import func, insert, select
+from sqlalchemy import bindparam, func, insert, select
 from sqlalchemy.orm import Session
 
 from service.contracts.candidate import PlannedDesign
 from service.contracts.progress import Progress
-from service.errors import DesignNotFound, SchemaMismatch
-from service.store import answers, order, workers
+from service.errors import DesignNotFound
+from service.store import answers
+from service.store.claiming import any_queued, claim
 from service.store.clock import now
 from service.store.endings import (
+    HELD,
     ClaimedJob,
     cancel_held,
     cancel_locked,
@@ -39,7 +40,7 @@ from service.store.endings import (
 )
 from service.store.losses import Swept, bury, sweep
 from service.store.packing import pack
-from service.store.reading import read_request, refuse_malformed
+from service.store.reading import refuse_malformed
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ReportRow, ResultRow
 
@@ -61,8 +62,27 @@ __all__ = [
 ]
 
 _LONGEST_STEP: Final = 200
-#: Jobs answered by stored results in one claiming transaction, so that it stays short.
-_MOST_ANSWERED: Final = 100
+
+# Statements of every job are made once, for making one takes longer than running it.
+_BEAT: Final = HELD.where(JobRow.cancel_wanted.is_(False)).values(
+    lease_until=bindparam("until"),
+    progress=bindparam("told_progress"),
+    step=bindparam("told_step"),
+)
+_FINISH: Final = HELD.values(
+    state="done", finished_at=bindparam("moment"), progress=1.0, step="done", lease_until=None
+)
+_STORE_RESULT: Final = insert(ResultRow).values(
+    design_id=bindparam("key"),
+    content_hash=select(DesignRow.content_hash)
+    .where(DesignRow.id == bindparam("key"))
+    .scalar_subquery(),
+    engine_version=bindparam("version"),
+    map_error_percent=bindparam("map_error"),
+    result=bindparam("packed"),
+    created_at=bindparam("moment"),
+)
+_STORE_REPORT: Final = insert(ReportRow)
 
 
 class Beat(Enum):
@@ -73,105 +93,13 @@ class Beat(Enum):
     LOST = "lost"
 
 
-@dataclass(frozen=True, slots=True)
-class _Taken:
-    """What a claiming transaction took, its request not yet read."""
-
-    design_id: str
-    request: str
-    fence: int
-    attempt: int
-    batch_id: str | None
-
-
-class _NothingTaken(Enum):
-    NONE_WAITS = "none waits"
-    MORE_TO_LOOK_AT = "more to look at"
-
-
-def any_queued(store: Store) -> bool:
-    """Whether a job could be claimed; a reading, so that the idle do not hold up writers."""
-    query = select(JobRow.design_id).where(order.CLAIMABLE).limit(1)
-    return store.read(lambda session: session.scalar(query) is not None)
-
-
-def claim(
-    store: Store, worker: str, lease_s: float, engine_version: str | None = None
-) -> ClaimedJob | None:
-    """Take the next job in order, or None if none is free.
-
-    Two workers never take the same: PostgreSQL passes over locked rows, SQLite lets one
-    writer in at a time. On the way, jobs that a stored result answers are ended by it.
-
-    Parameters
-    ----------
-    store : Store
-    worker : str
-        Name of the worker, for the record.
-    lease_s : float
-        The worker loses the job if it is not heard of for so long.
-    engine_version : str, optional
-        Version of the worker's engine: only results of the same answer for it. None where it
-        has no engine of its own; nothing is answered then.
-    """
-
-    def work(session: Session) -> _Taken | _NothingTaken:
-        moment = now(session)
-        for _ in range(_MOST_ANSWERED):
-            found = order.next_job(session, moment)
-            if found is None:
-                return _NothingTaken.NONE_WAITS
-            job, design = found.job, found.design
-            if engine_version is not None and not design.recompute:
-                stored = answers.stored_answer(session, design.content_hash, engine_version)
-                if stored is not None:
-                    answers.answer(job, design, stored, moment)
-                    session.flush()
-                    answers.share_result(session, design.id, moment, stored)
-                    continue
-            job.state, job.worker = "running", worker
-            job.fence += 1
-            job.attempts += 1
-            job.lease_until = moment + timedelta(seconds=lease_s)
-            job.started_at = job.started_at or moment
-            job.progress, job.step = 0.0, "taken up by a worker"
-            session.flush()
-            workers.claimed(session, worker, moment)
-            order.charge(session, found)
-            return _Taken(design.id, design.request, job.fence, job.attempts, job.batch_id)
-        return _NothingTaken.MORE_TO_LOOK_AT
-
-    while (taken := store.write(work, outlives_machine=False)) is not _NothingTaken.NONE_WAITS:
-        if isinstance(taken, _NothingTaken):
-            continue
-        try:
-            request = read_request(taken.design_id, taken.request)
-        except SchemaMismatch as error:
-            # Every worker would find it unreadable, and it would hold up the queue for ever.
-            _fail(store, taken.design_id, taken.fence, error.detail)
-            continue
-        return ClaimedJob(
-            taken.design_id, request, taken.fence, taken.attempt, worker, taken.batch_id
-        )
-    return None
-
-
 def heartbeat(store: Store, job: ClaimedJob, progress: Progress, lease_s: float) -> Beat:
     """Renew the lease of a job, store its progress, and learn whether to go on."""
+    told = {"told_progress": progress.fraction, "told_step": progress.step[:_LONGEST_STEP]}
 
     def work(session: Session) -> Beat:
-        renewed = change_held(
-            session,
-            job.design_id,
-            job.fence,
-            {
-                "lease_until": now(session) + timedelta(seconds=lease_s),
-                "progress": progress.fraction,
-                "step": progress.step[:_LONGEST_STEP],
-            },
-            JobRow.cancel_wanted.is_(False),
-        )
-        if renewed:
+        until = {"until": now(session) + timedelta(seconds=lease_s)}
+        if change_held(session, _BEAT, job.design_id, job.fence, told | until):
             return Beat.RENEWED
         still_mine = session.scalar(select(JobRow.design_id).where(*held(job.design_id, job.fence)))
         return Beat.LOST if still_mine is None else Beat.CANCELLED
@@ -195,25 +123,21 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
         {"design_id": job.design_id, "rank": each.rank, "report": pack(each.model_dump_json())}
         for each in planned.reports
     ]
-    content_hash = select(DesignRow.content_hash).where(DesignRow.id == job.design_id)
+    stored = {
+        "key": job.design_id,
+        "version": planned.result.engine_version,
+        "map_error": planned.result.map_error_percent,
+        "packed": result,
+    }
 
     def work(session: Session) -> bool:
         moment = now(session)
-        values = {"state": "done", "finished_at": moment, "progress": 1.0, "step": "done"}
-        if not change_held(session, job.design_id, job.fence, values | {"lease_until": None}):
+        if not change_held(session, _FINISH, job.design_id, job.fence, {"moment": moment}):
             return ended_by(session, job.design_id, job.fence, "done")
-        session.execute(
-            insert(ResultRow).values(
-                design_id=job.design_id,
-                content_hash=content_hash.scalar_subquery(),
-                engine_version=planned.result.engine_version,
-                map_error_percent=planned.result.map_error_percent,
-                result=result,
-                created_at=moment,
-            )
-        )
+        connection = session.connection()
+        connection.execute(_STORE_RESULT, stored | {"moment": moment})
         if reports:
-            session.execute(insert(ReportRow), reports)
+            connection.execute(_STORE_REPORT, reports)
         answers.share_result(session, job.design_id, moment)
         return True
 
@@ -222,7 +146,7 @@ def finish(store: Store, job: ClaimedJob, planned: PlannedDesign) -> bool:
 
 def fail(store: Store, job: ClaimedJob, reason: str) -> bool:
     """End a job that cannot succeed, with its reason in words; False if it was taken away."""
-    return _fail(store, job.design_id, job.fence, reason)
+    return store.write(lambda session: fail_held(session, job.design_id, job.fence, reason))
 
 
 def stop_cancelled(store: Store, job: ClaimedJob) -> bool:
@@ -275,7 +199,3 @@ def depth(store: Store) -> Mapping[str, int]:
         return {row[0]: row[1] for row in session.execute(query)}
 
     return store.read(work)
-
-
-def _fail(store: Store, design_id: str, fence: int, reason: str) -> bool:
-    return store.write(lambda session: fail_held(session, design_id, fence, reason))

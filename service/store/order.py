@@ -13,11 +13,17 @@ import random
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from datetime import datetime, timedelta
-from typing import Any, Final
+from functools import cache
+from typing import Final
 
 from sqlalchemy import (
+    BigInteger,
     ColumnElement,
+    Connection,
     Executable,
+    Integer,
+    String,
+    Update,
     bindparam,
     case,
     func,
@@ -27,7 +33,6 @@ from sqlalchemy import (
     update,
 )
 from sqlalchemy.dialects import postgresql, sqlite
-from sqlalchemy.engine import CursorResult
 from sqlalchemy.exc import OperationalError
 from sqlalchemy.orm import InstrumentedAttribute, Session
 
@@ -53,7 +58,19 @@ CLAIMABLE: Final = text(CLAIMABLE_SQL)
 RUNNING: Final = text(RUNNING_SQL)
 
 _JOB: Final = (
-    select(JobRow, DesignRow)
+    select(
+        JobRow.design_id,
+        JobRow.owner,
+        JobRow.priority,
+        JobRow.position,
+        JobRow.batch_id,
+        JobRow.fence,
+        JobRow.attempts,
+        JobRow.started_at,
+        DesignRow.request,
+        DesignRow.content_hash,
+        DesignRow.recompute,
+    )
     .join(DesignRow, DesignRow.id == JobRow.design_id)
     .where(CLAIMABLE)
     .limit(1)
@@ -65,21 +82,68 @@ _FIRST_OF_SHARE: Final = _JOB.where(
 _LONGEST_WAITING: Final = _JOB.where(JobRow.queued_at < bindparam("before")).order_by(
     JobRow.queued_at, JobRow.position, JobRow.design_id
 )
+# Looked up share by share: the limit keeps PostgreSQL from joining with all that waits, and the
+# order from taking the other partial index where it has no statistics yet.
 _SOMETHING_WAITS: Final = (
     select(JobRow.design_id)
     .where(CLAIMABLE, JobRow.owner == ShareRow.owner, JobRow.priority == ShareRow.priority)
-    .exists()
+    .order_by(JobRow.position, JobRow.design_id)
+    .limit(1)
+    .scalar_subquery()
+    .is_not(None)
 )
 _ORDER: Final = (ShareRow.priority, ShareRow.served, ShareRow.owner)
-_WAITING_SHARES: Final = select(*_ORDER).where(_SOMETHING_WAITS).order_by(*_ORDER).limit(1)
+_FIRST_SHARE: Final = select(*_ORDER).where(_SOMETHING_WAITS).order_by(*_ORDER).limit(1)
+_NEXT_SHARE: Final = _FIRST_SHARE.where(
+    tuple_(*_ORDER)
+    > tuple_(
+        bindparam("priority", type_=Integer),
+        bindparam("served", type_=BigInteger),
+        bindparam("owner", type_=String),
+    )
+)
+
+_MINE: Final = (ShareRow.owner == bindparam("mine"), ShareRow.priority == bindparam("at_priority"))
+_UNLOCKED: Final = (
+    select(ShareRow.owner).where(*_MINE).with_for_update(skip_locked=True).cte("unlocked")
+)
+
+
+def _at_least(column: InstrumentedAttribute[int], name: str) -> ColumnElement[int]:
+    value = bindparam(name, type_=BigInteger)
+    return case((column < value, value), else_=column)
+
+
+_CHARGE: Final = (
+    update(ShareRow)
+    .where(*_MINE)
+    .values(served=ShareRow.served + 1, at=_at_least(ShareRow.at, "place"))
+)
+_ENTER: Final = (
+    update(ShareRow)
+    .where(*_MINE)
+    .values(
+        served=_at_least(ShareRow.served, "turns"),
+        singles_at=_at_least(ShareRow.singles_at, "place"),
+    )
+)
 
 
 @dataclass(frozen=True, slots=True)
 class Next:
-    """The job to be claimed, locked, with its design."""
+    """The job to be claimed, locked, with what its design asks for."""
 
-    job: JobRow
-    design: DesignRow
+    design_id: str
+    owner: str
+    priority: int
+    position: int
+    batch_id: str | None
+    fence: int
+    attempts: int
+    started_at: datetime | None
+    request: str
+    content_hash: str
+    recompute: bool
     in_turn: bool
 
 
@@ -121,24 +185,22 @@ def next_job(session: Session, moment: datetime) -> Next | None:
         aged = _longest_waiting(session, moment - timedelta(seconds=AGED_S))
         if aged is not None:
             return aged
-    for priority, owner in _waiting_shares(session):
-        first = session.execute(
-            _FIRST_OF_SHARE, {"owner": owner, "priority": priority}
-        ).one_or_none()
+    connection = session.connection()
+    for priority, owner in _waiting_shares(connection):
+        mine = {"owner": owner, "priority": priority}
+        first = connection.execute(_FIRST_OF_SHARE, mine).one_or_none()
         # None where other claimers hold all that this share has waiting.
         if first is not None:
-            return Next(first[0], first[1], in_turn=True)
+            return Next(*first, in_turn=True)
     # Nothing should be left; whatever is must not wait for ever.
     return _longest_waiting(session, moment)
 
 
 def charge(session: Session, taken: Next) -> None:
     """Charge the share of a claimed job for the turn: the last thing to do before the commit."""
-    job = taken.job
-    turn: dict[str, Any] = {"served": ShareRow.served + 1}
-    if taken.in_turn:
-        turn["at"] = _at_least(ShareRow.at, job.position)
-    _change_share(session, job.owner, job.priority, turn)
+    # Out of turn it lies ahead of where the queue has come to.
+    place = taken.position if taken.in_turn else 0
+    _change_share(session, _CHARGE, taken.owner, taken.priority, {"place": place})
 
 
 def place_for(session: Session, owner: str, priority: int) -> Place:
@@ -157,12 +219,10 @@ def place_for(session: Session, owner: str, priority: int) -> Place:
     return Place(owner, priority, at, singles_at, served)
 
 
-def enter(session: Session, place: Place, *, single_at: int | None = None) -> None:
+def enter(session: Session, place: Place, *, single_at: int = 0) -> None:
     """Note in a share that something new of it waits: the last thing to do before the commit."""
-    values: dict[str, Any] = {"served": _at_least(ShareRow.served, place.served)}
-    if single_at is not None:
-        values["singles_at"] = _at_least(ShareRow.singles_at, single_at)
-    _change_share(session, place.owner, place.priority, values)
+    values = {"turns": place.served, "place": single_at}
+    _change_share(session, _ENTER, place.owner, place.priority, values)
 
 
 def _is_for_the_aged() -> bool:
@@ -170,17 +230,18 @@ def _is_for_the_aged() -> bool:
 
 
 def _longest_waiting(session: Session, before: datetime) -> Next | None:
-    found = session.execute(_LONGEST_WAITING, {"before": before}).one_or_none()
-    return None if found is None else Next(found[0], found[1], in_turn=False)
+    found = session.connection().execute(_LONGEST_WAITING, {"before": before}).one_or_none()
+    return None if found is None else Next(*found, in_turn=False)
 
 
-def _waiting_shares(session: Session) -> Iterator[tuple[int, str]]:
+def _waiting_shares(connection: Connection) -> Iterator[tuple[int, str]]:
     """Priority and owner of the shares that have something waiting, in the order of turns."""
-    query = _WAITING_SHARES
-    while (share := session.execute(query).one_or_none()) is not None:
+    share = connection.execute(_FIRST_SHARE).one_or_none()
+    while share is not None:
         priority, served, owner = share
         yield priority, owner
-        query = _WAITING_SHARES.where(tuple_(*_ORDER) > (priority, served, owner))
+        after = {"priority": priority, "served": served, "owner": owner}
+        share = connection.execute(_NEXT_SHARE, after).one_or_none()
 
 
 def _least_served(session: Session, priority: int) -> int:
@@ -208,31 +269,31 @@ def _new_share(session: Session, place: Place) -> Executable:
     )
 
 
-def _at_least(column: InstrumentedAttribute[int], value: int) -> ColumnElement[int]:
-    return case((column < value, value), else_=column)
-
-
-def _change_share(session: Session, owner: str, priority: int, values: Mapping[str, Any]) -> None:
+def _change_share(
+    session: Session, change: Update, owner: str, priority: int, values: Mapping[str, int]
+) -> None:
     """Change a share without waiting long for its lock, which a frozen process may hold.
 
     A change given up for that does little harm: somebody gets a turn more, or two jobs have
     one position.
     """
-    mine = (ShareRow.owner == owner, ShareRow.priority == priority)
-    change = update(ShareRow).where(*mine).values(**values)
-    change = change.execution_options(synchronize_session=False)
-    if session.get_bind().dialect.name != "postgresql":
-        session.execute(change)
+    connection = session.connection()
+    given = {"mine": owner, "at_priority": priority, **values}
+    if connection.dialect.name != "postgresql":
+        connection.execute(change, given)
         return
-    free = select(ShareRow.owner).where(*mine).with_for_update(skip_locked=True).cte("free")
-    changed = session.execute(change.where(ShareRow.owner == free.c.owner))
-    if isinstance(changed, CursorResult) and changed.rowcount == 1:
+    if connection.execute(_where_unlocked(change), given).rowcount == 1:
         return
     try:
-        with session.begin_nested():
-            session.execute(text(f"SET LOCAL lock_timeout = {_SHARE_PATIENCE_MS}"))
-            session.execute(change)
-            session.execute(text("SET LOCAL lock_timeout = DEFAULT"))
+        with connection.begin_nested():
+            connection.execute(text(f"SET LOCAL lock_timeout = {_SHARE_PATIENCE_MS}"))
+            connection.execute(change, given)
+            connection.execute(text("SET LOCAL lock_timeout = DEFAULT"))
     except OperationalError as error:
         if getattr(error.orig, "sqlstate", None) != _LOCK_NOT_AVAILABLE:
             raise
+
+
+@cache
+def _where_unlocked(change: Update) -> Update:
+    return change.where(ShareRow.owner == _UNLOCKED.c.owner)

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from datetime import datetime, timedelta
 from typing import Final, Literal
 
-from sqlalchemy import ColumnElement, delete, or_, select, update
+from sqlalchemy import ColumnElement, bindparam, delete, or_, select, update
 from sqlalchemy.orm import Session
 
 from service.store.clock import now
@@ -22,6 +22,12 @@ ALIVE_S: Final = 60.0
 #: What is known of a worker is kept for so long after it was last seen.
 _KEPT: Final = timedelta(days=1)
 _LONGEST_NAME: Final = 120
+
+_CLAIMED: Final = (
+    update(WorkerRow)
+    .where(WorkerRow.name == bindparam("worker"))
+    .values(last_claim_at=bindparam("moment"))
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,7 +84,7 @@ def goodbye(store: Store, name: str) -> None:
 
 def claimed(session: Session, name: str, moment: datetime) -> None:
     """Note within a claiming transaction that a worker has taken a job."""
-    _set(session, name, last_claim_at=moment)
+    session.connection().execute(_CLAIMED, {"worker": name, "moment": moment})
 
 
 def alive(store: Store, within_s: float = ALIVE_S) -> list[Worker]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 from sqlalchemy import func, select, update
 
-from service.store import batches, designs, jobs
+from service.store import batches, claiming, designs, jobs
 from service.store.session import Store
 from service.store.tables import DesignRow, JobRow, ResultRow
 from tests.service.queueing import (
@@ -153,7 +153,7 @@ def test_a_claim_does_not_answer_what_is_to_be_planned_anew(store: Store) -> Non
 def test_answers_beyond_what_one_transaction_gives_are_given_in_the_next(
     store: Store, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(jobs, "_MOST_ANSWERED", 2)
+    monkeypatch.setattr(claiming, "_MOST_ANSWERED", 2)
     same = [single(store, "same") for _ in range(6)]
     other = single(store, "other")
     plan_next(store)
