@@ -23,14 +23,19 @@ _COARSEST_STEP: Final = 2e-3
 _MOST_HELD: Final = 4_000_000
 _POINTS_PER_BAND: Final = 7
 _FURTHEST_APART: Final = 0.02
+CENTRE: Final = 0.5
+
 #: The longest wire searched, in wavelengths on the highest band, before margins.
 _LONGEST_WAVELENGTHS: Final = 10.0
 _MARGIN: Final = 1.05
 
-# Seconds on one core of a small server, from runs of 1 to 15 ways and 1 to 12 bands.
-_ALWAYS_S: Final = 0.5
-_PER_WAY_AND_BAND_S: Final = 0.05
+# Seconds on one core of a small server, from runs of 1 to 15 ways and 1 to 11 bands. Wires many
+# wavelengths long, above all off the centre, take maps made with more care, one by one.
+_ALWAYS_S: Final = 1.0
+_PER_BAND_S: Final = 0.5
 _PER_MILLION_READINGS_S: Final = 0.2
+_PER_WAY_AND_WAVELENGTH_TO_THE_FOURTH_S: Final = 3.4e-4
+_OFF_CENTRE_TIMES: Final = 5
 
 
 class SearchEstimate(Contract):
@@ -38,7 +43,7 @@ class SearchEstimate(Contract):
 
     ``ways`` are conductors times heights times places of the feed; ``combinations`` are ways
     times transformers times lengths, to two figures; ``roughly_s`` is a rule of thumb for one
-    core that has nothing else to do, and may be off by a factor of two or three.
+    core that has nothing else to do, and may be off by a factor of three.
     """
 
     ways: int
@@ -52,42 +57,48 @@ class SearchEstimate(Contract):
 
 def estimate_search(request: DesignRequest) -> SearchEstimate:
     """The size of the search for a request."""
-    ways = (
-        len(request.stock.choices())
-        * max(1, len(request.site.heights_m()))
-        * len(request.feed.feed_fractions())
-    )
+    places = request.feed.feed_fractions()
+    ways = len(request.stock.choices()) * max(1, len(request.site.heights_m())) * len(places)
     transformers = len(request.feed.transformer_ratios)
-    longest_m = _longest_m(request)
-    lengths = _lengths(request, longest_m, ways * transformers)
-    readings = lengths * ways * transformers * len(request.bands) * _points(request.bands)
+    shortest_m, longest_m = _limits_m(request)
+    # Bounds that the models do not reach leave nothing between them; the worker says so.
+    span = math.log(max(longest_m / shortest_m, 1.0))
+    lengths = _lengths(request, span, ways * transformers)
+    bands = len(request.bands)
+    readings = lengths * ways * transformers * bands * _points(request.bands)
+    careful = sum(1 if place == CENTRE else _OFF_CENTRE_TIMES for place in places)
+    careful *= ways // len(places)
+    top_m = wavelength_m(max(band.high_mhz for band in request.bands))
     roughly_s = (
         _ALWAYS_S
-        + _PER_WAY_AND_BAND_S * ways * len(request.bands)
+        + _PER_BAND_S * bands
         + _PER_MILLION_READINGS_S * readings / 1e6
+        + _PER_WAY_AND_WAVELENGTH_TO_THE_FOURTH_S * careful * (longest_m / top_m) ** 4
     )
     return SearchEstimate(
         ways=ways,
         transformers=transformers,
-        bands=len(request.bands),
+        bands=bands,
         longest_wire_m=longest_m,
         lengths=_two_figures(lengths),
         combinations=_two_figures(lengths * ways * transformers),
-        roughly_s=float(_two_figures(roughly_s) if roughly_s >= 1.0 else round(roughly_s, 1)),
+        roughly_s=round(roughly_s, 0 if roughly_s >= 10.0 else 1),
     )
 
 
-def _longest_m(request: DesignRequest) -> float:
-    """The longest wire searched: what the span takes, or what the models hold for."""
+def _limits_m(request: DesignRequest) -> tuple[float, float]:
+    """Shortest and longest wire searched: what the bands need, the span takes, models hold for."""
     top_m = wavelength_m(max(band.high_mhz for band in request.bands))
     widest = max(band.high_mhz / band.low_mhz for band in request.bands)
-    return min(request.site.longest_wire_m, _LONGEST_WAVELENGTHS * top_m / (widest * _MARGIN))
+    longest_m = min(request.site.longest_wire_m, _LONGEST_WAVELENGTHS * top_m / (widest * _MARGIN))
+    shortest_m = min(SHORTEST_RESONANCE_WAVELENGTHS * top_m, longest_m)
+    if request.lengths is None:
+        return shortest_m, longest_m
+    return max(shortest_m, request.lengths.low_m), min(longest_m, request.lengths.high_m)
 
 
-def _lengths(request: DesignRequest, longest_m: float, wires: int) -> int:
-    """How many lengths are looked at, evenly spaced in logarithm."""
-    top_m = wavelength_m(max(band.high_mhz for band in request.bands))
-    span = math.log(longest_m / min(SHORTEST_RESONANCE_WAVELENGTHS * top_m, longest_m))
+def _lengths(request: DesignRequest, span: float, wires: int) -> int:
+    """How many lengths are looked at, evenly spaced in logarithm over a span of it."""
     simple = request.feed.feed_line is None and request.feed.matching == "none"
     each = (_COMBINATIONS if simple else _COMBINATIONS // 4) / wires
     each = min(each, _MOST_HELD / (len(request.bands) * _points(request.bands)))

@@ -18,6 +18,9 @@ TOLD: list[dict[str, Any]] = [
     {"site": {"span_m": 400.0, "height_m": 12.0}},
     {"site": {"span_m": 24.0, "height_m": {"low_m": 8.0, "high_m": 14.0}}},
     {"bands": [{"name": "wide", "low_mhz": 10.0, "high_mhz": 14.5}]},
+    {"lengths": {"low_m": 18.0, "high_m": 21.0}},
+    {"lengths": {"low_m": 20.0, "high_m": 20.0}},
+    {"lengths": {"low_m": 20.0, "high_m": 90.0}},
     {"stock": {"diameter_range": {"low_mm": 1.0, "high_mm": 3.0}}},
     {"feed": {"transformer_ratios": [1.0, 2.0, 4.0, 6.0, 9.0, 12.0], "positions": "anywhere"}},
 ]
@@ -44,7 +47,14 @@ def test_ways_are_conductors_times_heights_times_places() -> None:
     assert (estimate.ways, estimate.transformers, estimate.bands) == (2 * 2 * 3, 2, 3)
 
 
-def test_more_to_search_is_told_to_take_longer() -> None:
-    one = estimate_search(sample_request(stock={"conductors": [{"awg": 12}]}))
-    five = estimate_search(sample_request(stock={"conductors": [{"awg": n} for n in range(8, 13)]}))
-    assert five.roughly_s > one.roughly_s
+@pytest.mark.parametrize(
+    "more",
+    [
+        {"stock": {"conductors": [{"awg": n} for n in range(8, 18)]}},
+        {"feed": {"transformer_ratios": [1.0, 2.0], "positions": [0.5, 0.36]}},
+        {"bands": "amateur-region-1: 40m, 20m, 15m, 10m, 6m"},
+    ],
+)
+def test_more_to_search_is_told_to_take_longer(more: dict[str, Any]) -> None:
+    plain = estimate_search(sample_request())
+    assert estimate_search(sample_request(**more)).roughly_s > plain.roughly_s

@@ -41,6 +41,7 @@ SPELT: list[dict[str, Any]] = [
     {"stock": {"diameter_range": {"low_mm": 1.0, "high_mm": 3.0, "material": "annealed-copper"}}},
     {"feed": {"positions": "anywhere", "transformer_ratios": [1.0, 1.5, 4.0]}},
     {"feed": {"positions": [0.5, 1.0 / 3.0]}},
+    {"lengths": {"low_m": 19.5, "high_m": 20.25}},
     {"tolerances": None, "largest_set": 1, "candidates": 15},
     {"tolerances": {"cutting_percent": 2.0, "height_m": 1.5, "ground_factor": 3.0}},
     {"bands": ["broadcast-region-3: 75m, 41m", {"name": "net", "low_mhz": 5.1, "high_mhz": 5.2}]},
@@ -74,6 +75,8 @@ def test_lengths_in_feet_are_converted_exactly() -> None:
         "span": "80",
         "allowance": "1.5",
         "height": "30, 40",
+        "length-low": "50",
+        "length-high": "70",
         "line": "rg-58",
         "line-length": "100",
         "tol-height": "2",
@@ -83,6 +86,7 @@ def test_lengths_in_feet_are_converted_exactly() -> None:
     assert fields["site"]["span_m"] == 24.384
     assert fields["site"]["end_allowance_m"] == 0.4572
     assert fields["site"]["height_m"] == [9.144, 12.192]
+    assert fields["lengths"] == {"low_m": 15.24, "high_m": 21.336}
     assert fields["feed"]["feed_line"]["length_m"] == 30.48
     assert fields["tolerances"]["height_m"] == 0.6096
     assert fields["stock"]["conductors"][0]["price_per_m"] == 1.0
@@ -130,6 +134,10 @@ def test_rows_left_empty_are_passed_over() -> None:
         ({"height": "10, high"}, "height"),
         ({"height": "14 to 10"}, "height"),
         ({"allowance": "15"}, "allowance"),
+        ({"length-low": "20"}, "length-high"),
+        ({"length-low": "20", "length-high": "19"}, "length-low"),
+        ({"length-low": "20", "length-high": "long"}, "length-high"),
+        ({"length-low": "60", "length-high": "61"}, "length-low"),
         ({"ground": "swamp"}, "ground"),
         ({"ground": "constants", "ground-er": "0.5", "ground-sigma": "1"}, "ground-er"),
         ({"band-40m-take": "", "band-15m-take": ""}, "list"),

@@ -53,6 +53,9 @@ def filled(request: DesignRequest) -> dict[str, str]:
         "candidates": str(request.candidates),
         "rank-by": request.rank_by,
     }
+    if request.lengths is not None:
+        entries["length-low"] = _plain(request.lengths.low_m)
+        entries["length-high"] = _plain(request.lengths.high_m)
     if request.largest_set is not None:
         entries["largest-set"] = str(request.largest_set)
     return entries | _tolerances(request.tolerances)

@@ -11,6 +11,8 @@ _FIELDS: Final[Mapping[str, str]] = {
     "span": "Span between the supports",
     "allowance": "Kept free at each end",
     "height": "Height over ground",
+    "length-low": "Shortest wire to look at",
+    "length-high": "Longest wire to look at",
     "ground": "Ground",
     "ground-er": "Relative permittivity",
     "ground-sigma": "Conductivity, S/m",

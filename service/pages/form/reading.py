@@ -141,6 +141,13 @@ def _read_site(read: FormRequest, entries: Entries) -> None:
         "site.ground.relative_permittivity": "ground-er",
         "site.ground.conductivity_s_per_m": "ground-sigma",
     }
+    low, high = written(entries, "length-low"), written(entries, "length-high")
+    if low or high:
+        lengths: dict[str, Any] = {}
+        _put(lengths, "low_m", length(low, unit))
+        _put(lengths, "high_m", length(high, unit))
+        read.fields["lengths"] = lengths
+        read.behind |= {"lengths": "length-low", "lengths.high_m": "length-high"}
 
 
 def heights(text: str, unit: LengthUnit) -> object:

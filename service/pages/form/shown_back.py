@@ -12,7 +12,15 @@ from service.pages import formats
 from service.pages.form.entries import Entries, written, written_rows
 from service.pages.form.reading import unit_of
 
-LENGTHS: Final = ("span", "allowance", "height", "line-length", "tol-height")
+LENGTHS: Final = (
+    "span",
+    "allowance",
+    "height",
+    "length-low",
+    "length-high",
+    "line-length",
+    "tol-height",
+)
 _NUMBERS: Final = re.compile(r"[0-9.]+")
 _THICKEST_AWG: Final = 0
 _THINNEST_AWG: Final = 40

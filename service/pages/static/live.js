@@ -28,6 +28,7 @@ async function showAnew() {
   const fresh = page.getElementById("live");
   if (!fresh?.dataset.events) return location.reload();
   const focused = document.activeElement?.getAttribute("href");
+  part.dataset.counts = fresh.dataset.counts;
   part.replaceChildren(...fresh.childNodes);
   if (focused) part.querySelector(`a[href="${CSS.escape(focused)}"]`)?.focus();
 }
@@ -36,18 +37,26 @@ function soon() {
   waiting ||= setTimeout(showAnew, document.getElementById("live") ? PAUSE_MS : 0);
 }
 
-function told({ data }) {
+// Where one design stands.
+function tellDesign({ data }) {
   const { id, state, progress } = JSON.parse(data);
-  const element = document.querySelector(`[data-design="${CSS.escape(id ?? "")}"]`);
-  if (element && state === element.dataset.state) showProgress(element, progress);
+  const element = document.querySelector(`[data-design="${CSS.escape(id)}"]`);
+  if (!element) return;
+  if (state === element.dataset.state) showProgress(element, progress);
   else soon();
+}
+
+// Where a batch stands: anew if the counts are no longer those shown.
+function tellBatch({ data }) {
+  const { queued, running, done, failed, cancelled } = JSON.parse(data).counts;
+  const counts = [queued, running, done, failed, cancelled].join(" ");
+  if (document.getElementById("live")?.dataset.counts !== counts) soon();
 }
 
 for (const { dataset } of document.querySelectorAll("[data-events]")) {
   const events = new EventSource(dataset.events);
-  for (const kind of ["message", "progress", "state", "design"]) {
-    events.addEventListener(kind, told);
-  }
+  events.addEventListener("state", tellDesign);
+  events.addEventListener("batch", tellBatch);
   events.addEventListener("error", () => {
     // A stream that broke is opened again by the browser; one that was refused is not.
     if (events.readyState === EventSource.CLOSED) setTimeout(() => location.reload(), ASK_MS);
