@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import logging
 from typing import Final
 
 from service.contracts.batch import BatchRequest
@@ -13,6 +14,8 @@ from service.store.designs import Submitted
 from service.store.session import Store
 
 __all__ = ["Submitted", "rerun_batch", "submit", "submit_batch"]
+
+_log = logging.getLogger(__name__)
 
 #: Rings for one batch: enough to wake the idle, who ring on while work waits.
 _MOST_RINGS: Final = 16
@@ -48,6 +51,8 @@ def submit(
         recompute=recompute,
     )
     if submitted.created:
+        told = {"design": submitted.design_id}
+        _log.info("design %s: accepted", submitted.design_id, extra=told)
         doorbell.ring()
     return submitted
 
@@ -71,6 +76,8 @@ def submit_batch(
     """
     submitted = batches.submit(store, request, idempotency_key=idempotency_key, owner=owner)
     if submitted.created:
+        told = {"batch": submitted.batch_id, "size": len(request.designs)}
+        _log.info("batch %s: accepted", submitted.batch_id, extra=told)
         _ring(doorbell, len(request.designs))
     return submitted
 

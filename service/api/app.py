@@ -16,13 +16,16 @@ from service.api import (
     designs,
     events,
     health,
+    metrics,
     openapi,
     plots,
     problem_kinds,
     problems,
 )
 from service.api.change_feed import ChangeFeed
+from service.api.ended_totals import EndedTotals
 from service.api.guard import Guard
+from service.api.request_watch import RequestWatch
 from service.doorbell import Doorbell
 from service.pages import routes as pages
 from service.settings import Settings
@@ -62,6 +65,8 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     )
     if store is not None:
         app.state.store = store
+    app.state.ended_totals = EndedTotals()
+    app.state.request_figures = metrics.RequestFigures()
     problems.install(app)
     for each in (
         designs,
@@ -71,6 +76,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
         check,
         band_lists,
         health,
+        metrics,
         problem_kinds,
         plots,
         pages,
@@ -78,5 +84,6 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
         app.include_router(each.router)
     app.mount("/static", pages.static_files, name="static")
     app.add_middleware(Guard)
+    app.add_middleware(RequestWatch, figures=app.state.request_figures)
     openapi.describe(app)
     return app

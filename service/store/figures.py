@@ -13,6 +13,7 @@ from sqlalchemy.orm import Session
 
 from service.contracts.progress import Priority, State
 from service.store.clock import now
+from service.store.endings import ASIDE_STEP
 from service.store.losses import EXPIRIES
 from service.store.order import CLAIMABLE, RUNNING, word_of
 from service.store.session import Store
@@ -45,6 +46,7 @@ class Ended:
     priority: Priority
     attempts: int
     answered: bool
+    set_aside: bool
     wait_s: float | None
     run_s: float | None
     map_error_percent: float | None
@@ -118,6 +120,7 @@ def _ended(job: JobRow, map_error_percent: float | None) -> Ended:
         priority=word_of(job.priority),
         attempts=job.attempts,
         answered=job.state == "done" and map_error_percent is None,
+        set_aside=job.state == "failed" and job.step == ASIDE_STEP,
         wait_s=_seconds(job.queued_at, job.started_at),
         run_s=_seconds(job.started_at, job.finished_at),
         map_error_percent=map_error_percent,

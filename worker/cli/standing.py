@@ -12,7 +12,9 @@ from typing import Final
 
 import uvicorn
 
+from service import journal
 from service.api.app import create_app
+from service.api.server import Server
 from service.contracts.request import DesignRequest, parse_request
 from service.errors import SpanwrightError
 from service.settings import Settings, settings_here
@@ -20,6 +22,8 @@ from worker import dispatcher
 
 _START_PATIENCE_S: Final = 30.0
 _STOP_PATIENCE_S: Final = 90.0
+#: Answers under way may take so long to come to their end.
+_ANSWERS_S: Final = 30
 
 
 def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True) -> None:
@@ -33,6 +37,7 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
         False where workers run elsewhere, as in the scaled form.
     """
     settings = settings_here()
+    journal.set_up(settings)
     server = _server(settings, settings.port)
     with _workers(settings) if workers else _no_workers():
         announce(f"http://{settings.host}:{settings.port}/")
@@ -43,6 +48,7 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
 def standing_service() -> Iterator[str]:
     """A service with workers on a free loopback port, for as long as the context lasts."""
     settings = settings_here()
+    journal.set_up(settings)
     port = _free_port()
     server = _server(settings, port)
     thread = threading.Thread(target=server.run, name="api", daemon=True)
@@ -88,8 +94,11 @@ def _server(settings: Settings, port: int) -> uvicorn.Server:
         log_level="warning",
         access_log=False,
         server_header=False,
+        # What it tells goes the way of everything else.
+        log_config=None,
+        timeout_graceful_shutdown=_ANSWERS_S,
     )
-    return uvicorn.Server(config)
+    return Server(config)
 
 
 def _await_start(server: uvicorn.Server, thread: threading.Thread) -> None:
