@@ -64,12 +64,13 @@ def test_options_may_stand_before_the_file(run: Run, tmp_path: Path) -> None:
     assert Batch.model_validate_json(end.out).recompute
 
 
+@pytest.mark.parametrize("indent", [2, None])
 def test_a_document_keeps_what_it_says_unless_the_command_says_otherwise(
-    run: Run, tmp_path: Path
+    run: Run, tmp_path: Path, indent: int | None
 ) -> None:
     file = tmp_path / "document"
     said = {"name": "inside", "priority": "when-idle", "designs": [request_fields()]}
-    file.write_text(json.dumps(said, indent=2))
+    file.write_text(json.dumps(said, indent=indent))
     kept = Batch.model_validate_json(run(str(file), "--json").out)
     assert (kept.name, kept.priority) == ("inside", "when-idle")
     changed = Batch.model_validate_json(run(str(file), "--json", "--priority", "urgent").out)
@@ -158,6 +159,17 @@ def test_results_are_fetched_as_lines_and_as_a_table(
     assert [(row["line"], row["rank"]) for row in rows] == [
         *(("1", "1"), ("1", "2"), ("2", "1"), ("2", "2"))
     ]
+
+
+def test_results_that_come_in_many_parts_are_written_whole(
+    run: Run, wire: httpx.Client, wire_store: Store, tmp_path: Path
+) -> None:
+    batch_id = run(lines_file(tmp_path, 20)).out.strip()
+    planned(wire_store, batch_id)
+    file = tmp_path / "results.ndjson"
+    assert run("results", batch_id, "-o", str(file)).status == 0
+    assert file.stat().st_size > 3 * 64 * 1024
+    assert file.read_bytes() == wire.get(f"/v1/batches/{batch_id}/results").content
 
 
 def test_results_that_are_refused_leave_no_file(run: Run, tmp_path: Path) -> None:

@@ -4,7 +4,16 @@ from __future__ import annotations
 
 from service.store import jobs, queue_view, workers
 from service.store.session import Store
-from tests.service.queueing import LEASE_S, WORKER, at_work, batch, single, take, waited_longer
+from tests.service.queueing import (
+    LEASE_S,
+    WORKER,
+    at_work,
+    batch,
+    line_of,
+    single,
+    take,
+    waited_longer,
+)
 
 
 def test_an_empty_queue_shows_nothing(store: Store) -> None:
@@ -41,6 +50,12 @@ def test_the_longest_wait_is_told_of_each_share_and_of_all(store: Store) -> None
     assert 2000.0 <= waits["anna"] < 2060.0
     assert 1000.0 <= waits["local"] < 1060.0
     assert seen.oldest_wait_s == waits["anna"]
+
+
+def test_the_longest_wait_is_that_of_the_design_planned_for_others(store: Store) -> None:
+    batch_id = batch(store, "the same", "the same")
+    waited_longer(store, line_of(store, batch_id, 1), 1000.0)
+    assert (queue_view.view(store).oldest_wait_s or 0.0) >= 1000.0
 
 
 def test_a_worker_is_shown_with_what_it_is_at(store: Store) -> None:
