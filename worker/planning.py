@@ -45,6 +45,8 @@ ProgressCallback = Callable[[float, str], None]
 _SCAN_PART: Final = 0.6
 _LOOK_PART: Final = 0.9
 _DRAW_PART: Final = 0.97
+#: Wires drawn between two words of progress.
+_DRAWN_AT_A_TIME: Final = 4
 
 #: Sets proposed unasked, where no single wire serves all required bands, are of up to so many.
 _USUAL_SET: Final = 3
@@ -209,12 +211,16 @@ class _Job:
 
     def pictures(self, looks: list[Look]) -> list[list[BandPicture]]:
         """Current and pattern of every wire looked at, at the centre of each band."""
-        self._progress(_DRAW_PART, "drawing current and pattern")
-        return pictures_of(
-            [self._hanging.wire(look.way).hung for look in looks],
-            [look.appraisal.pick.length_m for look in looks],
-            [1e6 * band.centre_mhz for band in self._request.bands],
-        )
+        pictures: list[list[BandPicture]] = []
+        for start in range(0, len(looks), _DRAWN_AT_A_TIME):
+            self._progress(_DRAW_PART, f"drawing {len(looks)} currents and patterns")
+            some = looks[start : start + _DRAWN_AT_A_TIME]
+            pictures += pictures_of(
+                [self._hanging.wire(look.way).hung for look in some],
+                [look.appraisal.pick.length_m for look in some],
+                [1e6 * band.centre_mhz for band in self._request.bands],
+            )
+        return pictures
 
     def trade_off(self, looks: list[Look]) -> tuple[TradeOff, ...]:
         """The front of all criteria, in the order of the ranking."""

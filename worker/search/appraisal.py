@@ -36,7 +36,7 @@ NEAR: Final = 0.10
 #: A map over frequency is made on so many times as many nodes as usual until it holds.
 _FINER: Final = (1, 2, 4, 8)
 #: Wires are solved so many at a time, with a word of progress between.
-_SOLVED_AT_A_TIME: Final = 300
+_SOLVED_AT_A_TIME: Final = 120
 #: Points of the sweep over the whole range, for the plot.
 SWEEP_POINTS: Final = 481
 
@@ -123,10 +123,11 @@ def appraise(
     """
     marks = _solve_marks(space, picks, tell)
     over_frequency = _map_whole_ranges(space, picks, marks, tell)
-    return tuple(
-        _appraise_one(space, pick, maps[row], over_frequency[row], marks[row])
-        for row, pick in enumerate(picks)
-    )
+    appraisals: list[Appraisal] = []
+    for row, pick in enumerate(picks):
+        tell()
+        appraisals.append(_appraise_one(space, pick, maps[row], over_frequency[row], marks[row]))
+    return tuple(appraisals)
 
 
 def _appraise_one(

@@ -49,7 +49,7 @@ _ATTEMPTS: Final = (
 )
 
 #: Wires are solved so many at a time, with a word of progress between.
-_SOLVED_AT_A_TIME: Final = 400
+_SOLVED_AT_A_TIME: Final = 250
 
 
 @dataclass(frozen=True, slots=True)
