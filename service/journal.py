@@ -53,25 +53,22 @@ def bound(**what: object) -> Iterator[None]:
         _bound.reset(token)
 
 
-def set_up(settings: Settings, stream: TextIO | None = None) -> None:
-    """Have the whole process log in the form of the settings, on standard error.
-
-    Parameters
-    ----------
-    settings : Settings
-        ``log_format`` and ``log_level``; the passwords in its addresses are never told.
-    stream : file, optional
-        Where to write instead.
-    """
-    handler = logging.StreamHandler(stream or sys.stderr)
-    secrets = _passwords(settings.database_url, settings.redis_url)
-    form = _Json if settings.log_format == "json" else _Plain
-    handler.setFormatter(form(secrets))
-    logging.basicConfig(handlers=[handler], level=settings.least_level, force=True)
+def set_up(settings: Settings) -> None:
+    """Have the whole process log in the form of the settings, on standard error."""
+    told = handler(settings, sys.stderr)
+    logging.basicConfig(handlers=[told], level=settings.least_level, force=True)
     for name in _QUIET:
         logging.getLogger(name).setLevel(logging.WARNING)
     # What a library warns of goes the same way.
     logging.captureWarnings(capture=True)
+
+
+def handler(settings: Settings, stream: TextIO) -> logging.Handler:
+    """What writes records to a stream in the form of the settings, without their passwords."""
+    secrets = _passwords(settings.database_url, settings.redis_url)
+    writer = logging.StreamHandler(stream)
+    writer.setFormatter(_Json(secrets) if settings.log_format == "json" else _Plain(secrets))
+    return writer
 
 
 class _Blotting(logging.Formatter):

@@ -26,7 +26,7 @@ _PATIENCE_S = 30.0
 def served(app: FastAPI) -> Iterator[str]:
     """The address of an application, as long as the context lasts; it must stop in time."""
     with socket.create_server(("127.0.0.1", 0)) as listener:
-        server = Server(uvicorn.Config(app, log_config=None, ws="none"))
+        server = Server(uvicorn.Config(app, log_config=None, access_log=False, ws="none"))
         thread = threading.Thread(target=server.run, kwargs={"sockets": [listener]}, daemon=True)
         thread.start()
         until(lambda: server.started or not thread.is_alive())
