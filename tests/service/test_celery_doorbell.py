@@ -19,7 +19,7 @@ import redis
 from service.doorbell import Doorbell
 from service.intake import submit
 from service.settings import Settings
-from service.store import designs, jobs
+from service.store import designs, jobs, workers
 from service.store.session import Store, open_store
 from tests.service.databases import database, environment, short_lived
 from tests.service.samples import sample_request
@@ -115,6 +115,13 @@ def hearing(
 # ---------------------------------------------------------------------- the workers
 def test_a_ring_is_enough_to_have_a_design_planned(hearing: Scaled) -> None:
     in_state(hearing.store, hearing.submitted("quick"), "done")
+
+
+def test_pool_processes_announce_themselves(hearing: Scaled) -> None:
+    in_state(hearing.store, hearing.submitted("quick"), "done")
+    found = workers.alive(hearing.store)
+    assert {worker.carrier for worker in found} == {"celery"}
+    assert 1 <= len({worker.pid for worker in found}) <= 2
 
 
 def test_one_ring_has_all_planned_that_waits(hearing: Scaled) -> None:

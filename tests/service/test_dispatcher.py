@@ -23,7 +23,7 @@ from sqlalchemy.orm import Session
 from service.contracts.progress import Design
 from service.errors import StoreUnavailable
 from service.settings import Settings
-from service.store import designs, jobs
+from service.store import designs, jobs, workers
 from service.store.session import Store, open_store
 from service.store.tables import JobRow, ResultRow
 from tests.service.databases import KINDS, database, environment, short_lived
@@ -90,6 +90,23 @@ def standing(
 def test_a_submitted_design_is_planned(standing: Standing) -> None:
     design = in_state(standing.store, submitted(standing.store, "quick"), "done")
     assert design.attempts == 1
+
+
+def test_workers_announce_themselves_and_a_killed_one_is_known_to_be_gone(
+    standing: Standing,
+) -> None:
+    store = standing.store
+
+    def all_there() -> set[int] | None:
+        found = workers.alive(store)
+        assert {worker.carrier for worker in found} <= {"embedded"}
+        pids = {worker.pid for worker in found}
+        return pids if len(pids) == standing.workers else None
+
+    victim = min(until(all_there, within_s=30.0))
+    os.kill(victim, signal.SIGKILL)
+    until(lambda: victim not in {worker.pid for worker in workers.alive(store)})
+    assert len(until(all_there, within_s=30.0)) == standing.workers
 
 
 def test_a_design_whose_worker_is_killed_in_the_middle_is_finished_once(

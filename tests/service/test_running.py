@@ -21,20 +21,23 @@ from service.contracts.candidate import PlannedDesign
 from service.contracts.request import DesignRequest
 from service.errors import StoreUnavailable
 from service.settings import Settings
-from service.store import designs, jobs
+from service.store import designs, jobs, workers
 from service.store.session import Store, open_store
 from tests.service.databases import environment, short_lived
 from tests.service.plans import as_named
 from tests.service.samples import sample_request
 from tests.service.servers import PostgresServer
 from tests.service.waiting import in_state, process_at, until
+from worker.engine import ENGINE_VERSION
 from worker.running import (
     EXIT_WOULD_NOT_STOP,
     Outcome,
     PlanFunction,
     ProgressCallback,
+    announced,
     drain,
     run_next,
+    sweep,
 )
 
 CHECKOUT = Path(__file__).parents[2]
@@ -96,6 +99,54 @@ def test_a_planned_design_is_stored(store: Store, settings: Settings) -> None:
     assert design.state == "done"
     assert design.result is not None
     assert designs.report(store, design_id, 1).rank == 1
+
+
+def test_a_worker_answers_identical_requests_by_results_of_its_own_engine(
+    store: Store, settings: Settings
+) -> None:
+    def of_today(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
+        planned = as_named(request, progress)
+        result = planned.result.model_copy(update={"engine_version": ENGINE_VERSION})
+        return planned.model_copy(update={"result": result})
+
+    first, second, other = (submitted(store, name) for name in ("same", "same", "other"))
+    assert run(store, settings, of_today) is Outcome.DONE
+    assert run(store, settings, of_today) is Outcome.DONE
+    assert designs.get(store, second).answered_by == first
+    assert designs.get(store, other).answered_by is None
+    assert run(store, settings, of_today) is None
+
+
+def test_a_worker_does_not_answer_by_results_of_another_engine(
+    store: Store, settings: Settings
+) -> None:
+    submitted(store, "same")
+    second = submitted(store, "same")
+    for _ in range(2):
+        assert run(store, settings) is Outcome.DONE
+    assert designs.get(store, second).answered_by is None
+
+
+def test_a_worker_is_announced_while_it_works_and_no_longer(
+    store: Store, settings: Settings
+) -> None:
+    with announced(store, "anna", "drain"):
+        (worker,) = workers.alive(store)
+        assert (worker.name, worker.carrier) == ("anna", "drain")
+        assert (worker.engine_version, worker.pid) == (ENGINE_VERSION, os.getpid())
+        sweep(store, settings, "anna")
+        assert workers.alive(store)[0].seen_at > worker.seen_at
+    assert workers.alive(store) == []
+
+
+def test_a_worker_goes_although_it_cannot_say_so(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def away(*_: object) -> None:
+        raise StoreUnavailable("away")
+
+    with announced(store, "anna", "drain"):
+        monkeypatch.setattr(workers, "goodbye", away)
 
 
 def test_nothing_runs_where_nothing_waits(store: Store, settings: Settings) -> None:
