@@ -239,7 +239,7 @@ def test_a_field_is_spoken_of_by_its_row() -> None:
     assert place("range-low") == "Range of diameters, thinnest, mm"
 
 
-@pytest.mark.parametrize("body", [b"\xff=1", b"a=1&" * 1001, b"x" * 70_000, b"no form"])
+@pytest.mark.parametrize("body", [b"\xff=1", b"&".join([b"a=1"] * 1001), b"x" * 70_000, b"no form"])
 def test_what_is_no_form_is_refused(body: bytes) -> None:
     with pytest.raises(ValueError, match=r"."):
         read_entries(body)
