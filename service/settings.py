@@ -131,6 +131,20 @@ def settings_here() -> Settings:
     raise SettingRefused(refused)
 
 
+def settings_or_exit() -> Settings:
+    """The settings of a process that can only end where one of them cannot be used.
+
+    Raises
+    ------
+    SystemExit
+        With a line for each setting refused.
+    """
+    try:
+        return settings_here()
+    except SettingRefused as refused:
+        raise SystemExit("\n".join(map(str, refused.faults))) from None
+
+
 class SettingRefused(RequestRefused):
     """A setting cannot be used; what was given is not repeated, for it may hold a password.
 

@@ -32,7 +32,7 @@ from celery.signals import (
 from service import journal
 from service.doorbell import TASK, TRANSPORT, Doorbell
 from service.errors import StoreUnavailable
-from service.settings import Settings
+from service.settings import settings_or_exit
 from service.store import jobs, workers
 from service.store.session import Store, open_store
 from worker.running import PlanFunction, announce, drain, sweep
@@ -44,7 +44,7 @@ _DRAIN_S: Final = 20.0
 _DRAIN_JOBS: Final = 50
 
 # Celery asks for the application by name, so this module is an entry point of its own.
-settings = Settings()
+settings = settings_or_exit()
 
 app = Celery("spanwright", broker=settings.redis_url)
 app.conf.update(

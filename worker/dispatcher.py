@@ -27,7 +27,7 @@ from typing import Final
 
 from service import journal
 from service.errors import SpanwrightError, StoreUnavailable
-from service.settings import Settings
+from service.settings import Settings, settings_or_exit
 from service.store import jobs, workers
 from service.store.session import Store, open_store
 from worker.running import PlanFunction, announced, drain, sweep
@@ -85,7 +85,7 @@ def serve(
 
 def main(plan: PlanFunction | None = None) -> None:
     """Run workers alone, until SIGTERM or SIGINT; `plan` is that of `serve`."""
-    settings = Settings()
+    settings = settings_or_exit()
     journal.set_up(settings)
     asked, stop = StopFlag(), threading.Event()
     for number in (signal.SIGTERM, signal.SIGINT):

@@ -18,6 +18,7 @@ from service.api.server import Server
 from service.contracts.request import DesignRequest, parse_request
 from service.errors import SpanwrightError
 from service.settings import Settings, settings_here
+from service.store.session import open_store
 from worker import dispatcher
 
 _START_PATIENCE_S: Final = 30.0
@@ -38,6 +39,7 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
     """
     settings = settings_here()
     journal.set_up(settings)
+    _open_once(settings)
     server = _server(settings, settings.port)
     with _workers(settings) if workers else _no_workers():
         announce(f"http://{settings.host}:{settings.port}/")
@@ -49,6 +51,7 @@ def standing_service() -> Iterator[str]:
     """A service with workers on a free loopback port, for as long as the context lasts."""
     settings = settings_here()
     journal.set_up(settings)
+    _open_once(settings)
     port = _free_port()
     server = _server(settings, port)
     thread = threading.Thread(target=server.run, name="api", daemon=True)
@@ -65,6 +68,11 @@ def standing_service() -> Iterator[str]:
 def demo_request() -> DesignRequest:
     """The demonstration station: an invented harbour office with a believable band list."""
     return parse_request((files("worker.cli") / "demo_request.json").read_text(encoding="utf-8"))
+
+
+def _open_once(settings: Settings) -> None:
+    # What is wrong with the database is told before anything starts, not by each part of it.
+    open_store(settings).close()
 
 
 @contextmanager
