@@ -8,6 +8,9 @@
     ├── BatchNotFound         no batch of this owner has that identifier
     ├── CandidateNotFound     the design has no candidate of that rank
     ├── ResultNotReady        the design is not done, or ended without a result
+    ├── BenchBusy             others wait for a what-if already
+    ├── BenchTooSlow          a what-if took longer than allowed
+    ├── BenchMissing          what-ifs are not answered here
     ├── KeyReused             one idempotency key, two different requests
     ├── StoreUnavailable      the database did not answer in time
     └── SchemaMismatch        the database is of another release
@@ -181,3 +184,37 @@ class SchemaMismatch(SpanwrightError):
 
     code = "schema-mismatch"
     title = "The database is of another release"
+
+
+class BenchBusy(SpanwrightError):
+    """What-ifs are answered one after the other, and others wait already."""
+
+    code = "what-if-busy"
+    title = "Too many what-ifs at once"
+
+    def __init__(self, why: str) -> None:
+        super().__init__(f"{why} Ask again in a moment.")
+
+
+class BenchTooSlow(SpanwrightError):
+    """A what-if took longer than allowed and was given up."""
+
+    code = "what-if-too-slow"
+    title = "This what-if takes too long"
+
+    def __init__(self, limit_s: float) -> None:
+        super().__init__(
+            f"There was no answer within {limit_s:g} s. Ask about fewer bands, or submit a design."
+        )
+
+
+class BenchMissing(SpanwrightError):
+    """What-ifs are not answered here: no bench was put into this process."""
+
+    code = "what-if-not-here"
+    title = "What-ifs are not answered here"
+
+    def __init__(self) -> None:
+        super().__init__(
+            "This service was started without a bench for what-ifs; 'spanwright serve' has one."
+        )

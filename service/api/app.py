@@ -21,18 +21,22 @@ from service.api import (
     plots,
     problem_kinds,
     problems,
+    what_if,
 )
 from service.api.change_feed import ChangeFeed
 from service.api.ended_totals import EndedTotals
 from service.api.guard import Guard
 from service.api.request_watch import RequestWatch
+from service.bench import Bench
 from service.doorbell import Doorbell
 from service.pages import routes as pages
 from service.settings import Settings
 from service.store.session import Store, open_store
 
 
-def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
+def create_app(
+    settings: Settings, store: Store | None = None, bench: Bench | None = None
+) -> FastAPI:
     """Put the application together.
 
     Parameters
@@ -41,6 +45,8 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     store : Store, optional
         One that is open already and stays its owner's; by default the application opens
         the one its settings name when it starts, and closes it when it ends.
+    bench : Bench, optional
+        Answers what-ifs, and stays its owner's; without one they are refused.
     """
 
     @asynccontextmanager
@@ -65,6 +71,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
     )
     if store is not None:
         app.state.store = store
+    app.state.bench = bench
     app.state.ended_totals = EndedTotals()
     app.state.request_figures = metrics.RequestFigures()
     problems.install(app)
@@ -79,6 +86,7 @@ def create_app(settings: Settings, store: Store | None = None) -> FastAPI:
         metrics,
         problem_kinds,
         plots,
+        what_if,
         pages,
     ):
         app.include_router(each.router)

@@ -13,7 +13,9 @@ from service.contracts.request import (
     MOST_CANDIDATES,
     DesignRequest,
     parse_request,
+    refuse_too_long,
 )
+from service.contracts.what_if import WhatIfRequest, parse_what_if
 from service.doorbell import Doorbell
 from service.store.session import Store
 
@@ -43,6 +45,18 @@ async def design_request(request: Request) -> DesignRequest:
     RequestRefused
         If it is too large, malformed, or breaks the contract.
     """
+    return parse_request(await _json_body(request))
+
+
+async def what_if_request(request: Request) -> WhatIfRequest:
+    """Read a what-if from the body; it raises as `design_request` does."""
+    body = await _json_body(request)
+    refuse_too_long(body)
+    return parse_what_if(body)
+
+
+async def _json_body(request: Request) -> bytes:
+    """The body, told to be plain JSON, as far as it may be long and a little further."""
     media_type = request.headers.get("content-type", "").partition(";")[0].strip().lower()
     if media_type != _JSON:
         raise MediaTypeRefused("Content-Type", media_type, f"Send the request as {_JSON}.")
@@ -52,7 +66,7 @@ async def design_request(request: Request) -> DesignRequest:
         body += part
         if len(body) > LARGEST_REQUEST_BYTES:
             break  # the contract refuses it by what has come so far
-    return parse_request(bytes(body))
+    return bytes(body)
 
 
 def refuse_coded_body(request: Request) -> None:
@@ -76,6 +90,7 @@ StoreHere = Annotated[Store, Depends(store_of)]
 DoorbellHere = Annotated[Doorbell, Depends(doorbell_of)]
 OwnerHere = Annotated[str, Depends(owner_of)]
 RequestedDesign = Annotated[DesignRequest, Depends(design_request)]
+RequestedWhatIf = Annotated[WhatIfRequest, Depends(what_if_request)]
 DesignId = Annotated[str, Path(description="Identifier of the design")]
 BatchId = Annotated[str, Path(description="Identifier of the batch")]
 Rank = Annotated[

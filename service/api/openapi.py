@@ -13,6 +13,7 @@ from service.contracts.bands import BandChoice
 from service.contracts.batch import Batch, BatchRequest
 from service.contracts.events import Snapshot
 from service.contracts.request import DesignRequest
+from service.contracts.what_if import WhatIfRequest
 from service.store.changes import Change
 
 #: A request may leave out what a stored design always has, so it is described apart.
@@ -70,11 +71,12 @@ def _request_schemas() -> dict[str, Any]:
             (DesignRequest, "validation"),
             (BatchRequest, "validation"),
             (BandChoice, "validation"),
+            (WhatIfRequest, "validation"),
         ],
         ref_template=_REF,
     )
     schemas: dict[str, Any] = {f"Asked{name}": each for name, each in found["$defs"].items()}
-    schemas["AskedDesignRequest"]["properties"]["bands"] = {
+    bands = {
         "description": "Bands with edges, choices from ready-made lists, or such choices as text",
         "anyOf": [
             _BAND_TEXT,
@@ -92,6 +94,8 @@ def _request_schemas() -> dict[str, Any]:
             },
         ],
     }
+    for name in ("AskedDesignRequest", "AskedWhatIfRequest"):
+        schemas[name]["properties"]["bands"] = bands
     return schemas
 
 

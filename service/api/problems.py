@@ -25,6 +25,9 @@ from starlette.types import Scope
 from service.contracts.refusals import refusal_of
 from service.errors import (
     BatchNotFound,
+    BenchBusy,
+    BenchMissing,
+    BenchTooSlow,
     CandidateNotFound,
     DesignNotFound,
     Fault,
@@ -147,6 +150,9 @@ STATUSES: Final[Mapping[type[SpanwrightError], HTTPStatus]] = {
     StoreUnavailable: HTTPStatus.SERVICE_UNAVAILABLE,
     SchemaMismatch: HTTPStatus.SERVICE_UNAVAILABLE,
     TooManyStreams: HTTPStatus.SERVICE_UNAVAILABLE,
+    BenchBusy: HTTPStatus.SERVICE_UNAVAILABLE,
+    BenchTooSlow: HTTPStatus.GATEWAY_TIMEOUT,
+    BenchMissing: HTTPStatus.NOT_IMPLEMENTED,
     Unexpected: HTTPStatus.INTERNAL_SERVER_ERROR,
 }
 

@@ -11,7 +11,7 @@ from starlette.staticfiles import StaticFiles
 from service.contracts.candidate import Candidate
 from service.contracts.progress import Design
 from service.contracts.report import FeedReport
-from service.pages import batches, listing
+from service.pages import batches, comparison, listing, what_if
 from service.pages.arrangement import has_line, pictures_of, sets_table, steadiness_table
 from service.pages.form import routes as form
 from service.pages.stored import StoreHere
@@ -28,7 +28,7 @@ GRID_STRIDE: Final = 2
 REFLECTION_STRIDE: Final = 5
 
 router = APIRouter(default_response_class=HTMLResponse, include_in_schema=False)
-for _each in (listing, batches, form):
+for _each in (listing, batches, form, comparison, what_if):
     router.include_router(_each.router)
 static_files = StaticFiles(directory=STATIC)
 

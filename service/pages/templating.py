@@ -14,6 +14,7 @@ from service.pages import formats, wording
 from service.pages.arrangement import matching_parts, pattern_rows
 from service.plots import (
     impedance_plot,
+    overlay_plot,
     steadiness_plot,
     swr_plot,
     trade_off_plot,
@@ -49,6 +50,7 @@ def _environment() -> Environment:
         "product_version": version("spanwright"),
         "impedance_plot": impedance_plot,
         "matching_parts": matching_parts,
+        "overlay_plot": overlay_plot,
         "pattern_rows": pattern_rows,
         "steadiness_plot": steadiness_plot,
         "swr_plot": swr_plot,

@@ -2,6 +2,7 @@
 
 from service.plots.hung_wire import current_plot, wire_plot
 from service.plots.impedance import impedance_plot
+from service.plots.overlay import overlay_plot
 from service.plots.pattern import pattern_plot
 from service.plots.smith_chart import smith_plot
 from service.plots.standing_wave import swr_plot
@@ -12,6 +13,7 @@ from service.plots.trade_off import trade_off_plot
 __all__ = [
     "current_plot",
     "impedance_plot",
+    "overlay_plot",
     "pattern_plot",
     "smith_plot",
     "steadiness_plot",

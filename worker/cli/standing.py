@@ -6,7 +6,7 @@ import socket
 import threading
 import time
 from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from contextlib import closing, contextmanager
 from importlib.resources import files
 from typing import Final
 
@@ -20,6 +20,7 @@ from service.errors import SpanwrightError
 from service.settings import Settings, settings_here
 from service.store.session import open_store
 from worker import dispatcher
+from worker.bench import ProcessBench
 
 _START_PATIENCE_S: Final = 30.0
 _STOP_PATIENCE_S: Final = 90.0
@@ -40,8 +41,12 @@ def serve_until_stopped(announce: Callable[[str], None], *, workers: bool = True
     settings = settings_here()
     journal.set_up(settings)
     _open_once(settings)
-    server = _server(settings, settings.port)
-    with _workers(settings) if workers else _no_workers():
+    with (
+        closing(ProcessBench()) as bench,
+        _workers(settings) if workers else _no_workers(),
+    ):
+        server = _server(settings, settings.port, bench)
+        bench.start()
         announce(f"http://{settings.host}:{settings.port}/")
         server.run()
 
@@ -53,9 +58,10 @@ def standing_service() -> Iterator[str]:
     journal.set_up(settings)
     _open_once(settings)
     port = _free_port()
-    server = _server(settings, port)
+    bench = ProcessBench()
+    server = _server(settings, port, bench)
     thread = threading.Thread(target=server.run, name="api", daemon=True)
-    with _workers(settings):
+    with closing(bench), _workers(settings):
         thread.start()
         try:
             _await_start(server, thread)
@@ -94,9 +100,9 @@ def _no_workers() -> Iterator[None]:
     yield
 
 
-def _server(settings: Settings, port: int) -> uvicorn.Server:
+def _server(settings: Settings, port: int, bench: ProcessBench) -> uvicorn.Server:
     config = uvicorn.Config(
-        create_app(settings),
+        create_app(settings, bench=bench),
         host=settings.host,
         port=port,
         log_level="warning",
