@@ -15,6 +15,7 @@ import os
 import random
 import socket
 import threading
+import time
 import uuid
 from contextlib import suppress
 from typing import Final
@@ -36,6 +37,7 @@ from service.settings import settings_or_exit
 from service.store import jobs, workers
 from service.store.session import Store, open_store
 from worker.running import PlanFunction, announce, drain, sweep
+from worker.watchdog import EXIT_DEAF, Watchdog, broker_answers
 
 _log = logging.getLogger(__name__)
 
@@ -91,6 +93,7 @@ class _SharedFlag:
 
 
 _stopping: Final = _SharedFlag()
+_watchdog: Final = Watchdog(settings.deaf_s)
 
 
 class _PoolProcess:
@@ -109,6 +112,7 @@ class _PoolProcess:
     def answer(self, plan: PlanFunction) -> int:
         """Run jobs until none waits, or enough has been done for one ring."""
         self._draining.set()
+        _watchdog.heard()
         try:
             store = self._open()
             ran = drain(
@@ -155,12 +159,22 @@ class _PoolProcess:
                 sweep(store, settings, self._name)
                 # A process that drains looks for more by itself, and rings when it stops.
                 idle = not self._draining.is_set() and not _stopping.is_set()
-                if idle and jobs.any_queued(store):
-                    self._doorbell.ring()
+                if idle:
+                    self._ring_if_any_waits(store)
             except StoreUnavailable:
                 _log.warning("no sweep, the store is away")
             except Exception:  # noqa: BLE001  # a sweeper that stopped in silence would leave lost jobs lying
                 _log.exception("no sweep")
+
+    def _ring_if_any_waits(self, store: Store) -> None:
+        if not jobs.any_queued(store):
+            _watchdog.heard()
+            return
+        self._doorbell.ring()
+        if broker_answers(str(settings.redis_url)):
+            _watchdog.unheard()
+        else:
+            _watchdog.heard()
 
 
 _pool_process: _PoolProcess | None = None
@@ -191,6 +205,18 @@ def _load_planning(**_: object) -> None:
         except ImportError as error:
             # Celery only logs what a signal's receiver raises, and would go on without planning.
             raise SystemExit(f"The planning cannot be loaded: {error}") from error
+
+
+@worker_init.connect
+def _watch(**_: object) -> None:
+    _watchdog.watch(_end_deaf)
+
+
+def _end_deaf() -> None:
+    # What is being planned is given back first; pool processes end with this one.
+    _stopping.set()
+    time.sleep(settings.heartbeat_s + settings.cancel_grace_s + 1.0)
+    os._exit(EXIT_DEAF)
 
 
 @worker_process_init.connect
