@@ -9,6 +9,7 @@ from typing import Annotated, Final
 import typer
 from rich.console import Console
 
+from service import journal
 from service.settings import settings_here
 from service.store import queue_view
 from service.store.session import open_store
@@ -52,6 +53,7 @@ def drain() -> None:
     stop when it was cancelled or took too long, and ended this process: drain again.
     """
     settings = settings_here()
+    journal.set_up(settings)
     with closing(open_store(settings)) as store, progress_bar(err, "looking") as show:
         drained = drain_here(store, settings, show)
     err.print(drained.in_words(), highlight=False)
