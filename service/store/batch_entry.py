@@ -6,6 +6,7 @@ import uuid
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
+from itertools import chain
 from typing import Any
 
 from sqlalchemy import Executable, bindparam, insert, or_, select, update
@@ -113,22 +114,29 @@ def rerun_failed(store: Store, batch_id: str) -> int:
         batch = session.get(BatchRow, batch_id)
         if batch is None:
             raise BatchNotFound(batch_id)
-        ended = session.execute(
-            select(JobRow.design_id, DesignRow.content_hash, DesignRow.batch_line)
+        jobs = (
+            select(DesignRow.content_hash, JobRow.design_id, DesignRow.batch_line)
             .join(DesignRow, DesignRow.id == JobRow.design_id)
-            .where(JobRow.batch_id == batch_id, JobRow.state.in_(("failed", "cancelled")))
+            .where(JobRow.batch_id == batch_id)
             .order_by(DesignRow.batch_line)
-            .with_for_update(of=JobRow)
-        ).all()
+        )
+        failed = jobs.where(JobRow.state.in_(("failed", "cancelled"))).with_for_update(of=JobRow)
+        ended = session.execute(failed).all()
         if not ended:
             return 0
+        # What is under way already is planned for those that are the same.
+        under_way = jobs.where(
+            JobRow.state.in_(("queued", "running")),
+            JobRow.waits_for.is_(None),
+            JobRow.cancel_wanted.is_(False),
+        )
         moment = now(session)
         place = order.place_for(session, batch.owner, batch.priority)
-        leaders = _leaders((row[1], row[0], row[2] or 0) for row in ended)
+        leaders = _leaders(chain(session.execute(under_way).all(), ended))
         again = [
             {"key": design_id, "position": place.of_batch(index)}
             | _waiting(design_id, leaders[content_hash])
-            for index, (design_id, content_hash, _line) in enumerate(ended)
+            for index, (content_hash, design_id, _line) in enumerate(ended)
         ]
         session.connection().execute(_requeue(moment), again)
         order.enter(session, place)
@@ -253,15 +261,17 @@ def _job_rows(
     ]
 
 
-def _leaders(designs: Iterable[tuple[str, str, int]]) -> dict[str, tuple[str, int]]:
+def _leaders(
+    designs: Iterable[tuple[str, str, int | None]],
+) -> dict[str, tuple[str, int | None]]:
     """For each content hash the design that is planned for all that share it, and its line."""
-    leaders: dict[str, tuple[str, int]] = {}
+    leaders: dict[str, tuple[str, int | None]] = {}
     for content_hash, design_id, line in designs:
         leaders.setdefault(content_hash, (design_id, line))
     return leaders
 
 
-def _waiting(design_id: str, leader: tuple[str, int]) -> dict[str, Any]:
+def _waiting(design_id: str, leader: tuple[str, int | None]) -> dict[str, Any]:
     if leader[0] == design_id:
         return {"waits_for": None, "step": ""}
     return {"waits_for": leader[0], "step": f"planned together with line {leader[1]}, the same"}

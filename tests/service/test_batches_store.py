@@ -21,6 +21,7 @@ from service.store.session import Store
 from service.store.tables import BatchRow, DesignRow, JobRow, ResultRow
 from tests.service.queueing import (
     LEASE_S,
+    at_work,
     batch,
     batch_request,
     changed_at,
@@ -334,6 +335,7 @@ def test_what_is_planned_again_starts_where_the_queue_has_come_to(store: Store) 
 
 
 def test_a_whole_batch_is_planned_again_as_a_new_one_whatever_is_stored(store: Store) -> None:
+    at_work(store)
     first = batch(store, *THREE, owner="ann", priority="urgent")
     for _ in THREE:
         plan_next(store)

@@ -125,7 +125,8 @@ def test_a_single_design_goes_about_next_however_large_the_batch_before_it(store
 
 
 def test_single_designs_and_a_batch_take_turns(store: Store) -> None:
-    batch(store, *numbered("batch", 6))
+    batch(store, *numbered("batch", 16))
+    taken(store, 8)
     for name in numbered("single", 6):
         single(store, name)
     got = taken(store, 6)

@@ -261,6 +261,17 @@ def test_identical_designs_planned_again_are_planned_once_again(store: Store) ->
     assert [item.state for item in batches.items(store, batch_id, limit=9).items] == ["done"] * 2
 
 
+def test_a_design_put_in_again_waits_for_an_identical_one_that_is_under_way(store: Store) -> None:
+    batch_id = batch(store, "same", "same", "same")
+    jobs.cancel(store, line_of(store, batch_id, 2))
+    first = take(store)
+    assert batches.rerun_failed(store, batch_id) == 1
+    assert none_left(store)
+    assert jobs.finish(store, first, planned(first))
+    items = batches.items(store, batch_id, limit=9).items
+    assert [item.answered_by for item in items] == [None, first.design_id, first.design_id]
+
+
 def test_a_batch_sent_again_is_answered_at_once(store: Store) -> None:
     at_work(store)
     batch(store, "one", "two")
@@ -270,6 +281,14 @@ def test_a_batch_sent_again_is_answered_at_once(store: Store) -> None:
     items = batches.items(store, again.id, limit=9).items
     assert [item.answered_by for item in items] == [done[1], None, done[0]]
     assert taken(store, 1) == ["new"]
+
+
+def test_a_batch_sent_again_is_not_answered_by_results_of_another_engine(store: Store) -> None:
+    batch(store, "one")
+    plan_next(store)
+    at_work(store, NEWER)
+    again = batches.get(store, batch(store, "one"), "local")
+    assert (again.counts.done, again.counts.queued) == (0, 1)
 
 
 def test_a_batch_answered_whole_is_finished_at_once(store: Store) -> None:
