@@ -33,6 +33,9 @@ PAGES = [
     "/designs/{full}",
     "/designs/{done}/candidates/1",
     "/designs/{full}/candidates/1",
+    "/designs/{done}/candidates/1/what-if",
+    "/compare?with={done}:1",
+    "/compare?with={done}:1&with={full}:2&with={full}:1",
     "/designs/00000000000000000000000000000000",
     "/problems/request-refused",
 ]

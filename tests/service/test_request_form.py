@@ -209,6 +209,7 @@ def test_live_checking_says_what_the_page_would_say(wire: httpx.Client) -> None:
 @pytest.mark.parametrize(
     ("body", "media_type"),
     [
+        (b"span=24", "text/plain"),
         (b"{}", "application/json"),
         (b"no form", "application/x-www-form-urlencoded"),
         (b"a=" + 70_000 * b"b", "application/x-www-form-urlencoded"),
