@@ -15,9 +15,9 @@ import httpx
 import pytest
 
 from service.contracts.batch import Batch, BatchItem
-from service.store import batches, jobs
 from service.store.session import Store
-from tests.service.samples import request_fields, sample_planned
+from tests.service.batches_sent import planned
+from tests.service.samples import request_fields
 from tests.unit.cli import conftest as cli
 
 typed = cli.typed
@@ -38,18 +38,6 @@ def lines_file(folder: Path, number: int, **changes: object) -> str:
     names = [f"{index} {uuid.uuid4().hex[:8]}" for index in range(1, number + 1)]
     file.write_text("\n".join(json.dumps(request_fields(name=name, **changes)) for name in names))
     return str(file)
-
-
-def planned(store: Store, batch_id: str, fail: int | None = None) -> None:
-    """Do the work of a worker on a batch; the design on one line fails."""
-    waiting = {each.id: each.line for each in batches.items(store, batch_id, limit=100).items}
-    while waiting:
-        job = jobs.claim(store, "worker of the tests", lease_s=600.0)
-        assert job is not None, "the batch waits and cannot be claimed"
-        if waiting.pop(job.design_id, None) == fail and fail is not None:
-            assert jobs.fail(store, job, "Invented failure")
-        else:
-            assert jobs.finish(store, job, sample_planned(job.request))
 
 
 def test_a_file_of_lines_is_submitted_without_naming_the_verb(run: Run, tmp_path: Path) -> None:
@@ -192,7 +180,7 @@ def test_designs_of_one_state_are_listed_by_line(
     end = run("designs", batch_id, "--state", "done", "--json")
     found = [BatchItem.model_validate_json(line) for line in end.out.splitlines()]
     assert [(each.line, each.state) for each in found] == [(1, "done"), (3, "done")]
-    assert "failed: Invented" in " ".join(run("designs", batch_id).out.split())
+    assert "failed: =Invented failure" in " ".join(run("designs", batch_id).out.split())
 
 
 def test_what_failed_is_run_again_and_cancelled(
