@@ -54,6 +54,7 @@ class Course:
     sweep_s: float = 1.0
     #: Longer than a worker drains for one ring, and than a store is patient.
     longest_outage_s: float = 35.0
+    most_waiting: int = 60
     workers: int = 3
     processes: int = 2
 
@@ -113,7 +114,9 @@ def run(course: Course, folder: Path) -> Report:
         with ExitStack() as stack:
             store = stack.enter_context(closing(open_store(settings)))
             doorbell = stack.enter_context(closing(Doorbell(settings)))
-            submitter = Submitter(store, doorbell, record, course.jobs, course.seed)
+            submitter = Submitter(
+                store, doorbell, record, course.jobs, course.most_waiting, course.seed
+            )
             with workers:
                 started_s = time.monotonic()
                 submitter.start()

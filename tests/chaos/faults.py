@@ -111,11 +111,13 @@ def kill_a_main_process(scene: Scene) -> Struck:
 
 
 def freeze_a_worker(scene: Scene) -> Struck:
-    """Freeze a whole worker in the middle of jobs until they are free again, then wake it."""
+    """Freeze a whole worker in the middle of jobs until others are at them, then wake it."""
     index, claims = _frozen_worker(scene)
     frozen_at_s = time.monotonic()
     try:
         freed_at_s = scene.freed(claims)
+        # What comes late while another is at the job only its fence can tell from the other's.
+        until(lambda: all(_claimed_again(scene.record, claim) for claim in claims), _PATIENCE_S)
     finally:
         scene.workers.send(index, signal.SIGCONT)
     # It hands in what it has, under a fence that is past.
@@ -147,16 +149,20 @@ FAULTS_OF_ALL: Final = (kill_a_process, kill_a_worker, kill_a_main_process, free
 FAULTS_OF_SERVERS: Final = (lose_the_broker, crash_the_database)
 
 
-def _came_late(record: Record, claim: Step) -> bool:
-    """Whether the execution of a claim has handed in its result, whatever came of it."""
+def _claimed_again(record: Record, claim: Step) -> bool:
+    """Whether somebody has claimed a job after a claim of it."""
     return any(
-        step.what in ("stored", "refused") and (step.design_id, step.fence) == _key(claim)
-        for step in record.look()
+        step.design_id == claim.design_id and step.fence > claim.fence for step in record.look()
     )
 
 
-def _key(claim: Step) -> tuple[str, int]:
-    return claim.design_id, claim.fence
+def _came_late(record: Record, claim: Step) -> bool:
+    """Whether the execution of a claim has handed in its result, whatever came of it."""
+    late = claim.design_id, claim.fence
+    return any(
+        step.what in ("stored", "refused") and (step.design_id, step.fence) == late
+        for step in record.look()
+    )
 
 
 def _busy_process(scene: Scene) -> tuple[int, Step]:

@@ -17,23 +17,29 @@ from service.store.session import Store
 from tests.chaos.record import Record
 from tests.service.samples import sample_request
 
-#: So many designs are under way at the most, so that submitting goes on through all faults.
-_MOST_WAITING: Final = 80
-_LARGEST_BATCH: Final = 20
+_LARGEST_BATCH: Final = 10
 _LOOK_S: Final = 0.02
 
 
 class Submitter(threading.Thread):
     """Submits so many designs, by themselves and in batches, each under a key of its own.
 
-    What the store was away for is sent again under the same key, as a client does.
+    So many are under way at the most, so that submitting goes on through all faults. What the
+    store was away for is sent again under the same key, as a client does.
     """
 
     def __init__(
-        self, store: Store, doorbell: Doorbell, record: Record, number: int, seed: int
+        self,
+        store: Store,
+        doorbell: Doorbell,
+        record: Record,
+        number: int,
+        most_waiting: int,
+        seed: int,
     ) -> None:
         super().__init__(name="submitter", daemon=True)
         self._store, self._doorbell, self._record = store, doorbell, record
+        self._most_waiting = most_waiting
         self._number, self._chance = number, random.Random(seed)  # noqa: S311  # no secret
         #: Accepted so far: designs and batches by their keys.
         self.designs: dict[str, str] = {}
@@ -47,7 +53,7 @@ class Submitter(threading.Thread):
         """Submit all."""
         try:
             for requests in self._portions():
-                while self.accepted - self._record.told_stored() > _MOST_WAITING:
+                while self.accepted - self._record.told_stored() > self._most_waiting:
                     threading.Event().wait(_LOOK_S)
                 self._send(requests)
         except Exception as error:  # noqa: BLE001  # told by whoever waits for this thread

@@ -20,6 +20,7 @@ def ran(form: Form, folder: Path) -> Report:
         lease_s=1.5,
         sweep_s=0.3,
         longest_outage_s=1.5,
+        most_waiting=12,
         processes=1,
     )
     try:
