@@ -53,7 +53,7 @@ class Scene:
 
     def stay_away(self) -> None:
         """Let a server that was stopped be away for a while, long or short by chance."""
-        time.sleep(self.longest_outage_s * self.chance.random())
+        time.sleep(self.longest_outage_s * self.chance.uniform(0.3, 1.0))
 
     def any_worker(self) -> int:
         """Index of a worker, by chance."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 import threading
+import time
 from collections.abc import Iterator
 from typing import Final
 
@@ -19,13 +20,15 @@ from tests.service.samples import sample_request
 
 _LARGEST_BATCH: Final = 10
 _LOOK_S: Final = 0.02
+#: Something is sent so often at least, also while nothing moves.
+_LONGEST_PAUSE_S: Final = 0.5
 
 
 class Submitter(threading.Thread):
     """Submits so many designs, by themselves and in batches, each under a key of its own.
 
-    So many are under way at the most, so that submitting goes on through all faults. What the
-    store was away for is sent again under the same key, as a client does.
+    About so many wait at the most, so that submitting goes on through all faults. What the store
+    was away for is sent again under the same key, as a client does.
     """
 
     def __init__(
@@ -53,11 +56,18 @@ class Submitter(threading.Thread):
         """Submit all."""
         try:
             for requests in self._portions():
-                while self.accepted - self._record.told_stored() > self._most_waiting:
-                    threading.Event().wait(_LOOK_S)
+                self._pause()
                 self._send(requests)
         except Exception as error:  # noqa: BLE001  # told by whoever waits for this thread
             self.broke = error
+
+    def _pause(self) -> None:
+        until_s = time.monotonic() + _LONGEST_PAUSE_S
+        while (
+            self.accepted - self._record.told_stored() > self._most_waiting
+            and time.monotonic() < until_s
+        ):
+            time.sleep(_LOOK_S)
 
     def _portions(self) -> Iterator[list[DesignRequest]]:
         sent = 0
