@@ -93,6 +93,16 @@ def test_a_failure_is_told_as_it_happens(page: Page, wire_store: Store) -> None:
     expect(page.locator(".failure")).to_contain_text("an invented failure")
 
 
+def test_where_no_events_come_the_page_asks_again_by_itself(page: Page, wire_store: Store) -> None:
+    page.route("**/events", lambda route: route.fulfill(status=503))
+    page.goto("/new")
+    fill_in(page, "Without events")
+    page.get_by_role("button", name="Submit for planning").click()
+    expect(page.locator(".state")).to_have_text("queued")
+    planned(wire_store, claimed(wire_store))
+    expect(page.locator(".state")).to_have_text("done")
+
+
 def test_faults_are_told_of_fields_that_were_left_while_the_form_is_filled_in(page: Page) -> None:
     page.goto("/new")
     span, fault = page.get_by_label("Span between the supports"), page.locator("#span\\.fault")
