@@ -6,6 +6,7 @@ import os
 import random
 import signal
 import sqlite3
+import threading
 import time
 from collections.abc import Callable
 from contextlib import closing
@@ -48,12 +49,15 @@ class Scene:
     record: Record
     chance: random.Random
     longest_outage_s: float
+    server_away: threading.Event
     postgres: PostgresServer | None
     redis: RedisServer | None
 
     def stay_away(self) -> None:
         """Let a server that was stopped be away for a while, long or short by chance."""
+        self.server_away.set()
         time.sleep(self.longest_outage_s * self.chance.uniform(0.3, 1.0))
+        self.server_away.clear()
 
     def any_worker(self) -> int:
         """Index of a worker, by chance."""
