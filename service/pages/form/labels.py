@@ -51,7 +51,7 @@ _IN_ROW: Final[Mapping[str, str]] = {
     "er": "Its permittivity",
     "tan": "Its loss tangent",
     "code": "Item code",
-    "price": "Price per m or ft",
+    "price": "Price per m, ft",
 }
 _OF_RANGE: Final[Mapping[str, str]] = {"low": "Thinnest, mm", "high": "Thickest, mm"}
 _RANGE: Final = "range"
