@@ -122,7 +122,14 @@ def run(course: Course, folder: Path) -> Report:
                 submitter.start()
                 chance = random.Random(course.seed)  # noqa: S311  # no secret
                 scene = Scene(
-                    workers, store, record, chance, course.longest_outage_s, postgres, redis
+                    workers,
+                    store,
+                    record,
+                    chance,
+                    course.longest_outage_s,
+                    submitter.server_away,
+                    postgres,
+                    redis,
                 )
                 told = tuple(_strike(scene, course))
                 _await_the_end(submitter, record, store)
