@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
+from worker.engine.end_voltage import end_voltages
 from worker.engine.field import PrincipalPattern, RadiatingWire, principal_pattern
 from worker.engine.hung_wire import HungWire
 from worker.engine.thin_wire.standing_wave import StandingWave, standing_waves
@@ -23,10 +24,12 @@ class HungPattern:
     """The standing wave on one wire and what it radiates; None above `HIGHEST_DRAWN_WAVELENGTHS`.
 
     For one volt at the feed, though the pattern's gains and fractions do not depend on it.
+    `end_volts` are the voltages at its ends, as `end_voltage.end_voltages` gives them.
     """
 
     wave: StandingWave
     pattern: PrincipalPattern | None
+    end_volts: tuple[complex, complex]
 
 
 def hung_patterns(
@@ -66,9 +69,11 @@ def hung_patterns(
             reflected=None if first.grounds is None else first.grounds.at_each(at_hz),
             places=places,
         )
-        for index, wave, (_, series) in zip(members, waves, electrical, strict=True):
-            pattern = _pattern(wires[index], wave, float(frequencies_hz[index]), float(series.real))
-            found[index] = HungPattern(wave, pattern)
+        for index, wave, (radius_m, series) in zip(members, waves, electrical, strict=True):
+            wire, length_m, hz = wires[index], float(lengths_m[index]), float(frequencies_hz[index])
+            below = None if wire.grounds is None else wire.grounds.at(hz)
+            ends = end_voltages(wave, length_m, float(radius_m), hz, below)
+            found[index] = HungPattern(wave, _pattern(wire, wave, hz, float(series.real)), ends)
     return tuple(found[index] for index in range(len(wires)))
 
 
