@@ -38,8 +38,9 @@ _log = logging.getLogger(__name__)
 SHORTEST_POLL_S: Final = 0.01
 LONGEST_POLL_S: Final = 0.25
 
-#: A worker is replaced after so many jobs, so that memory cannot creep.
-MOST_JOBS: Final = 200
+#: A worker is replaced after so many jobs, so that memory cannot creep. A new one takes about two
+#: seconds to load what it needs, which must not weigh on each job.
+MOST_JOBS: Final = 1000
 
 #: A worker that died sooner than this after its start is started again after a pause.
 _TOO_SOON_S: Final = 5.0

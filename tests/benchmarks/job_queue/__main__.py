@@ -1,4 +1,4 @@
-"""The queue on either database and carrier, beside bare computation; about three minutes.
+"""The queue on either database and carrier, beside bare computation; about two minutes.
 
 Run as ``python -m tests.benchmarks.job_queue``. Each ratio has both sides measured in this one run:
 the bare computation before and after the queue's, by as many processes, on the same cores. All
@@ -40,7 +40,7 @@ from worker.planning import plan
 _FORMS: Final[dict[Form, str]] = {"embedded": "SQLite, embedded", "celery": "PostgreSQL, Celery"}
 _PACKAGE: Final = "tests.benchmarks.job_queue"
 _JOB_S: Final = 0.06
-_JOBS: Final = 200
+_JOBS: Final = 160
 _BATCH: Final = 1000
 _CROWD: Final = 5000
 _URGENT: Final = 12
