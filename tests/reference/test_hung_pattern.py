@@ -14,7 +14,7 @@ import pytest
 from scipy.optimize import minimize_scalar
 
 from worker.engine.constants import SPEED_OF_LIGHT_M_PER_S
-from worker.engine.field import RadiatingWire, lobes, power_budget, principal_pattern
+from worker.engine.field import RadiatingWire, gain_dbi, lobes, power_budget, principal_pattern
 from worker.engine.ground import GROUND_CLASSES, PERFECT_GROUND, Ground
 from worker.engine.hung_pattern import HIGHEST_DRAWN_WAVELENGTHS, HungPattern, hung_patterns
 from worker.engine.hung_wire import GroundTables, HungWire
@@ -132,6 +132,29 @@ def test_the_quick_pattern_finds_what_the_thorough_search_of_lobes_finds(
     assert found.pattern.take_off_rad == pytest.approx(strongest.elevation_rad, abs=3e-3)
     budget = power_budget(wire, power_w)
     assert found.pattern.radiated_fraction == pytest.approx(budget.radiated_fraction, rel=1e-4)
+
+
+def test_cuts_go_from_the_end_that_the_feed_does_not_count_from() -> None:
+    ground, height = GROUND_CLASSES["average"], 0.4
+    found = hung(1.4, ground, height, feed_fraction=0.3)
+    assert found.pattern is not None
+    wave, step = found.wave, found.pattern.step_rad
+    wire = RadiatingWire(
+        wave.position_m,
+        wave.current_a_per_v,
+        FREQUENCY_HZ,
+        ground,
+        height * WAVE_M,
+        wave.weight_m,
+    )
+    power_w = 0.5 * (1.0 / wave.impedance_ohm).real
+    low = round(0.6 / step)
+    ahead, behind = (gain_dbi(wire, power_w, low * step, azimuth) for azimuth in (0.0, pi))
+    assert abs(float(ahead) - float(behind)) > 0.3
+    assert found.pattern.end_on_dbi[low] == pytest.approx(float(ahead), abs=1e-6)
+    assert found.pattern.end_on_dbi[-1 - low] == pytest.approx(float(behind), abs=1e-6)
+    around = gain_dbi(wire, power_w, found.pattern.take_off_rad, low * step)
+    assert found.pattern.azimuth_dbi[low] == pytest.approx(float(around), abs=1e-6)
 
 
 def test_the_heat_in_the_wire_is_that_of_the_power_budget() -> None:

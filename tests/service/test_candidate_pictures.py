@@ -110,7 +110,15 @@ def test_every_picture_of_the_page_is_served_as_an_image_that_may_be_kept(
 
 
 @pytest.mark.parametrize(
-    "plot", ["pattern-4.svg", "pattern-0.svg", "pattern-5.svg", "current-5.svg", "current-x.svg"]
+    "plot",
+    [
+        "pattern-4.svg",
+        "pattern-0.svg",
+        "current-0.svg",
+        "pattern-5.svg",
+        "current-5.svg",
+        "current-x.svg",
+    ],
 )
 def test_a_picture_that_there_is_not_is_refused(wire: httpx.Client, full: str, plot: str) -> None:
     status = wire.get(f"/designs/{full}/candidates/1/plots/{plot}").status_code

@@ -6,6 +6,7 @@ import cmath
 import json
 import math
 
+import numpy as np
 import pytest
 
 from service.contracts.radiation import CurrentAlong, Radiation
@@ -13,8 +14,9 @@ from service.contracts.report import FeedReport
 from service.contracts.request import parse_request
 from worker.engine.ground import GROUND_CLASSES, PERFECT_GROUND, Ground
 from worker.engine.hung_wire import GroundTables, HungWire
+from worker.engine.thin_wire.standing_wave import StandingWave
 from worker.planning import plan
-from worker.translation.pictures import BandPicture, pictures_of
+from worker.translation.pictures import BandPicture, _current, pictures_of
 from worker.translation.wires import Hanging
 
 CENTRE_HZ = 7.1e6
@@ -47,6 +49,15 @@ def test_the_current_is_told_against_its_largest_from_end_to_end() -> None:
     assert current.size[20] == 1.0
     assert current.phase_deg[20] == 0.0
     assert current.at_feed == pytest.approx(1.0, abs=0.02)
+
+
+def test_of_lobes_about_as_strong_phases_count_from_the_one_nearest_to_the_feed() -> None:
+    along = np.array([0.0, 0.995, 0.0, -1.0, 0.0], dtype=complex)
+    fraction = np.linspace(0.0, 1.0, 5)
+    wave = StandingWave(fraction - 0.5, np.full(5, 0.2), along, fraction, along, 1.0 + 0.0j)
+    assert _current(wave, 0.25).phase_deg[1] == 0.0
+    assert abs(_current(wave, 0.25).phase_deg[3]) == 180.0
+    assert _current(wave, 0.75).phase_deg[3] == 0.0
 
 
 def test_on_a_full_wave_the_feed_is_at_a_minimum() -> None:
