@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
+from worker.engine.errors import OutOfRange
 from worker.engine.ground import GROUND_CLASSES
 from worker.engine.hung_wire import GroundTables, HungWire
 from worker.engine.insulation import Sleeve
@@ -102,3 +105,33 @@ def test_each_condition_is_answered_as_if_it_were_the_only_one() -> None:
             found.estimated_error_ohm + alone.estimated_error_ohm
         )
         assert close.all()
+
+
+def test_the_lowest_ground_decides_how_finely_a_wire_is_solved() -> None:
+    # A full wave near the ground needs a finer solution than a survey's first, one on high none.
+    wavelength_m = 299_792_458.0 / 14.0e6
+    low = GroundTables(GROUND_CLASSES["average"], 0.03 * wavelength_m, 60.0).at(14.0e6)
+    high = grounds(20.0).at(14.0e6)
+    length_m = wavelength_m * np.array([0.48, 1.0])
+    alone = feed_impedance(length_m, 5e-3, 14.0e6, reflected=low, survey=True)
+    assert alone.unknowns[1] > 1.5 * alone.unknowns[0]
+    found = feed_impedance_under(
+        length_m, 5e-3, 14.0e6, conditions=[(high, 0.0), (low, 0.0)], survey=True
+    )
+    assert found[1].unknowns.tolist() == alone.unknowns.tolist()
+
+
+def test_a_thinly_insulated_wire_is_not_taken_for_a_bare_one() -> None:
+    below = grounds(8.0)
+    bare = several([0.8, 1.0, 1.4], [8.0])
+    enamelled = HungWire(1e-3, MATERIALS["stainless-steel-304"], Sleeve(1.04e-3, 3.5, 0.0), below)
+    resistive = [
+        replace(each, material=MATERIALS["stainless-steel-304"], grounds=below) for each in bare
+    ]
+    assert largest_error([*resistive, enamelled]) < 0.7
+
+
+def test_tables_of_two_heights_are_refused_for_one_wire() -> None:
+    tables = (grounds(10.0).at(14.0e6), grounds(11.0).at(14.1e6))
+    with pytest.raises(OutOfRange, match="height_m"):
+        feed_impedance(20.0, 1e-3, np.array([14.0e6, 14.1e6]), reflected=tables)
