@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from typing import Any
 
 import pytest
@@ -42,6 +43,7 @@ SPELT: list[dict[str, Any]] = [
     {"feed": {"positions": "anywhere", "transformer_ratios": [1.0, 1.5, 4.0]}},
     {"feed": {"positions": [0.5, 1.0 / 3.0]}},
     {"lengths": {"low_m": 19.5, "high_m": 20.25}},
+    {"hanging": {"rise_m": 0.5}},
     {"tolerances": None, "largest_set": 1, "candidates": 15},
     {"tolerances": {"cutting_percent": 2.0, "height_m": 1.5, "ground_factor": 3.0}},
     {"bands": ["broadcast-region-3: 75m, 41m", {"name": "net", "low_mhz": 5.1, "high_mhz": 5.2}]},
@@ -55,6 +57,14 @@ def test_a_request_written_into_the_form_reads_back_the_same(changes: dict[str, 
     again = parse_request(read_form(filled(request)).json())
     assert {band.name: band for band in again.bands} == {b.name: b for b in request.bands}
     assert again.model_copy(update={"bands": request.bands}) == request
+
+
+def test_parts_without_a_field_travel_along_and_others_do_not() -> None:
+    kept = {"hanging": {"rise_m": 0.5}}
+    assert read_form({**WRITTEN, "kept": json.dumps(kept)}).fields["hanging"] == {"rise_m": 0.5}
+    for odd in ("[", "[1]", '{"site": {}}'):
+        judged = judge({**WRITTEN, "kept": odd})
+        assert [fault.field for _, fault in judged.faults] == ["kept"]
 
 
 def test_bands_of_a_ready_made_list_are_ticked_and_others_are_the_planners_own() -> None:

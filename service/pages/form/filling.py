@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import math
 from collections.abc import Iterable, Mapping
 from typing import Final
@@ -13,7 +14,7 @@ from service.contracts.request import DesignRequest, Tolerances
 from service.contracts.station_site import GroundConstants, HeightRange, Site
 from service.contracts.stock import Conductor, Insulation, Stock
 from service.pages.form.entries import WISHES, Entries, with_band_moved, written
-from service.pages.form.reading import FIRST_LIST, band_list_of
+from service.pages.form.reading import FIRST_LIST, ON_FORM, band_list_of
 
 #: Empty fields take the contract's defaults; only what is chosen, not written, is set here.
 BLANK: Final[Mapping[str, str]] = {
@@ -53,6 +54,9 @@ def filled(request: DesignRequest) -> dict[str, str]:
         "candidates": str(request.candidates),
         "rank-by": request.rank_by,
     }
+    kept = request.model_dump(mode="json", exclude_defaults=True, exclude=set(ON_FORM))
+    if kept:
+        entries["kept"] = json.dumps(kept)
     if request.lengths is not None:
         entries["length-low"] = _plain(request.lengths.low_m)
         entries["length-high"] = _plain(request.lengths.high_m)

@@ -16,6 +16,22 @@ from service.contracts.units import LengthUnit, metres_of, number_of, per_metre_
 from service.errors import Fault
 from service.pages.form.entries import Entries, written, written_rows
 
+#: Parts of a request that have fields on the form; the others travel along as they are.
+ON_FORM: Final = frozenset(
+    (
+        "name",
+        "bands",
+        "site",
+        "lengths",
+        "stock",
+        "feed",
+        "power_w",
+        "candidates",
+        "largest_set",
+        "rank_by",
+        "tolerances",
+    )
+)
 FIRST_LIST: Final = "amateur-region-1"
 _RANGE: Final = re.compile(r"(\S+)\s*(?:\bto\b|–)\s*(\S+)")
 
@@ -43,7 +59,7 @@ class FormRequest:
 
 def read_form(entries: Entries) -> FormRequest:
     """The request that the entries spell."""
-    read = FormRequest()
+    read = FormRequest(kept_parts(entries))
     _put(read.fields, "name", written(entries, "name"))
     read.behind["name"] = "name"
     _read_bands(read, entries)
@@ -52,6 +68,23 @@ def read_form(entries: Entries) -> FormRequest:
     _read_feed(read, entries)
     _read_ranking(read, entries)
     return read
+
+
+def kept_parts(entries: Entries) -> dict[str, Any]:
+    """Parts of the request the form was started from that have no field on it.
+
+    What is no such part is handed on under its own name, for the contract to refuse.
+    """
+    text = written(entries, "kept")
+    if not text:
+        return {}
+    try:
+        kept = json.loads(text)
+    except (ValueError, RecursionError):
+        return {"kept": text}
+    if not isinstance(kept, dict) or ON_FORM & kept.keys():
+        return {"kept": text}
+    return kept
 
 
 def band_list_of(entries: Entries) -> BandList:

@@ -22,7 +22,7 @@ from service.pages import formats, wording
 from service.pages.form.entries import Entries, rows, written
 from service.pages.form.judging import Judged
 from service.pages.form.labels import label, place, row_label
-from service.pages.form.reading import band_list_of, unit_of
+from service.pages.form.reading import band_list_of, kept_parts, unit_of
 from service.pages.form.shown_back import shown_back
 
 Choices = tuple[tuple[str, str], ...]
@@ -79,6 +79,11 @@ class FormView:
     def faults(self) -> tuple[tuple[str | None, Fault], ...]:
         """Everything that is wrong, in the contract's order."""
         return self.judged.faults if self.judged else ()
+
+    @property
+    def kept(self) -> list[str]:
+        """Names of the parts that travel along without a field."""
+        return [name.replace("_", " ") for name in kept_parts(self.entries)]
 
     @property
     def band_list(self) -> BandList:
