@@ -288,7 +288,6 @@ def _requeue(moment: datetime) -> Executable:
             step=bindparam("step"),
             queued_at=moment,
             attempts=0,
-            fence=JobRow.fence + 1,
             cancel_wanted=False,
             progress=0.0,
             failure=None,
