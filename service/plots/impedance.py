@@ -173,7 +173,9 @@ def _draw_resonances(drawing: Drawing, frame: _Frame, report: FeedReport) -> Non
             drawing.dot(place, _MARK_PX, "series")
         else:
             drawing.diamond(place, _MARK_PX + 0.5, "parallel")
-        drawing.text((place[0], place[1] + 18.0), str(each.order), f"order {each.kind}")
+        # Resonances and anti-resonances take turns, and crowd where orders are high.
+        beside = 18.0 if each.kind == "series" else -9.0
+        drawing.text((place[0], place[1] + beside), str(each.order), f"order {each.kind}")
 
 
 def _in_words(report: FeedReport) -> str:
