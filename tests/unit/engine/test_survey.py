@@ -108,15 +108,16 @@ def test_each_condition_is_answered_as_if_it_were_the_only_one() -> None:
 
 
 def test_the_lowest_ground_decides_how_finely_a_wire_is_solved() -> None:
-    # A full wave near the ground needs a finer solution than a survey's first, one on high none.
+    # A full wave of thick wire near the ground needs more than a survey's first solution, and one
+    # on high does not.
     wavelength_m = 299_792_458.0 / 14.0e6
-    low = GroundTables(GROUND_CLASSES["average"], 0.03 * wavelength_m, 60.0).at(14.0e6)
+    low = GroundTables(GROUND_CLASSES["average"], 0.05 * wavelength_m, 60.0).at(14.0e6)
     high = grounds(20.0).at(14.0e6)
     length_m = wavelength_m * np.array([0.48, 1.0])
-    alone = feed_impedance(length_m, 5e-3, 14.0e6, reflected=low, survey=True)
+    alone = feed_impedance(length_m, 0.02, 14.0e6, reflected=low, survey=True)
     assert alone.unknowns[1] > 1.5 * alone.unknowns[0]
     found = feed_impedance_under(
-        length_m, 5e-3, 14.0e6, conditions=[(high, 0.0), (low, 0.0)], survey=True
+        length_m, 0.02, 14.0e6, conditions=[(high, 0.0), (low, 0.0)], survey=True
     )
     assert found[1].unknowns.tolist() == alone.unknowns.tolist()
 
