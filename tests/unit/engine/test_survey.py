@@ -136,3 +136,20 @@ def test_tables_of_two_heights_are_refused_for_one_wire() -> None:
     tables = (grounds(10.0).at(14.0e6), grounds(11.0).at(14.1e6))
     with pytest.raises(OutOfRange, match="height_m"):
         feed_impedance(20.0, 1e-3, np.array([14.0e6, 14.1e6]), reflected=tables)
+
+
+def test_a_wire_is_solved_on_until_it_is_solved_under_every_condition() -> None:
+    # Near its anti-resonance the wire is settled early near the ground, and not so on high.
+    wavelength_m = 299_792_458.0 / 14.0e6
+    low = GroundTables(GROUND_CLASSES["average"], 0.02 * wavelength_m, 60.0).at(14.0e6)
+    length_m = 1.85 * wavelength_m
+    early = feed_impedance(length_m, 5e-3, 14.0e6, reflected=low, survey=True)
+    found = feed_impedance_under(
+        length_m,
+        5e-3,
+        14.0e6,
+        conditions=[(low, 0.0), (grounds(20.0).at(14.0e6), 0.0)],
+        survey=True,
+    )
+    assert int(found[0].unknowns) > int(early.unknowns)
+    assert all(bool(each.converged) for each in found)
