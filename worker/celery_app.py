@@ -37,6 +37,7 @@ from service.settings import settings_or_exit
 from service.store import jobs, workers
 from service.store.session import Store, open_store
 from worker.running import PlanFunction, announce, drain, sweep
+from worker.steady_broker import SteadyBroker
 from worker.watchdog import EXIT_DEAF, Watchdog, broker_answers
 
 _log = logging.getLogger(__name__)
@@ -48,7 +49,7 @@ _DRAIN_JOBS: Final = 50
 # Celery asks for the application by name, so this module is an entry point of its own.
 settings = settings_or_exit()
 
-app = Celery("spanwright", broker=settings.redis_url)
+app = Celery("spanwright", broker=settings.redis_url, amqp=SteadyBroker)
 app.conf.update(
     task_ignore_result=True,
     result_backend=None,

@@ -15,6 +15,8 @@ from pathlib import Path
 
 import pytest
 import redis
+from celery import Celery
+from kombu.exceptions import OperationalError
 
 from service.doorbell import Doorbell
 from service.intake import submit
@@ -25,6 +27,7 @@ from tests.service.databases import database, environment, short_lived
 from tests.service.samples import sample_request
 from tests.service.servers import RedisServer
 from tests.service.waiting import in_state, process_at, until
+from worker.steady_broker import SteadyBroker
 
 CHECKOUT = Path(__file__).parents[2]
 COMMAND = "-m celery --app tests.service.celery_as_named worker --pool prefork --concurrency 2"
@@ -180,6 +183,24 @@ def test_a_worker_without_a_broker_says_what_to_set(tmp_path: Path) -> None:
     with celery_workers(settings, tmp_path / "log") as main:
         assert main.wait(20.0) != 0
     assert "SPANWRIGHT_REDIS_URL" in (tmp_path / "log").read_text()
+
+
+def test_a_broker_that_was_away_for_long_is_looked_for_as_often_as_at_first(
+    own_redis: RedisServer, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("kombu.utils.functional.sleep", lambda _seconds: None)
+    url = own_redis.url
+    own_redis.kill()
+    pauses_s: list[float] = []
+    with (
+        Celery(broker=url, amqp=SteadyBroker, set_as_current=False) as app,
+        app.connection_for_read() as connection,
+        pytest.raises(OperationalError),
+    ):
+        connection.clone().ensure_connection(
+            lambda _error, pause_s: pauses_s.append(pause_s), max_retries=20
+        )
+    assert set(pauses_s) == {2.0}
 
 
 # --------------------------------------------------------------------- the bell itself
