@@ -19,8 +19,9 @@ from service.store import figures
 from service.store.figures import Ended
 from service.store.session import Store
 
-#: Read at a time.
+#: Read at a time, and how often at one asking: a large store is added up over several.
 _PAGE: Final = 5000
+_MOST_PAGES: Final = 20
 
 _WAIT_S: Final = (0.1, 0.5, 1.0, 5.0, 15.0, 60.0, 300.0, 900.0, 3600.0, 14400.0, 86400.0)
 _RUN_S: Final = (0.05, 0.1, 0.25, 0.5, 1.0, 2.5, 5.0, 10.0, 30.0, 60.0, 120.0, 300.0, 600.0)
@@ -70,7 +71,7 @@ class EndedTotals:
     _reading: threading.Lock = field(default_factory=threading.Lock)
 
     def read_on(self, store: Store) -> None:
-        """Add what has ended since.
+        """Add what has ended since, or as much of it as does not take long.
 
         Raises
         ------
@@ -78,7 +79,7 @@ class EndedTotals:
             If the store stays away; what was read before stays added.
         """
         with self._reading:
-            while True:
+            for _ in range(_MOST_PAGES):
                 after_us, after_id = self._last
                 page = figures.ended_since(store, after_us=after_us, after_id=after_id, limit=_PAGE)
                 for each in page:

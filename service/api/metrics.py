@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import collections
 from collections.abc import Iterator, Mapping
-from typing import Final
+from typing import Final, get_args
 
 from fastapi import APIRouter, Request, Response
 from prometheus_client import CollectorRegistry, Counter, Histogram, ProcessCollector
@@ -25,7 +25,7 @@ from service.api.change_feed import ChangeFeed
 from service.api.dependencies import StoreHere
 from service.api.ended_totals import EndedTotals, Spread
 from service.api.problems import responses
-from service.contracts.progress import Priority
+from service.contracts.progress import Priority, State
 from service.errors import StoreUnavailable
 from service.store import figures, workers
 from service.store.figures import Depth
@@ -34,6 +34,7 @@ from service.store.session import Store
 router = APIRouter(tags=["health"])
 
 _PLAIN: Final = "text/plain"
+_WAITING_OR_RUNNING: Final[tuple[State, ...]] = ("queued", "running")
 
 
 class RequestFigures:
@@ -116,7 +117,7 @@ class _Queue(Collector):
         carriers = GaugeMetricFamily(
             "spanwright_workers", "Processes that claim jobs and are there", labels=("carrier",)
         )
-        for carrier in ("embedded", "celery", "drain"):
+        for carrier in get_args(workers.Carrier):
             carriers.add_metric((carrier,), alive[carrier])
         yield carriers
         yield CounterMetricFamily(
@@ -137,8 +138,10 @@ def _depth(depth: Depth) -> Iterator[Metric]:
     jobs = GaugeMetricFamily(
         "spanwright_jobs", "Jobs that wait and run", labels=("state", "priority")
     )
-    for (state, priority), number in sorted(depth.by_state.items()):
-        jobs.add_metric((state, priority), number)
+    # None is told as none: what is missing is not known to be nothing.
+    for state in _WAITING_OR_RUNNING:
+        for priority in get_args(Priority):
+            jobs.add_metric((state, priority), depth.by_state.get((state, priority), 0))
     yield jobs
     yield GaugeMetricFamily(
         "spanwright_jobs_claimable",

@@ -8,7 +8,8 @@ to the last it saw, and tells whole states: told twice they do no harm.
 from __future__ import annotations
 
 from datetime import datetime
-from typing import Final
+from functools import lru_cache
+from typing import Any, Final
 
 from sqlalchemy import Select, func, select, tuple_
 from sqlalchemy.orm import Session
@@ -115,13 +116,28 @@ def newest(store: Store, owner: str | None = None) -> int:
     return store.read(work)
 
 
-def _of(
-    owner: str | None, batch_id: str | None, design_id: str | None
-) -> Select[JobRow, str, int | None, str | None]:
-    # Not the whole design: its request is large, and is not told.
-    query = select(JobRow, DesignRow.name, DesignRow.batch_line, DesignRow.answered_by).join(
-        DesignRow, DesignRow.id == JobRow.design_id
-    )
+#: What a change is told from. Not the whole design: its request is large, and is not told.
+_COLUMNS: Final = (
+    JobRow.changed_at,
+    JobRow.design_id,
+    JobRow.owner,
+    DesignRow.name,
+    JobRow.state,
+    JobRow.priority,
+    JobRow.progress,
+    JobRow.step,
+    JobRow.attempts,
+    JobRow.failure,
+    JobRow.started_at,
+    JobRow.finished_at,
+    JobRow.batch_id,
+    DesignRow.batch_line,
+    DesignRow.answered_by,
+)
+
+
+def _of(owner: str | None, batch_id: str | None, design_id: str | None) -> Select[*tuple[Any, ...]]:
+    query = select(*_COLUMNS).join(DesignRow, DesignRow.id == JobRow.design_id)
     if owner is not None:
         query = query.where(JobRow.owner == owner)
     if batch_id is not None:
@@ -131,24 +147,42 @@ def _of(
     return query
 
 
-def _read(store: Store, query: Select[JobRow, str, int | None, str | None]) -> list[Change]:
-    return store.read(lambda session: [_change(*row) for row in session.execute(query)])
+def _read(store: Store, query: Select[*tuple[Any, ...]]) -> list[Change]:
+    return [_change(*row) for row in store.read(lambda session: session.execute(query).all())]
 
 
-def _change(job: JobRow, name: str, batch_line: int | None, answered_by: str | None) -> Change:
+# A reader looks at the last few seconds again and again, and what has not changed is the same.
+@lru_cache(maxsize=10_000)
+def _change(
+    changed_us: int,
+    design_id: str,
+    owner: str,
+    name: str,
+    state: State,
+    priority: int,
+    fraction: float,
+    step: str,
+    attempts: int,
+    failure: str | None,
+    started_at: datetime | None,
+    finished_at: datetime | None,
+    batch_id: str | None,
+    batch_line: int | None,
+    answered_by: str | None,
+) -> Change:
     return Change(
-        changed_us=job.changed_at,
-        id=job.design_id,
-        owner=job.owner,
+        changed_us=changed_us,
+        id=design_id,
+        owner=owner,
         name=name,
-        state=job.state,  # type: ignore[arg-type]  # the table's own check knows the states
-        priority=word_of(job.priority),
-        progress=Progress(fraction=job.progress, step=job.step),
-        attempts=job.attempts,
-        failure=job.failure,
-        started_at=job.started_at,
-        finished_at=job.finished_at,
-        batch_id=job.batch_id,
+        state=state,
+        priority=word_of(priority),
+        progress=Progress(fraction=fraction, step=step),
+        attempts=attempts,
+        failure=failure,
+        started_at=started_at,
+        finished_at=finished_at,
+        batch_id=batch_id,
         batch_line=batch_line,
         answered_by=answered_by,
     )

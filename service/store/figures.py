@@ -6,10 +6,10 @@ from collections import Counter
 from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import datetime
-from typing import Final
+from typing import Any, Final
 
 from sqlalchemy import ColumnElement, TextClause, func, select, tuple_
-from sqlalchemy.orm import Session
+from sqlalchemy.orm import InstrumentedAttribute, Session
 
 from service.contracts.progress import Priority, State
 from service.store.clock import now
@@ -21,6 +21,20 @@ from service.store.tables import JobRow, ResultRow, TallyRow
 
 #: What ended so lately may still be joined by what ended before it and commits later.
 _SETTLED_US: Final = 5_000_000
+
+
+_OF_ENDED: Final[tuple[InstrumentedAttribute[Any], ...]] = (
+    JobRow.changed_at,
+    JobRow.design_id,
+    JobRow.state,
+    JobRow.priority,
+    JobRow.attempts,
+    JobRow.step,
+    JobRow.queued_at,
+    JobRow.started_at,
+    JobRow.finished_at,
+    ResultRow.map_error_percent,
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,7 +94,7 @@ def ended_since(
     def work(session: Session) -> list[Ended]:
         settled = int(now(session).timestamp() * 1e6) - _SETTLED_US
         rows = session.execute(
-            select(JobRow, ResultRow.map_error_percent)
+            select(*_OF_ENDED)
             .outerjoin(ResultRow, ResultRow.design_id == JobRow.design_id)
             .where(
                 JobRow.state.in_(("done", "failed", "cancelled")),
@@ -90,7 +104,7 @@ def ended_since(
             .order_by(JobRow.changed_at, JobRow.design_id)
             .limit(limit)
         )
-        return [_ended(row[0], row[1]) for row in rows]
+        return [_ended(*row) for row in rows]
 
     return store.read(work)
 
@@ -112,17 +126,28 @@ def _add(
         counts[state, word_of(priority)] += number
 
 
-def _ended(job: JobRow, map_error_percent: float | None) -> Ended:
+def _ended(
+    changed_us: int,
+    design_id: str,
+    state: State,
+    priority: int,
+    attempts: int,
+    step: str,
+    queued_at: datetime,
+    started_at: datetime | None,
+    finished_at: datetime | None,
+    map_error_percent: float | None,
+) -> Ended:
     return Ended(
-        changed_us=job.changed_at,
-        design_id=job.design_id,
-        state=job.state,  # type: ignore[arg-type]  # the table's own check knows the states
-        priority=word_of(job.priority),
-        attempts=job.attempts,
-        answered=job.state == "done" and map_error_percent is None,
-        set_aside=job.state == "failed" and job.step == ASIDE_STEP,
-        wait_s=_seconds(job.queued_at, job.started_at),
-        run_s=_seconds(job.started_at, job.finished_at),
+        changed_us=changed_us,
+        design_id=design_id,
+        state=state,
+        priority=word_of(priority),
+        attempts=attempts,
+        answered=state == "done" and map_error_percent is None,
+        set_aside=state == "failed" and step == ASIDE_STEP,
+        wait_s=_seconds(queued_at, started_at),
+        run_s=_seconds(started_at, finished_at),
         map_error_percent=map_error_percent,
     )
 

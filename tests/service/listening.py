@@ -7,7 +7,7 @@ import socket
 import threading
 import time
 from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass, field
 from typing import Any, Self
 
@@ -58,7 +58,7 @@ class Listener:
     comments: int = 0
     heard: list[Heard] = field(default_factory=list)
     ended: bool = False
-    _client: httpx.Client = field(default_factory=lambda: httpx.Client(timeout=_PATIENCE_S))
+    _socket: socket.socket | None = None
     _thread: threading.Thread | None = None
 
     def __enter__(self) -> Self:
@@ -68,7 +68,10 @@ class Listener:
         return self
 
     def __exit__(self, *_: object) -> None:
-        self._client.close()
+        # Closing alone would not wake the thread that reads.
+        if self._socket is not None:
+            with suppress(OSError):
+                self._socket.shutdown(socket.SHUT_RDWR)
 
     def until(self, found: Callable[[Self], object]) -> None:
         until(lambda: found(self), _PATIENCE_S)
@@ -84,7 +87,8 @@ class Listener:
     def _listen(self) -> None:
         given = {} if self.last_event_id is None else {"Last-Event-ID": str(self.last_event_id)}
         try:
-            with self._client.stream("GET", self.url, headers=given) as answer:
+            with httpx.stream("GET", self.url, headers=given, timeout=_PATIENCE_S) as answer:
+                self._socket = answer.extensions["network_stream"].get_extra_info("socket")
                 self.headers = answer.headers
                 self.status = answer.status_code
                 self._read(answer.iter_lines())

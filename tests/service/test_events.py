@@ -410,14 +410,18 @@ def test_a_listener_that_takes_nothing_for_long_is_given_up(
 
 # --------------------------------------------------------------- outages and the end
 def test_streams_outlive_a_store_that_is_away(
-    store: Store, here: str, monkeypatch: pytest.MonkeyPatch
+    store: Store,
+    here: str,
+    monkeypatch: pytest.MonkeyPatch,
+    caplog: pytest.LogCaptureFixture,
 ) -> None:
-    since, away = changes.since, threading.Event()
+    since, away, failed = changes.since, threading.Event(), [0]
 
     def failing(*given: object, **named: object) -> list[Change]:
-        if not away.is_set():
-            away.set()
+        if failed[0] < 3:
+            failed[0] += 1
             raise StoreUnavailable("invented")
+        away.set()
         return since(*given, **named)  # type: ignore[arg-type]  # passed on as it came
 
     design_id = single(store, "one")
@@ -427,6 +431,8 @@ def test_streams_outlive_a_store_that_is_away(
         jobs.cancel(store, design_id)
         listener.until(lambda it: it.ended)
         assert listener.states(design_id) == ["queued", "cancelled"]
+    told = [each for each in caplog.records if "no events" in each.getMessage()]
+    assert [each.levelname for each in told] == ["WARNING"]
 
 
 def test_a_server_that_stops_ends_its_streams(app: FastAPI) -> None:
