@@ -183,3 +183,32 @@ def test_a_wire_that_cannot_be_mapped_over_frequency_is_refused() -> None:
     rough = replace(space, wires=(WireOffer(OpenLine(noise=0.02)),))
     with pytest.raises(NotConverged, match="impedance map"):
         appraise(rough, (Pick(0, 1.0, 20.31),), (maps,))
+
+
+@dataclass
+class LimitedLine(OpenLine):
+    """An open line that holds no further than its model says, as a solver does."""
+
+    longest_wavelengths: float = 2.0
+
+    def solve(self, length_m: FloatArray, frequency_hz: FloatArray) -> Solved:
+        waves = length_m * frequency_hz / C_M_PER_S
+        assert np.all(waves <= self.longest_wavelengths * (1.0 + 1e-9))
+        return super().solve(length_m, frequency_hz)
+
+
+def test_wires_looked_at_together_are_each_swept_over_their_own_range() -> None:
+    space = space_of(site_longest_m=27.0, wires=(WireOffer(LimitedLine()),))
+    together = appraised(space, Pick(0, 1.0, 7.1), Pick(0, 1.0, 20.31))
+    for length_m, look in zip((7.1, 20.31), together, strict=True):
+        (alone,) = appraised(space, Pick(0, 1.0, length_m))
+        assert np.array_equal(look.sweep.frequency_hz, alone.sweep.frequency_hz)
+        assert look.sweep.impedance_ohm == pytest.approx(alone.sweep.impedance_ohm, rel=1e-3)
+
+
+def test_a_wire_is_not_asked_for_more_than_its_model_holds_for_the_sake_of_another() -> None:
+    # At 1.05 times 21.45 MHz the longer wire would be 2.03 wavelengths.
+    space = space_of(site_longest_m=27.0, wires=(WireOffer(LimitedLine()),))
+    short, long = appraised(space, Pick(0, 1.0, 7.1), Pick(0, 1.0, 26.9))
+    assert float(short.sweep.frequency_hz[-1]) == pytest.approx(1.05 * 21.45e6)
+    assert float(long.sweep.frequency_hz[-1]) == pytest.approx(2.0 * C_M_PER_S / 26.9)
