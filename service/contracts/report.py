@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from typing import Literal
 
+from service.contracts.exposure import BandExposure
+from service.contracts.hanging import HungSpan
 from service.contracts.quantities import Contract
 from service.contracts.radiation import CurrentAlong, Radiation
 
@@ -50,11 +52,16 @@ class Matching(Contract):
 
 
 class FeedStress(Contract):
-    """Voltage and current at the feed point at the power of the request, band centre."""
+    """Voltage and current at the power of the request, band centre.
+
+    At the feed point, and against earth at both ends: first the one that ``feed_fraction`` counts
+    from.
+    """
 
     power_w: float
     voltage_peak_v: float
     current_rms_a: float
+    ends_peak_v: tuple[float, float] | None = None
 
 
 class BandReport(Contract):
@@ -73,6 +80,7 @@ class BandReport(Contract):
     matching: Matching | None = None
     current: CurrentAlong | None = None
     radiation: Radiation | None = None
+    exposure: BandExposure | None = None
 
 
 class ResonanceLine(Contract):
@@ -103,7 +111,7 @@ class Provenance(Contract):
 
 
 class FeedReport(Contract):
-    """The feed-impedance report of one candidate."""
+    """The feed-impedance report of one candidate, and how it would hang."""
 
     rank: int
     length_m: float
@@ -119,3 +127,4 @@ class FeedReport(Contract):
     sweep: tuple[ReportPoint, ...]
     provenance: Provenance
     cautions: tuple[str, ...]
+    hanging: HungSpan | None = None

@@ -9,7 +9,9 @@ from typing import Annotated, Final, Literal, Self
 from pydantic import Field, StringConstraints, ValidationError, field_validator, model_validator
 
 from service.contracts.bands import MOST_BANDS, Band, check_names_differ, expand_bands
+from service.contracts.exposure import ExposureTerms
 from service.contracts.feed import Feed
+from service.contracts.hanging import Hanging
 from service.contracts.quantities import Contract, LengthM, PowerW, wavelength_m
 from service.contracts.refusals import refusal_of, rule_broken
 from service.contracts.station_site import Site
@@ -79,7 +81,8 @@ class DesignRequest(Contract):
     ``largest_set`` asks for sets of up to so many dipoles; without it sets are proposed only
     where no single wire serves all required bands. ``rank_by`` of ``worst-case`` ranks by how
     wires hold up under the ``tolerances``. ``lengths`` bounds the lengths searched, within what
-    the site can take.
+    the site can take. ``hanging`` and ``exposure`` change no ranking: they say what a report
+    tells of sag and strength, and of how far people must stay away.
     """
 
     name: Annotated[str, StringConstraints(strip_whitespace=True, max_length=120)] = (
@@ -95,6 +98,8 @@ class DesignRequest(Contract):
     rank_by: Literal["nominal", "worst-case"] = "nominal"
     tolerances: Tolerances | None = Tolerances()
     lengths: LengthBounds | None = None
+    hanging: Hanging = Hanging()
+    exposure: ExposureTerms = ExposureTerms()
 
     @field_validator("bands", mode="before")
     @classmethod
@@ -107,6 +112,7 @@ class DesignRequest(Contract):
         self._check_span()
         self._check_lengths()
         self._check_heights()
+        self._check_rise()
         self._check_diameters()
         self._check_size()
         self._check_worst_case()
@@ -221,6 +227,19 @@ class DesignRequest(Contract):
                 "in free space, or leave out the highest band.",
                 field="site.height_m",
                 value=max(heights_m),
+            )
+
+    def _check_rise(self) -> None:
+        rise_m = self.hanging.rise_m
+        most_m = min((0.5 * self.site.span_m, *(2.0 * each for each in self.site.heights_m())))
+        if abs(rise_m) > most_m:
+            raise rule_broken(
+                "rise-too-steep",
+                f"supports of {rise_m:g} m difference do not suit a span of "
+                f"{self.site.span_m:g} m at its height.",
+                f"Give a rise of at most {most_m:g} m: half the span, and twice the height.",
+                field="hanging.rise_m",
+                value=rise_m,
             )
 
     def _check_diameters(self) -> None:

@@ -36,8 +36,10 @@ from worker.search.scoring import FULLY_SERVED
 from worker.search.space import ComplexArray, FloatArray
 from worker.search.steadiness import Held
 from worker.search.trade_off import Gain
+from worker.translation.exposing import end_voltages_v, exposure_of
 from worker.translation.pictures import BandPicture
 from worker.translation.provenance import provenance_of
+from worker.translation.rigging import hung_span_of
 from worker.translation.wires import Way
 from worker.translation.wording import (
     CAUTIONS,
@@ -140,6 +142,7 @@ def feed_report_of(
         sweep=_points(appraisal.sweep, reference_ohm),
         provenance=provenance_of(request, look.way, appraisal),
         cautions=CAUTIONS,
+        hanging=hung_span_of(request, look.way, appraisal.pick.length_m),
     )
 
 
@@ -225,10 +228,12 @@ def _band_report(
             power_w=request.power_w,
             voltage_peak_v=_rounded(math.sqrt(2.0) * abs(at_feed) * current_a, 1),
             current_rms_a=_rounded(current_a, 3),
+            ends_peak_v=end_voltages_v(picture.solved, request.power_w),
         ),
         matching=_matching(band, ratio, request),
         current=picture.current,
         radiation=picture.radiation,
+        exposure=exposure_of(request, picture.solved, band.goal.low_hz, band.goal.high_hz),
     )
 
 

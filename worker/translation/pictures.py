@@ -23,10 +23,11 @@ _FLOOR_DBI: Final = -60.0
 
 @dataclass(frozen=True, slots=True)
 class BandPicture:
-    """What is drawn of one wire on one band."""
+    """What is drawn of one wire on one band, and the solution it is drawn from."""
 
     current: CurrentAlong
     radiation: Radiation | None
+    solved: HungPattern
 
 
 def pictures_of(
@@ -60,6 +61,7 @@ def _picture(wire: HungWire, found: HungPattern) -> BandPicture:
         radiation=None
         if found.pattern is None
         else _radiation(found.pattern, ground_takes_power=takes_power),
+        solved=found,
     )
 
 

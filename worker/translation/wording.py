@@ -31,14 +31,18 @@ CAUTIONS: Final = (
         "reach of people and animals, and off when anyone is near."
     ),
     (
-        "People must stay outside the exposure distance of the limits in force where you are; this "
-        "report does not compute it."
+        "People must stay further from every part of the wire than the exposure distance of the "
+        "limits in force where you are. The distances told here come from formulas for a wire by "
+        "itself, and metal nearby may raise the field: where it matters, have it measured."
     ),
     (
         "Disconnect and earth the feed line against lightning, and follow local codes for "
         "protection and bonding."
     ),
-    "Have masts, trees and tension judged by someone qualified; wire under tension can whip.",
+    (
+        "Have masts, trees and tension judged by someone qualified; wire under tension can whip. "
+        "Strengths told here are handbook figures of new wire and rope; knots may halve a rope's."
+    ),
     "Local codes and licensed practice come before anything written here.",
 )
 

@@ -22,7 +22,7 @@ FloatArray = NDArray[np.float64]
 _SHORTEST_TAIL_M: Final = 1e-3
 #: Where the ropes' length is looked for: this much shorter and longer than just taut, of the span.
 _TAUTEST: Final = 0.1
-_DOUBLINGS: Final = 24
+_DOUBLINGS: Final = 18
 #: Pieces of the string: rope, near leg, far leg, rope. The slope jumps only where legs meet, so
 #: what is lowest is a place of theirs where they run level, or one of their ends.
 _ROPES: Final = (0, 3)
@@ -169,7 +169,7 @@ def string_up(
     ----------
     span
     tension_n
-        Pull along the span wanted, 0.1 to 1e7 N; nearly that in a halyard.
+        Pull along the span wanted, 0.01 to 1e7 N; nearly that in a halyard.
     sag_m
         Or the sag wanted, 1e-3 to 1000 m.
 
@@ -183,7 +183,7 @@ def string_up(
     require_within("tension_n and sag_m given", (tension_n, sag_m).count(None), 1, 1)
     still = Weather(span.strung_c)
     if sag_m is None:
-        pull_n = float(require_within("tension_n", tension_n or 0.0, 0.1, 1e7, "N"))
+        pull_n = float(require_within("tension_n", tension_n or 0.0, 0.01, 1e7, "N"))
         return _made_fast(
             span, lambda tail_m: log(pull_n / _string(span, tail_m, still).horizontal_pull_n)
         )

@@ -22,7 +22,21 @@ FloatArray = NDArray[np.float64]
 _MOST_STEPS: Final = 200
 #: The far end is met within this part of the distance between the ends.
 _CLOSURE: Final = 1e-11
+#: And no further off than this where rounding allows no better.
+_ROUNDED: Final = 1e-7
 _HALVINGS: Final = 60
+#: Parts of the energy that are more than its rounding.
+_TELLING: Final = 1e-9
+#: Where the upper triangle that `_run` gives after the end belongs.
+_SYMMETRIC: Final = np.array([[3, 4, 5], [4, 6, 7], [5, 7, 8]])
+_RANGES: Final = (
+    ("length_m", 1e-6, 1e5, "m"),
+    ("weight_n_per_m", 1e-6, 1e6, "N/m"),
+    ("wind_n_per_m", -1e6, 1e6, "N/m"),
+    ("stiffness_n", 1e-3, 1e12, "N"),
+    ("end_weight_n", 0.0, 1e9, "N"),
+    ("end_wind_n", -1e9, 1e9, "N"),
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,12 +64,11 @@ class Piece:
 
     def __post_init__(self) -> None:
         """Refuse what the closed form has no answer for."""
-        require_within("length_m", self.length_m, 1e-6, 1e5, "m")
-        require_within("weight_n_per_m", self.weight_n_per_m, 1e-6, 1e6, "N/m")
-        require_within("wind_n_per_m", self.wind_n_per_m, -1e6, 1e6, "N/m")
-        require_within("stiffness_n", self.stiffness_n, 1e-3, 1e12, "N")
-        require_within("end_weight_n", self.end_weight_n, 0.0, 1e9, "N")
-        require_within("end_wind_n", self.end_wind_n, -1e9, 1e9, "N")
+        for quantity, low, high, unit in _RANGES:
+            value = getattr(self, quantity)
+            # Compared here, as an array's worth of checking a piece is a third of hanging it.
+            if not low <= value <= high:
+                raise OutOfRange(quantity, value, low, high, unit)
 
     @property
     def load_n_per_m(self) -> FloatArray:
@@ -104,8 +117,12 @@ class LooseString:
     def place_m(self, index: int, from_start_m: ArrayLike) -> FloatArray:
         """Positions, shape (n, 3) in m, at unstretched places (n,) along one piece."""
         places = np.atleast_1d(np.asarray(from_start_m, dtype=np.float64))
-        pull, piece = self.start_pull_n[index], self.pieces[index]
-        runs = [_run(piece, pull, float(each))[0] if each > 0.0 else np.zeros(3) for each in places]
+        x, y, z = self.start_pull_n[index].tolist()
+        piece = self.pieces[index]
+        runs = [
+            _run(piece, (x, y, z), each)[0] if each > 0.0 else (0.0, 0.0, 0.0)
+            for each in places.tolist()
+        ]
         return np.asarray(self.start_m[index] + np.array(runs))
 
     def where_slope_is(self, index: int, slope: float) -> float:
@@ -163,17 +180,19 @@ def hang(pieces: Sequence[Piece], distance_m: float, rise_m: float = 0.0) -> Loo
         end, compliance, energy = _end_of(pieces, pull)
         miss = end - target
         if float(np.linalg.norm(miss)) <= _CLOSURE * span:
-            return _hung(tuple(pieces), pull)
+            break
         step = np.linalg.solve(compliance, -miss)
-        pull = _damped(
-            pieces, target, pull, step, energy - float(pull @ target), float(miss @ step)
-        )
+        tried = _damped(pieces, target, pull, step, energy - float(pull @ target), miss)
+        if tried is None:
+            break
+        pull = tried
     end, _, _ = _end_of(pieces, pull)
     error_m = float(np.linalg.norm(end - target))
-    # Rounding may keep a very taut string from the last digits, which no rigger could tell.
-    if error_m <= 1e3 * _CLOSURE * span:
-        return _hung(tuple(pieces), pull)
-    raise NotConverged("far end of the string", error_m, _CLOSURE * span, "m")
+    # Rounding keeps the last digits from a very taut string, or one with a far greater load on
+    # one piece than on another; no rigger could tell them.
+    if error_m > _ROUNDED * span:
+        raise NotConverged("far end of the string", error_m, _ROUNDED * span, "m")
+    return _hung(tuple(pieces), pull)
 
 
 def _first_guess(pieces: Sequence[Piece], target: FloatArray) -> FloatArray:
@@ -194,57 +213,84 @@ def _damped(
     pull: FloatArray,
     step: FloatArray,
     energy: float,
-    slope: float,
-) -> FloatArray:
+    miss: FloatArray,
+) -> FloatArray | None:
+    """The force after as much of a step as brings it nearer; None where nothing does."""
+    slope, missed_m = float(miss @ step), float(np.linalg.norm(miss))
     part = 1.0
-    allowed = 1e-13 * abs(energy)
     for _ in range(_HALVINGS):
-        tried = pull + part * step
+        tried: FloatArray = pull + part * step
         if tried[0] > 0.0:
-            reached = _end_of(pieces, tried)[2] - float(tried @ target)
-            if reached <= energy + 1e-4 * part * slope + allowed:
+            end, _, reached = _end_of(pieces, tried)
+            # Near the answer the energy falls by less than its rounding, but the miss still tells.
+            if -part * slope > _TELLING * abs(energy):
+                better = reached - float(tried @ target) <= energy + 1e-4 * part * slope
+            else:
+                better = float(np.linalg.norm(end - target)) < missed_m
+            if better:
                 return tried
         part *= 0.5
-    return pull
+    return None
 
 
 def _end_of(pieces: Sequence[Piece], pull: FloatArray) -> tuple[FloatArray, FloatArray, float]:
     """Far end (3,), its change with the force (3, 3), and the complementary energy."""
-    end, compliance, energy = np.zeros(3), np.zeros((3, 3)), 0.0
+    x, y, z = pull.tolist()
+    runs, energy = [], 0.0
     for piece in pieces:
-        run, change, own = _run(piece, pull, piece.length_m)
-        end, compliance, energy = end + run, compliance + change, energy + own
-        pull = pull - piece.length_m * piece.load_n_per_m
+        run, change, own = _run(piece, (x, y, z), piece.length_m)
+        runs.append((*run, *change))
+        energy += own
         # The energy is a function of the force at the near end: loads between only shift it.
-        pull = pull - piece.end_load_n
-    return end, compliance, energy
+        y -= piece.length_m * piece.wind_n_per_m + piece.end_wind_n
+        z += piece.length_m * piece.weight_n_per_m + piece.end_weight_n
+    total = np.sum(runs, axis=0)
+    return total[:3], total[_SYMMETRIC], energy
 
 
-def _run(piece: Piece, pull: FloatArray, length_m: float) -> tuple[FloatArray, FloatArray, float]:
-    """What a piece adds up to, over so much of its length, to end, compliance and energy."""
-    load = piece.load_n_per_m
-    size = hypot(piece.weight_n_per_m, piece.wind_n_per_m)
-    down = load / size
-    first = float(pull @ down)
+def _run(
+    piece: Piece, pull: tuple[float, float, float], length_m: float
+) -> tuple[tuple[float, ...], tuple[float, ...], float]:
+    """What a piece adds up to, over so much of its length: end, compliance and energy.
+
+    Along, across, up; of the compliance the upper triangle by rows. In plain numbers, as it is
+    called some hundred times a span and arrays of three take ten times as long.
+    """
+    px, py, pz = pull
+    size = hypot(piece.wind_n_per_m, piece.weight_n_per_m)
+    # Along the load, and what of the force stands across it.
+    dy, dz = piece.wind_n_per_m / size, -piece.weight_n_per_m / size
+    first = py * dy + pz * dz
     last = first - size * length_m
-    across = pull - first * down
-    least = hypot(*across.tolist())
+    ax, ay, az = px, py - first * dy, pz - first * dz
+    least = hypot(ax, ay, az)
     tension_first, tension_last = hypot(first, least), hypot(last, least)
-    # Integrals over the length of 1/T, u/T, T, 1/T^3, u/T^3 and u^2/T^3, u the part along `down`.
+    # Integrals over the length of 1/T, u/T, T, 1/T^3, u/T^3 and u^2/T^3, u the part along the load.
     inverse = (asinh(first / least) - asinh(last / least)) / size
     along = (tension_first - tension_last) / size
     whole = 0.5 * ((first * tension_first - last * tension_last) / size + least * least * inverse)
     cubed = (first / tension_first - last / tension_last) / (size * least * least)
     along_cubed = (1.0 / tension_last - 1.0 / tension_first) / size
     square_cubed = inverse - least * least * cubed
-    middle = pull - 0.5 * length_m * load
-    end = across * inverse + down * along + middle * length_m / piece.stiffness_n
-    outer = np.outer(across, across) * cubed + np.outer(down, down) * square_cubed
-    mixed = np.outer(across, down)
-    compliance = np.eye(3) * (inverse + length_m / piece.stiffness_n)
-    compliance -= outer + (mixed + mixed.T) * along_cubed
+    stretch = length_m / piece.stiffness_n
+    half = 0.5 * length_m
+    my, mz = py - half * piece.wind_n_per_m, pz + half * piece.weight_n_per_m
+    end = (
+        ax * inverse + px * stretch,
+        ay * inverse + dy * along + my * stretch,
+        az * inverse + dz * along + mz * stretch,
+    )
+    own = inverse + stretch
+    compliance = (
+        own - ax * ax * cubed,
+        -(ax * ay * cubed + ax * dy * along_cubed),
+        -(ax * az * cubed + ax * dz * along_cubed),
+        own - (ay * ay * cubed + dy * dy * square_cubed + 2.0 * ay * dy * along_cubed),
+        -(ay * az * cubed + dy * dz * square_cubed + (ay * dz + az * dy) * along_cubed),
+        own - (az * az * cubed + dz * dz * square_cubed + 2.0 * az * dz * along_cubed),
+    )
     # Integral of T^2 by Simpson's rule, exact for a parabola.
-    middle_squared = float(middle @ middle)
+    middle_squared = px * px + my * my + mz * mz
     squares = length_m / 6.0 * (tension_first**2 + 4.0 * middle_squared + tension_last**2)
     return end, compliance, whole + 0.5 * squares / piece.stiffness_n
 
@@ -253,6 +299,7 @@ def _hung(pieces: tuple[Piece, ...], pull: FloatArray) -> LooseString:
     pulls, places = [], [np.zeros(3)]
     for piece in pieces:
         pulls.append(pull)
-        places.append(places[-1] + _run(piece, pull, piece.length_m)[0])
+        x, y, z = pull.tolist()
+        places.append(places[-1] + _run(piece, (x, y, z), piece.length_m)[0])
         pull = pull - piece.length_m * piece.load_n_per_m - piece.end_load_n
     return LooseString(pieces, np.array(pulls), np.array(places))
