@@ -21,7 +21,7 @@ class ExposureTerms(Contract):
     """
 
     duty_percent: Annotated[float, Field(ge=0.1, le=100.0)] = 100.0
-    standard: StandardName | Literal["both"] = "both"
+    standard: Literal["fcc-1.1310", "icnirp-2020", "both"] = "both"
 
     def standards(self) -> tuple[StandardName, ...]:
         """The standards to tell of."""
