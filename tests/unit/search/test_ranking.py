@@ -105,6 +105,17 @@ def test_a_wire_off_the_centre_uses_a_band_on_its_second_order(centred: bool, or
     assert top.pick == Pick(0, 4.0, 19.5)
 
 
+def test_of_two_optima_of_one_kind_the_better_contends() -> None:
+    # Both a half wave long on the band, served whole, with a worse length between them.
+    lengths_m = np.linspace(9.6, 10.0, 5)
+    swr = np.array([[1.9, 1.4, 1.8, 1.2, 1.9]])
+    scored = Score(np.ones((1, 5)), swr, np.zeros((1, 5)))
+    band = BandGoal("20m", 14.9e6, 15.0e6, required=True, weight=1.0, swr_limit=2.0)
+    offer = WireOffer(OpenLine())
+    (top,) = contenders_of(scored, merit(scored, (band,)), lengths_m, (band,), (0, offer), 1.0)
+    assert top.pick == Pick(0, 1.0, float(lengths_m[3]))
+
+
 def contender(place: float, kind: tuple[tuple[int, int], ...]) -> Contender:
     return Contender((place,), kind, Pick(0, 1.0, place))
 
