@@ -42,6 +42,7 @@ def main() -> None:
     parser.add_argument("--seed", type=int, default=secrets.randbelow(10_000))
     parser.add_argument("--faults", type=int, default=_FAULTS_OF_EACH, help="of each kind")
     parser.add_argument("--lease-s", type=float, default=5.0)
+    parser.add_argument("--job-s", type=float, default=0.2, help="of a core, in the mean")
     given = parser.parse_args()
     out = Console(width=100)
     kept = [_kept(out, form, given) for form in (*_FORMS, "sender") if given.form in (form, "all")]
@@ -56,7 +57,12 @@ def _kept(out: Console, form: str, given: argparse.Namespace) -> bool:
         violations = _send(out, _REQUESTS_A_JOB * given.jobs, given.seed, folder)
     else:
         course = Course(
-            cast("Form", form), given.jobs, given.seed, given.faults, lease_s=given.lease_s
+            cast("Form", form),
+            given.jobs,
+            given.seed,
+            given.faults,
+            lease_s=given.lease_s,
+            job_s=given.job_s,
         )
         report = run(course, folder)
         _show(out, report)

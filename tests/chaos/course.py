@@ -55,6 +55,8 @@ class Course:
     #: Longer than a worker drains for one ring, and than a store is patient.
     longest_outage_s: float = 35.0
     most_waiting: int = 60
+    #: What a job takes of a core, in the mean.
+    job_s: float = 0.2
     workers: int = 3
     processes: int = 2
 
@@ -115,7 +117,13 @@ def run(course: Course, folder: Path) -> Report:
             store = stack.enter_context(closing(open_store(settings)))
             doorbell = stack.enter_context(closing(Doorbell(settings)))
             submitter = Submitter(
-                store, doorbell, record, course.jobs, course.most_waiting, course.seed
+                store,
+                doorbell,
+                record,
+                course.jobs,
+                course.most_waiting,
+                course.seed,
+                course.job_s,
             )
             with workers:
                 started_s = time.monotonic()

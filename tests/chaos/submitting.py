@@ -40,10 +40,12 @@ class Submitter(threading.Thread):
         number: int,
         most_waiting: int,
         seed: int,
+        job_s: float,
     ) -> None:
         super().__init__(name="submitter", daemon=True)
         self._store, self._doorbell, self._record = store, doorbell, record
         self._most_waiting = most_waiting
+        self._job_s = job_s
         self._number, self._chance = number, random.Random(seed)  # noqa: S311  # no secret
         #: Set by whoever has stopped a server.
         self.server_away = threading.Event()
@@ -82,7 +84,8 @@ class Submitter(threading.Thread):
             sent += size
 
     def _request(self, index: int) -> DesignRequest:
-        return sample_request(name=f"work {self._chance.uniform(0.1, 0.3):.3f} #{index}")
+        core_s = self._job_s * self._chance.uniform(0.5, 1.5)
+        return sample_request(name=f"work {core_s:.3f} #{index}")
 
     def _send(self, requests: list[DesignRequest]) -> None:
         key = f"chaos {requests[0].name}"
