@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from worker.engine.constants import FREE_SPACE_IMPEDANCE_OHM, SPEED_OF_LIGHT_M_PER_S
 from worker.engine.errors import OutOfRange
 from worker.engine.exposure import (
+    KeepAway,
     Population,
     Source,
     Standard,
@@ -244,13 +245,14 @@ def test_pauses_do_not_help_where_the_limit_is_not_averaged() -> None:
     place_m = np.linspace(-half_m, half_m, 41)
     current_a = (10.0 * np.cos(0.5 * pi * place_m / half_m)).astype(np.complex128)
 
-    def distance_m(duty_fraction: float) -> float:
+    def found(duty_fraction: float) -> KeepAway:
         given = Source(place_m, current_a, 3.6e6, 100.0 * HALF_WAVE_W, duty_fraction)
-        icnirp = keep_away(given, 3.5e6, 3.8e6, (ICNIRP,))
-        return icnirp[0].distance_m
+        return keep_away(given, 3.5e6, 3.8e6, (ICNIRP,))[0]
 
     # 83 V/m at once against 300 / 3.8^0.7 = 117.8 V/m on average.
-    assert distance_m(0.25) == pytest.approx(distance_m(1.0))
+    whole, part = found(1.0), found(0.25)
+    assert part.far_field_m == pytest.approx(whole.far_field_m)
+    assert part.near_field_m == pytest.approx(whole.near_field_m)
 
 
 def test_close_to_its_ends_a_wire_asks_for_more_than_the_far_field_tells() -> None:

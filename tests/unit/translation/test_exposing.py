@@ -11,8 +11,9 @@ import pytest
 from service.contracts.exposure import BandExposure
 from service.contracts.report import BandReport, FeedReport
 from service.contracts.request import parse_request
-from worker.engine.exposure.keep_away import equivalent_isotropic_factor
+from worker.engine.exposure import KeepAway, Population, Standard, limits_at
 from worker.planning import plan
+from worker.translation.exposing import _distance
 
 
 @cache
@@ -81,21 +82,36 @@ def test_one_standard_alone_is_told_where_asked_for() -> None:
 
 
 def test_the_far_field_distance_follows_from_the_gain_stored_with_it() -> None:
-    found = band(standard="fcc-1.1310")
+    fields = {
+        "bands": ["amateur-region-1: 20m"],
+        "site": {"span_m": 12.0, "height_m": 12.0, "ground": "salt-water"},
+        "stock": {"conductors": [{"awg": 12}]},
+        "candidates": 1,
+        "tolerances": None,
+        "lengths": {"low_m": 10.1, "high_m": 10.1},
+    }
+    found = plan(parse_request(json.dumps(fields)), lambda _part, _step: None).reports[0].bands[0]
     assert found.radiation is not None
     assert found.exposure is not None
     public = found.exposure.distances[0]
-    factor = equivalent_isotropic_factor(found.radiation.gain_dbi)
+    # More than 6.23 dBi, a half wave's 2.15 dBi with the usual factor of the ground.
+    assert found.radiation.gain_dbi > 7.0
     # 824 V/m over the MHz of the upper edge, the strictest of the band.
-    by_hand_m = sqrt(30.0 * 100.0 * factor) / (824.0 / found.high.frequency_mhz)
-    assert public.electric_v_per_m == pytest.approx(824.0 / found.high.frequency_mhz, rel=1e-4)
+    limit = 824.0 / found.high.frequency_mhz
+    assert public.electric_v_per_m == pytest.approx(limit, rel=1e-4)
+    by_hand_m = sqrt(30.0 * 100.0 * 10.0 ** (0.1 * found.radiation.gain_dbi)) / limit
     assert public.far_field_m == pytest.approx(by_hand_m, abs=0.02)
 
 
-def test_the_distance_is_the_larger_of_both_and_never_rounded_down() -> None:
+def test_no_distance_is_rounded_down() -> None:
+    limits = limits_at(Standard.FCC, Population.PUBLIC, 14.2e6)
+    told = _distance(KeepAway(Standard.FCC, Population.PUBLIC, limits, 1.2301, 0.5), 10.0)
+    assert (told.far_field_m, told.near_field_m, told.distance_m) == (1.24, 0.5, 1.24)
+
+
+def test_the_distance_is_the_larger_of_both() -> None:
     for each in exposure(power_w=1500.0).distances:
         assert each.distance_m == max(each.far_field_m, each.near_field_m)
-        assert each.distance_m == round(each.distance_m, 2)
 
 
 def test_pauses_count_in_the_average_but_not_where_nothing_is_averaged() -> None:
