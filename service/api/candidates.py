@@ -13,7 +13,7 @@ from service.contracts.candidate import Candidate
 from service.contracts.quantities import Contract
 from service.contracts.report import FeedReport
 from service.errors import ResultNotReady
-from service.exports import csv_table
+from service.exports import csv_table, touchstone
 from service.store import designs
 
 router = APIRouter(prefix="/v1/designs/{design_id}/candidates", tags=["candidates"])
@@ -70,5 +70,32 @@ def read_report_as_csv(
         request,
         sheet,
         csv_table.MEDIA_TYPE,
+        {"Content-Disposition": f'attachment; filename="{name}"'},
+    )
+
+
+@router.get(
+    "/{rank}/report.s1p",
+    response_class=Response,
+    responses=_OF_RANK
+    | {
+        200: {
+            "description": "S11 over frequency on the line side of the transformer: MHz, real "
+            "and imaginary part",
+            "content": {"text/plain": {"schema": {"type": "string"}}},
+        }
+    },
+)
+def read_report_as_touchstone(
+    request: Request, store: StoreHere, design_id: DesignId, rank: Rank
+) -> Response:
+    """Give the sweep and the bands of the same report as a one-port Touchstone 1.1 file."""
+    report = designs.report(store, design_id, rank)
+    text = touchstone.touchstone(report, designs.get(store, design_id).name)
+    name = f"feed-impedance-{design_id}-{rank}.s1p"
+    return answer_tagged(
+        request,
+        text,
+        touchstone.MEDIA_TYPE,
         {"Content-Disposition": f'attachment; filename="{name}"'},
     )
