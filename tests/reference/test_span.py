@@ -209,6 +209,27 @@ def test_hard_drawn_copper_breaks_at_the_loads_of_the_tables(inch: float, pounds
     )
 
 
+# ASTM B227, table 1, read: inch, and least psi of grades 40 HS and 30 HS.
+CLAD_ROWS = [
+    (0.2043, 108_000, 120_000),
+    (0.1620, 118_000, 130_000),
+    (0.1285, 128_000, 140_000),
+    (0.1019, 138_600, 151_000),
+    (0.0808, 115_000, 120_000),
+    (0.0640, 125_000, 130_000),
+    (0.0403, 130_000, 135_000),
+]
+
+
+@pytest.mark.parametrize(("inch", "forty_psi", "thirty_psi"), CLAD_ROWS)
+def test_copper_clad_steel_is_promised_no_more_than_the_standard_does(
+    inch: float, forty_psi: float, thirty_psi: float
+) -> None:
+    for name, psi in (("copper-clad-steel-40", forty_psi), ("copper-clad-steel-30", thirty_psi)):
+        stress_pa = STRENGTHS[name].breaking_stress_pa(inch * INCH_M)
+        assert 0.75 * psi * 6894.76 < stress_pa <= psi * 6894.76
+
+
 @pytest.mark.parametrize(("inch", "pounds"), [(0.0641, 12.43), (0.0808, 19.77), (0.1019, 31.43)])
 def test_copper_weighs_as_the_wire_tables_say(inch: float, pounds: float) -> None:
     # Pounds per 1000 ft, ASTM B258 sizes at 8.89 g/cm³.

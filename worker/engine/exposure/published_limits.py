@@ -6,8 +6,8 @@ References
 ICNIRP, "Guidelines for limiting exposure to electromagnetic fields (100 kHz to 300 GHz)", Health
 Physics 118(5), 2020, table 5 (whole body, averaged over 30 minutes); and its limits against
 stimulation of nerves from 100 kHz to 10 MHz, which are not averaged, as in ICNIRP 2010 ("1 Hz to
-100 kHz", Health Physics 99(6), tables 3 and 4: 27 and 100 µT, here as A/m). Read from memory and
-compared with printed copies of the tables.
+100 kHz", Health Physics 99(6), tables 3 and 4: 27 and 100 µT, here as A/m). From memory; the
+American power densities and the limits for nerves were compared with copies of the tables.
 """
 
 from __future__ import annotations
