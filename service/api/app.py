@@ -11,6 +11,7 @@ from fastapi import FastAPI
 from service.api import (
     band_lists,
     batches,
+    bills,
     candidates,
     check,
     designs,
@@ -80,6 +81,7 @@ def create_app(
         batches,
         events,
         candidates,
+        bills,
         check,
         band_lists,
         health,

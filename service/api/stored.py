@@ -15,10 +15,10 @@ def answer_stored(request: Request, contract: BaseModel) -> Response:
 
 
 def answer_tagged(
-    request: Request, text: str, media_type: str, headers: dict[str, str] | None = None
+    request: Request, content: str | bytes, media_type: str, headers: dict[str, str] | None = None
 ) -> Response:
-    """Any text with its ETag (RFC 9110, section 8.8.3); 304 where the reader has it already."""
-    body = text.encode()
+    """Anything with its ETag (RFC 9110, section 8.8.3); 304 where the reader has it already."""
+    body = content.encode() if isinstance(content, str) else content
     tag = f'"{hashlib.sha256(body).hexdigest()[:32]}"'
     tagged = {"ETag": tag} | (headers or {})
     if _has_it_already(request, tag):

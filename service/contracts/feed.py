@@ -27,6 +27,19 @@ LineName = Literal[
 LINE_NAMES: Final[tuple[str, ...]] = get_args(LineName)
 
 
+def is_coaxial(name: str) -> bool:
+    """Whether a feed line is coaxial; the others are balanced."""
+    return name.startswith("rg-")
+
+
+def line_in_words(name: str) -> str:
+    """A feed line by its designation, or by its construction and impedance."""
+    if is_coaxial(name):
+        return name.upper()
+    construction, _, impedance_ohm = name.rpartition("-")
+    return f"{impedance_ohm} Ω {construction.replace('-', ' ')}"
+
+
 class FeedLine(Contract):
     """The line from the feed point (or its transformer) to the transmitter."""
 

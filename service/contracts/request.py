@@ -82,7 +82,8 @@ class DesignRequest(Contract):
     where no single wire serves all required bands. ``rank_by`` of ``worst-case`` ranks by how
     wires hold up under the ``tolerances``. ``lengths`` bounds the lengths searched, within what
     the site can take. ``hanging`` and ``exposure`` change no ranking: they say what a report
-    tells of sag and strength, and of how far people must stay away.
+    tells of sag and strength, and of how far people must stay away. ``purchase_reference`` is the
+    buyer's own and comes back on the bill of materials.
     """
 
     name: Annotated[str, StringConstraints(strip_whitespace=True, max_length=120)] = (
@@ -100,6 +101,7 @@ class DesignRequest(Contract):
     lengths: LengthBounds | None = None
     hanging: Hanging = Hanging()
     exposure: ExposureTerms = ExposureTerms()
+    purchase_reference: Annotated[str, StringConstraints(max_length=64)] = ""
 
     @field_validator("bands", mode="before")
     @classmethod

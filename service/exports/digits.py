@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from decimal import Decimal
 from typing import Final
 
 #: A cell that opens with one of these may be taken for a formula (common practice).
@@ -22,6 +23,13 @@ def reflection(value: float) -> str:
 def swr(value: float) -> str:
     """A standing wave ratio to three decimals, however high, so that a column can be sorted."""
     return f"{value:.3f}"
+
+
+def exact(value: float) -> str:
+    """A number as it was given, in plain decimals: ``0.425``, ``20``."""
+    whole, point, decimals = format(Decimal(repr(value)), "f").partition(".")
+    kept = decimals.rstrip("0")
+    return whole + point + kept if kept else whole
 
 
 def text_cell(text: str) -> str:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Final
 
-from service.contracts.feed import Feed
+from service.contracts.feed import Feed, line_in_words
 from service.contracts.request import DesignRequest, LengthBounds, Tolerances
 from service.contracts.station_site import GroundConstants, HeightRange, Site
 from service.contracts.stock import Conductor, Insulation, Stock, material_in_words
@@ -151,14 +151,6 @@ def _conductor(conductor: Conductor) -> str:
     if conductor.price_per_m is not None:
         label += f", {formats.money(conductor.price_per_m)} a metre"
     return label
-
-
-def line_in_words(name: str) -> str:
-    """A feed line by its designation, or by its construction and impedance."""
-    if name.startswith("rg-"):
-        return name.upper()
-    construction, _, impedance_ohm = name.rpartition("-")
-    return f"{impedance_ohm} Ω {construction.replace('-', ' ')}"
 
 
 def _insulation(insulation: Insulation) -> str:

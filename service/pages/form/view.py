@@ -8,7 +8,7 @@ from typing import Final
 from service.contracts.band_lists import BAND_LISTS, BandList
 from service.contracts.bands import MOST_BANDS
 from service.contracts.estimate import SearchEstimate
-from service.contracts.feed import LINE_NAMES
+from service.contracts.feed import LINE_NAMES, line_in_words
 from service.contracts.request import LARGEST_SET
 from service.contracts.station_site import GROUND_CLASSES
 from service.contracts.stock import (
@@ -32,7 +32,7 @@ GROUNDS: Choices = (
     *((name, wording.ground_class_in_words(name)) for name in GROUND_CLASSES),
     ("constants", "by its constants"),
 )
-LINES: Choices = (("", "none"), *((name, wording.line_in_words(name)) for name in LINE_NAMES))
+LINES: Choices = (("", "none"), *((name, line_in_words(name)) for name in LINE_NAMES))
 LISTS: Choices = tuple((each.name, each.title) for each in BAND_LISTS.values())
 SETS: Choices = (
     ("", "only where no single wire serves all required bands"),
