@@ -62,6 +62,13 @@ def test_of_wires_that_cannot_be_told_apart_what_differs_is_left_out_and_said() 
     assert any("Several conductors" in each for each in bill.notes)
 
 
+def test_of_two_prices_that_come_to_the_same_cost_none_is_told() -> None:
+    alike = [{"awg": 12, "price_per_m": each} for each in (0.5, 0.5001)]
+    bill = sample_bill(stock={"conductors": alike})
+    assert line(bill, "conductor").unit_price is None
+    assert any("Several conductors" in each for each in bill.notes)
+
+
 def test_an_insulated_wire_tells_its_sleeve() -> None:
     assert rating(sample_bill(**FULL), "conductor", "insulation thickness").value == 0.8
 
@@ -172,6 +179,19 @@ def test_the_feed_line_bears_the_power_times_the_largest_swr_within_limits() -> 
         if (point.transmitter_swr or 0.0) <= outcome.swr_limit
     )
     assert line(bill, "feed line").quantity == 20.0
+    assert rating(bill, "feed line", "power at 21.45 MHz").value == at_least(400.0 * largest)
+
+
+def test_no_swr_beyond_a_limit_counts_for_the_feed_line() -> None:
+    design, candidate, report = planned(**FULL)
+    limited = tuple(each.model_copy(update={"swr_limit": 1.5}) for each in candidate.bands)
+    bill = bill_of_materials(design, candidate.model_copy(update={"bands": limited}), report)
+    largest = max(
+        point.swr
+        for band in report.bands[:2]
+        for point in band.grid
+        if (point.transmitter_swr or 0.0) <= 1.5
+    )
     assert rating(bill, "feed line", "power at 21.45 MHz").value == at_least(400.0 * largest)
 
 

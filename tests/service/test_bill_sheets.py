@@ -18,7 +18,7 @@ from service.exports.bill_sheets import (
     bill_workbook,
     rating_in_words,
 )
-from tests.service.bills import sample_bill
+from tests.service.bills import MOMENT, sample_bill
 from tests.service.conftest import Stored
 from tests.service.samples import FULL
 
@@ -137,6 +137,8 @@ def test_no_cell_of_the_workbook_runs(text: str) -> None:
 
 def test_the_same_bill_gives_the_same_workbook(bill: BillOfMaterials) -> None:
     assert bill_workbook(bill) == bill_workbook(bill)
+    # Its date is that of the result, so that tomorrow's is the same too.
+    assert opened(bill).properties.created == MOMENT.replace(tzinfo=None)
 
 
 # ---------------------------------------------------------------------------- on the wire
