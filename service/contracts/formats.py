@@ -79,6 +79,36 @@ def amperes(value: float) -> str:
     return _three_figures(value)
 
 
+def newtons(value: float) -> str:
+    """A tension or load in N to three figures, whole from a hundred on: ``85.2``, ``1503``."""
+    return _three_figures(value)
+
+
+def celsius(value: float) -> str:
+    """A temperature in °C to a tenth, whole where it is so: ``-20``, ``12.5``."""
+    return f"{value:.1f}".removesuffix(".0")
+
+
+def pascals(value: float) -> str:
+    """A pressure of wind in Pa, whole: ``430``."""
+    return f"{value:.0f}"
+
+
+def ice_mm(value: float) -> str:
+    """A thickness of ice in mm to a tenth, whole where it is so: ``6``, ``12.5``."""
+    return f"{value:.1f}".removesuffix(".0")
+
+
+def safety_factor(value: float) -> str:
+    """A breaking load over a tension, ``3.42``."""
+    return f"{value:.2f}"
+
+
+def minutes(value: float) -> str:
+    """A time in minutes, ``30 min``."""
+    return f"{value:g} min"
+
+
 def component(value: float) -> str:
     """A coil in µH or a capacitor in pF to three figures, whole from a hundred on: ``5.43``."""
     return _three_figures(value)

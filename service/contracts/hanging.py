@@ -118,3 +118,12 @@ class HungSpan(Contract):
     shape_m: tuple[tuple[float, float], ...]
     strength_source: str
     cautions: tuple[str, ...] = ()
+
+    def as_strung(self) -> HungState:
+        """The weather it is strung in."""
+        return self.states[0]
+
+    def lowest(self) -> HungState | None:
+        """The weather in which it comes closest to the ground; None in free space."""
+        over_ground = [each for each in self.states if each.lowest_m is not None]
+        return min(over_ground, key=lambda each: each.lowest_m or 0.0, default=None)

@@ -13,6 +13,7 @@ from service.contracts.candidate import (
     DipoleSet,
     Steadiness,
 )
+from service.contracts.exposure import ExposureDistance, LimitsTold, limits_told
 from service.contracts.radiation import Radiation
 from service.contracts.report import FeedReport, Matching, MatchingPart
 
@@ -47,6 +48,19 @@ class Pictures:
     current: bool
     radiation: bool
     places_m: tuple[tuple[int, float], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ExposureTable:
+    """One row a band, one column a standard and population.
+
+    ``powers`` has the powers that bands were looked at with, which are all alike: while
+    transmitting and on average, in W, and the latter as per cent of the former.
+    """
+
+    limits: tuple[LimitsTold, ...]
+    rows: tuple[tuple[str, tuple[ExposureDistance | None, ...]], ...]
+    powers: tuple[tuple[float, float, str], ...]
 
 
 def pictures_of(report: FeedReport) -> Pictures:
@@ -113,3 +127,25 @@ def matching_parts(network: Matching) -> tuple[MatchingPart | None, MatchingPart
 def has_line(report: FeedReport) -> bool:
     """Whether a feed line leads from the feed point to the transmitter."""
     return any(band.centre.transmitter_swr is not None for band in report.bands)
+
+
+def exposure_table(report: FeedReport) -> ExposureTable | None:
+    """How far to stay away on each band; None where no band of the report tells it."""
+    told = [each.exposure for each in report.bands]
+    limits = limits_told(told)
+    if not limits:
+        return None
+    return ExposureTable(
+        limits,
+        tuple(
+            (band.name, tuple(None if each is None else each.distance(limit) for limit in limits))
+            for band, each in zip(report.bands, told, strict=True)
+        ),
+        tuple(
+            dict.fromkeys(
+                (each.peak_power_w, each.average_power_w, f"{each.duty_percent:g}")
+                for each in told
+                if each is not None
+            )
+        ),
+    )

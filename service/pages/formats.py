@@ -7,11 +7,13 @@ from datetime import UTC, datetime
 from service.contracts import formats
 from service.contracts.formats import (
     amperes,
+    celsius,
     component,
     decibels,
     degrees,
     departed,
     edge_mhz,
+    ice_mm,
     khz,
     khz_per_cm,
     listed,
@@ -19,17 +21,21 @@ from service.contracts.formats import (
     mhz,
     millimetres,
     money,
+    newtons,
     ohms,
     ordinal,
     part_of_one,
+    pascals,
     percent,
     ratio,
     reflection,
+    safety_factor,
     volts,
 )
 
 __all__ = [
     "amperes",
+    "celsius",
     "component",
     "count",
     "decibels",
@@ -38,6 +44,7 @@ __all__ = [
     "edge_mhz",
     "feed_place",
     "fine_mhz",
+    "ice_mm",
     "instant",
     "khz",
     "khz_per_cm",
@@ -46,14 +53,18 @@ __all__ = [
     "mhz",
     "millimetres",
     "minus",
+    "minutes",
     "money",
+    "newtons",
     "ohms",
     "ordinal",
     "part",
     "part_of_one",
+    "pascals",
     "percent",
     "ratio",
     "reflection",
+    "safety_factor",
     "share",
     "swr",
     "volts",
@@ -64,6 +75,11 @@ __all__ = [
 def fine_mhz(value: float) -> str:
     """A frequency in MHz to a tenth of a kHz, for points that lie close together."""
     return f"{value:.4f}"
+
+
+def minutes(value: float) -> str:
+    """A time in minutes, on one line."""
+    return _unbroken(formats.minutes(value))
 
 
 def share(value: float) -> str:

@@ -12,7 +12,13 @@ from service.contracts.candidate import Candidate
 from service.contracts.progress import Design
 from service.contracts.report import FeedReport
 from service.pages import batches, comparison, listing, what_if
-from service.pages.arrangement import has_line, pictures_of, sets_table, steadiness_table
+from service.pages.arrangement import (
+    exposure_table,
+    has_line,
+    pictures_of,
+    sets_table,
+    steadiness_table,
+)
 from service.pages.form import routes as form
 from service.pages.stored import StoreHere
 from service.pages.templating import STATIC, render
@@ -99,6 +105,8 @@ def _sheet(
         "has_line": has_line(report),
         "matched": any(band.matching for band in report.bands),
         "stressed": any(band.stress for band in report.bands),
+        "with_ends": any(band.stress and band.stress.ends_peak_v for band in report.bands),
+        "exposures": exposure_table(report),
         "steadiness": None if held is None else steadiness_table(candidate, held),
         "bands": tuple(zip(candidate.bands, design.request.bands, report.bands, strict=True)),
         "sweep": report.sweep[::SWEEP_STRIDE],

@@ -10,11 +10,13 @@ from typing import Final
 
 from jinja2 import Environment, FileSystemLoader, StrictUndefined, select_autoescape
 
+from service.contracts.exposure import population_in_words, standard_in_words
 from service.pages import formats, wording
 from service.pages.arrangement import matching_parts, pattern_rows
 from service.plots import (
     impedance_plot,
     overlay_plot,
+    sag_is_drawn,
     steadiness_plot,
     swr_plot,
     trade_off_plot,
@@ -52,6 +54,9 @@ def _environment() -> Environment:
         "matching_parts": matching_parts,
         "overlay_plot": overlay_plot,
         "pattern_rows": pattern_rows,
+        "population_in_words": population_in_words,
+        "sag_is_drawn": sag_is_drawn,
+        "standard_in_words": standard_in_words,
         "steadiness_plot": steadiness_plot,
         "swr_plot": swr_plot,
         "trade_off_plot": trade_off_plot,

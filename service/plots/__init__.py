@@ -1,6 +1,6 @@
 """Plots as SVG, in the page or beside it, from stored figures: only where ink goes is computed."""
 
-from service.plots.hung_wire import current_plot, wire_plot
+from service.plots.hung_wire import current_plot, sag_is_drawn, wire_plot
 from service.plots.impedance import impedance_plot
 from service.plots.overlay import overlay_plot
 from service.plots.pattern import pattern_plot
@@ -15,6 +15,7 @@ __all__ = [
     "impedance_plot",
     "overlay_plot",
     "pattern_plot",
+    "sag_is_drawn",
     "smith_plot",
     "steadiness_plot",
     "sweep_plot",

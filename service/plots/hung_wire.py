@@ -24,6 +24,8 @@ _TOP_PX: Final = 52.0
 _FOOT_PX: Final = 48.0
 _FREE_DROP_PX: Final = 60.0
 _INSULATOR_PX: Final = 3.5
+#: Two supports and the two ends of the wire.
+_FEWEST_OF_SHAPE: Final = 4
 _TICK_PX: Final = 4.0
 
 _WIDTH: Final = 344.0
@@ -37,14 +39,23 @@ _MOST_TICKS: Final = 6
 
 @dataclass(frozen=True, slots=True)
 class _View:
-    """Where things are in the drawing, in px; both directions have one scale."""
+    """Where things are in the drawing, in px; both directions have one scale.
 
-    left: float
-    right: float
-    top: float
+    ``supports`` are where the ropes are tied, ``wire`` the points of the wire from end to end.
+    """
+
+    supports: tuple[Point, Point]
+    wire: tuple[Point, ...]
+    feed: Point
     ground: float
-    ends: tuple[float, float]
-    feed: float
+
+    @property
+    def top(self) -> float:
+        return min(y for _, y in self.supports)
+
+    @property
+    def ends(self) -> tuple[Point, Point]:
+        return self.wire[0], self.wire[-1]
 
 
 def wire_plot(report: FeedReport, site: Site, paper: Paper = "wide") -> Markup:
@@ -53,7 +64,8 @@ def wire_plot(report: FeedReport, site: Site, paper: Paper = "wide") -> Markup:
     Parameters
     ----------
     report : FeedReport
-        Of a candidate: its length, height and place of the feed.
+        Of a candidate: its length, height and place of the feed. Sag is drawn where its shape is
+        stored.
     site : Site
         Whose span it hangs in.
     paper : {"wide", "narrow"}
@@ -66,74 +78,133 @@ def wire_plot(report: FeedReport, site: Site, paper: Paper = "wide") -> Markup:
         f"hung {paper}",
     )
     if report.height_m is not None:
-        _draw_ground_and_supports(drawing, view, report.height_m)
+        _draw_ground_and_supports(drawing, view, report)
     _draw_wire(drawing, view, report)
     _draw_measures(drawing, view, report, site)
+    high = f", {formats.metres(report.height_m)} m high" if report.height_m else ""
     return drawing.markup(
         f"The wire between its supports, to scale, candidate {report.rank}",
         f"{formats.metres(report.length_m)} m of wire in a span of "
         f"{formats.metres(site.span_m)} m, fed "
-        f"{formats.feed_place(report.feed_fraction, report.length_m)}"
-        + (f", {formats.metres(report.height_m)} m high." if report.height_m else "."),
+        f"{formats.feed_place(report.feed_fraction, report.length_m)}{high}"
+        f"{_sag_in_words(report)}.",
     )
 
 
+def sag_is_drawn(report: FeedReport) -> bool:
+    """Whether the shape of the wire as strung is stored."""
+    return report.hanging is not None and len(report.hanging.shape_m) >= _FEWEST_OF_SHAPE
+
+
+def _places_m(report: FeedReport, site: Site) -> tuple[tuple[float, float], ...]:
+    """Support, wire from end to end, support: along, and up from the first support."""
+    if report.hanging is not None and sag_is_drawn(report):
+        return report.hanging.shape_m
+    start_m = 0.5 * (site.span_m - report.length_m)
+    return ((0.0, 0.0), (start_m, 0.0), (start_m + report.length_m, 0.0), (site.span_m, 0.0))
+
+
 def _view(report: FeedReport, site: Site, paper: Paper) -> _View:
+    places_m = _places_m(report, site)
     width, most = _SIZES[paper]
-    per_m = (width - 2.0 * _MARGIN_PX) / site.span_m
-    if report.height_m is not None:
-        per_m = min(per_m, most / report.height_m)
-    middle, half = 0.5 * width, 0.5 * site.span_m * per_m
-    drop = _FREE_DROP_PX if report.height_m is None else report.height_m * per_m
-    ends = (middle - 0.5 * report.length_m * per_m, middle + 0.5 * report.length_m * per_m)
-    feed = ends[0] + report.feed_fraction * (ends[1] - ends[0])
-    return _View(middle - half, middle + half, _TOP_PX, _TOP_PX + drop, ends, feed)
+    span_m, rise_m = places_m[-1]
+    heights_m = [up for _, up in places_m]
+    # The height told is that half way between the supports.
+    ground_m = None if report.height_m is None else 0.5 * rise_m - report.height_m
+    tall_m = max(heights_m) - min([*heights_m, *(() if ground_m is None else (ground_m,))])
+    per_m = (width - 2.0 * _MARGIN_PX) / span_m
+    if tall_m > 0.0:
+        per_m = min(per_m, most / tall_m)
+    left, top_m = 0.5 * (width - span_m * per_m), max(heights_m)
+
+    def px(place_m: tuple[float, float]) -> Point:
+        return left + place_m[0] * per_m, _TOP_PX + (top_m - place_m[1]) * per_m
+
+    first, *wire_m, last = places_m
+    if ground_m is None:
+        ground = max(px(each)[1] for each in places_m) + _FREE_DROP_PX
+    else:
+        ground = px((0.0, ground_m))[1]
+    return _View(
+        (px(first), px(last)),
+        tuple(px(each) for each in wire_m),
+        px(_fed_m(wire_m, report.feed_fraction)),
+        ground,
+    )
 
 
-def _draw_ground_and_supports(drawing: Drawing, view: _View, height_m: float) -> None:
-    drawing.box((view.left - 12.0, view.ground), (view.right + 12.0, view.ground + 5.0), "earth")
-    for x in (view.left, view.right):
-        drawing.line((x, view.top - 3.0), (x, view.ground), "support")
-    x = view.left + 14.0
-    if view.feed - x < 90.0:
-        x = view.right - 14.0
-    _measure(drawing, (x, view.top), (x, view.ground))
-    middle = 0.5 * (view.top + view.ground) + 4.0
-    anchor: Literal["start", "end"] = "start" if x < view.feed else "end"
+def _fed_m(wire_m: list[tuple[float, float]], fraction: float) -> tuple[float, float]:
+    """Where the feed is: points of the wire lie evenly along it."""
+    steps = len(wire_m) - 1
+    whole = min(int(fraction * steps), steps - 1)
+    part = fraction * steps - whole
+    (x, up), (next_x, next_up) = wire_m[whole], wire_m[whole + 1]
+    return x + part * (next_x - x), up + part * (next_up - up)
+
+
+def _draw_ground_and_supports(drawing: Drawing, view: _View, report: FeedReport) -> None:
+    (left, left_top), (right, right_top) = view.supports
+    drawing.box((left - 12.0, view.ground), (right + 12.0, view.ground + 5.0), "earth")
+    for x, top in view.supports:
+        drawing.line((x, top - 3.0), (x, view.ground), "support")
+    x, top, higher_m = left + 14.0, left_top, -0.5 * _rise_m(report)
+    if view.feed[0] - x < 90.0:
+        x, top, higher_m = right - 14.0, right_top, 0.5 * _rise_m(report)
+    _measure(drawing, (x, top), (x, view.ground))
+    middle = 0.5 * (top + view.ground) + 4.0
+    anchor: Literal["start", "end"] = "start" if x < view.feed[0] else "end"
     sideways = 7.0 if anchor == "start" else -7.0
-    drawing.text((x + sideways, middle), f"{formats.metres(height_m)} m high", "words", anchor)
+    high = f"{formats.metres((report.height_m or 0.0) + higher_m)} m high"
+    drawing.text((x + sideways, middle), high, "words", anchor)
+
+
+def _rise_m(report: FeedReport) -> float:
+    """How much higher the far support is than the near one, as drawn."""
+    return report.hanging.shape_m[-1][1] if report.hanging and sag_is_drawn(report) else 0.0
 
 
 def _draw_wire(drawing: Drawing, view: _View, report: FeedReport) -> None:
     start, end = view.ends
-    drawing.line((view.left, view.top), (start, view.top), "rope")
-    drawing.line((end, view.top), (view.right, view.top), "rope")
-    drawing.line((view.feed, view.top), (view.feed, view.ground), "feeder")
-    drawing.line((start, view.top), (end, view.top), "wire-line")
+    if sag_is_drawn(report):
+        drawing.line(*view.supports, "measure")
+        drawing.tip("straight from support to support")
+    drawing.line(view.supports[0], start, "rope")
+    drawing.line(end, view.supports[1], "rope")
+    drawing.line(view.feed, (view.feed[0], view.ground), "feeder")
+    if len(view.wire) > len(view.ends):
+        drawing.curve([view.wire], "wire-line")
+    else:
+        drawing.line(start, end, "wire-line")
     drawing.tip(f"{formats.metres(report.length_m)} m of {report.conductor}")
-    for x in (start, end):
-        corner = (x - _INSULATOR_PX, view.top - 5.0)
-        drawing.box(corner, (x + _INSULATOR_PX, view.top + 5.0), "insulator")
+    for x, y in (start, end):
+        drawing.box((x - _INSULATOR_PX, y - 5.0), (x + _INSULATOR_PX, y + 5.0), "insulator")
         drawing.tip("end insulator")
-    drawing.dot((view.feed, view.top), 4.5, "feed-mark")
+    drawing.dot(view.feed, 4.5, "feed-mark")
     drawing.tip(f"fed {formats.feed_place(report.feed_fraction, report.length_m)}")
 
 
 def _draw_measures(drawing: Drawing, view: _View, report: FeedReport, site: Site) -> None:
     y = view.top - 16.0
-    start, end = view.ends
+    start, end = (x for x, _ in view.ends)
     _measure(drawing, (start, y), (end, y))
-    length = f"wire {formats.metres(report.length_m)} m"
+    length = f"wire {formats.metres(report.length_m)} m{_sag_in_words(report)}"
     drawing.text((0.5 * (start + end), y - 6.0), length, "words")
     foot = view.ground + 20.0
-    _measure(drawing, (view.left, foot), (view.right, foot))
+    left, right = (x for x, _ in view.supports)
+    _measure(drawing, (left, foot), (right, foot))
     span = f"span {formats.metres(site.span_m)} m"
-    drawing.text((0.5 * (view.left + view.right), foot + 16.0), span, "words")
+    drawing.text((0.5 * (left + right), foot + 16.0), span, "words")
     # Beside the feeder, on the roomier side.
-    right = view.right - view.feed > view.feed - view.left
-    beside = view.feed + (8.0 if right else -8.0)
-    anchor: Literal["start", "end"] = "start" if right else "end"
-    drawing.text((beside, view.top + 20.0), _feed_in_words(report), "words", anchor)
+    roomier = right - view.feed[0] > view.feed[0] - left
+    beside = view.feed[0] + (8.0 if roomier else -8.0)
+    anchor: Literal["start", "end"] = "start" if roomier else "end"
+    drawing.text((beside, view.feed[1] + 20.0), _feed_in_words(report), "words", anchor)
+
+
+def _sag_in_words(report: FeedReport) -> str:
+    if report.hanging is None or not sag_is_drawn(report):
+        return ""
+    return f", sag {formats.metres(report.hanging.as_strung().sag_m)} m"
 
 
 def _feed_in_words(report: FeedReport) -> str:

@@ -19,6 +19,7 @@ from service.contracts.candidate import (
 from service.contracts.radiation import CurrentAlong, Radiation
 from service.contracts.report import FeedStress, Matching, MatchingPart, ReportPoint
 from service.contracts.request import DesignRequest
+from tests.service.sample_hanging import ends_peak_v
 
 FRONT = 40
 LOSS_DB_PER_M = 0.01
@@ -44,7 +45,7 @@ def judged_swr(point: ReportPoint, request: DesignRequest) -> float:
     return point.transmitter_swr or point.swr if at_transmitter else point.swr
 
 
-def stress(centre: ReportPoint, power_w: float) -> FeedStress:
+def stress(centre: ReportPoint, index: int, power_w: float) -> FeedStress:
     """Voltage and current that would bring the power into the resistance."""
     current_a = math.sqrt(power_w / centre.resistance_ohm)
     size_ohm = math.hypot(centre.resistance_ohm, centre.reactance_ohm)
@@ -52,6 +53,7 @@ def stress(centre: ReportPoint, power_w: float) -> FeedStress:
         power_w=power_w,
         voltage_peak_v=round(math.sqrt(2.0) * size_ohm * current_a, 1),
         current_rms_a=round(current_a, 3),
+        ends_peak_v=ends_peak_v(index),
     )
 
 

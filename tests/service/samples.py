@@ -27,7 +27,7 @@ from service.contracts.report import (
     ResonanceLine,
 )
 from service.contracts.request import DesignRequest, parse_request
-from tests.service import sample_extras
+from tests.service import sample_extras, sample_hanging
 
 SURGE_OHM = 850.0
 LOSS_NEPER = 0.085
@@ -85,6 +85,7 @@ FULL: dict[str, Any] = {
         "reference_point": "transmitter",
     },
     "power_w": 400.0,
+    "exposure": {"duty_percent": 35.0},
     "candidates": 2,
     "largest_set": 3,
     "rank_by": "worst-case",
@@ -165,10 +166,11 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
             centre=at(band.centre_mhz),
             high=at(band.high_mhz),
             grid=spread(band.low_mhz, band.high_mhz, GRID_POINTS),
-            stress=sample_extras.stress(at(band.centre_mhz), request.power_w),
+            stress=sample_extras.stress(at(band.centre_mhz), index, request.power_w),
             matching=sample_extras.matching(index, request),
             current=sample_extras.current(index, request),
             radiation=sample_extras.radiation(index),
+            exposure=sample_hanging.exposure(index, request),
         )
         for index, band in enumerate(request.bands)
     )
@@ -197,6 +199,7 @@ def _report(request: DesignRequest, rank: int, length_m: float) -> FeedReport:
             not_modelled=("anything at all",),
         ),
         cautions=("Keep clear of power lines.", "Follow local codes."),
+        hanging=sample_hanging.hanging(request, length_m),
     )
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import cmath
+import itertools
 import math
 import re
 import xml.etree.ElementTree as ET
@@ -116,8 +117,9 @@ def test_as_many_bands_as_a_request_may_name_are_told_apart() -> None:
 
 
 @pytest.mark.parametrize("paper", ["wide", "narrow"])
-def test_the_wire_is_drawn_to_scale(paper: str) -> None:
-    root = parsed(wire_plot(REPORT, REQUEST.site, "wide" if paper == "wide" else "narrow"))
+def test_a_wire_without_a_stored_shape_is_drawn_straight_and_to_scale(paper: str) -> None:
+    straight = REPORT.model_copy(update={"hanging": None})
+    root = parsed(wire_plot(straight, REQUEST.site, "wide" if paper == "wide" else "narrow"))
     left, right = (float(each.get("x1") or 0) for each in of_class(root, "support"))
     per_m = (right - left) / REQUEST.site.span_m
     (line,) = of_class(root, "wire-line")
@@ -132,6 +134,47 @@ def test_the_wire_is_drawn_to_scale(paper: str) -> None:
     assert REPORT.height_m is not None
     assert drop / per_m == pytest.approx(REPORT.height_m, abs=0.02)
     assert len(of_class(root, "insulator")) == 2
+
+
+@pytest.mark.parametrize("paper", ["wide", "narrow"])
+@pytest.mark.parametrize("rise_m", [0.0, 3.0, -3.0])
+def test_the_sag_is_drawn_to_the_scale_of_the_span(paper: str, rise_m: float) -> None:
+    assert REPORT.hanging is not None
+    span_m = REQUEST.site.span_m
+    shape = tuple((x, up + rise_m * x / span_m) for x, up in REPORT.hanging.shape_m)
+    hanging = REPORT.hanging.model_copy(update={"shape_m": shape})
+    report = REPORT.model_copy(update={"hanging": hanging})
+    root = parsed(wire_plot(report, REQUEST.site, "wide" if paper == "wide" else "narrow"))
+    left, right = of_class(root, "support")
+    x0 = float(left.get("x1") or 0)
+    per_m = (float(right.get("x1") or 0) - x0) / span_m
+    chord = next(each for each in of_class(root, "measure") if each.find(f"{SVG}title") is not None)
+    y0 = float(chord.get("y1") or 0)
+    assert (y0 - float(chord.get("y2") or 0)) / per_m == pytest.approx(rise_m, abs=0.03)
+
+    def height_m(x_m: float) -> float:
+        (before, low), (after, high) = next(
+            pair for pair in itertools.pairwise(shape) if pair[1][0] >= x_m
+        )
+        return low + (high - low) * (x_m - before) / (after - before)
+
+    (wire,) = of_class(root, "wire-line")
+    drawn = [((at.real - x0) / per_m, (y0 - at.imag) / per_m) for at in corners(wire)]
+    assert [drawn[0][0], drawn[-1][0]] == pytest.approx([shape[1][0], shape[-2][0]], abs=0.02)
+    assert len(drawn) > 4
+    for x_m, up_m in drawn:
+        assert up_m == pytest.approx(height_m(x_m), abs=0.03)
+    (feed,) = of_class(root, "feed-mark")
+    at_m = (float(feed.get("cx") or 0) - x0) / per_m
+    assert at_m == pytest.approx(
+        shape[1][0] + REPORT.feed_fraction * (shape[-2][0] - shape[1][0]), abs=0.03
+    )
+    assert (y0 - float(feed.get("cy") or 0)) / per_m == pytest.approx(height_m(at_m), abs=0.03)
+    # The height planned is that of the middle between the supports.
+    ground_m = (float(left.get("y2") or 0) - y0) / per_m
+    assert REPORT.height_m is not None
+    assert ground_m + 0.5 * rise_m == pytest.approx(REPORT.height_m, abs=0.03)
+    assert "sag 0.637 m" in " ".join(root.itertext())
 
 
 def test_a_wire_higher_than_its_span_still_fits_the_drawing() -> None:
