@@ -11,7 +11,7 @@ from service.api.dependencies import DesignId, Rank, StoreHere
 from service.api.problems import responses
 from service.api.stored import answer_stored, answer_tagged
 from service.contracts.bill import BillOfMaterials
-from service.exports import bill_sheets, csv_table
+from service.exports import bill_sheets, csv_table, quotation_request
 from service.exports.bill_of_materials import bill_of_materials
 from service.store import designs
 from service.store.session import Store
@@ -60,6 +60,20 @@ def read_bill_as_workbook(
     return answer_tagged(
         request, workbook, bill_sheets.WORKBOOK_MEDIA_TYPE, _named(design_id, rank, "xlsx")
     )
+
+
+@router.get(
+    "/request-for-quotation.xml",
+    response_class=Response,
+    responses=_file(quotation_request.MEDIA_TYPE, "A RequestForQuotation of UBL 2.1, unpriced"),
+)
+def read_quotation_request(
+    request: Request, store: StoreHere, design_id: DesignId, rank: Rank
+) -> Response:
+    """Give the same bill as a request for quotation (OASIS UBL 2.1), for purchasing systems."""
+    document = quotation_request.quotation_request(_bill(store, design_id, rank))
+    name = _named(design_id, rank, "xml")
+    return answer_tagged(request, document, quotation_request.MEDIA_TYPE, name)
 
 
 def _bill(store: Store, design_id: str, rank: int) -> BillOfMaterials:
