@@ -55,7 +55,8 @@ def read_report(request: Request, store: StoreHere, design_id: DesignId, rank: R
     responses=_OF_RANK
     | {
         200: {
-            "description": "One line a point: " + ", ".join(csv_table.FEED_COLUMNS),
+            "description": "One line a point, then one a figure of voltages, exposure and "
+            "hanging: " + ", ".join(csv_table.FEED_COLUMNS),
             "content": {"text/csv": {"schema": {"type": "string"}}},
         }
     },

@@ -10,13 +10,12 @@ from typing import Final
 from service.contracts import formats
 from service.contracts.report import BandReport, FeedReport, ReportPoint
 from service.exports import digits
+from service.exports.report_figures import figures_of
 
 #: Media type of RFC 4180, section 3; the first line names the columns.
 MEDIA_TYPE: Final = "text/csv; charset=utf-8; header=present"
 
-FEED_COLUMNS: Final = (
-    "band",
-    "place",
+_POINT_COLUMNS: Final = (
     "frequency_mhz",
     "resistance_ohm",
     "reactance_ohm",
@@ -25,17 +24,21 @@ FEED_COLUMNS: Final = (
     "transmitter_swr",
     "line_loss_db",
 )
+FEED_COLUMNS: Final = ("band", "place", *_POINT_COLUMNS, "figure", "value", "unit")
 
 
 def feed_report_csv(report: FeedReport) -> str:
-    """The report as one table: a line a point, bands in the order of the request.
+    """The report as one table: a line a point, bands in the order of the request, then figures.
+
+    Voltages, exposure and hanging belong to no one frequency: they follow the points, a line a
+    figure, with its name, value and unit in the last three columns, which are empty for points.
 
     Parameters
     ----------
     report : FeedReport
         As stored. Resistance and reactance are those at the feed point; reflection and SWR
-        those on the line side of the transformer and the matching network. The last two
-        columns belong to the other end of the feed line and are empty without one.
+        those on the line side of the transformer and the matching network. The last two of
+        the columns of a point belong to the other end of the feed line and are empty without one.
 
     Returns
     -------
@@ -47,7 +50,13 @@ def feed_report_csv(report: FeedReport) -> str:
     writer.writerow(FEED_COLUMNS)
     for band in report.bands:
         name = digits.text_cell(band.name)
-        writer.writerows((name, place, *_figures(point)) for place, point in _places(band))
+        writer.writerows(
+            (name, place, *_figures(point), "", "", "") for place, point in _places(band)
+        )
+    no_point = [""] * len(_POINT_COLUMNS)
+    for each in figures_of(report):
+        where = (digits.text_cell(each.band), digits.text_cell(each.place))
+        writer.writerow((*where, *no_point, each.figure, each.value, each.unit))
     return sheet.getvalue()
 
 

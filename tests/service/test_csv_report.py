@@ -25,7 +25,8 @@ def rows(report: FeedReport) -> list[dict[str, str]]:
 
 def renamed(report: FeedReport, name: str) -> FeedReport:
     first = report.bands[0].model_copy(update={"name": name})
-    return report.model_copy(update={"bands": (first,)})
+    # Lines of hanging belong to no band.
+    return report.model_copy(update={"bands": (first,), "hanging": None})
 
 
 def test_the_first_line_names_the_columns(report: FeedReport) -> None:
@@ -42,7 +43,8 @@ def test_each_stored_point_of_each_band_has_one_line(report: FeedReport) -> None
     lines = rows(report)
     for band in report.bands:
         points = {p.frequency_mhz for p in (band.low, band.centre, band.high, *band.grid)}
-        found = [float(line["frequency_mhz"]) for line in lines if line["band"] == band.name]
+        of_band = [line for line in lines if line["band"] == band.name and not line["figure"]]
+        found = [float(line["frequency_mhz"]) for line in of_band]
         assert found == sorted(points)
 
 
@@ -77,6 +79,35 @@ def test_the_far_end_of_the_line_is_given_to_the_digits_shown() -> None:
 
 def test_without_a_line_its_columns_are_there_and_empty(report: FeedReport) -> None:
     assert {(line["transmitter_swr"], line["line_loss_db"]) for line in rows(report)} == {("", "")}
+
+
+def test_figures_beside_the_points_are_named_with_value_and_unit_and_come_last(
+    report: FeedReport,
+) -> None:
+    lines = rows(report)
+    points = [line for line in lines if line["frequency_mhz"]]
+    rest = lines[len(points) :]
+    assert lines[: len(points)] == points
+    assert {(line["figure"], line["value"], line["unit"]) for line in points} == {("", "", "")}
+    assert len(rest) > 40
+    assert {line["resistance_ohm"] for line in rest} == {""}
+    assert all(line["figure"] and line["value"] for line in rest)
+    named = [(line["band"], line["place"], line["figure"]) for line in rest]
+    assert len(named) == len(set(named))
+
+
+def test_a_report_of_before_has_points_alone(report: FeedReport) -> None:
+    bands = [
+        band.model_copy(
+            update={
+                "exposure": None,
+                "stress": band.stress and band.stress.model_copy(update={"ends_peak_v": None}),
+            }
+        )
+        for band in report.bands
+    ]
+    older = report.model_copy(update={"hanging": None, "bands": tuple(bands)})
+    assert {line["figure"] for line in rows(older)} == {""}
 
 
 @pytest.mark.parametrize(

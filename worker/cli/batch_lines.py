@@ -10,7 +10,7 @@ from rich.text import Text
 
 from service.contracts import formats
 from service.contracts.batch import Batch, BatchCounts, BatchItem
-from worker.cli.tables import plain_table
+from worker.cli.plain_table import plain_table
 
 _STATES: Final = ("queued", "running", "done", "failed", "cancelled")
 #: Failures that are told of one by one below a batch.

@@ -7,7 +7,7 @@ from rich.text import Text
 
 from service.contracts import formats
 from service.contracts.queue_view import QueueView, QueueWorker, RunningDesign
-from worker.cli.tables import plain_table
+from worker.cli.plain_table import plain_table
 
 
 def show_queue(console: Console, queue: QueueView) -> None:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from typing import Final
 
-from rich.box import SIMPLE_HEAD
 from rich.console import Console
 from rich.table import Table
 from rich.text import Text
@@ -18,6 +17,8 @@ from service.contracts.report import FeedReport, MatchingPart, ReportPoint
 from service.contracts.sweep import Sweep, SweepPoint
 from service.errors import RequestRefused, SpanwrightError
 from worker.cli.candidate_lines import candidate_in_full
+from worker.cli.hanging_lines import hanging_lines, voltage_and_exposure
+from worker.cli.plain_table import plain_table
 
 #: Lines of the trade-off that are printed; --json has all of them.
 _MOST_TRADED: Final = 8
@@ -72,6 +73,8 @@ def show_report(console: Console, report: FeedReport) -> None:
         table.add_section()
     console.print(table)
     console.print(_stress(report))
+    for told in (*voltage_and_exposure(report), *hanging_lines(report.hanging)):
+        console.print(told)
     lines = plain_table("Resonances of the wire")
     for title in ("order", "kind", "MHz", "R Ω"):
         lines.add_column(title, justify="left" if title == "kind" else "right")
@@ -270,16 +273,4 @@ def _electrical_cells(point: ReportPoint | SweepPoint) -> tuple[str, ...]:
         formats.ohms(point.reactance_ohm),
         formats.reflection(point.reflection),
         formats.swr(point.swr),
-    )
-
-
-def plain_table(title: str) -> Table:
-    """A table as every command draws it: a rule below its head and nothing else."""
-    return Table(
-        title=title,
-        title_justify="left",
-        title_style="bold",
-        caption_justify="left",
-        box=SIMPLE_HEAD,
-        pad_edge=False,
     )
