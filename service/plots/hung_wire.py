@@ -193,6 +193,9 @@ def _draw_measures(drawing: Drawing, view: _View, report: FeedReport, site: Site
     left, right = (x for x, _ in view.supports)
     _measure(drawing, (left, foot), (right, foot))
     span = f"span {formats.metres(site.span_m)} m"
+    if _rise_m(report):
+        # The span is the straight line between supports of unlike height.
+        span = f"{formats.metres(_places_m(report, site)[-1][0])} m apart, {span}"
     drawing.text((0.5 * (left + right), foot + 16.0), span, "words")
     # Beside the feeder, on the roomier side.
     roomier = right - view.feed[0] > view.feed[0] - left

@@ -174,7 +174,9 @@ def test_the_sag_is_drawn_to_the_scale_of_the_span(paper: str, rise_m: float) ->
     ground_m = (float(left.get("y2") or 0) - y0) / per_m
     assert REPORT.height_m is not None
     assert ground_m + 0.5 * rise_m == pytest.approx(REPORT.height_m, abs=0.03)
-    assert "sag 0.637 m" in " ".join(root.itertext())
+    words = " ".join(root.itertext())
+    assert "sag 0.637 m" in words
+    assert ("24.00 m apart, span 24.00 m" in words) is bool(rise_m)
 
 
 def test_a_wire_higher_than_its_span_still_fits_the_drawing() -> None:
