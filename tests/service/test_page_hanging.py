@@ -155,7 +155,14 @@ def test_the_dangers_are_named_beside_the_figures(page: Page) -> None:
     _, _, exposure = words.partition("Voltage and exposure ")
     for said in ("power lines", "Masts", "licensed practice"):
         assert said in hanging.partition("Feed-impedance report")[0]
-    for said in ("high voltage", "power lines", "lightning", "masts", "local codes", "licensed"):
+    for said in (
+        "high voltage",
+        "power lines",
+        "against lightning",
+        "masts",
+        "local codes",
+        "licensed",
+    ):
         assert said in exposure.partition("How it was found")[0]
 
 

@@ -74,12 +74,12 @@ def _span_in_words(span: HungSpan) -> str:
 def _weathers(span: HungSpan) -> Table:
     table = plain_table("Weather")
     table.collapse_padding = True
-    table.add_column("weather")
+    table.add_column("weather", overflow="fold")
     titles = ["°C", "wind\nPa", "ice\nmm", "wire\nN", "rope\nN", "sag\nm", "swing\nm"]
     if span.lowest() is not None:
         titles += ["lowest\nm", "mean\nm"]
     for title in titles:
-        # A number too wide for its column is folded, never cut short.
+        # What is too wide for its column is folded, never cut short.
         table.add_column(title, justify="right", vertical="bottom", overflow="fold")
     for state in span.states:
         table.add_row(state.weather, *_weather_cells(state))
