@@ -175,7 +175,8 @@ def test_the_sag_is_drawn_to_the_scale_of_the_span(paper: str, rise_m: float) ->
     assert REPORT.height_m is not None
     assert ground_m + 0.5 * rise_m == pytest.approx(REPORT.height_m, abs=0.03)
     words = " ".join(root.itertext())
-    assert "sag 0.637 m" in words
+    assert "wire 20.31 m, sag 0.637 m" in words
+    assert "m high, sag 0.637 m." in words
     assert ("24.00 m apart, span 24.00 m" in words) is bool(rise_m)
 
 
