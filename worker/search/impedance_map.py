@@ -52,6 +52,9 @@ _WIDEST_STEP: Final = 0.08
 #: Agreement asked of a map with fresh solves: the larger of the two.
 TOLERANCE_OHM: Final = 0.1
 TOLERANCE_RELATIVE: Final = 1e-3
+#: Of places in an even ratio every so many are read from a map; steps between the four about one.
+_STRIDE: Final = 4
+_FOUR: Final = np.array([-1.0, 0.0, 1.0, 2.0])
 _LEAST_RESISTANCE_OHM: Final = 1e-3
 #: A wire too short for the model: hardly any resistance, and all the reactance in the world.
 _STUB_OHM: Final = complex(0.01, -1e5)
@@ -141,28 +144,30 @@ class BandMap:
         """The same for lengths in an even ratio, at a small part of the cost; shape (p, n).
 
         A change of frequency is then a shift along the lengths, so each map is read once and
-        not once a frequency. Between its readings, one ratio apart, the line is straight.
+        not once a frequency, at every fourth place and by cubics between. Between those, one
+        ratio apart, the line is straight.
         """
         step = float(np.log(length_m[1] / length_m[0]))
-        impedance = np.zeros((len(frequency_hz), len(length_m)), dtype=np.complex128)
-        for index, each in enumerate(self.maps):
-            shift = np.log(frequency_hz / self.frequencies_hz[index]) / step
-            first = int(np.floor(shift.min()))
-            count = len(length_m) + int(np.floor(shift.max())) - first + 2
-            at = (
-                self.frequencies_hz[index] * length_m[0] * np.exp(step * (first + np.arange(count)))
-            )
-            read = each.impedance_ohm(np.clip(at, each.low, each.high))
-            weight = _lagrange_weight(self.frequencies_hz, index, frequency_hz)
-            for row, by in enumerate(shift):
-                start = int(np.floor(by)) - first
-                part = float(by) - np.floor(by)
-                here, after = read[start : start + len(length_m)], read[start + 1 :]
-                impedance[row] += weight[row] * (
-                    (1.0 - part) * here + part * after[: len(length_m)]
-                )
-        electrical = frequency_hz[:, None] * length_m
-        return np.where(electrical < self.shortest_m_hz, _STUB_OHM, _passive(impedance))
+        lowest_hz = float(frequency_hz.min())
+        shift = np.log(frequency_hz / lowest_hz) / step
+        count = len(length_m) + int(shift.max()) + 2
+        start_m_hz = lowest_hz * float(length_m[0])
+        read = np.array([_read_evenly(each, start_m_hz, step, count) for each in self.maps])
+        weights = np.array(
+            [
+                _lagrange_weight(self.frequencies_hz, index, frequency_hz)
+                for index in range(len(self.maps))
+            ]
+        )
+        impedance = np.empty((len(frequency_hz), len(length_m)), dtype=np.complex128)
+        for row, by in enumerate(shift.tolist()):
+            first, part = int(by), by % 1.0
+            here = weights[:, row] @ read[:, first : first + len(length_m) + 1]
+            impedance[row] = (1.0 - part) * here[:-1] + part * here[1:]
+        _passive(impedance)
+        for row, at_hz in enumerate(frequency_hz.tolist()):
+            impedance[row, : np.searchsorted(length_m * at_hz, self.shortest_m_hz)] = _STUB_OHM
+        return impedance
 
     @property
     def solves(self) -> int:
@@ -376,6 +381,25 @@ def _lagrange_weight(nodes: FloatArray, index: int, at: FloatArray) -> FloatArra
     others = np.delete(nodes, index)
     factors = (at[:, None] - others) / (nodes[index] - others)
     return np.asarray(np.prod(factors, axis=1))
+
+
+def _read_evenly(mapped: ImpedanceMap, start: float, step: float, count: int) -> ComplexArray:
+    """So many readings of a map from a place on, each further by e to the step.
+
+    Only every so many are read, and the rest told by the cubic through the four about them.
+    """
+    coarse = np.exp(_STRIDE * step * np.arange(-1, -(-count // _STRIDE) + 2))
+    # A little beyond the map's ends too: held there the readings would have a kink.
+    beyond = float(np.exp(2.0 * _STRIDE * step))
+    read = mapped.impedance_ohm(np.clip(start * coarse, mapped.low / beyond, mapped.high * beyond))
+    between = np.empty((len(read) - 3, _STRIDE), dtype=np.complex128)
+    for place in range(_STRIDE):
+        between[:, place] = sum(
+            _lagrange_weight(_FOUR, tap, np.array([place / _STRIDE]))[0]
+            * read[tap : len(read) - 3 + tap]
+            for tap in range(4)
+        )
+    return between.ravel()[:count]
 
 
 def _passive(impedance_ohm: ComplexArray) -> ComplexArray:

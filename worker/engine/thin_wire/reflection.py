@@ -173,10 +173,12 @@ def reflected_matrices(
         for moment, potential, sign in zip(
             moments, ground.both(distance), (parity, -parity), strict=True
         ):
-            values = 4.0 * pi * potential
-            kernel = values[:, apart] + sign * values[:, across]
-            turned = np.swapaxes(moment, 1, 2)
-            pair.append(turned @ kernel.real @ moment + 1j * (turned @ kernel.imag @ moment))
+            # Real and imaginary part apart: the moments are real, and so are twice as quick.
+            values = 4.0 * pi * np.stack([potential.real, potential.imag])
+            kernel = values[..., apart]
+            kernel += sign * values[..., across]
+            real, imaginary = np.swapaxes(moment, 1, 2) @ (kernel @ moment)
+            pair.append(real + 1j * imaginary)
         yield pair[0], pair[1]
 
 
