@@ -22,6 +22,7 @@ from service.contracts.candidate import (
     PlannedDesign,
     TradeOff,
 )
+from service.contracts.report import FeedReport
 from service.contracts.request import LARGEST_SET, MOST_CANDIDATES, DesignRequest
 from worker.engine import ENGINE_VERSION
 from worker.search.appraisal import Appraisal, appraise
@@ -45,6 +46,7 @@ ProgressCallback = Callable[[float, str], None]
 _SCAN_PART: Final = 0.6
 _LOOK_PART: Final = 0.9
 _DRAW_PART: Final = 0.97
+_REPORT_PART: Final = 0.98
 #: Wires drawn between two words of progress.
 _DRAWN_AT_A_TIME: Final = 4
 
@@ -78,10 +80,10 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
     looks = job.with_members(looks, chosen)
     candidates = [candidate_of(request, look, rank) for rank, look in enumerate(looks, 1)]
     pictures = job.pictures(looks)
-    reports = tuple(
-        feed_report_of(request, look, rank, drawn)
-        for rank, (look, drawn) in enumerate(zip(looks, pictures, strict=True), 1)
-    )
+    reports: list[FeedReport] = []
+    for rank, (look, drawn) in enumerate(zip(looks, pictures, strict=True), 1):
+        progress(_REPORT_PART, f"writing report {rank} of {len(looks)}")
+        reports.append(feed_report_of(request, look, rank, drawn))
     result = DesignResult(
         engine_version=ENGINE_VERSION,
         ground=ground_in_words(request),
@@ -96,7 +98,7 @@ def plan(request: DesignRequest, progress: ProgressCallback) -> PlannedDesign:
         relax=relaxations(request, job.found, candidates[0]),
     )
     progress(1.0, "done")
-    return PlannedDesign(result=result, reports=reports)
+    return PlannedDesign(result=result, reports=tuple(reports))
 
 
 class _Job:
