@@ -44,7 +44,7 @@ _LOOK_S: Final = 0.02
 
 @dataclass(frozen=True, slots=True)
 class Course:
-    """What is to be run: so many jobs and so many faults of each kind, under these leases."""
+    """What is to be run: so many jobs at least and so many faults of each kind, and the leases."""
 
     form: Form
     jobs: int
@@ -139,7 +139,10 @@ def run(course: Course, folder: Path) -> Report:
                     postgres,
                     redis,
                 )
-                told = tuple(_strike(scene, course))
+                try:
+                    told = tuple(_strike(scene, course))
+                finally:
+                    submitter.faults_over.set()
                 _await_the_end(submitter, record, store)
                 took_s = time.monotonic() - started_s
             # After the workers have ended, so that nothing comes later still.

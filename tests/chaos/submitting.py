@@ -27,6 +27,7 @@ _PAUSE_S: Final = 0.25
 class Submitter(threading.Thread):
     """Submits so many designs, by themselves and in batches, each under a key of its own.
 
+    And more for as long as faults go on, or a quick machine would leave the last nothing to hit.
     About so many wait at the most, so that submitting goes on through all faults; it goes on too
     while a server is away and nothing moves. What the store was away for is sent again under the
     same key, as a client does.
@@ -49,6 +50,8 @@ class Submitter(threading.Thread):
         self._number, self._chance = number, random.Random(seed)  # noqa: S311  # no secret
         #: Set by whoever has stopped a server.
         self.server_away = threading.Event()
+        #: Set once no fault follows.
+        self.faults_over = threading.Event()
         #: Accepted so far: designs and batches by their keys.
         self.designs: dict[str, str] = {}
         self.batches: dict[str, str] = {}
@@ -77,9 +80,8 @@ class Submitter(threading.Thread):
 
     def _portions(self) -> Iterator[list[DesignRequest]]:
         sent = 0
-        while sent < self._number:
+        while sent < self._number or not self.faults_over.is_set():
             size = self._chance.choice((1, 1, 1, _LARGEST_BATCH))
-            size = min(size, self._number - sent)
             yield [self._request(sent + index) for index in range(size)]
             sent += size
 
