@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Final
 
 from markupsafe import Markup
 
@@ -12,29 +11,20 @@ from service.contracts import formats
 from service.contracts.candidate import BandOutcome
 from service.contracts.report import BandReport, ReportPoint
 from service.plots.drawing import Drawing
-from service.plots.scales import (
-    LinearScale,
-    LogScale,
-    Point,
-    clipped_runs,
-    linear_ticks,
-    log_ticks,
-    next_round,
+from service.plots.scales import LinearScale, LogScale, Point, clipped_runs
+from service.plots.swr_panel import (
+    BOTTOM,
+    HEIGHT,
+    LEFT,
+    RIGHT,
+    TOP,
+    WIDTH,
+    draw_axes,
+    draw_limit,
+    say_all_above,
+    swr_scale,
+    top_of_axis,
 )
-
-_WIDTH: Final = 344.0
-_LEFT: Final = 38.0
-_RIGHT: Final = _WIDTH - 22.0
-_TOP: Final = 26.0
-_BOTTOM: Final = _TOP + 150.0
-_HEIGHT: Final = _BOTTOM + 36.0
-_LOWEST_TOP: Final = 3.0
-#: An axis that must reach higher is logarithmic, so that the limit stays clear of the foot.
-_LINEAR_UP_TO: Final = 6.0
-#: Above this a band is as far from use as can be, and no axis goes there.
-_HIGHEST_TOP: Final = 200.0
-_FREQUENCY_TICKS: Final = 4
-_SWR_TICKS: Final = 5
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,23 +59,22 @@ def swr_plot(
         Which of the report's bands it is, for a script that tells the value under the pointer.
     """
     points, other = _swr_along(band.grid, at_transmitter)
-    top = _top_of_axis(points, outcome.swr_limit)
+    top = top_of_axis([points], [outcome.swr_limit])
     frame = _Frame(
-        LinearScale(points[0][0], points[-1][0], _LEFT, _RIGHT),
-        (LinearScale if top <= _LINEAR_UP_TO else LogScale)(1.0, top, _BOTTOM, _TOP),
+        LinearScale(points[0][0], points[-1][0], LEFT, RIGHT),
+        swr_scale(top),
     )
-    drawing = Drawing(name, _WIDTH, _HEIGHT, "swr")
+    drawing = Drawing(name, WIDTH, HEIGHT, "swr")
     if index is not None:
         drawing.tell(read="swr", band=str(index), x=frame.frequency.noted())
-    _draw_axes(drawing, frame)
+    draw_axes(drawing, frame.frequency, frame.swr)
     _draw_limit(drawing, frame, points, outcome.swr_limit)
     beside = clipped_runs(other, 1.0, top)
     drawing.curve(([frame.place(point) for point in run] for run in beside), "curve beside")
     runs = clipped_runs(points, 1.0, top)
     drawing.curve(([frame.place(point) for point in run] for run in runs), "curve swr")
     if not runs:
-        middle = 0.5 * (_LEFT + _RIGHT)
-        drawing.text((middle, _TOP + 18.0), f"above {top:g} over the whole band", "tick")
+        say_all_above(drawing, top)
     _draw_resonance(drawing, frame, outcome)
     return drawing.markup(f"SWR against frequency, {band.name}", _in_words(outcome))
 
@@ -103,40 +92,12 @@ def _swr_along(
     return (far, feed) if at_transmitter and far else (feed, far)
 
 
-def _top_of_axis(points: Sequence[Point], limit: float) -> float:
-    """High enough for the limit and for the best of the band; what lies above is cut off."""
-    best = min(swr for _, swr in points)
-    worst = max(swr for _, swr in points)
-    wanted = max(_LOWEST_TOP, 1.5 * limit, 1.5 * best)
-    if wanted <= _LINEAR_UP_TO:
-        return wanted
-    return min(next_round(min(wanted, 1.5 * worst)), _HIGHEST_TOP)
-
-
-def _draw_axes(drawing: Drawing, frame: _Frame) -> None:
-    is_linear = isinstance(frame.swr, LinearScale)
-    marks = linear_ticks if is_linear else log_ticks
-    for swr in marks(1.0, frame.swr.high, _SWR_TICKS if is_linear else _SWR_TICKS + 3):
-        y = frame.swr(swr)
-        drawing.line((_LEFT, y), (_RIGHT, y), "grid")
-        drawing.text((_LEFT - 6.0, y + 4.0), f"{swr:g}", "tick", "end")
-    for mhz in linear_ticks(frame.frequency.low, frame.frequency.high, _FREQUENCY_TICKS):
-        x = frame.frequency(mhz)
-        drawing.line((x, _TOP), (x, _BOTTOM), "grid")
-        drawing.text((x, _BOTTOM + 18.0), formats.edge_mhz(mhz), "tick")
-    drawing.box((_LEFT, _TOP), (_RIGHT, _BOTTOM), "frame")
-    drawing.text((2.0, _TOP - 11.0), "SWR" if is_linear else "SWR, log scale", "unit", "start")
-    drawing.text((_RIGHT, _BOTTOM + 31.0), "MHz", "unit", "end")
-
-
 def _draw_limit(drawing: Drawing, frame: _Frame, points: Sequence[Point], limit: float) -> None:
     """The limit as a line, and under the foot the part of the band that keeps to it."""
-    y = frame.swr(limit)
-    drawing.line((_LEFT, y), (_RIGHT, y), "limit")
-    drawing.text((_RIGHT - 4.0, y - 4.0), f"limit {formats.swr(limit)}", "limit-name", "end")
+    draw_limit(drawing, frame.swr, limit)
     for run in clipped_runs(points, 1.0, limit):
         ends = frame.frequency(run[0][0]), frame.frequency(run[-1][0])
-        drawing.box((ends[0], _BOTTOM + 1.0), (ends[1], _BOTTOM + 4.5), "within")
+        drawing.box((ends[0], BOTTOM + 1.0), (ends[1], BOTTOM + 4.5), "within")
 
 
 def _draw_resonance(drawing: Drawing, frame: _Frame, outcome: BandOutcome) -> None:
@@ -144,8 +105,8 @@ def _draw_resonance(drawing: Drawing, frame: _Frame, outcome: BandOutcome) -> No
         return
     if frame.frequency.low <= outcome.resonance_mhz <= frame.frequency.high:
         x = frame.frequency(outcome.resonance_mhz)
-        drawing.line((x, _TOP), (x, _BOTTOM), "resonance")
-        drawing.text((x, _TOP - 4.0), formats.ordinal(outcome.order), "order series")
+        drawing.line((x, TOP), (x, BOTTOM), "resonance")
+        drawing.text((x, TOP - 4.0), formats.ordinal(outcome.order), "order series")
 
 
 def _in_words(outcome: BandOutcome) -> str:
