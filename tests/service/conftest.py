@@ -8,6 +8,7 @@ import time
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import httpx
 import pytest
@@ -19,7 +20,8 @@ from service.intake import submit
 from service.settings import Settings
 from service.store import jobs
 from service.store.session import Store, open_store
-from tests.service.samples import sample_planned, sample_request
+from tests.service.pages import finished
+from tests.service.samples import FULL, sample_planned, sample_request
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,3 +86,19 @@ def wire(wire_settings: Settings, wire_store: Store, stored: Stored) -> Iterator
             yield client
         server.should_exit = True
         thread.join()
+
+
+@pytest.fixture(scope="module")
+def hung_candidate(wire_store: Store, wire_settings: Settings, stored: Stored) -> str:
+    """The address of a candidate of a design whose request says everything."""
+    del stored
+    request = sample_request(**FULL)
+    design_id = finished(wire_store, wire_settings, request, sample_planned(request))
+    return f"/designs/{design_id}/candidates/1"
+
+
+@pytest.fixture(scope="module")
+def hung_report(wire: httpx.Client, hung_candidate: str) -> dict[str, Any]:
+    """Its report as the API gives it."""
+    found: dict[str, Any] = wire.get(f"/v1{hung_candidate}/report").json()
+    return found

@@ -105,3 +105,17 @@ def _shape_m(span_m: float, length_m: float) -> tuple[tuple[float, float], ...]:
     wire = [(x, SAG_M * (math.pow(x / half_m - 1.0, 2) - 1.0)) for x in places]
     rounded = [(round(x, 3), round(up, 3)) for x, up in wire]
     return ((0.0, 0.0), *rounded, (span_m, 0.0))
+
+
+#: Figures of a weather in the order of the columns of page and print.
+OF_WEATHER = (
+    "temperature_c",
+    "wind_pa",
+    "ice_mm",
+    "wire_tension_n",
+    "rope_tension_n",
+    "sag_m",
+    "swing_m",
+    "lowest_m",
+    "mean_height_m",
+)

@@ -12,25 +12,10 @@ import pytest
 from rich.console import Console
 
 from service.contracts.report import FeedReport
-from service.settings import Settings
-from service.store.session import Store
-from tests.service.conftest import Stored
-from tests.service.pages import finished, same
-from tests.service.samples import FULL, sample_planned, sample_request
+from tests.service.pages import same
+from tests.service.sample_hanging import OF_WEATHER
 from worker.cli import tables
 
-#: Figures of a weather in the order of the columns of page and print.
-OF_WEATHER = (
-    "temperature_c",
-    "wind_pa",
-    "ice_mm",
-    "wire_tension_n",
-    "rope_tension_n",
-    "sag_m",
-    "swing_m",
-    "lowest_m",
-    "mean_height_m",
-)
 #: What the CSV calls them.
 WEATHER_IN_CSV = (
     "temperature",
@@ -46,25 +31,11 @@ WEATHER_IN_CSV = (
 
 
 @pytest.fixture(scope="module")
-def full(wire_store: Store, wire_settings: Settings, stored: Stored) -> str:
-    """The address of a candidate of a design whose request says everything."""
-    del stored
-    request = sample_request(**FULL)
-    design_id = finished(wire_store, wire_settings, request, sample_planned(request))
-    return f"/designs/{design_id}/candidates/1"
-
-
-@pytest.fixture(scope="module")
-def given(wire: httpx.Client, full: str) -> dict[str, Any]:
-    """Its report as the API gives it."""
-    found: dict[str, Any] = wire.get(f"/v1{full}/report").json()
-    return found
-
-
-@pytest.fixture(scope="module")
-def figures(wire: httpx.Client, full: str) -> dict[tuple[str, str, str], tuple[str, str]]:
+def figures(wire: httpx.Client, hung_candidate: str) -> dict[tuple[str, str, str], tuple[str, str]]:
     """Value and unit of each figure of the CSV, by band, place and name."""
-    lines = csv.DictReader(io.StringIO(wire.get(f"/v1{full}/report.csv").text, newline=""))
+    lines = csv.DictReader(
+        io.StringIO(wire.get(f"/v1{hung_candidate}/report.csv").text, newline="")
+    )
     return {
         (line["band"], line["place"], line["figure"]): (line["value"], line["unit"])
         for line in lines
@@ -73,9 +44,9 @@ def figures(wire: httpx.Client, full: str) -> dict[tuple[str, str, str], tuple[s
 
 
 def test_the_csv_has_voltages_and_exposure_as_the_api(
-    figures: dict[tuple[str, str, str], tuple[str, str]], given: dict[str, Any]
+    figures: dict[tuple[str, str, str], tuple[str, str]], hung_report: dict[str, Any]
 ) -> None:
-    for band in given["bands"]:
+    for band in hung_report["bands"]:
         name, found = band["name"], band["exposure"]
         near_v, far_v = band["stress"]["ends_peak_v"]
         feed_v = band["stress"]["voltage_peak_v"]
@@ -108,9 +79,9 @@ def test_the_csv_has_voltages_and_exposure_as_the_api(
 
 
 def test_the_csv_has_the_figures_of_hanging_as_the_api(
-    figures: dict[tuple[str, str, str], tuple[str, str]], given: dict[str, Any]
+    figures: dict[tuple[str, str, str], tuple[str, str]], hung_report: dict[str, Any]
 ) -> None:
-    hung = given["hanging"]
+    hung = hung_report["hanging"]
     assert figures["", "", "tension or sag as asked for"] == ("yes", "")
     for place, figure, field, unit in (
         (hung["weakest"], "safety factor", "safety_factor", ""),
@@ -137,9 +108,9 @@ def same_with_unit(cell: tuple[str, str], given: float, unit: str) -> None:
 
 
 @pytest.fixture(scope="module")
-def printed(given: dict[str, Any]) -> str:
+def printed(hung_report: dict[str, Any]) -> str:
     """The API's report as the command line prints it on 80 columns."""
-    return as_printed(FeedReport.model_validate(given))
+    return as_printed(FeedReport.model_validate(hung_report))
 
 
 def as_printed(report: FeedReport) -> str:
@@ -162,9 +133,9 @@ def weathers_printed(printed: str, count: int) -> list[list[str]]:
 
 
 def test_weathers_and_cutting_are_printed_as_the_api_has_them(
-    printed: str, given: dict[str, Any]
+    printed: str, hung_report: dict[str, Any]
 ) -> None:
-    hung = given["hanging"]
+    hung = hung_report["hanging"]
     for row, state in zip(weathers_printed(printed, 5), hung["states"], strict=True):
         assert row[0] == state["weather"]
         for shown, field in zip(row[1:], OF_WEATHER, strict=True):
@@ -177,29 +148,33 @@ def test_weathers_and_cutting_are_printed_as_the_api_has_them(
     same(both[-1], hung["wire_total_m"])
 
 
-def test_even_a_wide_number_is_printed_whole(given: dict[str, Any]) -> None:
+def test_even_a_wide_number_is_printed_whole(hung_report: dict[str, Any]) -> None:
     extreme = {"temperature_c": -59.5, "wind_pa": 5000.0, "wire_tension_n": 312345.6}
-    states = [state | extreme for state in given["hanging"]["states"]]
-    report = given | {"hanging": given["hanging"] | {"states": states}}
+    states = [state | extreme for state in hung_report["hanging"]["states"]]
+    report = hung_report | {"hanging": hung_report["hanging"] | {"states": states}}
     printed = as_printed(FeedReport.model_validate(report))
     (row,) = weathers_printed(printed, 1)
     assert row[1:5:3] == ["-59.5", "312346"]
 
 
 def test_numbers_too_wide_for_the_paper_are_folded_and_not_cut_short(
-    given: dict[str, Any],
+    hung_report: dict[str, Any],
 ) -> None:
-    states = [state | dict.fromkeys(OF_WEATHER, 12345678.9) for state in given["hanging"]["states"]]
+    states = [
+        state | dict.fromkeys(OF_WEATHER, 12345678.9) for state in hung_report["hanging"]["states"]
+    ]
     printed = as_printed(
-        FeedReport.model_validate(given | {"hanging": given["hanging"] | {"states": states}})
+        FeedReport.model_validate(
+            hung_report | {"hanging": hung_report["hanging"] | {"states": states}}
+        )
     )
     assert "…" not in printed
 
 
 def test_tension_sag_and_safety_factor_are_printed_as_the_api_has_them(
-    printed: str, given: dict[str, Any]
+    printed: str, hung_report: dict[str, Any]
 ) -> None:
-    words, hung = " ".join(printed.split()), given["hanging"]
+    words, hung = " ".join(printed.split()), hung_report["hanging"]
     lowest = min(each["lowest_m"] for each in hung["states"])
     for pattern, value in (
         (r"Strung with ([\d.]+) N at 15 °C", hung["states"][0]["wire_tension_n"]),
@@ -218,9 +193,9 @@ def test_tension_sag_and_safety_factor_are_printed_as_the_api_has_them(
 
 
 def test_voltages_and_distances_are_printed_as_the_api_has_them(
-    printed: str, given: dict[str, Any]
+    printed: str, hung_report: dict[str, Any]
 ) -> None:
-    bands = given["bands"]
+    bands = hung_report["bands"]
     for row, band in zip(
         rows_below(printed, "Peak voltage, V, band centres", 4), bands, strict=True
     ):
@@ -243,14 +218,14 @@ def test_voltages_and_distances_are_printed_as_the_api_has_them(
     assert "near: it lies in the near field" in words
 
 
-def test_an_older_report_prints_without_them(given: dict[str, Any]) -> None:
+def test_an_older_report_prints_without_them(hung_report: dict[str, Any]) -> None:
     older = FeedReport.model_validate(
         {
-            **given,
+            **hung_report,
             "hanging": None,
             "bands": [
                 band | {"exposure": None, "stress": band["stress"] | {"ends_peak_v": None}}
-                for band in given["bands"]
+                for band in hung_report["bands"]
             ],
         }
     )

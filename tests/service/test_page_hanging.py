@@ -11,51 +11,22 @@ import pytest
 from service.contracts.candidate import PlannedDesign
 from service.settings import Settings
 from service.store.session import Store
-from tests.service.conftest import Stored
 from tests.service.pages import Page, finished, read, same, table_headed
-from tests.service.samples import FULL, sample_planned, sample_request
-
-#: Figures of a weather in the order of the columns of page and print.
-OF_WEATHER = (
-    "temperature_c",
-    "wind_pa",
-    "ice_mm",
-    "wire_tension_n",
-    "rope_tension_n",
-    "sag_m",
-    "swing_m",
-    "lowest_m",
-    "mean_height_m",
-)
+from tests.service.sample_hanging import OF_WEATHER
+from tests.service.samples import sample_planned, sample_request
 
 
 @pytest.fixture(scope="module")
-def full(wire_store: Store, wire_settings: Settings, stored: Stored) -> str:
-    """The address of a candidate of a design whose request says everything."""
-    del stored
-    request = sample_request(**FULL)
-    design_id = finished(wire_store, wire_settings, request, sample_planned(request))
-    return f"/designs/{design_id}/candidates/1"
-
-
-@pytest.fixture(scope="module")
-def given(wire: httpx.Client, full: str) -> dict[str, Any]:
-    """Its report as the API gives it."""
-    found: dict[str, Any] = wire.get(f"/v1{full}/report").json()
-    return found
-
-
-@pytest.fixture(scope="module")
-def page(wire: httpx.Client, full: str) -> Page:
-    return read(wire, full)
+def page(wire: httpx.Client, hung_candidate: str) -> Page:
+    return read(wire, hung_candidate)
 
 
 def words_of(page: Page) -> str:
     return " ".join(page.words.replace("\u00a0", " ").split())
 
 
-def test_the_facts_of_hanging_are_those_of_the_api(page: Page, given: dict[str, Any]) -> None:
-    words, hung = words_of(page), given["hanging"]
+def test_the_facts_of_hanging_are_those_of_the_api(page: Page, hung_report: dict[str, Any]) -> None:
+    words, hung = words_of(page), hung_report["hanging"]
     _, _, section = words.partition("Hanging it ")
     lowest = min(each["lowest_m"] for each in hung["states"])
     for pattern, value in (
@@ -76,28 +47,28 @@ def test_the_facts_of_hanging_are_those_of_the_api(page: Page, given: dict[str, 
 
 
 def test_every_weather_has_a_row_with_the_figures_of_the_api(
-    page: Page, given: dict[str, Any]
+    page: Page, hung_report: dict[str, Any]
 ) -> None:
     rows = table_headed(page, "Weather", "°C")[2:]
-    assert len(given["hanging"]["states"]) == 5
-    for row, state in zip(rows, given["hanging"]["states"], strict=True):
+    assert len(hung_report["hanging"]["states"]) == 5
+    for row, state in zip(rows, hung_report["hanging"]["states"], strict=True):
         assert row[0] == state["weather"]
         for shown, field in zip(row[1:], OF_WEATHER, strict=True):
             same(shown, state[field])
 
 
-def test_the_cutting_list_is_that_of_the_api(page: Page, given: dict[str, Any]) -> None:
+def test_the_cutting_list_is_that_of_the_api(page: Page, hung_report: dict[str, Any]) -> None:
     *rows, both = table_headed(page, "Leg")[1:]
-    for row, leg in zip(rows, given["hanging"]["cutting"], strict=True):
+    for row, leg in zip(rows, hung_report["hanging"]["cutting"], strict=True):
         assert row[0] == leg["leg"]
         same(row[1], leg["electrical_m"])
         same(row[2], leg["cut_m"])
-    same(both[2], given["hanging"]["wire_total_m"])
+    same(both[2], hung_report["hanging"]["wire_total_m"])
 
 
-def test_voltages_at_the_ends_are_those_of_the_api(page: Page, given: dict[str, Any]) -> None:
+def test_voltages_at_the_ends_are_those_of_the_api(page: Page, hung_report: dict[str, Any]) -> None:
     rows = table_headed(page, "Band", "near end")[1:]
-    for row, band in zip(rows, given["bands"], strict=True):
+    for row, band in zip(rows, hung_report["bands"], strict=True):
         near_v, far_v = band["stress"]["ends_peak_v"]
         assert row[0] == band["name"]
         for shown, value in zip(
@@ -107,7 +78,7 @@ def test_voltages_at_the_ends_are_those_of_the_api(page: Page, given: dict[str, 
 
 
 def test_distances_are_those_of_the_api_and_their_flags_are_told_in_words(
-    page: Page, given: dict[str, Any]
+    page: Page, hung_report: dict[str, Any]
 ) -> None:
     head, *rows = table_headed(page, "Band", "47 CFR 1.1310,general public")
     assert head[2:] == [
@@ -116,7 +87,7 @@ def test_distances_are_those_of_the_api_and_their_flags_are_told_in_words(
         "ICNIRP 2020,occupational",
     ]
     near, peak = set(), set()
-    for row, band in zip(rows, given["bands"], strict=True):
+    for row, band in zip(rows, hung_report["bands"], strict=True):
         assert row[0] == band["name"]
         for shown, each in zip(row[1:], band["exposure"]["distances"], strict=True):
             number, _, said = shown.partition(" ")
@@ -167,9 +138,9 @@ def test_the_dangers_are_named_beside_the_figures(page: Page) -> None:
 
 
 def test_every_table_of_these_sections_has_a_caption_and_heads(
-    wire: httpx.Client, full: str
+    wire: httpx.Client, hung_candidate: str
 ) -> None:
-    text = wire.get(full).text
+    text = wire.get(hung_candidate).text
     for section in ("hanging", "exposure"):
         part = text.partition(f'aria-labelledby="{section}"')[2].partition("</section>")[0]
         tables_of = re.findall(r"<table.*?</table>", part, re.DOTALL)
