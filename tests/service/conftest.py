@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-import socket
-import threading
-import time
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -12,7 +9,6 @@ from typing import Any
 
 import httpx
 import pytest
-import uvicorn
 
 from service.api.app import create_app
 from service.doorbell import Doorbell
@@ -22,6 +18,7 @@ from service.store import jobs
 from service.store.session import Store, open_store
 from tests.service.pages import finished
 from tests.service.samples import FULL, sample_planned, sample_request
+from tests.service.serving import served
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,18 +71,8 @@ def stored(wire_settings: Settings, wire_store: Store) -> Stored:
 def wire(wire_settings: Settings, wire_store: Store, stored: Stored) -> Iterator[httpx.Client]:
     """A client of the application, served by uvicorn on a free port of the loopback."""
     del stored  # it is there first, so that claims find it alone
-    app = create_app(wire_settings, wire_store)
-    with socket.create_server(("127.0.0.1", 0)) as listener:
-        server = uvicorn.Server(uvicorn.Config(app, log_level="warning", ws="none"))
-        thread = threading.Thread(target=server.run, kwargs={"sockets": [listener]})
-        thread.start()
-        while not server.started:
-            assert thread.is_alive(), "the server did not start"
-            time.sleep(0.005)
-        with httpx.Client(base_url=f"http://127.0.0.1:{listener.getsockname()[1]}") as client:
-            yield client
-        server.should_exit = True
-        thread.join()
+    with served(create_app(wire_settings, wire_store)) as client:
+        yield client
 
 
 @pytest.fixture(scope="module")
